@@ -1,0 +1,165 @@
+"""Makes the recordings beside this file. Run it again and the bytes are the same.
+
+    python audio_samples/make.py
+
+plucked.wav  stereo, 8 s, peak -6 dBFS: plucked strings over the rumble of a turntable and footsteps, below 30 Hz.
+             What a small loudspeaker should not be given, under what it should.
+chord.wav    mono, 9 s, peak -30 dBFS: a quiet chord that fades into 3 s of silence.
+             Noise and ringing show in the fade and in the silence.
+
+Both are 48 kHz, 16 bits, rounded to nearest, undithered so that silence is silence. Only additions, multiplications,
+divisions and integers are used: they are rounded alike on every machine.
+"""
+
+import wave
+from pathlib import Path
+
+import numpy as np
+import numpy.typing as npt
+
+RATE = 48000
+FULL_SCALE = 32768
+
+Sound = npt.NDArray[np.float64]
+
+# Equal temperament, A4 = 440 Hz, in Hz (common practice).
+D2, A2, D3, E3, F3, A3, C4, D4, E4, F4, A4 = (
+    73.416, 110.0, 146.832, 164.814, 174.614, 220.0, 261.626, 293.665, 329.628, 349.228, 440.0,
+)  # fmt: skip
+
+PLUCKS = [  # seconds, pitch, strength, place from 0 left to 1 right
+    (0.10, D2, 1.0, 0.5), (0.40, A2, 0.7, 0.4), (0.70, D3, 0.7, 0.6), (1.00, F3, 0.8, 0.3), (1.30, A3, 0.8, 0.7),
+    (1.60, D4, 0.8, 0.5), (1.90, A3, 0.6, 0.6), (2.20, F3, 0.6, 0.4), (2.50, A2, 0.9, 0.5), (2.80, E3, 0.7, 0.4),
+    (3.10, A3, 0.7, 0.6), (3.40, C4, 0.8, 0.3), (3.70, E4, 0.9, 0.7), (4.00, A4, 0.8, 0.5), (4.30, E4, 0.6, 0.4),
+    (4.60, D2, 1.0, 0.5), (4.61, A2, 0.7, 0.4), (4.62, D3, 0.7, 0.6), (4.63, F3, 0.7, 0.5), (4.64, A3, 0.7, 0.4),
+    (4.65, F4, 0.7, 0.6),
+]  # fmt: skip
+FOOTSTEPS = [0.55, 1.30, 2.05, 2.85, 3.60, 5.20, 5.95, 6.75]  # seconds
+CHORD = [(D3, 1.0), (A3, 0.8), (D4, 0.6), (F4, 0.5), (A4, 0.35)]  # pitch, strength
+
+
+def noise(count: int, seed: int) -> Sound:
+    """Uniform noise from -1 to 1, by a linear congruential generator of 64 bits."""
+    state = seed
+    values = np.empty(count)
+    for index in range(count):
+        state = (state * 6364136223846793005 + 1442695040888963407) % 2**64
+        values[index] = (state >> 40) / 2**23 - 1.0
+    return values
+
+
+def smooth(sound: Sound, share: float) -> Sound:
+    """A one-pole low-pass filter: each output moves by `share` of the way to the input."""
+    result = np.empty_like(sound)
+    level = 0.0
+    for index, value in enumerate(sound):
+        level += share * (value - level)
+        result[index] = level
+    return result
+
+
+def tone(count: int, frequency: float, decay: float = 1.0) -> Sound:
+    """A sine that starts at 0 with a peak of 1 and shrinks by `decay` per frame: a rotation, frame by frame."""
+    angle = 6.283185307179586 * frequency / RATE
+    square = angle * angle
+    cosine = 1 - square / 2 * (1 - square / 12 * (1 - square / 30 * (1 - square / 56)))
+    sine = angle * (1 - square / 6 * (1 - square / 20 * (1 - square / 42 * (1 - square / 72))))
+    x, y = 1.0, 0.0
+    result = np.empty(count)
+    for index in range(count):
+        result[index] = y
+        x, y = decay * (cosine * x - sine * y), decay * (sine * x + cosine * y)
+    return result
+
+
+def pluck(count: int, frequency: float, seed: int) -> Sound:
+    """A plucked string: a loop as long as its period, filled with noise and smoothed at each turn.
+
+    K. Karplus, A. Strong, "Digital synthesis of plucked-string and drum timbres", Computer Music Journal, 1983.
+    """
+    period = RATE / frequency
+    whole = int(period)
+    part = period - whole
+    loss = 1.0 - 1.2 * period / RATE  # it falls by 1.2 nepers a second, its overtones faster
+    edge, middle = 0.15, 0.7  # the smoothing; then a straight line between two samples tunes the string
+    taps = [edge * (1 - part), middle * (1 - part) + edge * part, edge * (1 - part) + middle * part, edge * part]
+    string = np.zeros(3 + whole + count)
+    burst = smooth(noise(whole, seed), 0.25)
+    string[3 : 3 + whole] = burst - np.add.accumulate(burst)[-1] / whole
+    for start in range(3 + whole, len(string), whole - 1):
+        stop = min(start + whole - 1, len(string))
+        for lag, weight in enumerate(taps, whole - 1):
+            string[start:stop] += loss * weight * string[start - lag : stop - lag]
+    return string[3 : 3 + count]
+
+
+def strings(count: int) -> Sound:
+    """All plucks, (count, 2)."""
+    mix = np.zeros((count, 2))
+    for number, (second, pitch, strength, place) in enumerate(PLUCKS):
+        start = int(second * RATE)
+        string = strength * pluck(count - start, pitch, seed=1000 + number)
+        mix[start:, 0] += (1 - place) * string
+        mix[start:, 1] += place * string
+    return mix
+
+
+def rumble(count: int) -> Sound:
+    """A turntable's bearing and footsteps on the floor, all of it below about 30 Hz; (count,), peak 1."""
+    bearing = noise(count, seed=7)
+    for _ in range(4):
+        bearing = smooth(bearing, 0.0016)
+    bearing -= smooth(bearing, 0.0003)
+    steps = np.zeros(count)
+    for second in FOOTSTEPS:
+        start = int(second * RATE)
+        steps[start:] += tone(count - start, 17.0, decay=0.9998)
+    for _ in range(2):
+        steps = smooth(steps, 0.003)
+    return scaled(scaled(bearing, 0.5) + scaled(steps, 1.0), 1.0)
+
+
+def scaled(sound: Sound, peak: float) -> Sound:
+    return sound * (peak / float(np.max(np.abs(sound))))
+
+
+def fall(count: int, first: int, last: int) -> Sound:
+    """1 until frame `first`, 0 from frame `last`, in between the fourth power of a straight line."""
+    line = np.clip((last - np.arange(count)) / (last - first), 0.0, 1.0)
+    return line * line * line * line
+
+
+def plucked() -> Sound:
+    count = 8 * RATE
+    sound = scaled(strings(count), 0.7) + scaled(rumble(count), 0.3)[:, np.newaxis]
+    return scaled(sound * fall(count, 6 * RATE, count - RATE // 20)[:, np.newaxis], 0.501187)  # -6 dBFS
+
+
+def chord() -> Sound:
+    count = 9 * RATE
+    sound = np.zeros(count)
+    for pitch, strength in CHORD:
+        for overtone in range(1, 5):
+            for detuning in (0.9992, 1.0008):  # two strings to a note, beating slowly
+                sound += strength / (overtone * overtone) * tone(count, pitch * overtone * detuning)
+    rise = 1.0 - fall(count, 0, RATE)
+    return scaled(sound * rise * fall(count, 2 * RATE, 13 * RATE // 2), 0.0316228)[:, np.newaxis]  # -30 dBFS
+
+
+def recordings() -> dict[str, npt.NDArray[np.int16]]:
+    """Name to codes (frames, channels)."""
+    sounds = {"plucked.wav": plucked(), "chord.wav": chord()}
+    return {name: np.rint(sound * FULL_SCALE).astype(np.int16) for name, sound in sounds.items()}
+
+
+def write(path: Path, codes: npt.NDArray[np.int16]) -> None:
+    with wave.open(str(path), "wb") as file:
+        file.setnchannels(codes.shape[1])
+        file.setsampwidth(2)
+        file.setframerate(RATE)
+        file.writeframes(codes.astype("<i2").tobytes())
+
+
+if __name__ == "__main__":
+    for file_name, file_codes in recordings().items():
+        write(Path(__file__).parent / file_name, file_codes)

@@ -1,0 +1,203 @@
+"""What commands share: options, presets from the command line, JSON, the progress line and the ledger."""
+
+import json
+import math
+import shutil
+import sys
+import time
+import unicodedata
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass
+from types import TracebackType
+from typing import TYPE_CHECKING, Any, TextIO
+
+import click
+
+from streamhost.errors import PresetError
+
+if TYPE_CHECKING:
+    from streamhost.presets import Preset
+
+MINUS = "\N{MINUS SIGN}"
+RULE = "\N{BOX DRAWINGS LIGHT HORIZONTAL}"
+NOT_GIVEN = "\N{EN DASH}"
+GAP = "  "
+PATIENCE = 2.0
+
+force_option = click.option("--force", is_flag=True, help="Overwrite files that exist.")
+json_option = click.option(
+    "--json", "json_file", metavar="FILE", default=None,
+    help="Write the table's figures as JSON, each key with its unit; - is standard output.",
+)
+vary_option = click.option(
+    "--vary", "variations", metavar="KEY=V1,V2", multiple=True,
+    help="Make a family of each preset, for instance structure.form=direct-1,transposed-2. May be repeated.",
+)
+
+
+def presets_named(names: Sequence[str], variations: Sequence[str] = ()) -> "list[Preset]":
+    """The presets of these files or shipped names, varied; PresetError with the mistakes of all files together."""
+    from streamhost.presets import load_preset, vary
+    from streamhost.shipped import resolve
+
+    presets: list[Preset] = []
+    problems: list[str] = []
+    for name in names:
+        try:
+            presets.append(load_preset(resolve(name, "preset")))
+        except PresetError as error:
+            problems += error.problems
+    if problems:
+        raise PresetError(problems)
+    return vary(presets, variations)
+
+
+def write_json(destination: str, document: object, *, force: bool = False) -> None:
+    """Figures as JSON into a file, or to standard output for "-"; a number that is not finite becomes null."""
+    text = json.dumps(_finite(document), indent=2, ensure_ascii=False, allow_nan=False) + "\n"
+    if destination == "-":
+        click.echo(text, nl=False)
+        return
+    from streamhost.files import write_text_atomic
+
+    write_text_atomic(destination, text, overwrite=force)
+
+
+def _finite(value: Any) -> Any:
+    if isinstance(value, float):
+        return value if math.isfinite(value) else None
+    if isinstance(value, Mapping):
+        return {str(key): _finite(entry) for key, entry in value.items()}
+    if isinstance(value, list | tuple):
+        return [_finite(entry) for entry in value]
+    return value
+
+
+def progress_line(command: str, number: int, total: int, label: str, seconds_left: float | None) -> str:
+    """One line such as 'compare  3 of 8  direct-2 Q1.15   41 s left'."""
+    left = "" if seconds_left is None else f"   {_duration(seconds_left)} left"
+    return f"{command}{GAP}{number} of {total}{GAP}{printable(label)}{left}"
+
+
+def _duration(seconds: float) -> str:
+    whole = math.ceil(seconds)
+    return f"{whole} s" if whole < 100 else f"{math.ceil(seconds / 60)} min"
+
+
+class Progress:
+    """Says on stderr how far the work is: one line, written again at every step on a terminal.
+
+    Where stderr is no terminal, every step has its own line, and none as long as the work has taken less than 2 s.
+    """
+
+    def __init__(
+        self, command: str, total: int, *, stream: TextIO | None = None, clock: Callable[[], float] = time.monotonic
+    ) -> None:
+        self._command, self._total = command, total
+        self._stream = stream or sys.stderr
+        self._clock = clock
+        self._terminal = self._stream.isatty()
+        self._began = clock()
+        self._done = 0
+
+    def __enter__(self) -> "Progress":
+        return self
+
+    def __exit__(
+        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+    ) -> None:
+        if self._terminal:
+            self._stream.write("\r\x1b[K")
+            self._stream.flush()
+
+    def step(self, label: str) -> None:
+        """The work on the next item begins; the one before it is done."""
+        passed = self._clock() - self._began
+        left = passed / self._done * (self._total - self._done) if self._done else None
+        self._done += 1
+        line = progress_line(self._command, self._done, self._total, label, left)
+        if self._terminal:
+            width = shutil.get_terminal_size().columns - 1
+            self._stream.write(f"\r{line[:width]}\x1b[K")
+        elif passed > PATIENCE:
+            self._stream.write(f"{line}\n")
+        self._stream.flush()
+
+
+Cell = str | int | float | None
+
+
+@dataclass(frozen=True)
+class Column:
+    """A column of a ledger: its head, the unit under it, and how many decimals its numbers show."""
+
+    head: str
+    unit: str = ""
+    decimals: int | None = None
+
+
+def ledger(columns: Sequence[Column], rows: Sequence[Sequence[Cell]], *, numbered: bool = True) -> str:
+    """A table with thin rules: numerals first, decimal points under each other, U+2212 as minus.
+
+    None shows as a dash. A column that holds a number is set to the right, any other to the left.
+    """
+    if numbered:
+        columns = [Column(""), *columns]
+        rows = [[number, *row] for number, row in enumerate(rows, 1)]
+    assert all(len(row) == len(columns) for row in rows), "every row has a cell for each column"
+    heads = [[column.head for column in columns]]
+    if any(column.unit for column in columns):
+        heads.append([column.unit for column in columns])
+    set_columns = [
+        _set_column(column, [head[index] for head in heads], [row[index] for row in rows])
+        for index, column in enumerate(columns)
+    ]
+    lines = [GAP.join(cells).rstrip() for cells in zip(*set_columns, strict=True)]
+    rule = RULE * max(_width(line) for line in lines)
+    return "\n".join([*lines[: len(heads)], rule, *lines[len(heads) :], rule])
+
+
+def _set_column(column: Column, heads: Sequence[str], cells: Sequence[Cell]) -> list[str]:
+    """Heads and cells of one column, padded to one width."""
+    numeric = any(isinstance(cell, int | float) for cell in cells)
+    texts = [_text(cell, column.decimals) for cell in cells]
+    if numeric:
+        texts = _aligned(texts, [isinstance(cell, int | float) for cell in cells])
+    heads = [printable(head) for head in heads]
+    width = max(map(_width, [*heads, *texts]))
+    padded = [" " * (width - _width(text)) for text in [*heads, *texts]]
+    return [pad + text if numeric else text + pad for text, pad in zip([*heads, *texts], padded, strict=True)]
+
+
+def _text(cell: Cell, decimals: int | None) -> str:
+    if cell is None or (isinstance(cell, float) and math.isnan(cell)):
+        return NOT_GIVEN
+    if isinstance(cell, str):
+        return printable(cell)
+    if isinstance(cell, float) and math.isinf(cell):
+        return "\N{INFINITY}" if cell > 0 else f"{MINUS}\N{INFINITY}"
+    text = f"{cell:g}" if decimals is None else f"{cell:.{decimals}f}"
+    if isinstance(cell, int):
+        text = str(int(cell))
+    return text.replace("-", MINUS) if any(digit in "123456789" for digit in text) else text.removeprefix("-")
+
+
+def _aligned(texts: Sequence[str], numbers: Sequence[bool]) -> list[str]:
+    """Numbers padded on the right so that their points stand under each other."""
+    behind = [len(text) - text.index(".") if "." in text else 0 for text in texts]
+    longest = max(length for length, number in zip(behind, numbers, strict=True) if number)
+    return [
+        text + " " * (longest - length) if number else text
+        for text, length, number in zip(texts, behind, numbers, strict=True)
+    ]
+
+
+def printable(text: str) -> str:
+    """The text without what would act on a terminal instead of showing."""
+    return "".join(character if character.isprintable() else "\N{REPLACEMENT CHARACTER}" for character in text)
+
+
+def _width(text: str) -> int:
+    """How many columns of a terminal a text takes."""
+    wide = sum(unicodedata.east_asian_width(character) in "WF" for character in text)
+    return len(text) + wide - sum(unicodedata.combining(character) > 0 for character in text)

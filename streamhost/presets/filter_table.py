@@ -1,0 +1,148 @@
+"""One [[filter]] table: the ways in which a preset may state a filter, and its cascade."""
+
+import re
+from collections.abc import Callable, Mapping
+from typing import Any
+
+from streamhost.errors import FilterError, nearest
+from streamhost.filters import Filter, kinds
+from streamhost.filters.designs import KINDS, design
+from streamhost.presets.lines import Path
+from streamhost.presets.mistakes import Mistakes, listed
+from streamhost.presets.tables import (
+    LATER,
+    CodesTable,
+    CoefficientsTable,
+    RootsTable,
+    SectionsTable,
+    Text,
+    read_table,
+    read_value,
+)
+
+Table = Mapping[str, Any]
+
+
+def read_filters(mistakes: Mistakes, tables: list[dict[str, Any]], rate: float | None) -> Filter | None:
+    """The cascade of all [[filter]] tables, or None after a mistake. `rate` is None where it is itself a mistake."""
+    if not tables:
+        mistakes.add(("filter",), "filter = [] states no filter: at least one table [[filter]] is needed.")
+    filters = [_read_filter(mistakes, table, ("filter", index), rate) for index, table in enumerate(tables)]
+    good = [each for each in filters if each is not None]
+    if not good or len(good) < len(filters) or rate is None:
+        return None
+    try:
+        return Filter.cascade(good) if len(good) > 1 else good[0]
+    except FilterError as error:
+        mistakes.add(("filter",), str(error))
+        return None
+
+
+def _read_filter(mistakes: Mistakes, table: Table, path: Path, rate: float | None) -> Filter | None:
+    stated = [way for way, (keys, _) in WAYS.items() if any(key in table for key in keys)]
+    if len(stated) == 1:
+        return WAYS[stated[0]][1](mistakes, table, path, rate)
+    if stated:
+        mistakes.add(path, f"this [[filter]] states {len(stated)} filters, by {' and by '.join(stated)}: "
+                           "one [[filter]] table for each, and they stand in cascade.")
+        return None
+    mistakes.add(path, f"this [[filter]] states no filter: by {listed(WAYS)}.")
+    every = {key for keys, _ in WAYS.values() for key in keys}
+    for key in table:
+        if key in LATER:
+            mistakes.add((*path, key), f"{key} {LATER[key]}")
+        elif hint := nearest(key, every):
+            mistakes.add((*path, key), f"{key} is not known.{hint}")
+    return None
+
+
+def _by_kind(mistakes: Mistakes, table: Table, path: Path, rate: float | None) -> Filter | None:
+    kind = read_value(mistakes, table["kind"], (*path, "kind"), Text)
+    if kind is None:
+        return None
+    if kind not in KINDS:
+        mistakes.value((*path, "kind"), kind, f"is not known: {listed(kinds())}.{nearest(kind, kinds())}")
+        return None
+    given = {key: value for key, value in table.items() if key != "kind"}
+    if not _parameters_good(mistakes, kind, given, path, rate) or rate is None:
+        return None
+    return _made(mistakes, path, lambda: design(kind, rate=rate, **given))
+
+
+def _parameters_good(mistakes: Mistakes, kind: str, given: Table, path: Path, rate: float | None) -> bool:
+    """Whether every parameter is in its declared range; each that is not is told at its own line."""
+    spec = KINDS[kind]
+    parameters = {parameter.name: parameter for parameter in spec.parameters}
+    before = len(mistakes.found)
+    for key, value in given.items():
+        if key in LATER:
+            mistakes.add((*path, key), f"{key} {LATER[key]}")
+        elif key not in parameters:
+            mistakes.add((*path, key), f'{key} is no parameter of "{kind}", which takes {listed(parameters)}.'
+                                       f"{nearest(key, parameters)}")
+        elif parameters[key].range.taken(value, rate) is None:
+            mistakes.value((*path, key), value, f"is not allowed: {parameters[key].range.allowed(rate)}.")
+    for key, parameter in parameters.items():
+        if key not in given and key not in spec.alternatives and parameter.default is None:
+            mistakes.add(path, f'{key} is missing: "{kind}" needs it, {parameter.range.allowed(rate)}.')
+    chosen = [key for key in spec.alternatives if key in given]
+    if spec.alternatives and len(chosen) != 1:
+        mistakes.add(path, f'"{kind}" needs exactly one of {" and ".join(spec.alternatives)}, '
+                           f"and {'both are' if chosen else 'neither is'} given.")
+    return len(mistakes.found) == before
+
+
+def _by_equation(mistakes: Mistakes, table: Table, path: Path, rate: float | None) -> None:
+    mistakes.add((*path, "equation"), f"equation {LATER['equation']}")
+
+
+def _by_coefficients(mistakes: Mistakes, table: Table, path: Path, rate: float | None) -> Filter | None:
+    values = read_table(mistakes, table, path, CoefficientsTable)
+    if len(values) < len(table):
+        return None
+    b, a = values["b"], values.get("a", (1.0,))
+    return _made(mistakes, path, lambda: Filter.from_coefficients(b, a, rate=rate or 1.0))
+
+
+def _by_sections(mistakes: Mistakes, table: Table, path: Path, rate: float | None) -> Filter | None:
+    values = read_table(mistakes, table, path, SectionsTable)
+    if len(values) < len(table):
+        return None
+    sections = values["sections"]
+    if not isinstance(sections, dict):
+        return _made(mistakes, path, lambda: Filter.from_sections(sections, rate=rate or 1.0))
+    inside = (*path, "sections")
+    coded = read_table(mistakes, sections, inside, CodesTable)
+    if coded.keys() != {"codes", "word"} or len(sections) > 2:
+        return None
+    return _made(mistakes, inside, lambda: Filter.from_codes(coded["codes"], coded["word"], rate=rate or 1.0))
+
+
+def _by_roots(mistakes: Mistakes, table: Table, path: Path, rate: float | None) -> Filter | None:
+    values = read_table(mistakes, table, path, RootsTable)
+    if values.keys() != {"zeros", "poles", "factor"} or len(table) > 3:
+        return None
+    zeros, poles = ([complex(*root) if isinstance(root, tuple) else complex(root) for root in values[key]]
+                    for key in ("zeros", "poles"))
+    return _made(mistakes, path, lambda: Filter.from_zeros_poles(zeros, poles, values["factor"], rate=rate or 1.0))
+
+
+def _made(mistakes: Mistakes, path: Path, make: Callable[[], Filter]) -> Filter | None:
+    """The filter, or None with the filter's own refusal put on the line of the key or element that it begins with."""
+    try:
+        return make()
+    except FilterError as error:
+        text = str(error)
+        named = re.match(r"(?:a0 of )?(b|a|sections|codes|word|zeros|poles|factor)((?:\[\d+\])*)", text)
+        inside: Path = (named[1], *map(int, re.findall(r"\d+", named[2]))) if named else ()
+        mistakes.add((*path, *inside), text)
+        return None
+
+
+WAYS: Mapping[str, tuple[tuple[str, ...], Callable[[Mistakes, Table, Path, float | None], Filter | None]]] = {
+    "kind": (("kind",), _by_kind),
+    "equation": (("equation",), _by_equation),
+    "b and a": (("b", "a"), _by_coefficients),
+    "sections": (("sections",), _by_sections),
+    "zeros, poles and factor": (("zeros", "poles", "factor"), _by_roots),
+}

@@ -1,0 +1,103 @@
+"""Families of presets: some keys varied, every value with every other."""
+
+import copy
+import tomllib
+from collections.abc import Iterable, Sequence
+from dataclasses import replace
+from itertools import product
+from typing import Any
+
+from streamhost.errors import PresetError
+from streamhost.presets.lines import split_at_commas
+from streamhost.presets.mistakes import value_text
+from streamhost.presets.preset import Preset
+from streamhost.presets.reading import read_preset
+
+MOST_VARIANTS = 1000
+EXAMPLE = "structure.form=direct-1,transposed-2"
+
+Variation = tuple[str, tuple[str, ...]]
+
+
+def vary(presets: Iterable[Preset], variations: Sequence[str]) -> list[Preset]:
+    """Every preset with every combination of the varied values, for instance "structure.form=direct-1,transposed-2".
+
+    A key is written as in the file, with its table: format.signal, filter.q, or filter.2.q where there are several
+    filters. A value is TOML where it can be read as such, else a text. It replaces what the preset states for that key
+    and nothing else. Raises PresetError with the mistakes of the first variant that has some.
+    """
+    read = [_variation(text) for text in variations]
+    keys = [key for key, _ in read]
+    for key in keys:
+        if keys.count(key) > 1:
+            raise PresetError([f"--vary {key} is given twice: join its values by commas, for instance {EXAMPLE}."])
+    presets = list(presets)
+    combinations = list(product(*(values for _, values in read))) if _count(presets, read) else []
+    return [_varied(preset, list(zip(keys, values, strict=True))) for preset in presets for values in combinations]
+
+
+def _variation(text: str) -> Variation:
+    key, equals, values = text.partition("=")
+    parts = tuple(value.strip() for value in split_at_commas(values))
+    if not equals or not all(key.split(".")) or not all(parts):
+        raise PresetError([f"--vary {text} is not KEY=VALUE,VALUE, for instance {EXAMPLE}."])
+    return key.strip(), parts
+
+
+def _count(presets: Sequence[Preset], variations: Sequence[Variation]) -> int:
+    count = len(presets)
+    for _, values in variations:
+        count *= len(values)
+    if count > MOST_VARIANTS:
+        raise PresetError([f"--vary asks for {count} realizations, and at most {MOST_VARIANTS} are made at once."])
+    return count
+
+
+def _varied(preset: Preset, chosen: Sequence[tuple[str, str]]) -> Preset:
+    if not chosen:
+        return preset
+    table = copy.deepcopy(dict(preset.source.table))
+    shown = []
+    for key, text in chosen:
+        value = _value(text)
+        _put(table, key, value, preset.source.name)
+        shown.append(value if isinstance(value, str) else f"{key.rpartition('.')[2]} {value_text(value)}")
+    source = replace(preset.source, table=table, varied=(*preset.source.varied, *shown))
+    try:
+        return read_preset(source, preset.path)
+    except PresetError as error:
+        asked = " ".join(f"--vary {key}={text}" for key, text in chosen)
+        raise PresetError(f"{problem} (Asked for by {asked}.)" for problem in error.problems) from None
+
+
+def _put(table: dict[str, Any], key: str, value: object, name: str) -> None:
+    """Sets a dotted key in a raw table; tables on the way that are not there are made."""
+    *way, last = key.split(".")
+    inside: Any = table
+    for part in way:
+        inside = _member(inside, part)
+    if isinstance(inside, list) and len(inside) == 1:
+        inside = inside[0]
+    if not isinstance(inside, dict):
+        count = len(table["filter"]) if isinstance(table.get("filter"), list) else 0
+        which = f" It has {count} filters: say which, for instance filter.1.{last}." if way == ["filter"] else ""
+        raise PresetError([f"--vary {key}: {name} has no table of that name.{which}"])
+    inside[last] = value
+
+
+def _member(inside: Any, part: str) -> Any:
+    """The table `part` of a table, or the table of that number (from 1) in a list; None where there is none."""
+    if isinstance(inside, list) and part.isdecimal():
+        return inside[int(part) - 1] if 1 <= int(part) <= len(inside) else None
+    if isinstance(inside, list) and len(inside) == 1:
+        inside = inside[0]
+    return inside.setdefault(part, {}) if isinstance(inside, dict) else None
+
+
+def _value(text: str) -> object:
+    try:
+        table = tomllib.loads(f"value = {text}")
+    except (ValueError, RecursionError):
+        return text
+    value = table["value"]
+    return value if table.keys() == {"value"} and isinstance(value, str | bool | int | float | list | dict) else text

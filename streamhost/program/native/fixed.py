@@ -1,0 +1,276 @@
+"""Printing a fixed-point program as a kernel's source: one statement a node, in evaluation order."""
+
+from streamhost.diagram.nodes import Delay, Gain, Input, Node, Output, Residue, Round, Shift, Sum, Taps
+from streamhost.formats import Fixed, Quantizer
+from streamhost.program.native.doors import input_text
+from streamhost.program.native.frame import Variant, close_loops, has_dither, header, lines, open_loops
+from streamhost.program.native.taps import print_taps
+from streamhost.program.native.text import Text, Value, overflowed_text, rounded_text
+from streamhost.program.program import Program, RoundArithmetic, SumArithmetic, TapsArithmetic, TermArithmetic
+from streamhost.program.sources import traced_roundings
+
+IMPORTS = "from streamhost.program.native.intrinsics import clamp, differs, narrow, wide"
+MIX = '''
+@njit(inline="always")
+def dither_word(key, step):
+    z = key + np.uint64(0x9E3779B97F4A7C15) * step
+    z ^= z >> np.uint64(30)
+    z *= np.uint64(0xBF58476D1CE4E5B9)
+    z ^= z >> np.uint64(27)
+    z *= np.uint64(0x94D049BB133111EB)
+    return z ^ (z >> np.uint64(31))
+'''
+
+
+def print_fixed(program: Program, variant: Variant) -> str:
+    """The source of a fixed-point kernel."""
+    return FixedPrinter(program, variant).source()
+
+
+class FixedPrinter:
+    """Prints node after node; `values` holds what each node's variable is."""
+
+    def __init__(self, program: Program, variant: Variant) -> None:
+        assert isinstance(program.format, Fixed), "a fixed-point program"
+        self.program, self.variant, self.format = program, variant, program.format
+        self.nodes = program.nodes
+        self.text = Text()
+        self.values: dict[int, Value] = {}
+        self.exact: dict[int, Value] = {}
+        self.meters = {index: 1 + k for k, index in enumerate((*program.roundings, *program.counted_sums))}
+        for index, node in enumerate(self.nodes):
+            if isinstance(node, Taps):
+                self.meters[-1 - index] = 1 + len(self.meters)
+        self.traced = {index: k for k, index in enumerate(traced_roundings(program))}
+
+    def source(self) -> str:
+        imports = IMPORTS
+        if has_dither(self.program):
+            imports = "from numba import njit\n" + IMPORTS + "\n" + MIX
+        title = f"{self.format.label}: {len(self.nodes)} nodes, {len(self.program.roundings)} roundings."
+        header(self.text, self.program, self.variant, imports, "int64", title)
+        open_loops(self.text, self.program, self.variant, "{}")
+        if self.variant.metered:
+            self.text("o = np.int64(0)")
+        if has_dither(self.program):
+            self.text("t = np.uint64(2) * np.uint64(frame0 + n) + np.uint64(1)")
+        for index in self.program.diagram.order:
+            self.print(index, self.nodes[index])
+        if self.variant.metered:
+            self.text("if o != 0:")
+            with self.text.indented():
+                self.text("F[n, c] = 1")
+        self.store()
+        close_loops(self.text, self.program, self.variant)
+        return str(self.text)
+
+    def assign(self, index: int, value: Value, *, prefix: str = "v") -> Value:
+        """A statement that gives a node's value a name."""
+        self.text(f"{prefix}{index} = {value.text}")
+        named = Value(f"{prefix}{index}", value.bound, is_wide=value.is_wide)
+        if prefix == "v":
+            self.values[index] = named
+        return named
+
+    def print(self, index: int, node: Node) -> None:
+        arithmetic = self.program.arithmetic[index]
+        if isinstance(node, Input):
+            self.print_input(index)
+        elif isinstance(node, Delay):
+            self.print_delay(index, node)
+        elif isinstance(node, Gain):
+            coefficient = Value(f"k{node.coefficient}", self.largest(node.coefficient))
+            self.assign(index, coefficient.times(self.values[node.source]))
+        elif isinstance(node, Shift):
+            self.values[index] = self.values[node.source].left(max(0, node.k))
+            if node.source in self.exact:
+                self.exact[index] = self.exact[node.source].left(max(0, node.k))
+        elif isinstance(node, Sum):
+            assert isinstance(arithmetic, SumArithmetic), "a sum has its arithmetic"
+            self.print_sum(index, arithmetic)
+        elif isinstance(node, Taps):
+            assert isinstance(arithmetic, TapsArithmetic), "a tapped line has its arithmetic"
+            print_taps(self, index, node, arithmetic)
+        elif isinstance(node, Round):
+            assert isinstance(arithmetic, RoundArithmetic), "a rounding has its arithmetic"
+            self.print_round(index, node, arithmetic)
+        elif isinstance(node, Residue):
+            rest = f"r{node.source}" if self.has_residue(node.source) else "np.int64(0)"
+            self.values[index] = Value(rest, self.program.numbers[index].bound)
+        elif isinstance(node, Output):
+            self.print_output(index, node)
+
+    def largest(self, slot: int) -> int:
+        """The largest magnitude of a coefficient's word: kernels serve every value that fits it and its bound."""
+        assert self.program.stored is not None, "a fixed-point program"
+        return max(abs(code) for code in self.program.stored.codes[slot])
+
+    # doors
+
+    def print_input(self, index: int) -> None:
+        if self.variant.codes:
+            self.text(f"v{index} = x[n, c]")
+        else:
+            input_text(self.text, f"v{index}", self.format.input, metered=self.variant.metered)
+        self.values[index] = Value(f"v{index}", -self.format.input.word.low)
+
+    def print_output(self, index: int, node: Output) -> None:
+        value, at = self.values[node.source], self.program.numbers[node.source].fraction
+        place = self.program.diagram.outputs.index(index)
+        target = f"y[n, {place} * channels + c]" if place else "y[n, c]"
+        if self.variant.codes:
+            self.text(f"{target} = {value.left(self.format.output.word.fraction - at).text}")
+        else:
+            self.text(f"{target} = np.float64({value.text}) * {float(2.0**-at)!r}")
+
+    # memory
+
+    def print_delay(self, index: int, node: Delay) -> None:
+        bound = self.program.numbers[index].bound
+        if node.n == 1:
+            self.assign(index, Value(f"s{index}", bound))
+        else:
+            self.assign(index, Value(f"S[{self.program.state_offsets[index]} + p{index}, c]", bound))
+
+    def store(self) -> None:
+        single, rings = lines(self.program)
+        for index in single:
+            self.text(f"s{index} = {self.values[self.nodes[index].reads[0]].text}")
+        for index in rings:
+            place = f"S[{self.program.state_offsets[index]} + p{index}, c]"
+            self.text(f"{place} = {self.values[self.nodes[index].reads[0]].text}")
+
+    # sums
+
+    def print_sum(self, index: int, arithmetic: SumArithmetic) -> None:
+        accumulator = arithmetic.accumulator
+        word = accumulator.word
+        if word is None:
+            terms = [(t.sign, self.term(t, accumulator.fraction, self.values)) for t in arithmetic.terms]
+            self.assign(index, self.added(terms))
+            return
+        shadow = self.variant.metered
+        if shadow:
+            exact = self.assign(index, self.added([
+                (t.sign, self.term(t, accumulator.fraction, self.exact)) for t in arithmetic.terms]), prefix="e")
+            self.exact[index] = exact
+        if accumulator.overflow == "saturate":
+            self.print_saturating_sum(index, arithmetic)
+        elif shadow and not any(t.source in self.exact for t in arithmetic.terms):
+            self.assign(index, Value(overflowed_text(self.exact[index], word, "wrap"), -word.low))
+        else:
+            terms = [(t.sign, self.modular(self.term(t, accumulator.fraction, self.values))) for t in arithmetic.terms]
+            total = Value(f"w{index}", 0)
+            self.text(f"w{index} = {joined(terms)}")
+            self.assign(index, Value(overflowed_text(total, word, "wrap"), -word.low))
+        if shadow and arithmetic.counted:
+            self.count_overflow(index)
+
+    def count_overflow(self, index: int) -> None:
+        exact, value = self.exact[index], self.values[index]
+        if exact.is_wide or value.is_wide:
+            text = f"differs({exact.wide().text}, {value.wide().text})"
+        else:
+            text = f"np.int64({exact.text} != {value.text})"
+        self.count(self.meters[index], text)
+
+    def count(self, meter: int, text: str) -> None:
+        self.text(f"h = {text}")
+        self.text(f"m{meter} += h")
+        self.text("o |= h")
+
+    @staticmethod
+    def modular(value: Value) -> Value:
+        """A term of a sum that wraps at 64 bits or fewer: only its low 64 bits count."""
+        return Value(f"narrow({value.text})", 0, is_wide=False) if value.is_wide else Value(value.text, 0)
+
+    @staticmethod
+    def added(terms: list[tuple[int, Value]]) -> Value:
+        sign, total = terms[0]
+        if sign < 0:
+            total = Value("np.int64(0)", 0).plus(-1, total)
+        for sign, term in terms[1:]:
+            total = total.plus(sign, term)
+        return total
+
+    def print_saturating_sum(self, index: int, arithmetic: SumArithmetic) -> None:
+        word = arithmetic.accumulator.word
+        assert word is not None, "saturation has a word"
+        total = Value("np.int64(0)", 0)
+        for k, term in enumerate(arithmetic.terms):
+            value = self.term(term, arithmetic.accumulator.fraction, self.values)
+            self.text(f"u{index}_{k} = {value.text}")
+            named = Value(f"u{index}_{k}", value.bound, is_wide=value.is_wide)
+            limited = Value(overflowed_text(named, word, "saturate"), -word.low)
+            running = total.plus(term.sign, limited)
+            self.text(f"w{index}_{k} = {running.text}")
+            running = Value(f"w{index}_{k}", running.bound, is_wide=running.is_wide)
+            self.text(f"a{index}_{k} = {overflowed_text(running, word, 'saturate')}")
+            total = Value(f"a{index}_{k}", -word.low)
+        self.assign(index, total)
+
+    def term(self, term: TermArithmetic, fraction: int, values: dict[int, Value]) -> Value:
+        """A term in the accumulator's fraction; `values` may hold shadows, else the node's own value is read."""
+        value = values.get(term.source, self.values[term.source])
+        at = self.program.numbers[term.source].fraction
+        if term.keep is not None and term.keep < at:
+            value, at = rounded_text(value, at - term.keep, term.rounding), term.keep
+        value = value.left(max(0, term.shift))
+        return value.floored(at + max(0, -term.shift) - fraction)
+
+    # registers
+
+    def has_residue(self, index: int) -> bool:
+        arithmetic = self.program.arithmetic[index]
+        return isinstance(arithmetic, RoundArithmetic) and arithmetic.drop > 0
+
+    def print_round(self, index: int, node: Round, arithmetic: RoundArithmetic) -> None:
+        source = self.values[node.source]
+        code = self.rounded(f"{index}", source, arithmetic.quantizer, arithmetic.drop, arithmetic.ordinal)
+        asked = index in self.traced or any(isinstance(self.nodes[r], Residue) for r in self.program.diagram.readers[index])
+        if asked and arithmetic.drop > 0:
+            assert arithmetic.drop < 62, "a residue of more than 62 bits"
+            before, after = self.modular(source), self.modular(code)
+            self.text(f"r{index} = {before.text} - ({after.text} << {arithmetic.drop})")
+        if self.variant.traced and index in self.traced:
+            self.text(f"R[n, c, {self.traced[index]}] = np.float64(r{index}) * {2.0**-arithmetic.drop!r}")
+        self.overflow(index, code, arithmetic.quantizer, self.meters[index])
+
+    def rounded(self, name: str, source: Value, quantizer: Quantizer, drop: int, ordinal: int | None) -> Value:
+        """A variable with the rounded code, dithered where the quantizer says so."""
+        if quantizer.dither and ordinal is not None:
+            self.print_dither(name, str(ordinal - 1), drop)
+            source = source.plus(1, Value(f"d{name}", 1 << drop))
+            self.text(f"x{name} = {source.text}")
+            source = Value(f"x{name}", source.bound, is_wide=source.is_wide)
+        code = rounded_text(source, drop, quantizer.rounding)
+        self.text(f"q{name} = {code.text}")
+        return Value(f"q{name}", code.bound, is_wide=code.is_wide)
+
+    def print_dither(self, name: str, place: str, drop: int) -> None:
+        """d{name}: the triangular dither of a rounding that drops so many bits; `place` is its row of keys."""
+        assert drop < 64, "dither of 64 dropped bits or more"
+        first, second = (f"np.int64(dither_word(K[{place}, c], {step}) >> np.uint64({64 - drop}))"
+                         for step in ("t", "t + np.uint64(1)"))
+        self.text(f"d{name} = {first} - {second}")
+
+    def overflow(self, index: int, code: Value, quantizer: Quantizer, meter: int, name: str | None = None) -> Value:
+        """The code brought into its word, counted where it did not fit."""
+        target = name or f"v{index}"
+        self.text(f"{target} = {overflowed_text(code, quantizer.word, quantizer.overflow)}")
+        value = Value(target, -quantizer.word.low)
+        if self.variant.metered:
+            differs = f"differs({code.text}, wide({target}))" if code.is_wide else f"np.int64({code.text} != {target})"
+            self.count(meter, differs)
+        if name is None:
+            self.values[index] = value
+        return value
+
+
+def joined(terms: list[tuple[int, Value]]) -> str:
+    """Signed 64-bit terms as one expression, added left to right modulo 2^64."""
+    sign, first = terms[0]
+    text = first.text if sign > 0 else f"(0 - {first.text})"
+    for sign, term in terms[1:]:
+        text = f"({text} {'+' if sign > 0 else '-'} {term.text})"
+    return text

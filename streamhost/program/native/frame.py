@@ -1,0 +1,135 @@
+"""The frame around a generated kernel: signature, arrays, the two loops, states in local variables.
+
+A kernel works on one block of `frames` x `channels` in place of its arrays, checks nothing and allocates nothing.
+`frame0` is the number of frames since reset; lines longer than one word are rings that turn with it.
+"""
+
+import hashlib
+from dataclasses import dataclass
+from functools import cache
+from pathlib import Path
+
+from streamhost.diagram.nodes import Delay, Taps
+from streamhost.program.native.text import Text
+from streamhost.program.program import Program
+
+ARGUMENTS = ("x_", "y_", "state_", "coefficients_", "keys_", "meters_", "marks_", "trace_", "frames", "channels", "frame0")
+
+
+@dataclass(frozen=True)
+class Variant:
+    """Which kernel of a program: integer codes at its doors, meters, a trace of every rounding's residue."""
+
+    codes: bool = False
+    metered: bool = False
+    traced: bool = False
+
+
+def header(text: Text, program: Program, variant: Variant, imports: str, dtype: str, title: str) -> None:
+    """Everything before the loop over channels."""
+    outputs, sources = len(program.diagram.outputs), max(1, trace_width(program))
+    door = "int64" if variant.codes else "float64"
+    text(f'"""{title}"""')
+    text()
+    text(f"# machine operations {intrinsics_hash()}")
+    text("import numpy as np")
+    text("from numba import carray, cfunc, types")
+    text()
+    if imports:
+        text(imports)
+        text()
+    text("SIGNATURE = types.void(*([types.voidptr] * 8), types.int64, types.int64, types.int64)")
+    text()
+    text()
+    text('@cfunc(SIGNATURE, cache=CACHE, error_model="numpy")')
+    text(f"def kernel({', '.join(ARGUMENTS)}):")
+    text.depth = 1
+    text(f"x = carray(x_, (frames, channels), np.{door})")
+    text(f"y = carray(y_, (frames, {outputs} * channels), np.{door})")
+    text(f"S = carray(state_, ({max(1, program.state_words)}, channels), np.{dtype})")
+    text(f"C = carray(coefficients_, ({max(1, len(program.diagram.slots))}, channels), np.{dtype})")
+    if has_dither(program):
+        text(f"K = carray(keys_, ({program.ordinals}, channels), np.uint64)")
+    if variant.metered:
+        text(f"M = carray(meters_, ({1 + meter_count(program)},), np.int64)")
+        text("F = carray(marks_, (frames, channels), np.uint8)")
+    if variant.traced:
+        text(f"R = carray(trace_, (frames, channels, {sources}), np.float64)")
+
+
+@cache
+def intrinsics_hash() -> str:
+    """Of the file that generated kernels import from: a change there makes other kernels."""
+    source = Path(__file__).with_name("intrinsics.py").read_bytes()
+    return hashlib.sha256(source).hexdigest()[:16]
+
+
+def trace_width(program: Program) -> int:
+    """Roundings whose residues a traced kernel writes down."""
+    from streamhost.program.sources import traced_roundings
+
+    return len(traced_roundings(program))
+
+
+def meter_count(program: Program) -> int:
+    """One counter a rounding and one a counted sum, after the counter of NaN samples."""
+    return len(program.roundings) + len(program.counted_sums) + sum(1 for n in program.nodes if isinstance(n, Taps))
+
+
+def has_dither(program: Program) -> bool:
+    return program.ordinals > 0 and any(quantizer.dither for quantizer in program.quantizers)
+
+
+def lines(program: Program) -> tuple[list[int], list[int]]:
+    """(single delays, held in local variables; longer lines and tapped lines, which are rings)."""
+    single: list[int] = []
+    rings: list[int] = []
+    for index, node in enumerate(program.nodes):
+        if isinstance(node, Delay | Taps) and node.stores:
+            (single if isinstance(node, Delay) and node.n == 1 else rings).append(index)
+    return single, rings
+
+
+def open_loops(text: Text, program: Program, variant: Variant, load: str) -> None:
+    """From the loop over channels to the start of a frame; `load` wraps a loaded state or coefficient."""
+    single, rings = lines(program)
+    text("for c in range(channels):")
+    text.depth += 1
+    tapped = {slot for node in program.nodes if isinstance(node, Taps) for slot in node.coefficients}
+    for slot, entry in enumerate(program.diagram.slots):
+        if slot not in tapped:
+            text(f"k{slot} = {load.format(f'C[{slot}, c]')}  # {entry.label}")
+    for index in single:
+        text(f"s{index} = {load_state(program, index, load)}  # {program.nodes[index].label}")
+    for index in rings:
+        text(f"p{index} = frame0 % {program.nodes[index].stores}")
+    if variant.metered:
+        for k in range(1 + meter_count(program)):
+            text(f"m{k} = np.int64(0)")
+    text("for n in range(frames):")
+    text.depth += 1
+
+
+def load_state(program: Program, index: int, load: str) -> str:
+    """A state as a local variable of its own type."""
+    offset = program.state_offsets[index]
+    if program.types:
+        return f"np.{program.types[index]}(S[{offset}, c])"
+    return load.format(f"S[{offset}, c]")
+
+
+def close_loops(text: Text, program: Program, variant: Variant) -> None:
+    """Rings turned at the end of a frame; states and meters stored at the end of a channel."""
+    single, rings = lines(program)
+    for index in rings:
+        text(f"p{index} += 1")
+        text(f"if p{index} == {program.nodes[index].stores}:")
+        with text.indented():
+            text(f"p{index} = 0")
+    text.depth -= 1
+    for index in single:
+        text(f"S[{program.state_offsets[index]}, c] = s{index}")
+    if variant.metered:
+        for k in range(1 + meter_count(program)):
+            text(f"M[{k}] += m{k}")
+    text.depth -= 2

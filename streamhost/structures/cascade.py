@@ -1,0 +1,77 @@
+"""A cascade of sections of first and second order: kept as given, or paired, ordered and scaled."""
+
+from streamhost.errors import StructureError
+from streamhost.filters import Filter, Polynomials
+from streamhost.structures.division import Division, all_trimmed
+from streamhost.structures.form import Form
+from streamhost.structures.ordering import arranged
+from streamhost.structures.pairing import nearest_pairs
+from streamhost.structures.scaling import by_norms, rescaled, spread
+
+# Beyond this the roots of one polynomial take minutes.
+MOST_ORDER = 128
+
+
+def divide(filter: Filter, form: Form, pairing: str | None, ordering: str | None, scaling: str | None) -> Division:
+    """The sections of a filter, the names known and checked.
+
+    A filter given as sections keeps what is not stated: its sections as they are, or, with an ordering stated, the same
+    sections in another order, or, with a scaling stated, the same sections with other gains. Only a stated pairing
+    `nearest` takes them apart. Other filters are paired `nearest`, ordered `outward` and scaled `none` unless stated.
+
+    StructureError where the filter cannot be divided like that.
+    """
+    if filter.codes is not None:
+        _check_codes(filter.codes.word, pairing, ordering, scaling)
+    pairing = pairing or ("given" if filter.sections_given else "nearest")
+    if pairing == "given":
+        return _kept(filter, form, ordering or "given", scaling or "none")
+    return _paired(filter, form, ordering or "outward", scaling or "none")
+
+
+def _kept(filter: Filter, form: Form, ordering: str, scaling: str) -> Division:
+    if not filter.sections_given:
+        raise StructureError(
+            f'pairing "given" keeps the sections that a filter is given as, and this one, of order {filter.order}, was '
+            'not given as sections of first and second order. Allowed for it is "nearest".'
+        )
+    kept = arranged(all_trimmed(filter.sections()), ordering)
+    sections, front = rescaled(kept, scaling, form.begins_with)
+    return Division(sections, front, "given", ordering, scaling)
+
+
+def _paired(filter: Filter, form: Form, ordering: str, scaling: str) -> Division:
+    if ordering == "given":
+        raise StructureError(
+            'ordering "given" keeps the order that sections were given in, and pairing "nearest" makes new ones. '
+            'Allowed with it are "outward" and "inward".'
+        )
+    _check_order(filter)
+    solved = filter.zeros_poles()
+    outward = tuple(reversed(nearest_pairs(solved)))
+    monic = all_trimmed(outward if ordering == "outward" else reversed(outward))
+    if scaling == "none":
+        return Division(spread(monic, solved.gain), None, "nearest", ordering, scaling)
+    sections, front = by_norms(monic, solved.gain, form.begins_with)
+    return Division(sections, front, "nearest", ordering, scaling)
+
+
+def _check_codes(word: str, pairing: str | None, ordering: str | None, scaling: str | None) -> None:
+    rules = (("pairing", pairing, "given"), ("ordering", ordering, "given"), ("scaling", scaling, "none"))
+    for what, stated, allowed in rules:
+        if stated not in (None, allowed):
+            raise StructureError(
+                f'{what} "{stated}" changes the sections of a filter, and this one is given as codes of {word}, which '
+                f'are kept as they are. Allowed for it is "{allowed}".'
+            )
+
+
+def _check_order(filter: Filter) -> None:
+    for factor in filter.factors:
+        if isinstance(factor, Polynomials) and max(len(factor.b), len(factor.a)) > MOST_ORDER + 1:
+            order = max(len(factor.b), len(factor.a)) - 1
+            raise StructureError(
+                f"a cascade needs the roots of the filter, which is given as polynomials of order {order}; up to "
+                f'{MOST_ORDER} can be solved. Draw it with decomposition "whole", or give it as sections or as zeros '
+                "and poles."
+            )

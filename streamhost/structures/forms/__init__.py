@@ -1,0 +1,20 @@
+"""The forms that can be chosen, one file each."""
+
+from streamhost.structures.choices import check
+from streamhost.structures.form import Form
+from streamhost.structures.forms import direct_1, direct_1_swapped, direct_2, transposed_1, transposed_2
+
+FORMS = {
+    module.FORM.name: module.FORM for module in (direct_1, direct_1_swapped, direct_2, transposed_1, transposed_2)
+}
+
+
+def forms() -> tuple[str, ...]:
+    """The names of all forms."""
+    return tuple(FORMS)
+
+
+def form(name: str) -> Form:
+    """The form of that name; StructureError, with the nearest name, where there is none."""
+    check("form", name, FORMS)
+    return FORMS[name]

@@ -1,0 +1,61 @@
+"""direct-1: the difference equation as it is written.
+
+    y[n] = b0 x[n] + b1 x[n-1] + ... + bM x[n-M] - a1 y[n-1] - ... - aN y[n-N]
+
+drawn for a second-order section:
+
+    x ---+---b0--->(+)-----------+---> y
+         |          ^            |
+       z^-1         |          z^-1
+         |          |            |
+         +---b1--->(+)<--- -a1 --+
+         |          ^            |
+       z^-1         |          z^-1
+         |          |            |
+         +---b2--->(+)<--- -a2 --+
+
+The one sum is added row by row from the last delay up, b before a: b2 x2 - a2 y2 + b1 x1 - a1 y1 + b0 x.
+
+Source: Oppenheim & Schafer, Discrete-Time Signal Processing, ch. 6, direct form I.
+
+Counts: M + N + 1 multiplications, M + N additions, M + N words of memory; a second-order section 5, 4, 4. In fixed
+point one rounding a section.
+
+Good at: fixed point with a long accumulator. There is one rounding, and no inner node that is larger than input and
+output: in two's complement the running sum may wrap as long as the final sum fits. The delays hold past input and
+output and nothing else, so new coefficients of equal gain at 0 Hz disturb no constant signal.
+
+Fails: poles near z = 1. The rounding passes through 1 / A, which is large there (low frequencies at a high rate); a
+longer state or error feedback helps. It needs the most memory. Drawn whole at a high order, the slightest change of a
+coefficient moves the poles far: divide such a filter into a cascade.
+
+Carries: any numerator and denominator of any length, as a section or whole. Trailing zeros are left out.
+"""
+
+from streamhost.diagram.builder import Ref, Signed
+from streamhost.structures.form import Draft, Form
+
+
+def build_section(draft: Draft, x: Ref) -> Ref:
+    b, a = draft.section.b, draft.section.a
+    xs = (x, *draft.line("x", len(b) - 1, x))
+    ys = draft.line("y", len(a) - 1)
+    terms: list[Ref | Signed] = []
+    for k in reversed(range(max(len(b), len(a)))):
+        if k < len(b):
+            terms.append(draft.b(k, xs[k]))
+        if 1 <= k < len(a):
+            terms.append(draft.a(k, ys[k - 1]))
+    y = draft.add("y", terms)
+    if ys:
+        ys[0].takes(y)
+    return y
+
+
+FORM = Form(
+    name="direct-1",
+    summary="the difference equation as written: one sum, past input and past output kept",
+    begins_with="numerator",
+    build_section=build_section,
+    docs=__doc__,
+)

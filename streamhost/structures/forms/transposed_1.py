@@ -1,0 +1,61 @@
+"""transposed-1: direct-1 with every arrow turned round.
+
+    v[n]  = x[n] + s1[n-1]
+    sk[n] = -ak v[n] + s(k+1)[n-1],   k = 1 ... N, no s beyond sN
+    y[n]  = b0 v[n] + t1[n-1]
+    tk[n] = bk v[n] + t(k+1)[n-1],    k = 1 ... M, no t beyond tM
+
+drawn for a second-order section:
+
+    x --->(+)------------v---+---b0--->(+)---> y
+           ^                 |          ^
+          z^-1               |         z^-1
+           |                 |          |
+       s1 (+)<---- -a1 ------+---b1--->(+) t1
+           ^                 |          ^
+          z^-1               |         z^-1
+           |                 |          |
+       s2  +------ -a2 ------+---b2-----+  t2
+
+Nodes are evaluated in the order v, s1, s2, ..., y, t1, t2, ...; each sum as it is written above. The delay of sk is
+labelled dsk, that of tk dtk.
+
+Source: Oppenheim & Schafer, Discrete-Time Signal Processing, ch. 6, transposition of direct form I.
+
+Counts: M + N + 1 multiplications, M + N additions, M + N words of memory; a second-order section 5, 4, 4. In fixed
+point five roundings a section (s1, s2, t1, t2 and y); v is an exact sum of what is stored.
+
+Good at: comparison with transposed-2. The zeros work on v with a delay line of their own, so no product of one half
+waits for the other.
+
+Fails: v is the input through 1 / A, as w is in direct-2, and clips as it does: scale it (scaling l2) or give it more
+integer bits. The most roundings and the most memory of the five.
+
+Carries: any numerator and denominator of any length, as a section or whole. Without recursion v is x itself.
+"""
+
+from streamhost.diagram.builder import Ref, Signed
+from streamhost.structures.form import Draft, Form
+
+
+def build_section(draft: Draft, x: Ref) -> Ref:
+    b, a = draft.section.b, draft.section.a
+    ds = draft.separate("ds", len(a) - 1)
+    dt = draft.separate("dt", len(b) - 1)
+    v = draft.add("v", [x, *ds[:1]])
+    for k in range(1, len(a)):
+        s: list[Ref | Signed] = [draft.a(k, v), *ds[k : k + 1]]
+        ds[k - 1].takes(draft.add(f"s{k}", s))
+    y = draft.add("y", [draft.b(0, v), *dt[:1]])
+    for k in range(1, len(b)):
+        dt[k - 1].takes(draft.add(f"t{k}", [draft.b(k, v), *dt[k : k + 1]]))
+    return y
+
+
+FORM = Form(
+    name="transposed-1",
+    summary="direct-1 with every arrow turned round: sums are stored instead of signals",
+    begins_with="recursion",
+    build_section=build_section,
+    docs=__doc__,
+)

@@ -1,0 +1,17 @@
+"""What every test shares: a kernel cache of the tests' own, and laws that are tried on the same examples every time."""
+
+import os
+from pathlib import Path
+
+from hypothesis import settings
+
+ROOT = Path(__file__).resolve().parent.parent
+
+# Kept from run to run, since compiling is most of the tests' time; ignored by git with the rest of pytest's folder.
+# Set before any worker or child process starts, so that all of them share it.
+os.environ.setdefault("STREAMHOST_CACHE", str(ROOT / ".pytest_cache" / "streamhost"))
+
+# No test is timed. `pytest --hypothesis-profile=explore` looks further than the fixed examples.
+settings.register_profile("fixed", deadline=None, derandomize=True, database=None)
+settings.register_profile("explore", deadline=None, max_examples=2000, print_blob=True)
+settings.load_profile("fixed")
