@@ -14,7 +14,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from streamhost.errors import AudioFileError, MachineError
-from streamhost.files import AudioInfo, probe, read_all, read_blocks
+from streamhost.files import AudioInfo, probe, probing, read_all, read_blocks
 
 
 def noise_file(path: Path, container: str, subtype: str, frames: int = 20000, channels: int = 2) -> None:
@@ -203,6 +203,27 @@ def test_a_chunk_before_the_audio_is_walked_over_and_one_behind_it_is_no_audio(t
     odd = struct.pack("<4sI", b"note", 5) + b"12345\0"
     (tmp_path / "notes.wav").write_bytes(whole[:12] + odd + whole[12:] + odd)
     assert read_all(tmp_path / "notes.wav")[0][:, 0].tolist() == [1 / 2**15, 2 / 2**15, 3 / 2**15]
+
+
+def test_a_wav_of_the_other_byte_order_is_read_and_its_truncation_seen(tmp_path: Path) -> None:
+    path = tmp_path / "big.wav"
+    soundfile.write(path, np.array([[0.5], [-0.25]]), 48000, subtype="PCM_16", endian="BIG")
+    whole = path.read_bytes()
+    assert whole[:4] == b"RIFX"
+    assert read_all(path)[0].tolist() == [[0.5], [-0.25]]
+    path.write_bytes(whole[:-1])
+    with pytest.raises(AudioFileError, match="promises 2 frames, 1 can be read"):
+        probe(path)
+
+
+def test_a_file_whose_audio_only_the_library_finds_is_refused(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    # No such file is known to us; one may come with another version of the library.
+    monkeypatch.setattr(probing, "find_audio", lambda path: None)
+    (tmp_path / "strange.wav").write_bytes(wav_bytes([1, 2, 3], 16))
+    with pytest.raises(AudioFileError, match="does not lead to its audio"):
+        probe(tmp_path / "strange.wav")
+    noise_file(tmp_path / "usual.flac", "FLAC", "PCM_16", frames=10)  # which is decoded to its end instead
+    assert probe(tmp_path / "usual.flac").frames == 10
 
 
 def test_agrees_with_the_standard_library_on_a_stereo_file(tmp_path: Path) -> None:

@@ -77,6 +77,12 @@ def _slope(descending):
     return [(degree - i) * value for i, value in enumerate(descending[:-1])]
 
 
+@pytest.mark.parametrize("sign", [1, -1])
+def test_a_small_root_beside_a_huge_one_does_not_cancel(sign):
+    """The roots add to -2^200 and multiply to 1: they are 2^200 and 2^-200 in magnitude, to 2^-400."""
+    assert roots((1.0, sign * 2.0**200, 1.0)) == (-sign * 2.0**200, -sign * 2.0**-200)
+
+
 def test_an_eightfold_root_is_found_eightfold():
     binomial = (1.0, 8.0, 28.0, 56.0, 70.0, 56.0, 28.0, 8.0, 1.0)
     assert roots(binomial) == (-1 + 0j,) * 8

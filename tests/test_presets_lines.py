@@ -122,7 +122,9 @@ PIECES = [
     "a = 1\n", "b.c = 2\n", "d = [1, [2,\n 3], { e = 4 }]\n", "\\", '"', "\r\n", "é", "\x00",
 ]
 KEYS = ["k", "l", "m.n", "m.o", '"q.k"', "'r' . s", "u.v.w"]
-VALUES = ["1", "'x'", '"""m\nn"""', "[1, [2,\n 3],\n]", "{ a = 1, b.c = [2, 3] }", "[{ d = 1 }, # note\n { e = [] }]", "{}"]
+VALUES = [
+    "1", "'x'", '"""m\nn"""', "[1, [2,\n 3],\n]", "{ a = 1, b.c = [2, 3] }", "[{ d = 1 }, # note\n { e = [] }]", "{}",
+]
 statements = st.one_of(
     st.builds("{} = {}\n".format, st.sampled_from(KEYS), st.sampled_from(VALUES)),
     st.sampled_from(["[[t]]\n", "[t.below]\n", "[[t.beside]]\n", "[x]\n", "[ y . z ]\n", "# k = 1\n", "\r\n"]),

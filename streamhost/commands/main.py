@@ -1,10 +1,12 @@
 """The command line, a thin skin: a table of commands that are imported when they are called for."""
 
 import errno
+import io
 import os
 import sys
 import traceback
 from collections.abc import Callable, Sequence
+from contextlib import suppress
 from dataclasses import dataclass
 from importlib import import_module
 
@@ -106,8 +108,8 @@ def main(arguments: Sequence[str] | None = None) -> int:
 
 
 def _run(arguments: list[str]) -> int:
-    _complete_for_shell()
     try:
+        _complete_for_shell()
         with streamhost.make_context("streamhost", arguments) as ctx:
             status = streamhost.invoke(ctx)
     except click.exceptions.Exit as end:
@@ -154,7 +156,8 @@ def _tell(paragraph: str, status: int) -> int:
 
 def _abandon_stdout() -> None:
     """What is still buffered goes nowhere, so that the interpreter does not stumble over it on its way out."""
-    os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+    with suppress(io.UnsupportedOperation):
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
 
 
 def _complete_for_shell() -> None:

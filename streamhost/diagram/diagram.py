@@ -56,7 +56,7 @@ class Diagram:
 
     @property
     def channels(self) -> int:
-        return self.values.shape[1]
+        return int(self.values.shape[1])
 
     @cached_property
     def inputs(self) -> tuple[int, ...]:

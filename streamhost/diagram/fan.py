@@ -19,8 +19,8 @@ FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
 BoolArray = NDArray[np.bool_]
 
-MOST_DENSE = 400
-"""States above which a frame is stepped along the nonzero entries rather than multiplied in blocks."""
+MOST_DENSE = 200
+"""States above which a frame is stepped along the nonzero entries, and no matrix is multiplied or factored."""
 
 GROWTH = 1e-7
 """A pole further outside the unit circle than this grows; nearer, its own rounding could have put it there."""
@@ -66,9 +66,12 @@ class Fan:
 
     @cached_property
     def _loops(self) -> list[tuple[list[int], ComplexArray]]:
-        """Each loop of states with its poles; taken apart, sections in cascade do not blur each other's."""
+        """Each loop of states with its poles; taken apart, sections in cascade do not blur each other's.
+
+        Loops of more than MOST_DENSE states are left out.
+        """
         return [(loop, np.linalg.eigvals(self.A[np.ix_(loop, loop)]).astype(np.complex128))
-                for loop in loops(_edges(self.A))]
+                for loop in loops(_edges(self.A)) if len(loop) <= MOST_DENSE]
 
 
 def from_input(diagram: Diagram, channel: int = 0, *, input: int = 0, nodes: Sequence[int] | None = None) -> Fan:

@@ -10,7 +10,7 @@ from dataclasses import dataclass
 from math import inf
 
 import numpy as np
-from numpy.typing import ArrayLike
+from numpy.typing import ArrayLike, NDArray
 
 from streamhost.diagram import fan as fans
 from streamhost.diagram.course import Course, follow, settling, slowed, tail_energy
@@ -71,18 +71,24 @@ def noise_gains(diagram: Diagram, sources: Sequence[int], channel: int = 0, *, o
     return follow(fans.to_output(diagram, sources, channel, output=output)).energy
 
 
-def power_response(diagram: Diagram, sources: Sequence[int], frequencies: ArrayLike, channel: int = 0, *,
-                   output: int = 0) -> FloatArray:
-    """|G|^2 from errors at the source nodes to an output, (frequencies, sources), at radians a frame.
+def response_to_output(diagram: Diagram, sources: Sequence[int], frequencies: ArrayLike, channel: int = 0, *,
+                       output: int = 0) -> NDArray[np.complex128]:
+    """G from errors at the source nodes to an output, (frequencies, sources), at radians a frame.
 
-    Infinite at every frequency for a source whose error does not die out: it has no stationary spectrum.
+    Infinite at every frequency for a source whose error does not die out: it has no stationary response.
     """
     w = np.atleast_1d(np.asarray(frequencies, dtype=np.float64))
     course = follow(fans.to_output(diagram, sources, channel, output=output))
-    power = np.full((len(w), len(sources)), inf)
+    response = np.full((len(w), len(sources)), inf, dtype=np.complex128)
     for exits, spectrum in _spectra(course):
-        power[:, exits] = np.abs(spectrum.at(w)) ** 2
-    return power
+        response[:, exits] = spectrum.at(w)
+    return response
+
+
+def power_response(diagram: Diagram, sources: Sequence[int], frequencies: ArrayLike, channel: int = 0, *,
+                   output: int = 0) -> FloatArray:
+    """|G|^2 from errors at the source nodes to an output, (frequencies, sources), at radians a frame."""
+    return np.abs(response_to_output(diagram, sources, frequencies, channel, output=output)) ** 2
 
 
 def settling_frames(diagram: Diagram, channel: int = 0, *, input: int = 0, nodes: Sequence[int] | None = None) -> float:
@@ -144,11 +150,16 @@ def _tail_bound(fan: Fan, state: FloatArray) -> FloatArray:
     return bound
 
 
+def _without_silence(h: FloatArray) -> FloatArray:
+    """Responses up to the last frame in which one is not 0, and at least one frame."""
+    return h[:max(np.flatnonzero(h.any(axis=1)).max(initial=0) + 1, 1)]
+
+
 def _spectra(course: Course) -> list[tuple[BoolArray, Spectrum]]:
     """The exits that have a spectrum, by how it is computed."""
     found: list[tuple[BoolArray, Spectrum]] = []
     if course.ended.any():
-        found.append((course.ended, FiniteSpectrum(course.head[:, course.ended])))
+        found.append((course.ended, FiniteSpectrum(_without_silence(course.head[:, course.ended]))))
     if course.lively.any():
         fan = course.fan.watched(course.lively)
         if len(fan.entry) > MOST_SOLVED:

@@ -65,8 +65,17 @@ class ResonantSpectrum:
             distance = max(abs(1.0 - abs(pole)), MARGINAL)
             offsets = distance * 2.0 ** np.arange(-2.0, 3.0 - np.log2(distance))
             points.append(abs(np.angle(pole)) + np.concatenate((-offsets, [0.0], offsets)))
-        w = np.unique(np.clip(np.concatenate(points), 0.0, np.pi))
+        w = self._thinned(np.unique(np.clip(np.concatenate(points), 0.0, np.pi)))
         return w, np.abs(self.at(w))
+
+    def _thinned(self, w: FloatArray) -> FloatArray:
+        """Without points so near to another that only rounding tells their magnitudes apart."""
+        apart = np.abs(np.exp(1j * w)[:, None] - self.fan.poles).min(axis=1) / 20.0
+        kept = [0]
+        for i in range(1, len(w)):
+            if w[i] - w[kept[-1]] >= max(apart[i], MARGINAL / 20.0):
+                kept.append(i)
+        return w[kept]
 
     def at(self, w: FloatArray) -> ComplexArray:
         return self._states(w) @ self.fan.exits.T + self.fan.direct
@@ -86,7 +95,7 @@ class ResonantSpectrum:
                                for part in parts])
 
     def _beside_poles(self, w: FloatArray) -> FloatArray:
-        """Frequencies moved off the poles on the circle: no exit sees those, but the equations have no solution there."""
+        """Frequencies moved off the poles on the circle: not seen, but without a solution there."""
         for pole in self.fan.poles:
             if abs(abs(pole) - 1.0) < MARGINAL:
                 angle = abs(np.angle(pole))
@@ -103,7 +112,7 @@ def peaks(spectrum: Spectrum) -> FloatArray:
     local = (magnitudes >= padded[:-2]) & (magnitudes >= padded[2:])
     highest = np.argsort(np.where(local, magnitudes, -1.0), axis=0)[-CANDIDATES:].T
     low, high = w[np.maximum(highest - 1, 0)], w[np.minimum(highest + 1, len(w) - 1)]
-    best = magnitudes.max(axis=0)
+    best: FloatArray = magnitudes.max(axis=0)
     for _ in range(ZOOMS):
         points = low[..., None] + (high - low)[..., None] * np.linspace(0.0, 1.0, ZOOM_POINTS)
         values = np.abs(spectrum.each(points.reshape(len(points), -1))).reshape(points.shape)
@@ -114,5 +123,6 @@ def peaks(spectrum: Spectrum) -> FloatArray:
 
 
 def _pick(points: FloatArray, index: NDArray[np.intp]) -> FloatArray:
-    picked: FloatArray = np.take_along_axis(points, index[..., None], axis=2)[..., 0]
+    exits, candidates = np.indices(index.shape)
+    picked: FloatArray = points[exits, candidates, index]
     return picked

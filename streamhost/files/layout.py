@@ -36,8 +36,8 @@ def find_audio(path: Path) -> AudioData | None:
         size = stream.seek(0, 2)
         stream.seek(0)
         head = stream.read(40)
-        if head[:4] == b"RIFF" and head[8:12] == b"WAVE":
-            return _riff(stream, size)
+        if head[:4] in (b"RIFF", b"RIFX") and head[8:12] == b"WAVE":
+            return _riff(stream, size, "<" if head[:4] == b"RIFF" else ">")
         if head[:4] == b"RF64" and head[8:12] == b"WAVE":
             return _rf64(stream, size)
         if head[:4] == b"FORM" and head[8:12] in (b"AIFF", b"AIFC"):
@@ -60,8 +60,8 @@ def chunks(stream: BinaryIO, order: str = "<") -> Iterator[tuple[bytes, int, int
         place += 8 + size + size % 2
 
 
-def _riff(stream: BinaryIO, file_size: int) -> AudioData | None:
-    for name, start, size in chunks(stream):
+def _riff(stream: BinaryIO, file_size: int, order: str) -> AudioData | None:
+    for name, start, size in chunks(stream, order):
         if name == b"data":
             unknown = size == RIFF_LIMIT - 1  # written to a pipe: the audio runs to the end of the file
             return AudioData(start, file_size - start if unknown else size, file_size)

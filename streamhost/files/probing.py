@@ -128,6 +128,11 @@ def _check_whole(info: AudioInfo, size: int, last_frame: bool) -> None:
             "cannot be true. Write it again as RF64, W64 or FLAC."
         )
     data = find_audio(info.path)
+    if data is None and info.container != "FLAC":
+        raise AudioFileError(
+            f"{info.path}: the way through this file's chunks does not lead to its audio, so whether it is whole "
+            "cannot be known. Write it again with another program."
+        )
     if data is not None and data.present < data.promised:
         frame = info.channels * BYTES_PER_SAMPLE[info.subtype]
         raise truncated(info.path, data.present // frame, data.promised // frame)

@@ -123,12 +123,12 @@ class AudioWriter:
     def _encode(self, block: npt.NDArray[np.float64]) -> tuple[npt.NDArray[Any], int]:
         if self.subtype == "float":
             with np.errstate(over="ignore"):
-                single = np.ascontiguousarray(block, dtype=np.float32)
+                single = block.astype(np.float32)
             check_finite(single, self.frames, self.path)
             return single, 0
         bits = _BITS[self.subtype]
         codes, clipped = quantize(block, bits)
-        return np.ascontiguousarray(codes << (32 - bits)), clipped
+        return codes << (32 - bits), clipped
 
     def _check_capacity(self) -> None:
         channels, rate = _MOST_CHANNELS[self.container], _HIGHEST_RATE[self.container]
@@ -164,15 +164,15 @@ class AudioWriter:
         problem: Exception | None = None
         try:
             action()
-        except (AssertionError, soundfile.SoundFileError) as error:  # it asserts that all was written
+        except (AssertionError, soundfile.SoundFileError, OSError) as error:  # it asserts that all was written
             problem = error
-        failure = self._sink.failure
+        failure = self._sink.failure or problem
         if isinstance(failure, OSError):
             raise machine_error("write", self.path, failure) from failure
+        if isinstance(failure, (AssertionError, soundfile.SoundFileError)):
+            raise MachineError(f"{self.path}: cannot write this file: {failure}. Check that disk.") from failure
         if failure is not None:
             raise failure
-        if problem is not None:
-            raise MachineError(f"{self.path}: cannot write this file: {problem}. Check that disk.") from problem
 
     def _close(
         self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
@@ -186,7 +186,7 @@ class AudioWriter:
             self._sound.close()
             raise AudioFileError(f"{self.path}: no frame was written. A file has at least 1.")
         self._run(self._sound.close)
-        clear_peak_time(self._stream)
+        self._run(lambda: clear_peak_time(self._stream))
         self._check_arrived(self._stream)
 
     def _check_arrived(self, stream: FileIO) -> None:

@@ -48,6 +48,7 @@ class Fixed:
     pre_sum: str
     dither_seed: int
     arithmetic: str | None
+    coefficients_stated: bool
 
     def __init__(
         self,
@@ -106,7 +107,8 @@ class Fixed:
             "accumulator": parse_accumulator(collect, given["accumulator"]),
         }
         collect.raise_any()
-        places |= {"feedback": feedback, "pre_sum": pre_sum, "dither_seed": dither_seed, "arithmetic": arithmetic}
+        places |= {"feedback": feedback, "pre_sum": pre_sum, "dither_seed": dither_seed, "arithmetic": arithmetic,
+                   "coefficients_stated": coefficients is not None}
         for field in fields(self):
             object.__setattr__(self, field.name, places[field.name])
 

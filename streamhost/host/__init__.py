@@ -1,0 +1,11 @@
+"""The block engine: lanes that run realizations, driven block by block through one compiled step.
+
+A file drives it in `rendering`. The step allocates nothing, locks nothing and cannot raise, so that a sound card can
+drive the very same machine code, and what is heard is bit for bit what is rendered.
+"""
+
+from streamhost.host.engine import BLOCK, Host
+from streamhost.host.lane import Lane
+from streamhost.host.meters import Meters
+
+__all__ = ["BLOCK", "Host", "Lane", "Meters"]

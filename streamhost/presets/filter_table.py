@@ -8,7 +8,7 @@ from streamhost.errors import FilterError, nearest
 from streamhost.filters import Filter, kinds
 from streamhost.filters.designs import KINDS, design
 from streamhost.presets.lines import Path
-from streamhost.presets.mistakes import Mistakes, listed
+from streamhost.presets.mistakes import Mistakes, listed, one_line
 from streamhost.presets.tables import (
     LATER,
     CodesTable,
@@ -16,8 +16,8 @@ from streamhost.presets.tables import (
     RootsTable,
     SectionsTable,
     Text,
-    read_table,
     read_value,
+    read_whole,
 )
 
 Table = Mapping[str, Any]
@@ -52,7 +52,7 @@ def _read_filter(mistakes: Mistakes, table: Table, path: Path, rate: float | Non
         if key in LATER:
             mistakes.add((*path, key), f"{key} {LATER[key]}")
         elif hint := nearest(key, every):
-            mistakes.add((*path, key), f"{key} is not known.{hint}")
+            mistakes.add((*path, key), f"{one_line(key)} is not known.{hint}")
     return None
 
 
@@ -78,7 +78,7 @@ def _parameters_good(mistakes: Mistakes, kind: str, given: Table, path: Path, ra
         if key in LATER:
             mistakes.add((*path, key), f"{key} {LATER[key]}")
         elif key not in parameters:
-            mistakes.add((*path, key), f'{key} is no parameter of "{kind}", which takes {listed(parameters)}.'
+            mistakes.add((*path, key), f'{one_line(key)} is no parameter of "{kind}", which takes {listed(parameters)}.'
                                        f"{nearest(key, parameters)}")
         elif parameters[key].range.taken(value, rate) is None:
             mistakes.value((*path, key), value, f"is not allowed: {parameters[key].range.allowed(rate)}.")
@@ -97,34 +97,38 @@ def _by_equation(mistakes: Mistakes, table: Table, path: Path, rate: float | Non
 
 
 def _by_coefficients(mistakes: Mistakes, table: Table, path: Path, rate: float | None) -> Filter | None:
-    values = read_table(mistakes, table, path, CoefficientsTable)
-    if len(values) < len(table):
+    values = read_whole(mistakes, table, path, CoefficientsTable)
+    if values is None:
         return None
     b, a = values["b"], values.get("a", (1.0,))
     return _made(mistakes, path, lambda: Filter.from_coefficients(b, a, rate=rate or 1.0))
 
 
 def _by_sections(mistakes: Mistakes, table: Table, path: Path, rate: float | None) -> Filter | None:
-    values = read_table(mistakes, table, path, SectionsTable)
-    if len(values) < len(table):
+    values = read_whole(mistakes, table, path, SectionsTable)
+    if values is None:
         return None
     sections = values["sections"]
     if not isinstance(sections, dict):
         return _made(mistakes, path, lambda: Filter.from_sections(sections, rate=rate or 1.0))
     inside = (*path, "sections")
-    coded = read_table(mistakes, sections, inside, CodesTable)
-    if coded.keys() != {"codes", "word"} or len(sections) > 2:
+    coded = read_whole(mistakes, sections, inside, CodesTable)
+    if coded is None:
         return None
-    return _made(mistakes, inside, lambda: Filter.from_codes(coded["codes"], coded["word"], rate=rate or 1.0))
+    codes, word = coded["codes"], coded["word"]
+    return _made(mistakes, inside, lambda: Filter.from_codes(codes, word, rate=rate or 1.0))
 
 
 def _by_roots(mistakes: Mistakes, table: Table, path: Path, rate: float | None) -> Filter | None:
-    values = read_table(mistakes, table, path, RootsTable)
-    if values.keys() != {"zeros", "poles", "factor"} or len(table) > 3:
+    values = read_whole(mistakes, table, path, RootsTable)
+    if values is None:
         return None
-    zeros, poles = ([complex(*root) if isinstance(root, tuple) else complex(root) for root in values[key]]
-                    for key in ("zeros", "poles"))
-    return _made(mistakes, path, lambda: Filter.from_zeros_poles(zeros, poles, values["factor"], rate=rate or 1.0))
+    zeros, poles, factor = _complex(values["zeros"]), _complex(values["poles"]), values["factor"]
+    return _made(mistakes, path, lambda: Filter.from_zeros_poles(zeros, poles, factor, rate=rate or 1.0))
+
+
+def _complex(roots: list[float | tuple[float, float]]) -> list[complex]:
+    return [complex(*root) if isinstance(root, tuple) else complex(root) for root in roots]
 
 
 def _made(mistakes: Mistakes, path: Path, make: Callable[[], Filter]) -> Filter | None:

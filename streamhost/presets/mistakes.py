@@ -16,11 +16,11 @@ class Mistakes:
 
     name: str
     lines: Lines
-    found: dict[tuple[int, str], None] = field(default_factory=dict)
+    found: list[tuple[int, str]] = field(default_factory=list)
 
     def add(self, path: Path, message: str) -> None:
         """A problem at `path`; the message begins with the name of the key, or says what the file lacks."""
-        self.found.setdefault((self.lines.line(path) or 0, message))
+        self.found.append((self.lines.line(path) or 0, message))
 
     def value(self, path: Path, value: object, message: str) -> None:
         """A problem with the value at `path`: 'key = value' and then the message."""
@@ -31,12 +31,12 @@ class Mistakes:
         names = tuple(allowed)
         key = str(path[-1])
         place = place_text(path[:-1])
-        self.add(path, f"{_one_line(key)} is no key of {place}, which takes {listed(names)}.{nearest(key, names)}")
+        self.add(path, f"{one_line(key)} is no key of {place}, which takes {listed(names)}.{nearest(key, names)}")
 
     def texts(self) -> list[str]:
         """One line for each problem, in the order of the file."""
-        return [f"{self.name}:{line}: {message}" if line else f"{self.name}: {message}"
-                for line, message in sorted(self.found, key=lambda problem: problem[0])]
+        ordered = sorted(dict.fromkeys(self.found), key=lambda problem: problem[0])
+        return [f"{self.name}:{line}: {message}" if line else f"{self.name}: {message}" for line, message in ordered]
 
     def raise_any(self) -> None:
         """Raises PresetError if there was a mistake."""
@@ -61,11 +61,12 @@ def place_text(path: Path) -> str:
 
 def key_text(path: Path) -> str:
     """The key without its table: 'sections[1][2]', counted from 0 as the messages of a filter count."""
-    inside = path[2:] if path[0] == "filter" and len(path) > 2 else path[1:] or path
+    tables = 2 if path[0] == "filter" else 1
+    inside = path[tables:] or path
     text = str(inside[0])
     for part in inside[1:]:
         text += f"[{part}]" if isinstance(part, int) else f".{part}"
-    return _one_line(text)
+    return one_line(text)
 
 
 def value_text(value: object) -> str:
@@ -77,13 +78,13 @@ def _toml(value: object, depth: int) -> str:
     if depth > 2:
         return "..."
     if isinstance(value, str):
-        return _one_line(json.dumps(value[: 2 * MOST_SHOWN], ensure_ascii=False))
+        return one_line(json.dumps(value[: 2 * MOST_SHOWN], ensure_ascii=False))
     if isinstance(value, bool):
         return "true" if value else "false"
     if isinstance(value, int):
         return str(value) if value.bit_length() < 200 else f"a whole number of {value.bit_length()} bits"
     if isinstance(value, Mapping):
-        entries = [f"{_one_line(key)} = {_toml(entry, depth + 1)}" for key, entry in value.items()]
+        entries = [f"{one_line(key)} = {_toml(entry, depth + 1)}" for key, entry in value.items()]
         return f"{{ {', '.join(entries)} }}" if entries else "{}"
     if isinstance(value, list | tuple):
         return f"[{', '.join(_toml(entry, depth + 1) for entry in value[:MOST_SHOWN])}]"
@@ -94,6 +95,6 @@ def _shortened(text: str) -> str:
     return text if len(text) <= MOST_SHOWN else f"{text[: MOST_SHOWN - 4]} ..."
 
 
-def _one_line(text: str) -> str:
+def one_line(text: str) -> str:
     """Unprintable characters written as escapes, so that a file cannot write to the terminal."""
     return _shortened("".join(c if c.isprintable() else c.encode("unicode_escape").decode("ascii") for c in text))

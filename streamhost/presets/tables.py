@@ -163,6 +163,15 @@ def read_table(
     }
 
 
+def read_whole(
+    mistakes: Mistakes, table: Mapping[str, Any], path: Path, struct: type[msgspec.Struct]
+) -> dict[str, Any] | None:
+    """As `read_table`, but None after any mistake."""
+    before = len(mistakes.found)
+    values = read_table(mistakes, table, path, struct)
+    return values if len(mistakes.found) == before else None
+
+
 def read_value(mistakes: Mistakes, value: object, path: Path, declared: object) -> Any:
     """The value as declared, or None after a mistake."""
     try:

@@ -67,7 +67,7 @@ def _varied(preset: Preset, chosen: Sequence[tuple[str, str]]) -> Preset:
         return read_preset(source, preset.path)
     except PresetError as error:
         asked = " ".join(f"--vary {key}={text}" for key, text in chosen)
-        raise PresetError(f"{problem} (Asked for by {asked}.)" for problem in error.problems) from None
+        raise PresetError(f"{problem} (Asked for by {asked})" for problem in error.problems) from None
 
 
 def _put(table: dict[str, Any], key: str, value: object, name: str) -> None:

@@ -11,7 +11,7 @@ from streamhost.diagram.nodes import Delay, Gain, Input, Node, Output, Residue, 
 from streamhost.formats import Fixed, Quantizer, Word
 from streamhost.program.coefficients import store
 from streamhost.program.numbers import annotate
-from streamhost.program.prepare import halve_pre_sums, separate_products, with_sources
+from streamhost.program.prepare import halve_pre_sums, separate_products, unfold_lines, with_sources
 from streamhost.program.program import Program
 from streamhost.program.roles import Roles, roles_of
 from streamhost.program.widths import Widths
@@ -25,6 +25,8 @@ def lower_fixed(drawn: Diagram, format: Fixed) -> Program:
     diagram = negate_feedback(drawn) if format.feedback == "negated" else drawn
     if format.pre_sum == "half":
         diagram = halve_pre_sums(diagram, format.signal)
+    if format.pre_sum == "signal" and not format.accumulator.full:
+        diagram = unfold_lines(diagram)
     diagram = separate_products(diagram, format.pre_sum)
     stored = store(diagram, format)
     roles = roles_of(diagram, format.pre_sum)

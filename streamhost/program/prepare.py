@@ -9,7 +9,7 @@ from dataclasses import replace
 from functools import partial
 
 from streamhost.diagram.diagram import Diagram
-from streamhost.diagram.nodes import Gain, Node, Round, Shift, Sum, Term
+from streamhost.diagram.nodes import Delay, Gain, Node, Round, Shift, Sum, Taps, Term
 from streamhost.formats import Quantizer
 from streamhost.program.roles import roles_of
 
@@ -103,3 +103,37 @@ def halve_pre_sums(diagram: Diagram, signal: Quantizer) -> Diagram:
     return rewriter.finish(redirected)
 
 
+def unfold_lines(diagram: Diagram) -> Diagram:
+    """Write folded lines as delays, pairs, gains and a sum: their pairs then are sums and registers like any other.
+
+    A new node refers to another new one by the complement of its place, until all places are known.
+    """
+    nodes: list[Node] = []
+    place: dict[int, int] = {}
+    for index, node in enumerate(diagram.nodes):
+        if isinstance(node, Taps) and node.fold is not None:
+            _put_pairs(nodes, node)
+        else:
+            nodes.append(node)
+        place[index] = len(nodes) - 1
+    placed = tuple(with_sources(node, lambda source: place[source] if source >= 0 else ~source) for node in nodes)
+    return replace(diagram, nodes=placed)
+
+
+def _put_pairs(nodes: list[Node], line: Taps) -> None:
+    """Delays first, then each pair's sum and its gain, from both ends inwards; the sum of all last."""
+    past = [line.source]
+    for k in range(1, line.length):
+        nodes.append(Delay(f"{line.label}.x{k}", past[-1]))
+        past.append(~(len(nodes) - 1))
+    products = []
+    for k, slot in enumerate(line.coefficients):
+        last = line.length - 1 - k
+        operand = past[k]
+        if last != k:
+            pair = (Term(1, past[k]), Term(1 if line.fold == "even" else -1, past[last]))
+            nodes.append(Sum(f"{line.label}.pair{k}", pair))
+            operand = ~(len(nodes) - 1)
+        nodes.append(Gain(f"{line.label}.g{k}", operand, slot))
+        products.append(Term(1, ~(len(nodes) - 1)))
+    nodes.append(Sum(line.label, tuple(products)))

@@ -77,10 +77,20 @@ class Widths:
         if self.roles.whole[source]:
             return Operand(self.seen(source), None)
         place = self.format.operand
+        if self._is_operand(source):
+            return Operand(place.word.fraction, None)
         if self.roles.pre_sum[source] and self.format.pre_sum == "exact":
             extra = self.pre_sum_growth(source)
             return Operand(place.word.fraction, place.with_word(place.word.widened(extra)))
         return Operand(place.word.fraction, place)
+
+    def _is_operand(self, index: int) -> bool:
+        """In a program: the rounding that made the operand of a pre-sum."""
+        node = self.diagram.nodes[index]
+        if not isinstance(node, Round) or node.quantizer is None:
+            return False
+        source = self.diagram.nodes[node.source]
+        return isinstance(source, Sum) and source.exact
 
     def pre_sum_growth(self, index: int) -> int:
         """How many integer bits a pre-sum needs beyond the longest of its terms."""

@@ -4,6 +4,7 @@ from streamhost.diagram.nodes import Delay, Gain, Input, Node, Output, Residue, 
 from streamhost.formats import Fixed, Quantizer
 from streamhost.program.native.doors import input_text
 from streamhost.program.native.frame import Variant, close_loops, has_dither, header, lines, open_loops
+from streamhost.program.native.meters import meter_places
 from streamhost.program.native.taps import print_taps
 from streamhost.program.native.text import Text, Value, overflowed_text, rounded_text
 from streamhost.program.program import Program, RoundArithmetic, SumArithmetic, TapsArithmetic, TermArithmetic
@@ -37,10 +38,9 @@ class FixedPrinter:
         self.text = Text()
         self.values: dict[int, Value] = {}
         self.exact: dict[int, Value] = {}
-        self.meters = {index: 1 + k for k, index in enumerate((*program.roundings, *program.counted_sums))}
-        for index, node in enumerate(self.nodes):
-            if isinstance(node, Taps):
-                self.meters[-1 - index] = 1 + len(self.meters)
+        self.flags: list[str] = []
+        self.in_loop = False
+        self.meters = meter_places(program)
         self.traced = {index: k for k, index in enumerate(traced_roundings(program))}
 
     def source(self) -> str:
@@ -50,14 +50,15 @@ class FixedPrinter:
         title = f"{self.format.label}: {len(self.nodes)} nodes, {len(self.program.roundings)} roundings."
         header(self.text, self.program, self.variant, imports, "int64", title)
         open_loops(self.text, self.program, self.variant, "{}")
-        if self.variant.metered:
+        if self.variant.metered and any(isinstance(node, Taps) for node in self.nodes):
             self.text("o = np.int64(0)")
+            self.flags.append("o")
         if has_dither(self.program):
             self.text("t = np.uint64(2) * np.uint64(frame0 + n) + np.uint64(1)")
         for index in self.program.diagram.order:
             self.print(index, self.nodes[index])
-        if self.variant.metered:
-            self.text("if o != 0:")
+        if self.variant.metered and self.flags:
+            self.text(f"if ({' | '.join(self.flags)}) != 0:")
             with self.text.indented():
                 self.text("F[n, c] = 1")
         self.store()
@@ -157,12 +158,12 @@ class FixedPrinter:
         if accumulator.overflow == "saturate":
             self.print_saturating_sum(index, arithmetic)
         elif shadow and not any(t.source in self.exact for t in arithmetic.terms):
-            self.assign(index, Value(overflowed_text(self.exact[index], word, "wrap"), -word.low))
+            self.assign(index, Value(overflowed_text(self.exact[index], word, "wrap"), -word.low, is_wide=False))
         else:
             terms = [(t.sign, self.modular(self.term(t, accumulator.fraction, self.values))) for t in arithmetic.terms]
             total = Value(f"w{index}", 0)
             self.text(f"w{index} = {joined(terms)}")
-            self.assign(index, Value(overflowed_text(total, word, "wrap"), -word.low))
+            self.assign(index, Value(overflowed_text(total, word, "wrap"), -word.low, is_wide=False))
         if shadow and arithmetic.counted:
             self.count_overflow(index)
 
@@ -175,9 +176,16 @@ class FixedPrinter:
         self.count(self.meters[index], text)
 
     def count(self, meter: int, text: str) -> None:
-        self.text(f"h = {text}")
-        self.text(f"m{meter} += h")
-        self.text("o |= h")
+        """Count an event of this frame; inside the loop of a tapped line the flag is summed up there."""
+        if self.in_loop:
+            self.text(f"h = {text}")
+            self.text(f"m{meter} += h")
+            self.text("o += h")
+            return
+        name = f"h{len(self.flags)}"
+        self.text(f"{name} = {text}")
+        self.text(f"m{meter} += {name}")
+        self.flags.append(name)
 
     @staticmethod
     def modular(value: Value) -> Value:
@@ -201,12 +209,12 @@ class FixedPrinter:
             value = self.term(term, arithmetic.accumulator.fraction, self.values)
             self.text(f"u{index}_{k} = {value.text}")
             named = Value(f"u{index}_{k}", value.bound, is_wide=value.is_wide)
-            limited = Value(overflowed_text(named, word, "saturate"), -word.low)
+            limited = Value(overflowed_text(named, word, "saturate"), -word.low, is_wide=False)
             running = total.plus(term.sign, limited)
             self.text(f"w{index}_{k} = {running.text}")
             running = Value(f"w{index}_{k}", running.bound, is_wide=running.is_wide)
             self.text(f"a{index}_{k} = {overflowed_text(running, word, 'saturate')}")
-            total = Value(f"a{index}_{k}", -word.low)
+            total = Value(f"a{index}_{k}", -word.low, is_wide=False)
         self.assign(index, total)
 
     def term(self, term: TermArithmetic, fraction: int, values: dict[int, Value]) -> Value:

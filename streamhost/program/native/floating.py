@@ -32,6 +32,8 @@ class FloatPrinter:
         open_loops(self.text, self.program, self.variant, f"np.{self.type}({{}})")
         for index in self.program.diagram.order:
             self.print(index, self.nodes[index])
+            if self.variant.traced:
+                self.text(f"R[n, c, {index}] = np.float64(v{index})")
         self.store()
         close_loops(self.text, self.program, self.variant)
         return str(self.text)

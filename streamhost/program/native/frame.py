@@ -10,24 +10,36 @@ from functools import cache
 from pathlib import Path
 
 from streamhost.diagram.nodes import Delay, Taps
+from streamhost.program.native.meters import meter_count
 from streamhost.program.native.text import Text
 from streamhost.program.program import Program
+from streamhost.program.sources import traced_roundings
 
 ARGUMENTS = ("x_", "y_", "state_", "coefficients_", "keys_", "meters_", "marks_", "trace_", "frames", "channels", "frame0")
 
 
 @dataclass(frozen=True)
 class Variant:
-    """Which kernel of a program: integer codes at its doors, meters, a trace of every rounding's residue."""
+    """Which kernel of a program: integer codes at its doors, meters, a trace of every rounding's residue.
+
+    A traced floating-point kernel writes every node's value instead. `double` runs a float64 program in double-double:
+    two words a state, and two columns an output.
+    """
 
     codes: bool = False
     metered: bool = False
     traced: bool = False
+    double: bool = False
+
+    @property
+    def words(self) -> int:
+        """Machine words a value."""
+        return 2 if self.double else 1
 
 
 def header(text: Text, program: Program, variant: Variant, imports: str, dtype: str, title: str) -> None:
     """Everything before the loop over channels."""
-    outputs, sources = len(program.diagram.outputs), max(1, trace_width(program))
+    outputs, sources = variant.words * len(program.diagram.outputs), max(1, trace_width(program))
     door = "int64" if variant.codes else "float64"
     text(f'"""{title}"""')
     text()
@@ -46,12 +58,12 @@ def header(text: Text, program: Program, variant: Variant, imports: str, dtype: 
     text.depth = 1
     text(f"x = carray(x_, (frames, channels), np.{door})")
     text(f"y = carray(y_, (frames, {outputs} * channels), np.{door})")
-    text(f"S = carray(state_, ({max(1, program.state_words)}, channels), np.{dtype})")
+    text(f"S = carray(state_, ({max(1, variant.words * program.state_words)}, channels), np.{dtype})")
     text(f"C = carray(coefficients_, ({max(1, len(program.diagram.slots))}, channels), np.{dtype})")
     if has_dither(program):
         text(f"K = carray(keys_, ({program.ordinals}, channels), np.uint64)")
     if variant.metered:
-        text(f"M = carray(meters_, ({1 + meter_count(program)},), np.int64)")
+        text(f"M = carray(meters_, ({meter_count(program)},), np.int64)")
         text("F = carray(marks_, (frames, channels), np.uint8)")
     if variant.traced:
         text(f"R = carray(trace_, (frames, channels, {sources}), np.float64)")
@@ -65,15 +77,8 @@ def intrinsics_hash() -> str:
 
 
 def trace_width(program: Program) -> int:
-    """Roundings whose residues a traced kernel writes down."""
-    from streamhost.program.sources import traced_roundings
-
-    return len(traced_roundings(program))
-
-
-def meter_count(program: Program) -> int:
-    """One counter a rounding and one a counted sum, after the counter of NaN samples."""
-    return len(program.roundings) + len(program.counted_sums) + sum(1 for n in program.nodes if isinstance(n, Taps))
+    """Columns of a traced kernel: the roundings that drop bits, or every node in floating point."""
+    return len(traced_roundings(program)) if program.arithmetic else len(program.nodes)
 
 
 def has_dither(program: Program) -> bool:
@@ -104,7 +109,7 @@ def open_loops(text: Text, program: Program, variant: Variant, load: str) -> Non
     for index in rings:
         text(f"p{index} = frame0 % {program.nodes[index].stores}")
     if variant.metered:
-        for k in range(1 + meter_count(program)):
+        for k in range(meter_count(program)):
             text(f"m{k} = np.int64(0)")
     text("for n in range(frames):")
     text.depth += 1
@@ -130,6 +135,6 @@ def close_loops(text: Text, program: Program, variant: Variant) -> None:
     for index in single:
         text(f"S[{program.state_offsets[index]}, c] = s{index}")
     if variant.metered:
-        for k in range(1 + meter_count(program)):
+        for k in range(meter_count(program)):
             text(f"M[{k}] += m{k}")
     text.depth -= 2

@@ -9,16 +9,21 @@ from numpy.typing import NDArray
 from streamhost.cache import load_module
 from streamhost.formats import Fixed
 from streamhost.program.dither import dither_key
+from streamhost.program.native.double import print_double
 from streamhost.program.native.fixed import print_fixed
 from streamhost.program.native.floating import print_float
-from streamhost.program.native.frame import Variant, meter_count, trace_width
+from streamhost.program.native.frame import Variant, trace_width
+from streamhost.program.native.meters import meter_count
 from streamhost.program.program import Program
 
+PLAIN = Variant()
 SIGNATURE = ctypes.CFUNCTYPE(None, *([ctypes.c_void_p] * 8), *([ctypes.c_int64] * 3))
 
 
-def kernel_source(program: Program, variant: Variant = Variant()) -> str:  # noqa: B008
+def kernel_source(program: Program, variant: Variant = PLAIN) -> str:
     """The readable source of a program's kernel."""
+    if variant.double:
+        return print_double(program, variant)
     return print_fixed(program, variant) if isinstance(program.format, Fixed) else print_float(program, variant)
 
 
@@ -38,7 +43,7 @@ class Kernel:
         memory.frame += frames
 
 
-def compile_kernel(program: Program, variant: Variant = Variant()) -> Kernel:  # noqa: B008
+def compile_kernel(program: Program, variant: Variant = PLAIN) -> Kernel:
     """The kernel of a program: from this process, from disk, or compiled now."""
     module = load_module(kernel_source(program, variant), program.format.label)
     return Kernel(module.kernel.address, module)
@@ -47,14 +52,14 @@ def compile_kernel(program: Program, variant: Variant = Variant()) -> Kernel:  #
 class Memory:
     """What a kernel keeps between blocks, for a number of channels. Arrays are (words, channels)."""
 
-    def __init__(self, program: Program, channels: int) -> None:
+    def __init__(self, program: Program, channels: int, variant: Variant = PLAIN) -> None:
         fixed = isinstance(program.format, Fixed)
         dtype = np.int64 if fixed else np.float64
         self.channels, self.frame = channels, 0
-        self.state = np.zeros((max(1, program.state_words), channels), dtype)
+        self.state = np.zeros((max(1, variant.words * program.state_words), channels), dtype)
         self.coefficients = np.zeros((max(1, len(program.diagram.slots)), channels), dtype)
         self.keys = np.zeros((max(1, program.ordinals), channels), np.uint64)
-        self.meters = np.zeros(1 + meter_count(program), np.int64)
+        self.meters = np.zeros(meter_count(program), np.int64)
         if len(program.diagram.slots):
             values = np.array(program.stored.codes, dtype) if program.stored else program.diagram.values
             self.coefficients[:] = values

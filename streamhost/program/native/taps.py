@@ -37,10 +37,12 @@ class TapsPrinter:
         self.text(f"a{i} = {zero}")
         if self.shadow:
             self.text(f"e{i} = {Value('np.int64(0)', 0).as_wide_as(self.exact_wide).text}")
+        self.printer.in_loop = True
         self.print_line()
+        self.printer.in_loop = False
         total = Value(f"a{i}", self.total_bound, is_wide=self.total_wide)
         if word is not None and self.arithmetic.accumulator.overflow == "wrap":
-            total = Value(overflowed_text(Value(f"a{i}", 0), word, "wrap"), -word.low)
+            total = Value(overflowed_text(Value(f"a{i}", 0), word, "wrap"), -word.low, is_wide=False)
         self.printer.assign(i, total)
         if self.shadow:
             self.printer.exact[i] = Value(f"e{i}", 1 << 120 if self.exact_wide else self.total_bound, is_wide=self.exact_wide)
@@ -152,8 +154,8 @@ class TapsPrinter:
         else:
             self.text(f"t{i} = {term.text}")
             named = Value(f"t{i}", term.bound, is_wide=term.is_wide)
-            limited = Value(overflowed_text(named, accumulator.word, "saturate"), -accumulator.word.low)
-            running = Value(f"a{i}", -accumulator.word.low).plus(1, limited)
+            limited = Value(overflowed_text(named, accumulator.word, "saturate"), -accumulator.word.low, is_wide=False)
+            running = Value(f"a{i}", -accumulator.word.low, is_wide=False).plus(1, limited)
             self.text(f"b{i} = {running.text}")
             running = Value(f"b{i}", running.bound, is_wide=running.is_wide)
             self.text(f"a{i} = {overflowed_text(running, accumulator.word, 'saturate')}")

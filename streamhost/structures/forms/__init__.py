@@ -4,7 +4,7 @@ from streamhost.structures.choices import check
 from streamhost.structures.form import Form
 from streamhost.structures.forms import direct_1, direct_1_swapped, direct_2, transposed_1, transposed_2
 
-FORMS = {
+FORMS: dict[str, Form] = {
     module.FORM.name: module.FORM for module in (direct_1, direct_1_swapped, direct_2, transposed_1, transposed_2)
 }
 

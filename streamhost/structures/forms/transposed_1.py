@@ -23,13 +23,14 @@ labelled dsk, that of tk dtk.
 Source: Oppenheim & Schafer, Discrete-Time Signal Processing, ch. 6, transposition of direct form I.
 
 Counts: M + N + 1 multiplications, M + N additions, M + N words of memory; a second-order section 5, 4, 4. In fixed
-point five roundings a section (s1, s2, t1, t2 and y); v is an exact sum of what is stored.
+point five roundings a section (s1, s2, t1, t2 and y); v is an exact sum of what is stored. A gain in front (scaling
+l2) makes v of the first section a sum with a product, which is rounded too.
 
 Good at: comparison with transposed-2. The zeros work on v with a delay line of their own, so no product of one half
 waits for the other.
 
-Fails: v is the input through 1 / A, as w is in direct-2, and clips as it does: scale it (scaling l2) or give it more
-integer bits. The most roundings and the most memory of the five.
+Fails: v is the input through 1 / A, as w is in direct-2, and clips where it is multiplied: scale it (scaling l2) or
+give the signal more integer bits. The most roundings and the most memory of the five.
 
 Carries: any numerator and denominator of any length, as a section or whole. Without recursion v is x itself.
 """

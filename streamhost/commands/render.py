@@ -1,0 +1,108 @@
+"""`streamhost render`: an audio file through one realization."""
+
+import math
+from collections.abc import Callable
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import click
+
+from streamhost.commands.common import MINUS, Progress, force_option, presets_named, printable
+
+if TYPE_CHECKING:
+    from streamhost.files import AudioInfo
+    from streamhost.host.rendering import Rendered
+    from streamhost.presets import Preset
+    from streamhost.realization import Realization
+
+SUBTYPES = ("pcm16", "pcm24", "pcm32", "float")
+
+
+@click.command()
+@click.argument("preset")
+@click.argument("source", metavar="IN")
+@click.argument("destination", metavar="OUT")
+@click.option(
+    "--subtype", type=click.Choice(SUBTYPES),
+    help="Samples of OUT. Unless said: PCM of the shortest of 16, 24, 32 bits that holds the output word's fraction exactly; "
+    "24 bits after floating point.",
+)
+@force_option
+def render(preset: str, source: str, destination: str, subtype: Any, force: bool) -> None:
+    """The audio file IN through one realization into a new file OUT.
+
+    PRESET is a file or the name of a shipped one. OUT ends in .wav, .rf64 or .flac and gets the rate and the channels
+    of IN. Samples beyond full scale are clipped, which is counted.
+    """
+    from streamhost.cache import notice
+    from streamhost.files import probe
+    from streamhost.host.rendering import render_file
+
+    (stated,) = presets_named([preset])
+    info = probe(source)
+    realization = realized(stated)
+    with Progress("render", math.ceil(info.seconds / 60)) as progress:
+        rendered = render_file(
+            realization, info, Path(destination), name=stated.source.name, subtype=subtype, overwrite=force,
+            report=_minute_by_minute(progress, info),
+        )
+    if problem := notice():
+        click.echo(problem, err=True)
+    click.echo("\n".join(summary(rendered, realization)))
+
+
+def realized(preset: "Preset") -> "Realization":
+    """What a preset states, ready to run."""
+    from streamhost.realization import realize
+
+    return realize(
+        preset.filter, form=preset.form, decomposition=preset.decomposition, pairing=preset.pairing, ordering=preset.ordering,
+        scaling=preset.scaling, format=preset.format, allow_unstable=preset.allow_unstable,
+    )
+
+
+def _minute_by_minute(progress: Progress, info: "AudioInfo") -> Callable[[int], None]:
+    """Moves the progress line on with every minute of audio that begins."""
+    begun = 0
+
+    def report(done: int) -> None:
+        nonlocal begun
+        while begun * 60 * info.rate <= done:
+            progress.step(f"minutes of {info.path.name}")
+            begun += 1
+
+    return report
+
+
+def summary(rendered: "Rendered", realization: "Realization") -> list[str]:
+    """Lines that say what was written and what happened on the way."""
+    seconds = rendered.frames / rendered.rate
+    lines = [
+        printable(
+            f"{rendered.path}: {_count(rendered.frames, 'frame')} ({seconds:.2f} s), {_count(rendered.channels, 'channel')}, "
+            f"{rendered.rate} Hz, {rendered.container} {rendered.subtype}"
+        ),
+        f"peak {_decibels(rendered.meters.peak_dbfs)}, {_count(rendered.clipped, 'sample')} clipped, no NaN",
+    ]
+    counted = _events(rendered)
+    if counted:
+        lines.append(", ".join(counted))
+    if realization.unstable:
+        why = "as asked" if realization.filter.unstable_poles() else "once the coefficients are rounded"
+        lie = "lies" if realization.unstable == 1 else "lie"
+        lines.append(f"unstable: {_count(realization.unstable, 'pole')} {lie} on or outside the unit circle {why}")
+    return lines + [f"hazard: {sentence}" for sentence in realization.built.hazards]
+
+
+def _events(rendered: "Rendered") -> list[str]:
+    tally = rendered.tally
+    kinds = ((tally.saturations, "saturation"), (tally.wraps, "wrap"), (tally.accumulator_overflows, "accumulator overflow"))
+    return [_count(number, kind) for number, kind in kinds if number]
+
+
+def _count(number: int, what: str) -> str:
+    return f"{number} {what}" if number == 1 else f"{number} {what}s"
+
+
+def _decibels(value: float) -> str:
+    return "silence" if value == -math.inf else f"{value:.2f} dBFS".replace("-", MINUS)

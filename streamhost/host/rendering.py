@@ -1,0 +1,98 @@
+"""A file through one realization, block by block: the host driven by a file instead of a sound card."""
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from pathlib import Path
+
+from streamhost.errors import AudioFileError, RequestError
+from streamhost.files import AudioInfo, AudioWriter, read_blocks, same_file
+from streamhost.files.writing import Subtype
+from streamhost.formats import Fixed, Format
+from streamhost.host.engine import Host
+from streamhost.host.lane import Lane
+from streamhost.host.meters import Meters
+from streamhost.realization import Realization, Tally
+
+
+@dataclass(frozen=True)
+class Rendered:
+    """What was written, and what happened on the way. `clipped` counts the samples beyond the file's full scale."""
+
+    path: Path
+    container: str
+    subtype: Subtype
+    rate: int
+    channels: int
+    frames: int
+    clipped: int
+    meters: Meters
+    tally: Tally
+
+
+def default_subtype(format: Format) -> Subtype:
+    """PCM of the shortest of 16, 24, 32 bits that holds the output word's fraction exactly; 24 bits for floats."""
+    if not isinstance(format, Fixed):
+        return "pcm24"
+    fraction = format.output.word.fraction
+    return "pcm16" if fraction <= 15 else "pcm24" if fraction <= 23 else "pcm32"
+
+
+def render_file(
+    realization: Realization,
+    source: AudioInfo,
+    destination: Path,
+    *,
+    name: str = "this realization",
+    subtype: Subtype | None = None,
+    overwrite: bool = False,
+    report: Callable[[int], None] = lambda done: None,
+) -> Rendered:
+    """Run a file through a realization, from zero state, into a new file of the same rate and channels.
+
+    `name` is what messages call the realization. `subtype` None takes `default_subtype`. `report(done)` hears before
+    each block how many frames are done. Memory does not grow with the file's length; when anything goes wrong, Ctrl-C
+    too, no output is left. Raises RequestError where the rates differ, the realization has several outputs, or output
+    and input are one file; AudioFileError and MachineError as reading and writing do, and where the output is no
+    longer finite.
+    """
+    _check(realization, source, destination, name)
+    writer = AudioWriter(
+        destination, rate=source.rate, channels=source.channels, subtype=subtype or default_subtype(realization.format),
+        frames_expected=source.frames, overwrite=overwrite,
+    )
+    with writer:
+        lane = Lane(realization, source.channels, metered=isinstance(realization.format, Fixed))
+        host = Host([lane])
+        for block in read_blocks(source.path, host.block):
+            report(host.frames)
+            host.step(block)
+            _check_finite(lane.meters, destination, name)
+            writer.write(lane.output)
+    return Rendered(
+        destination, writer.container, writer.subtype, source.rate, source.channels, writer.frames, writer.clipped,
+        lane.meters, lane.tally(),
+    )
+
+
+def _check(realization: Realization, source: AudioInfo, destination: Path, name: str) -> None:
+    rate = realization.filter.rate
+    if source.rate != rate:
+        raise RequestError(
+            f"{source.path} has a rate of {source.rate} Hz, and {name} is a filter for {rate:g} Hz. Rates are not converted: "
+            "give a file of that rate, or a filter for this one."
+        )
+    if len(realization.outputs) > 1:
+        raise RequestError(
+            f"{name} has {len(realization.outputs)} outputs ({', '.join(realization.outputs)}), and a rendered file takes one. "
+            "Give a filter with one output."
+        )
+    if same_file(source.path, destination):
+        raise RequestError(f"{destination}: input and output are the same file. Choose another name for the output.")
+
+
+def _check_finite(meters: Meters, destination: Path, name: str) -> None:
+    if not meters.is_finite:
+        raise AudioFileError(
+            f"{destination}: nothing was written, since the output of {name} is no longer finite before frame "
+            f"{meters.frames}. Its filter is unstable, or its input is louder than its arithmetic can hold."
+        )

@@ -1,0 +1,64 @@
+"""The noise that theory predicts at the output, counted as the measured noise is counted."""
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from math import inf, isfinite
+
+import numpy as np
+
+from streamhost.diagram.fan import to_output
+from streamhost.formats import Float
+from streamhost.measure.bands import audio_band
+from streamhost.measure.float_errors import float_spectrum
+from streamhost.measure.frequencies import FloatArray, breakpoints, integral
+from streamhost.measure.levels import power_dbfs
+from streamhost.measure.weighting import a_weighting
+from streamhost.program.program import Program
+from streamhost.program.sources import noise_spectrum
+
+Density = Callable[[FloatArray], FloatArray]
+
+
+@dataclass(frozen=True)
+class Prediction:
+    """Noise in dBFS: in the audio band, from 0 to half the rate, and A-weighted in the audio band.
+
+    Infinite where an error does not die out; None in the band of a rate that has none.
+    """
+
+    dbfs: float | None
+    full_dbfs: float
+    a_dbfs: float | None
+
+
+def predicted_noise(program: Program, rate: float, rms: FloatArray | None = None) -> Prediction:
+    """The noise of a program's roundings under the white model, the mean power over its channels.
+
+    A floating-point program's is an estimate that needs the `rms` of every node, (nodes,).
+    """
+    densities = [_density(program, channel, rms) for channel in range(program.diagram.channels)]
+    poles = {complex(pole) for channel in range(len(densities)) for pole in to_output(program.diagram, [], channel).poles}
+
+    def level(low: float, high: float, weight: Density | None = None) -> float:
+        edges = breakpoints(poles, low, high)
+        powers = [integral(_weighted(density, weight), edges) / np.pi for density in densities]
+        return power_dbfs(float(np.mean(powers))) if isfinite(sum(powers)) else inf
+
+    band = audio_band(rate)
+    full = level(0.0, np.pi)
+    if band is None:
+        return Prediction(None, full, None)
+    low, high = (2.0 * np.pi * edge / rate for edge in band)
+    in_hertz = rate / (2.0 * np.pi)
+    return Prediction(level(low, high), full, level(low, high, lambda w: a_weighting(w * in_hertz)))
+
+
+def _density(program: Program, channel: int, rms: FloatArray | None) -> Density:
+    if isinstance(program.format, Float):
+        assert rms is not None, "what floats round depends on the signal"
+        return lambda w: float_spectrum(program, rms, w, channel)
+    return lambda w: noise_spectrum(program, w, channel)
+
+
+def _weighted(density: Density, weight: Density | None) -> Density:
+    return density if weight is None else lambda w: density(w) * weight(w)

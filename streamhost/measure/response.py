@@ -1,0 +1,89 @@
+"""How far rounding the coefficients moved the response from the one that was asked for."""
+
+from dataclasses import dataclass
+from math import inf, pi
+
+import numpy as np
+
+from streamhost.diagram.fan import from_input
+from streamhost.diagram.norms import response_to_output
+from streamhost.measure.bands import Band
+from streamhost.measure.frequencies import FloatArray, breakpoints, refined
+from streamhost.measure.levels import decibels
+from streamhost.realization import Realization
+
+JUDGED_DB = 40.0
+PARTS = 16
+ZOOMS = 6
+
+
+@dataclass(frozen=True)
+class Deviation:
+    """The largest |20 lg(|H rounded| / |H asked|)| in a band, and where; None with the reason where there is none.
+
+    `leak_db`: the largest |H rounded| where |H asked| lies more than 40 dB below its maximum in the band, relative to
+    that maximum; None where it nowhere does.
+    """
+
+    db: float | None
+    hz: float | None
+    leak_db: float | None
+    reason: str = ""
+
+
+def response_deviation(realization: Realization, band: Band) -> Deviation:
+    """Of the coefficients as stored, computed from the state space; judged where |H asked| is within 40 dB of its maximum.
+
+    Seen on a grid of 16 points an interval, intervals being octaves and, around each pole, steps that double from half
+    its distance from the circle; the largest deviation of each channel is then zoomed in on.
+    """
+    channels = range(realization.program.diagram.channels)
+    found = [_of_channel(realization, band, channel) for channel in channels]
+    return max(found, key=lambda deviation: inf if deviation.db is None else deviation.db)
+
+
+def _of_channel(realization: Realization, band: Band, channel: int) -> Deviation:
+    rate, diagram = realization.filter.rate, realization.program.diagram
+    poles = from_input(diagram, channel, nodes=diagram.outputs).poles
+    low, high = (2.0 * pi * edge / rate for edge in band)
+    hertz = np.clip(refined(breakpoints(poles, low, high), PARTS) * rate / (2.0 * pi), *band)
+    asked, rounded = _magnitudes(realization, hertz, channel)
+    if not np.isfinite(rounded).all():
+        return Deviation(None, None, None, "with its coefficients rounded the filter is not stable and has no response")
+    top = float(asked.max())
+    if top == 0.0 or not np.isfinite(top):
+        return Deviation(None, None, None, "the filter as asked has no response in the band to compare with")
+    judged = asked >= top * 10.0 ** (-JUDGED_DB / 20.0)
+    leak = rounded[~judged].max(initial=0.0) / top
+    db = np.where(judged, _deviation_db(asked, rounded), -1.0)
+    worst = int(db.argmax())
+    at, most = _zoomed(realization, hertz, worst, top, channel)
+    return Deviation(most, at, None if judged.all() else decibels(leak**2))
+
+
+def _magnitudes(realization: Realization, hertz: FloatArray, channel: int) -> tuple[FloatArray, FloatArray]:
+    """|H asked| and |H rounded|; the latter infinite where the rounded filter does not settle."""
+    diagram = realization.program.diagram
+    w = 2.0 * pi * hertz / realization.filter.rate
+    rounded = response_to_output(diagram, [diagram.inputs[0]], w, channel)[:, 0]
+    return np.abs(realization.filter.response(hertz)), np.abs(rounded)
+
+
+def _deviation_db(asked: FloatArray, rounded: FloatArray) -> FloatArray:
+    with np.errstate(divide="ignore"):
+        return np.asarray(np.abs(20.0 * np.log10(rounded) - 20.0 * np.log10(asked)), dtype=np.float64)
+
+
+def _zoomed(realization: Realization, hertz: FloatArray, worst: int, top: float, channel: int) -> tuple[float, float]:
+    """The frequency and the size of the largest deviation near a point of the grid."""
+    low, high = hertz[max(worst - 1, 0)], hertz[min(worst + 1, len(hertz) - 1)]
+    at, most = float(hertz[worst]), -inf
+    for _ in range(ZOOMS):
+        points = np.unique(np.append(np.linspace(low, high, 2 * PARTS + 1), at))
+        asked, rounded = _magnitudes(realization, points, channel)
+        judged = asked >= top * 10.0 ** (-JUDGED_DB / 20.0)
+        db = np.where(judged, _deviation_db(asked, rounded), -1.0)
+        place = int(db.argmax())
+        at, most = float(points[place]), float(db[place])
+        low, high = points[max(place - 1, 0)], points[min(place + 1, len(points) - 1)]
+    return at, most

@@ -1,0 +1,99 @@
+"""The ideal of a program: the same diagram with the coefficients as stored, its own rounding far below what it judges."""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from streamhost.diagram.nodes import Round
+from streamhost.diagram.norms import norms_from_input, response_to_output
+from streamhost.formats import Fixed, Float
+from streamhost.program.floating import lower_float
+from streamhost.program.program import Program
+from streamhost.program.sources import FloatArray, noise_spectrum
+
+MARGIN_DB = 20.0
+UNIT_64 = 2.0**-53
+
+FLOAT_ERROR = 0.18
+"""Mean square of a rounding's relative error in units of the unit roundoff squared, for mantissas spread as a signal's are:
+a uniform error in the last place over a logarithmically uniform mantissa gives (1/3) * (3/8) / ln 2 = 0.18."""
+
+
+@dataclass(frozen=True)
+class Ideal:
+    """A float64 program, and whether it is to be run in double-double."""
+
+    program: Program
+    double: bool
+
+    @property
+    def label(self) -> str:
+        return "double-double" if self.double else "float64"
+
+
+def ideal_of(program: Program) -> Ideal:
+    """The ideal to judge a program by: in float64 where that lies 20 dB below what is judged, else in double-double.
+
+    The rounding of both is estimated for a white signal at full scale; where either cannot be (a pole on or outside the
+    circle), a fixed word of up to 32 bits is judged by float64 and anything finer by double-double.
+    """
+    plain = ideal_program(program)
+    grid = np.linspace(0.0, np.pi, 4097)
+    if isinstance(program.format, Float):
+        return Ideal(plain, program.format.type == "float64")
+    own, judged = float_noise(plain, UNIT_64), float(np.mean(noise_spectrum(program, grid)))
+    if not (np.isfinite(own) and np.isfinite(judged)):
+        widest = max(quantizer.word.bits for quantizer in program.quantizers)
+        return Ideal(plain, widest > 32)
+    return Ideal(plain, own > judged * 10 ** (-MARGIN_DB / 10))
+
+
+def ideal_program(program: Program) -> Program:
+    """The diagram of a program with its stored coefficients in float64, roundings left out. Its input is the quantized one."""
+    return lower_float(program.diagram, Float("float64"))
+
+
+def float_noise(program: Program, unit: float, rms: FloatArray | None = None) -> float:
+    """Estimated noise power at the first output of a floating-point program of that unit roundoff.
+
+    `rms` of every node; without it that of white noise at full scale. Every multiplication and addition is one rounding.
+    """
+    nodes = [i for i, node in enumerate(program.nodes) if node.multiplications or node.additions or isinstance(node, Round)]
+    if not nodes:
+        return 0.0
+    if rms is None:
+        rms = norms_from_input(program.diagram).l2
+    grid = np.linspace(0.0, np.pi, 4097)
+    gains = np.abs(response_to_output(program.diagram, nodes, grid)) ** 2
+    operations = np.array([max(1, program.nodes[i].multiplications + program.nodes[i].additions) for i in nodes])
+    return float(np.sum(gains.mean(axis=0) * operations * (FLOAT_ERROR * unit**2) * rms[nodes] ** 2))
+
+
+def quantized_input(program: Program, x: FloatArray) -> FloatArray:
+    """What a program makes of its input: the values of its codes, or the samples rounded to its type."""
+    if isinstance(program.format, Float):
+        return np.where(np.isnan(x), 0.0, x).astype(program.format.type).astype(np.float64)
+    assert isinstance(program.format, Fixed), "a format is fixed or floating"
+    quantizer = program.format.input
+    scale, saturates = 2.0**quantizer.word.fraction, quantizer.overflow == "saturate"
+    low, high = float(quantizer.word.low), float(quantizer.word.high)
+    scaled = np.nan_to_num(x * scale, posinf=high if saturates else 0.0, neginf=low if saturates else 0.0)
+    codes = _rounded(scaled, quantizer.rounding)
+    if saturates:
+        return np.clip(codes, low, high) / scale
+    span = high - low + 1
+    return (codes - np.floor((codes - low) / span) * span) / scale
+
+
+def _rounded(scaled: FloatArray, rounding: str) -> FloatArray:
+    """Whole numbers by a named rounding; exact below 2^53."""
+    if rounding == "half-even":
+        return np.rint(scaled)
+    if rounding == "toward-zero":
+        return np.trunc(scaled)
+    floor: FloatArray = np.floor(scaled)
+    rest = scaled - floor
+    if rounding == "floor":
+        return floor
+    up = rest >= 0.5 if rounding == "half-up" else np.where(scaled >= 0, rest >= 0.5, rest > 0.5)
+    return floor + up

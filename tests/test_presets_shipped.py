@@ -1,0 +1,50 @@
+"""The presets that ship: one rumble filter in six realizations, sound ones and naive ones that fail."""
+
+import pytest
+
+from streamhost.filters import design
+from streamhost.presets import load_preset
+from streamhost.shipped import names, resolve
+
+SOUND = {"rumble-double-state", "rumble-float32"}
+NAIVE = {
+    "rumble-naive-16-bit", "rumble-naive-16-bit-state", "rumble-naive-24-bit", "rumble-naive-shared-delays",
+}
+
+
+def shipped(name):
+    return load_preset(resolve(name, "preset"))
+
+
+@pytest.mark.parametrize("name", names("preset"))
+def test_every_shipped_preset_loads_and_says_why_it_is_there(name):
+    preset = shipped(name)
+    assert preset.title
+    first, second = preset.path.read_text(encoding="utf-8").splitlines()[:2]
+    assert first.startswith("# ")
+    assert second.startswith("# ")
+
+
+def test_the_scenario_is_one_filter_in_six_realizations():
+    presets = [shipped(name) for name in sorted(SOUND | NAIVE)]
+    assert {preset.filter for preset in presets} == {design("high-pass", rate=48000, frequency=28.0, q=0.707)}
+    assert len({(preset.form, preset.format) for preset in presets}) == 6
+    assert all(preset.limits == {"noise_dbfs": -92.0, "response_deviation_db": 0.1, "band_hz": (20.0, 20000.0)}
+               for preset in presets)
+
+
+@pytest.mark.parametrize("name", sorted(SOUND | NAIVE))
+def test_those_that_fail_say_so_in_name_title_and_comment(name):
+    preset = shipped(name)
+    fails = name in NAIVE
+    assert ("naive" in name) == fails
+    assert preset.title.endswith("(fails)") == fails
+    assert preset.path.read_text(encoding="utf-8").startswith("# FAILS") == fails
+
+
+def test_with_16_bit_coefficients_the_filter_has_a_pole_on_the_unit_circle_at_0_hz():
+    # The filter's two denominator coefficients at 14 fraction bits, which is what 16 bits leave beside -1.99.
+    _, a1, a2 = shipped("rumble-naive-16-bit").filter.whole()[1]
+    one = 2**14
+    assert one + round(a1 * one) + round(a2 * one) == 0
+    assert 1 + a1 + a2 > 0

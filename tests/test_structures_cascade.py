@@ -1,0 +1,380 @@
+"""How a filter becomes sections: kept as given, paired, ordered; and what is refused."""
+
+import math
+from fractions import Fraction
+from itertools import pairwise
+
+import numpy as np
+import pytest
+from hypothesis import assume, given
+from hypothesis import strategies as st
+from scipy import signal
+from structure_evaluator import response
+
+from streamhost.errors import StructureError
+from streamhost.filters import Filter, Polynomials, design
+from streamhost.structures import Built, build, decompositions
+
+RATE = 48000.0
+ROWS = [
+    [0.5, 0.25, 0.125, 1.0, -1.75, 0.875],
+    [1.0, -0.5, 0.0, 1.0, 0.25, 0.0],
+    [-2.0, 0.0, 1.0, 1.0, -0.5, 0.5],
+]
+AS_GIVEN = (
+    Polynomials((0.5, 0.25, 0.125), (1.0, -1.75, 0.875)),
+    Polynomials((1.0, -0.5), (1.0, 0.25)),
+    Polynomials((-2.0, 0.0, 1.0), (1.0, -0.5, 0.5)),
+)
+
+
+def cascade(filter: Filter, **choices: str) -> Built:
+    return build(filter, form="direct-1", decomposition="cascade", **choices)
+
+
+def rows_of(built: Built) -> np.ndarray:
+    """The sections as a table of second-order rows with monic numerators."""
+    table = []
+    for section in built.sections:
+        b, a = ([*values, *[0.0] * (3 - len(values))] for values in (section.b, section.a))
+        table.append([*(value / b[0] for value in b), *a])
+    return np.array(table)
+
+
+def radius(section: Polynomials) -> float:
+    """Of the pole nearest the unit circle, from a section that is stable."""
+    return max(abs(np.roots(section.a)), default=0.0)
+
+
+# --- sections kept as given
+
+
+@pytest.mark.parametrize(
+    "choices",
+    [{}, {"pairing": "given"}, {"ordering": "given"}, {"scaling": "none"}, {"pairing": "given", "scaling": "none"}],
+)
+def test_given_sections_stay_as_they_are(choices: dict[str, str]) -> None:
+    built = cascade(Filter.from_sections(ROWS, rate=RATE), **choices)
+    assert built.sections == AS_GIVEN
+    assert (built.pairing, built.ordering, built.scaling) == ("given", "given", "none")
+
+
+def test_a_stated_ordering_moves_given_sections_and_changes_no_bit() -> None:
+    """Their poles have the radii sqrt(0.875) = 0.935, 0.25 and sqrt(0.5) = 0.707."""
+    filter = Filter.from_sections(ROWS, rate=RATE)
+    first, second, third = AS_GIVEN
+    outward, inward = cascade(filter, ordering="outward"), cascade(filter, ordering="inward")
+    assert outward.sections == (second, third, first)
+    assert inward.sections == (first, third, second)
+    assert (outward.pairing, outward.ordering, outward.scaling) == ("given", "outward", "none")
+
+
+def test_sections_equally_far_from_the_circle_keep_their_order() -> None:
+    rows = [[1.0, 0.5, 0.0, 1.0, -0.5, 0.0], [1.0, 0.25, 0.0, 1.0, 0.5, 0.0]]
+    for ordering in ("outward", "inward"):
+        built = cascade(Filter.from_sections(rows, rate=RATE), ordering=ordering)
+        assert [section.b[1] for section in built.sections] == [0.5, 0.25]
+
+
+def test_a_section_outside_the_circle_is_as_far_as_its_distance() -> None:
+    rows = [[1.0, 0.0, 0.0, 1.0, -1.25, 0.0], [1.0, 0.0, 0.0, 1.0, -0.5, 0.0]]
+    built = cascade(Filter.from_sections(rows, rate=RATE), ordering="outward")
+    assert [section.a[1] for section in built.sections] == [-0.5, -1.25]
+
+
+def test_a_stated_pairing_takes_given_sections_apart() -> None:
+    """Two sections of first order, zeros the wrong way round: their real poles go into one section of second order."""
+    rows = [[2.0, -0.5, 0.0, 1.0, -0.875, 0.0], [1.0, -0.75, 0.0, 1.0, -0.25, 0.0]]
+    built = cascade(Filter.from_sections(rows, rate=RATE), pairing="nearest")
+    assert (built.pairing, built.ordering, built.scaling) == ("nearest", "outward", "none")
+    # 2 (1 - 0.25 z^-1) (1 - 0.75 z^-1) over (1 - 0.875 z^-1) (1 - 0.25 z^-1): all dyadic, and S = 1.
+    assert built.sections == (Polynomials((2.0, -2.0, 0.375), (1.0, -1.125, 0.21875)),)
+
+
+def test_a_second_order_filter_given_as_polynomials_is_a_section() -> None:
+    built = cascade(Filter.from_coefficients([0.3, 0.2, 0.1], [2.0, 0.5, 0.25], rate=RATE))
+    assert built.pairing == "given"
+    assert built.sections[0].b == (0.15, 0.1, 0.05)
+
+
+# --- codes
+
+
+CODES = [[4096, -100, 0, 4096, -7807, 3733], [1, 2, 3, 4096, 0, 17]]
+
+
+def test_codes_are_drawn_as_the_cascade_that_they_are() -> None:
+    for choices in ({}, {"pairing": "given", "ordering": "given", "scaling": "none"}):
+        built = cascade(Filter.from_codes(CODES, "Q4.12", rate=RATE), **choices)
+        assert (built.pairing, built.ordering, built.scaling) == ("given", "given", "none")
+        assert built.sections[0] == Polynomials((1.0, -100 / 4096), (1.0, -7807 / 4096, 3733 / 4096))
+        assert built.sections[1] == Polynomials((1 / 4096, 2 / 4096, 3 / 4096), (1.0, 0.0, 17 / 4096))
+
+
+@pytest.mark.parametrize(
+    ("choices", "allowed"),
+    [
+        ({"pairing": "nearest"}, "given"), ({"ordering": "outward"}, "given"), ({"ordering": "inward"}, "given"),
+        ({"scaling": "l2"}, "none"), ({"decomposition": "whole"}, "cascade"),
+    ],
+)
+def test_codes_refuse_what_would_change_them(choices: dict[str, str], allowed: str) -> None:
+    with pytest.raises(StructureError, match=f'codes of Q4.12.*Allowed for it is "{allowed}"'):
+        build(Filter.from_codes(CODES, "Q4.12", rate=RATE), form="direct-1", **choices)
+
+
+# --- pairing and ordering against scipy's zpk2sos as an independent implementation of the same rule
+
+
+def families(order: int, kind: str, band: str, edge: float) -> tuple[np.ndarray, np.ndarray, float]:
+    edges = [edge, edge * 1.5] if band == "bandpass" else edge
+    if kind == "ellip":
+        return signal.ellip(order, 0.5, 50, edges, band, output="zpk")
+    if kind == "cheby1":
+        return signal.cheby1(order, 0.5, edges, band, output="zpk")
+    if kind == "cheby2":
+        return signal.cheby2(order, 40, edges, band, output="zpk")
+    return signal.butter(order, edges, band, output="zpk")
+
+
+def paired_exactly(z: np.ndarray, p: np.ndarray, k: float) -> tuple[list[complex], list[complex], float]:
+    """The upper half plane and its mirror image, so that nobody's tolerance matters."""
+    both = []
+    for roots in (z, p):
+        upper = [complex(root) for root in roots if root.imag > 1e-12]
+        real = [float(root.real) for root in roots if abs(root.imag) <= 1e-12]
+        both.append([*upper, *(root.conjugate() for root in upper), *real])
+    return both[0], both[1], float(k)
+
+
+def clear(values: list[float]) -> bool:
+    """Whether no two differ by so little that the choice between them is one of rounding."""
+    return all(b - a > 1e-9 or b == a for a, b in pairwise(sorted(values)))
+
+
+def unambiguous(z: list[complex], p: list[complex]) -> bool:
+    uppers = [root for root in p if complex(root).imag >= 0]
+    zeros = [root for root in z if complex(root).imag >= 0]
+    radii = clear([abs(1 - abs(root)) for root in uppers])
+    return radii and all(clear([abs(zero - pole) for zero in set(zeros)]) for pole in uppers)
+
+
+@given(
+    st.integers(1, 9), st.sampled_from(["ellip", "cheby1", "cheby2", "butter"]),
+    st.sampled_from(["lowpass", "highpass", "bandpass"]), st.integers(20, 600).map(lambda n: n / 1000),
+)
+def test_pairing_and_ordering_agree_with_zpk2sos(order: int, kind: str, band: str, edge: float) -> None:
+    z, p, k = paired_exactly(*families(order, kind, band, edge))
+    assume(unambiguous(z, p))
+    built = cascade(Filter.from_zeros_poles(z, p, k, rate=RATE))
+    wanted = signal.zpk2sos(z, p, k, pairing="nearest")
+    wanted[0, :3] /= k
+    # Coefficients are at most 2 and a few roundings of 2^-53 each on both sides; the pairing is right or far off.
+    np.testing.assert_allclose(rows_of(built), wanted, rtol=0, atol=1e-14)
+
+
+@given(st.integers(0, 2**32 - 1), st.integers(0, 5), st.integers(0, 5), st.integers(0, 3), st.integers(0, 3))
+def test_pairing_agrees_with_zpk2sos_on_any_roots(
+    seed: int, zero_pairs: int, pole_pairs: int, real_zeros: int, real_poles: int
+) -> None:
+    """Real roots, odd orders, more poles or more zeros: filled up at z = 0 on both sides."""
+    rng = np.random.default_rng(seed)
+    z, p = roots(rng, zero_pairs, real_zeros), roots(rng, pole_pairs, real_poles)
+    count = max(len(z), len(p))
+    assume(count > 0)
+    z, p = [*z, *[0.0] * (count - len(z))], [*p, *[0.0] * (count - len(p))]
+    built = cascade(Filter.from_zeros_poles(z, p, 1.0, rate=RATE))
+    np.testing.assert_allclose(rows_of(built), signal.zpk2sos(z, p, 1.0, pairing="nearest"), rtol=0, atol=1e-14)
+
+
+def roots(rng: np.random.Generator, pairs: int, real: int) -> list[complex]:
+    upper = rng.uniform(0.1, 0.99, pairs) * np.exp(1j * rng.uniform(0.1, 3, pairs))
+    return [*upper.tolist(), *upper.conj().tolist(), *rng.uniform(-0.99, 0.99, real).tolist()]
+
+
+@given(st.integers(1, 12), st.floats(200, 10000))
+def test_outward_ends_at_the_circle_and_inward_is_its_reverse(order: int, frequency: float) -> None:
+    filter = design(
+        "elliptic", rate=RATE, response="low-pass", order=order, frequency=frequency, ripple_db=1, stopband_db=60
+    )
+    outward, inward = cascade(filter), cascade(filter, ordering="inward")
+    radii = [radius(section) for section in outward.sections]
+    assert radii == sorted(radii)
+    assert [section.a for section in inward.sections] == [section.a for section in reversed(outward.sections)]
+
+
+@given(st.integers(1, 64).filter(lambda n: n % 7 in (1, 2)), st.sampled_from(["low-pass", "high-pass"]))
+def test_section_coefficients_are_the_roots_coefficients_rounded_once(order: int, kind: str) -> None:
+    filter = design("butterworth", rate=RATE, response=kind, order=order, frequency=300)
+    expected = {
+        (1.0, float(-2 * Fraction(p.real)), float(Fraction(p.real) ** 2 + Fraction(p.imag) ** 2))
+        for p in filter.zeros_poles().poles
+        if p.imag > 0
+    } | {(1.0, -p.real) for p in filter.zeros_poles().poles if p.imag == 0}
+    assert {section.a for section in cascade(filter).sections} == expected
+
+
+# --- shapes
+
+
+def test_an_odd_order_is_filled_up_at_the_origin() -> None:
+    """Near z = 1 the zero at 0 is nearer than those at -1: as zpk2sos has it, the real pole gets two of these."""
+    low = design("butterworth", rate=RATE, response="low-pass", order=5, frequency=1000)
+    high = design("butterworth", rate=RATE, response="high-pass", order=5, frequency=1000)
+    assert [(len(s.b), len(s.a)) for s in cascade(low).sections] == [(3, 2), (3, 3), (2, 3)]
+    assert [(len(s.b), len(s.a)) for s in cascade(high).sections] == [(2, 2), (3, 3), (3, 3)]
+
+
+def test_a_delay_becomes_leading_zeros_in_the_sections_paired_last() -> None:
+    """Three poles pairs and one zero pair, so that z^-4 is left: the pair on the circle's side keeps the zeros."""
+    poles = [0.9j, 0.5 + 0.5j, 0.25j]
+    poles = [*poles, *(pole.conjugate() for pole in poles)]
+    filter = Filter.from_zeros_poles([0.75j, -0.75j], poles, 1.0, rate=RATE)
+    built = cascade(filter)
+    assert [section.b[:2] for section in built.sections] == [(0.0, 0.0), (0.0, 0.0), (1.0, 0.0)]
+    found = [float(value) for value in response(built.diagram, 24, Fraction)]
+    assert found[:4] == [0.0] * 4
+    # The response of the roots themselves, as scipy expands them; a few roundings of values of about 1.
+    b, a = signal.zpk2tf([0.75j, -0.75j], poles, 1.0)
+    wanted = signal.lfilter([0.0] * (7 - len(b)) + list(np.atleast_1d(b)), a, np.eye(1, 24)[0])
+    np.testing.assert_allclose(found, wanted, rtol=0, atol=1e-13)
+
+
+def test_a_constant_and_a_pure_delay_can_be_divided() -> None:
+    constant = cascade(Filter.from_zeros_poles([], [], -0.5, rate=RATE))
+    assert constant.sections == (Polynomials((-0.5,), (1.0,)),)
+    late = cascade(Filter.from_zeros_poles([], [0.0, 0.0, 0.0], 0.5, rate=RATE))
+    assert [float(v) for v in response(late.diagram, 5, Fraction)] == pytest.approx([0, 0, 0, 0.5, 0], abs=2.0**-53)
+
+
+def test_a_finite_response_given_as_polynomials_can_be_divided() -> None:
+    b = [1.0, 0.5, -0.25, 0.125, 0.75, 0.5]
+    built = cascade(Filter.from_coefficients(b, rate=RATE))
+    assert all(section.a == (1.0,) for section in built.sections)
+    # Roots and three sections' coefficients are rounded: some ten relative errors of 2^-53 on values up to about 1.
+    np.testing.assert_allclose([float(v) for v in response(built.diagram, 8, Fraction)], [*b, 0, 0], rtol=0, atol=1e-14)
+
+
+def test_poles_and_zeros_on_the_circle_can_be_divided() -> None:
+    built = cascade(Filter.from_zeros_poles([1.0, -1.0, 1j, -1j], [1.0, 0.5, -1j, 1j], 1.0, rate=RATE))
+    assert {section.a for section in built.sections} == {(1.0, 0.0, 1.0), (1.0, -1.5, 0.5)}
+
+
+def test_order_64_can_be_divided_and_drawn() -> None:
+    filter = design("butterworth", rate=RATE, response="low-pass", order=64, frequency=1000)
+    built = cascade(filter)
+    assert len(built.sections) == 32 and built.diagram.counts().delays == 128
+    hertz = np.array([20.0, 500.0, 1000.0])
+    rows = [[*(s.b + (0.0, 0.0))[:3], *s.a] for s in built.sections]
+    # Sections' coefficients are rounded to 2^-53; the poles lie 0.003 from the circle, 32 sections multiply.
+    np.testing.assert_allclose(
+        Filter.from_sections(rows, rate=RATE).response(hertz), filter.response(hertz), rtol=1e-9
+    )
+    assert build(filter, form="transposed-2", decomposition="whole").diagram.counts().delays == 64
+
+
+def test_a_filter_of_zero_gain_stays_zero() -> None:
+    filter = Filter.from_coefficients([0.0], [1.0, 0.5, 0.25, 0.125], rate=RATE)
+    for scaling in ("none", "l2"):
+        built = cascade(filter, scaling=scaling)
+        assert response(built.diagram, 6, Fraction) == [0] * 6
+
+
+# --- E4: coefficient quantization of a 12th-order elliptic band-pass (Oppenheim & Schafer, ch. 6, from memory)
+
+E4_DENOMINATOR = [
+    1, -5.2258158439, 16.7847072872, -36.8831934498, 62.3969015615, -82.6537920646, 88.6743188605, -76.4726364287,
+    53.4097959907, -29.202122195, 12.2906738827, -3.5376374095, 0.6262814625,
+]
+
+
+def elliptic_band_pass() -> Filter:
+    """Between 0.99 and 1.01, and 0.01: 0.173724 dB and 40.0864 dB as printed, here to all digits."""
+    return design(
+        "elliptic", rate=2.0, response="band-pass", order=6, frequency=(0.3, 0.4),
+        ripple_db=20 * math.log10(1.01 / 0.99), stopband_db=20 * math.log10(1.01 / 0.01),
+    )
+
+
+def rounded(values: tuple[float, ...], fraction_bits: int) -> list[float]:
+    scale = 2**fraction_bits
+    return [round(value * scale) / scale for value in values]
+
+
+def test_the_band_pass_has_six_sections_and_the_published_radius() -> None:
+    built = cascade(elliptic_band_pass())
+    assert [(len(s.b), len(s.a)) for s in built.sections] == [(3, 3)] * 6
+    # max |p| = 0.9933361, printed to 7 digits.
+    assert max(math.sqrt(section.a[2]) for section in built.sections) == pytest.approx(0.9933361, abs=5e-8)
+
+
+@pytest.mark.parametrize(("bits", "radius"), [(8, 0.99216), (10, 0.99412), (12, 0.99314), (16, 0.99332)])
+def test_rounded_sections_stay_stable(bits: int, radius: float) -> None:
+    """Section coefficients in [-2, 2): computed independently for this project, printed to 5 digits."""
+    tables = [rounded(section.a, bits - 2) for section in cascade(elliptic_band_pass()).sections]
+    assert max(math.sqrt(a[2]) for a in tables) == pytest.approx(radius, abs=5e-6)
+
+
+@pytest.mark.parametrize(
+    ("bits", "radius"), [(16, 1.10778), (20, 1.02108), (24, 0.99185), (28, 0.99309)]
+)
+def test_the_rounded_whole_denominator_does_not(bits: int, radius: float) -> None:
+    """a with 7 integer bits and the sign: computed independently for this project, printed to 5 digits."""
+    built = build(elliptic_band_pass(), form="direct-1", decomposition="whole")
+    (section,) = built.sections
+    # Printed to 10 decimals; the edges of the design behind the print are as exact as those here.
+    np.testing.assert_allclose(section.a, E4_DENOMINATOR, rtol=0, atol=6e-11)
+    assert max(abs(np.roots(rounded(section.a, bits - 8)))) == pytest.approx(radius, abs=2e-5)
+
+
+# --- refusals and hazards
+
+
+@pytest.mark.parametrize(
+    ("choices", "message"),
+    [
+        ({"decomposition": "cascades"}, 'no decomposition \'cascades\'. Did you mean "cascade"'),
+        ({"pairing": "neares"}, 'no pairing \'neares\'. Did you mean "nearest".*Allowed are nearest, given'),
+        ({"ordering": "upward"}, 'no ordering \'upward\'. Did you mean "outward"'),
+        ({"scaling": "L2"}, "no scaling 'L2'.*Allowed are none, l2"),
+        ({"pairing": "given"}, 'of order 12, was not given as sections.*Allowed for it is "nearest"'),
+        ({"ordering": "given"}, 'Allowed with it are "outward" and "inward"'),
+    ],
+)
+def test_wrong_choices_are_refused(choices: dict[str, str], message: str) -> None:
+    with pytest.raises(StructureError, match=message):
+        build(elliptic_band_pass(), form="direct-1", **choices)
+
+
+def test_a_long_polynomial_is_not_solved() -> None:
+    filter = Filter.from_coefficients([1.0] * 400, rate=RATE)
+    with pytest.raises(StructureError, match=r'order 399; up to 128.*decomposition "whole"'):
+        cascade(filter)
+    assert build(filter, form="transposed-2", decomposition="whole").diagram.counts().delays == 399
+
+
+def test_the_decompositions_are_these() -> None:
+    assert decompositions() == ("whole", "cascade")
+
+
+def test_an_undivided_high_order_near_the_circle_is_a_hazard_and_a_cascade_is_none() -> None:
+    whole = build(elliptic_band_pass(), form="direct-2", decomposition="whole")
+    assert len(whole.hazards) == 1 and "order 12" in whole.hazards[0]
+    assert cascade(elliptic_band_pass()).hazards == ()
+
+
+@pytest.mark.parametrize("near", [0.989, 0.991])
+def test_the_same_poles_are_near_however_they_are_given(near: float) -> None:
+    p = [near, 0.5, -0.5, 0.25, -0.25]
+    by_roots = Filter.from_zeros_poles([], p, 1.0, rate=RATE)
+    by_coefficients = Filter.from_coefficients([1.0], np.poly(p).tolist(), rate=RATE)
+    for filter in (by_roots, by_coefficients):
+        assert bool(build(filter, form="direct-1", decomposition="whole").hazards) == (near > 0.99)
+
+
+def test_what_float64_makes_unstable_is_said() -> None:
+    """Eighth order at 20 Hz: expanded and rounded, poles leave the unit circle; the cascade keeps them."""
+    filter = design("butterworth", rate=RATE, response="low-pass", order=8, frequency=20)
+    hazards = build(filter, form="direct-2", decomposition="whole").hazards
+    assert any("rounded to float64" in sentence for sentence in hazards)
+    assert cascade(filter).hazards == ()
