@@ -1,7 +1,7 @@
 """A realization: filter + decomposition + form + format, with its state. The thing that runs."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from functools import cached_property
 from typing import TYPE_CHECKING, TypeVar
 
@@ -176,11 +176,7 @@ def _with_codes(filter: Filter, format: Format) -> Format:
     word = parse_word(filter.codes.word, "word", least_integer=-999)
     if format.coefficients_stated and format.coefficients.word != word:
         raise FormatError(f"The filter is given as codes of {word}, which they keep: leave `coefficients` out of the format.")
-    kept = object.__new__(Fixed)
-    for name, value in vars(format).items():
-        object.__setattr__(kept, name, value)
-    object.__setattr__(kept, "coefficients", replace(format.coefficients, word=word, bits=word.bits))
-    return kept
+    return format.with_coefficient_word(word)
 
 
 def _unstable_in(diagram: Diagram, channel: int) -> int:

@@ -76,7 +76,8 @@ def test_new_values_of_an_equal_graph_make_the_same_program_where_points_and_len
 def tapped(length: int, fold: str | None, values: list[float]) -> Diagram:
     """The same line as one node."""
     b = Builder()
-    b.output(b.taps(b.input(), "h", values, fold=fold, section=0))
+    symmetry = None if fold == "last first" else fold
+    b.output(b.taps(b.input(), "h", values, fold=symmetry, last_first=fold == "last first", section=0))
     assert len(values) == length
     return b.build()
 
@@ -89,7 +90,9 @@ def explicit(length: int, fold: str | None, values: list[float]) -> Diagram:
     for k in range(1, length):
         line.append(b.delay(f"x{k}", line[-1]))
     terms = []
-    for k in range((length + 1) // 2 if fold else length):
+    if fold == "last first":
+        terms = [b.gain(line[k], f"h{k}", values[k], section=0, part="b") for k in reversed(range(length))]
+    for k in range({None: length, "last first": 0}.get(fold, (length + 1) // 2)):
         last = length - 1 - k
         if fold is None or last == k:
             if fold != "odd":
@@ -102,7 +105,7 @@ def explicit(length: int, fold: str | None, values: list[float]) -> Diagram:
 
 
 @settings(max_examples=60)
-@given(SEEDS, st.integers(2, 9), st.sampled_from([None, "even", "odd"]))
+@given(SEEDS, st.integers(2, 9), st.sampled_from([None, "last first", "even", "odd"]))
 def test_a_tapped_line_equals_its_delays_gains_and_sum(seed: int, length: int, fold: str | None) -> None:
     rng = Random(seed)
     half = [rng.randint(-127, 127) / 128 for _ in range((length + 1) // 2)]
@@ -110,7 +113,7 @@ def test_a_tapped_line_equals_its_delays_gains_and_sum(seed: int, length: int, f
         half[-1] = 0.0
     other = half[: length // 2][::-1]
     values = half + (other if fold == "even" else [-v for v in other])
-    if fold is None:
+    if fold in (None, "last first"):
         values = [rng.randint(-127, 127) / 128 for _ in range(length)]
     format = random_format(rng)
     x = signal(seed)

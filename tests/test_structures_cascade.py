@@ -76,10 +76,18 @@ def test_sections_equally_far_from_the_circle_keep_their_order() -> None:
         assert [section.b[1] for section in built.sections] == [0.5, 0.25]
 
 
-def test_a_section_outside_the_circle_is_as_far_as_its_distance() -> None:
-    rows = [[1.0, 0.0, 0.0, 1.0, -1.25, 0.0], [1.0, 0.0, 0.0, 1.0, -0.5, 0.0]]
+@pytest.mark.parametrize(("outside", "sections"), [(1.25, [-0.5, -1.25]), (1.75, [-1.75, -0.5])])
+def test_a_section_outside_the_circle_is_as_far_as_its_distance(outside: float, sections: list[float]) -> None:
+    """0.25 and 0.75 from the circle, beside a section at 0.5 from it."""
+    rows = [[1.0, 0.0, 0.0, 1.0, -outside, 0.0], [1.0, 0.0, 0.0, 1.0, -0.5, 0.0]]
     built = cascade(Filter.from_sections(rows, rate=RATE), ordering="outward")
-    assert [section.a[1] for section in built.sections] == [-0.5, -1.25]
+    assert [section.a[1] for section in built.sections] == sections
+
+
+def test_a_section_without_poles_is_farthest_from_the_circle() -> None:
+    rows = [[1.0, 0.0, 0.0, 1.0, -0.5, 0.0], [1.0, 0.5, 0.25, 1.0, 0.0, 0.0]]
+    built = cascade(Filter.from_sections(rows, rate=RATE), ordering="outward")
+    assert [section.a for section in built.sections] == [(1.0,), (1.0, -0.5)]
 
 
 def test_a_stated_pairing_takes_given_sections_apart() -> None:
@@ -190,6 +198,23 @@ def test_pairing_agrees_with_zpk2sos_on_any_roots(
 def roots(rng: np.random.Generator, pairs: int, real: int) -> list[complex]:
     upper = rng.uniform(0.1, 0.99, pairs) * np.exp(1j * rng.uniform(0.1, 3, pairs))
     return [*upper.tolist(), *upper.conj().tolist(), *rng.uniform(-0.99, 0.99, real).tolist()]
+
+
+def test_poles_outside_the_circle_pair_by_their_distance_too() -> None:
+    """0.4 and 0.3 from the circle on its two sides: the nearer takes the zeros beside it, as zpk2sos has it."""
+    z, p = [1.4j, -1.4j, 0.6j, -0.6j], [1.4j + 0.01, 0.01 - 1.4j, 0.7j, -0.7j]
+    built = cascade(Filter.from_zeros_poles(z, p, 1.0, rate=RATE))
+    np.testing.assert_allclose(rows_of(built), signal.zpk2sos(z, p, 1.0, pairing="nearest"), rtol=0, atol=1e-14)
+
+
+def test_of_poles_equally_far_complex_ones_come_first_and_then_the_left() -> None:
+    """Chosen first means drawn last under `outward`."""
+    p = [0.5j, -0.5j, 0.5, -0.5]
+    built = cascade(Filter.from_zeros_poles([0.0] * 4, p, 1.0, rate=RATE))
+    assert [section.a for section in built.sections] == [(1.0, 0.0, -0.25), (1.0, 0.0, 0.25)]
+    mirrored = [0.25 + 0.5j, 0.25 - 0.5j, -0.25 + 0.5j, -0.25 - 0.5j]
+    built = cascade(Filter.from_zeros_poles([0.0] * 4, mirrored, 1.0, rate=RATE))
+    assert [section.a[1] for section in built.sections] == [-0.5, 0.5]
 
 
 @given(st.integers(1, 12), st.floats(200, 10000))

@@ -95,16 +95,18 @@ class Builder:
         return self._add(Sum(self._label(label, "sum"), signed, grow))
 
     def taps(self, source: Ref, label: str, values: Sequence[ArrayLike], *, fold: str | None = None,
-             length: int | None = None, section: int | None = None, part: str = "b") -> Ref:
-        """A tapped delay line with its weighted sum.
+             last_first: bool = False, section: int | None = None, part: str = "b") -> Ref:
+        """A tapped delay line with its weighted sum, tap 0 added first, or last.
 
-        `values`: one coefficient a tap; folded, all `length` taps are given and must have that symmetry.
+        `values`: one coefficient a tap; folded ("even" or "odd"), all taps are given and must have that symmetry.
         """
         values = list(values)
-        length = len(values) if length is None else length
-        kept = values if fold is None else folded_half(values, fold, label)
-        slots = tuple(self._slot(Slot(f"{label}{i}", section, part), value) for i, value in enumerate(kept))
-        return self._add(Taps(self._label(label, "taps"), self._own(source), slots, length, fold))
+        if fold is not None and last_first:
+            raise DiagramError(f'The taps "{label}" are folded: pairs are added from both ends inwards, never last first.')
+        kept = list(enumerate(values if fold is None else folded_half(values, fold, label)))
+        ordered = reversed(kept) if last_first else kept
+        slots = tuple(self._slot(Slot(f"{label}{i}", section, part), value) for i, value in ordered)
+        return self._add(Taps(self._label(label, "taps"), self._own(source), slots, len(values), fold, last_first))
 
     def round(self, source: Ref, label: str = "") -> Ref:
         """A register where the rules give none."""

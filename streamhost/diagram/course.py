@@ -5,7 +5,7 @@ from math import inf
 
 import numpy as np
 
-from streamhost.diagram.fan import BoolArray, Fan, FloatArray, run
+from streamhost.diagram.fan import MOST_DENSE, BoolArray, Fan, FloatArray, run
 
 DOUBLINGS = 30
 """2^30 frames, six hours at 48 kHz: what still gains energy then is taken to do so for ever (poles within 1e-9)."""
@@ -15,6 +15,14 @@ STILL_GROWING = 1e-2
 errors add less than 1e-4."""
 
 GONE = 1e-40
+"""A power of A so small ends the doubling: nothing that can be told apart from 0 is left."""
+
+LONGEST_RUN = 1 << 18
+LARGEST_RUN = 1 << 25
+"""Frames, and frames times exits, that a response with many states is run for."""
+
+NEGLIGIBLE = 1e-24
+EXPLODED = 1e100
 
 
 @dataclass(frozen=True, eq=False)
@@ -22,7 +30,8 @@ class Course:
     """The responses of a fan, in order of its exits.
 
     fan: the stable part; head: the first frames, (frames, exits); rest: how they go on, from the frame after the
-    head; ended: exits whose response is over; energy: sum of squares, infinite where the response does not die out.
+    head; ended: exits whose response is over, or has been run down below 1e-12 of itself; energy: sum of squares,
+    infinite where the response does not die out.
     """
 
     fan: Fan
@@ -42,16 +51,37 @@ def follow(fan: Fan) -> Course:
 
     A response of S states that is 0 for S frames after the first S + 1 is over (Cayley and Hamilton). A loop whose
     poles lie outside the unit circle counts as seen by everything it drives, even where zeros cancel it exactly.
+    With many states the response itself is run, and what lasts longer than that counts as never dying out.
     """
     stable, grows = fan.pruned().without_growth()
     stable = stable.pruned()
     states = len(stable.entry)
-    head, state = run(stable, 2 * states + 2)
+    with np.errstate(over="ignore", invalid="ignore"):
+        head, state = run(stable, 2 * states + 2)
     ended = ~head[states + 1:].any(axis=0) & ~grows
     rest = Fan(stable.A, state, np.where(ended[:, None], 0.0, stable.exits), np.zeros_like(stable.direct)).pruned()
+    if len(rest.entry) > MOST_DENSE:
+        return _run_down(stable, grows)
     energy = (head**2).sum(axis=0) + tail_energy(rest)
     energy[grows] = inf
     return Course(stable, head, rest, ended, energy)
+
+
+def _run_down(fan: Fan, grows: BoolArray) -> Course:
+    """The course from the response itself, run until its second half is negligible."""
+    frames = 4 * len(fan.entry)
+    most = max(frames, min(LONGEST_RUN, LARGEST_RUN // len(fan.direct)))
+    while True:
+        with np.errstate(over="ignore", invalid="ignore"):
+            head, state = run(fan, frames)
+            energy, late = (head**2).sum(axis=0), (head[frames // 2:] ** 2).sum(axis=0)
+            over = late <= NEGLIGIBLE * energy
+        if over.all() or frames >= most or not np.abs(state).max() < EXPLODED:
+            break
+        frames = min(2 * frames, most)
+    ended = over & ~grows
+    silent = Fan(fan.A, np.zeros_like(fan.entry), fan.exits, np.zeros_like(fan.direct)).pruned()
+    return Course(fan, head, silent, ended, np.where(ended, energy, inf))
 
 
 def tail_energy(fan: Fan) -> FloatArray:

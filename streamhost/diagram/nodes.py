@@ -134,7 +134,9 @@ class Sum(Node):
 
 @dataclass(frozen=True)
 class Taps(OneSource):
-    """A tapped delay line with its weighted sum; `coefficients` are slots, one a tap.
+    """A tapped delay line with its weighted sum; `coefficients` are slots in the order of addition, one a tap.
+
+    Tap 0 is added first, or last where `last_first` says so.
 
     Folded ("even" or "odd" symmetry), taps from both ends are added or subtracted before one shared multiplication:
     `coefficients` then holds one slot a pair, and one for the middle tap of an odd length.
@@ -143,6 +145,7 @@ class Taps(OneSource):
     coefficients: tuple[int, ...]
     length: int
     fold: str | None = None
+    last_first: bool = False
     kind: ClassVar[str] = "taps"
 
     @property

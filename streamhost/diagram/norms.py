@@ -21,8 +21,9 @@ from streamhost.diagram.spectra import FiniteSpectrum, ResonantSpectrum, Spectru
 L1_ACCURACY = 1e-10
 MOST_FRAMES = 1 << 22
 MOST_WORK = 2e10
-MOST_SOLVED = 128
-"""States above which spectra are taken from the impulse response rather than solved for."""
+MOST_SOLVED = 64
+LONGEST_TRANSFORM = 1 << 18
+"""Above so many states spectra are taken from the impulse response, if it is no longer than that, not solved for."""
 
 SETTLED = 1e-12
 LEAST_SETTLING = 64
@@ -33,7 +34,7 @@ class Norms:
     """Norms of impulse responses h, each (responses,).
 
     l1: sum |h|, never too small; l1_slack: what it may be too large by, 1e-9 of it or less unless the response lasts
-    longer than 2^22 frames; infinite where the tail could not be bounded, and l1 is then the sum over those frames.
+    longer than 2^22 frames; infinite where the tail could not be bounded, and l1 is then the sum over what was run.
     l2: root of sum h^2; peak: largest magnitude of the frequency response, within 1e-6 of itself.
     """
 
@@ -111,7 +112,7 @@ def _norms(fan: Fan) -> Norms:
 
 def _absolute_sums(course: Course) -> tuple[FloatArray, FloatArray]:
     l1 = np.where(np.isfinite(course.energy), np.abs(course.head).sum(axis=0), inf)
-    slack = np.zeros_like(l1)
+    slack = np.where(course.ended & course.head[len(course.head) // 2:].any(axis=0), inf, 0.0)
     if course.lively.any():
         lively = course.lively
         total, bound, _ = _summed_until_small(course.rest.watched(lively), l1[lively])
@@ -161,10 +162,13 @@ def _spectra(course: Course) -> list[tuple[BoolArray, Spectrum]]:
     if course.ended.any():
         found.append((course.ended, FiniteSpectrum(_without_silence(course.head[:, course.ended]))))
     if course.lively.any():
-        fan = course.fan.watched(course.lively)
-        if len(fan.entry) > MOST_SOLVED:
-            frames = _summed_until_small(fan, np.zeros(len(fan.direct)))[2]
-            found.append((course.lively, FiniteSpectrum(responses(fan, frames))))
-        else:
-            found.append((course.lively, ResonantSpectrum(fan)))
+        found.append((course.lively, _endless_spectrum(course.fan.watched(course.lively))))
     return found
+
+
+def _endless_spectrum(fan: Fan) -> Spectrum:
+    if len(fan.entry) > MOST_SOLVED:
+        frames = _summed_until_small(fan, np.zeros(len(fan.direct)))[2]
+        if frames <= LONGEST_TRANSFORM:
+            return FiniteSpectrum(responses(fan, frames))
+    return ResonantSpectrum(fan)

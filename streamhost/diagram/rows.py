@@ -66,6 +66,8 @@ def propagate(diagram: Diagram, channel: int = 0, sources: Sequence[int] = ()) -
 def tap_weights(taps: Taps, coefficients: Sequence[Number], zero: Number) -> list[Number]:
     """The weight of each tap, unfolded; `coefficients` is indexed by slot."""
     half = [coefficients[slot] for slot in taps.coefficients]
+    if taps.last_first:
+        half.reverse()
     if taps.fold is None:
         return half + [zero] * (taps.length - len(half))
     middle = [half.pop()] if len(half) > taps.length // 2 else [zero] * (taps.length % 2)

@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 from streamhost.diagram.fan import ComplexArray, Fan, FloatArray
 
 CANDIDATES = 3
-ZOOMS = 9
+ZOOMS = 7
 ZOOM_POINTS = 9
 MARGINAL = 1e-9
 NUDGE = 1e-7
@@ -44,9 +44,16 @@ class FiniteSpectrum:
         return np.linspace(0.0, np.pi, len(magnitudes)), magnitudes
 
     def at(self, w: FloatArray) -> ComplexArray:
-        n = np.arange(len(self.h))
-        parts = np.array_split(w, 1 + w.size * n.size // CHUNK)
-        return np.concatenate([np.exp(-1j * np.outer(part, n)) @ self.h for part in parts])
+        """As rows of about sqrt(frames) frames: sum over rows of exp(-j w row) times the sum within the row."""
+        frames, exits = self.h.shape
+        width = 1 + int(np.sqrt(frames))
+        rows = np.zeros((width, width, exits))
+        rows.reshape(-1, exits)[:frames] = self.h
+        n = np.arange(width)
+        parts = np.array_split(w, 1 + w.size * width * exits // CHUNK)
+        return np.concatenate([np.einsum("qr,qre->qe", np.exp(-1j * np.outer(part, n * width)),
+                                         np.tensordot(np.exp(-1j * np.outer(part, n)), rows, axes=(1, 1)))
+                               for part in parts])
 
     def each(self, w: FloatArray) -> ComplexArray:
         return np.array([FiniteSpectrum(self.h[:, i:i + 1]).at(row)[:, 0] for i, row in enumerate(w)])

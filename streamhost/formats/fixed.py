@@ -5,23 +5,13 @@ own rounding or overflow beats them. Input stays half-even and saturating, accum
 """
 
 from collections.abc import Mapping
-from dataclasses import dataclass, fields
+from dataclasses import dataclass, replace
 
-from streamhost.errors import FormatError
-from streamhost.formats.parsing import (
-    Collector,
-    parse_accumulator,
-    parse_coefficients,
-    parse_place,
-    parse_product,
-)
+from streamhost.formats.resolving import resolved
 from streamhost.formats.rules import AccumulatorRule, CoefficientRule, ProductRule
-from streamhost.formats.words import OVERFLOWS, ROUNDINGS, Quantizer, Word
+from streamhost.formats.words import Quantizer, Word
 
 Place = str | Mapping[str, object]
-PRE_SUMS = ("exact", "half", "signal")
-FEEDBACKS = ("subtracted", "negated")
-_NO_WORD = Word(1, 1)
 
 
 @dataclass(frozen=True, init=False)
@@ -72,45 +62,18 @@ class Fixed:
         allow_vanishing: bool = False,
         allow_clamping: bool = False,
     ) -> None:
-        collect = Collector()
-        given = _under_arithmetic(collect, arithmetic, {
-            "signal": signal, "coefficients": coefficients, "state": state, "operand": operand, "accumulator": accumulator,
-        })
-        collect.choice("rounding", rounding, ROUNDINGS)
-        collect.choice("overflow", overflow, OVERFLOWS)
-        collect.choice("rounding_place", rounding_place, ("sum", "product"))
-        collect.choice("feedback", feedback, FEEDBACKS)
-        collect.choice("pre_sum", pre_sum, PRE_SUMS)
-        collect.dither("dither", dither)
-        collect.seed("dither_seed", dither_seed)
-        collect.flag("allow_vanishing", allow_vanishing)
-        collect.flag("allow_clamping", allow_clamping)
-        if given["signal"] is None:
-            collect.add("signal", 'is missing: a fixed-point format states its signal word, for instance signal = "Q1.15".')
-        if rounding_place == "product" and product is not None:
-            collect.add("product", 'and rounding_place = "product" say two things about one rounding: state one of them.')
-        collect.raise_any()
-        short = Quantizer(word=_NO_WORD, rounding=rounding, overflow=overflow, dither=dither is not None)
-        at_signal = parse_place(collect, "signal", given["signal"], short)
-        collect.raise_any()
-        follow = short.with_word(at_signal.word)
-        places = {
-            "signal": at_signal,
-            "input": parse_place(collect, "input", input, Quantizer(at_signal.word, "half-even"), dither=False),
-            "operand": parse_place(collect, "operand", given["operand"], at_signal),
-            "state": parse_place(collect, "state", given["state"], follow),
-            "output": parse_place(collect, "output", output, follow),
-            "coefficients": parse_coefficients(collect, given["coefficients"], at_signal.word.bits,
-                                               allow_vanishing, allow_clamping),
-            "product": ProductRule(at_signal.word.fraction, rounding) if rounding_place == "product"
-            else parse_product(collect, product),
-            "accumulator": parse_accumulator(collect, given["accumulator"]),
-        }
-        collect.raise_any()
-        places |= {"feedback": feedback, "pre_sum": pre_sum, "dither_seed": dither_seed, "arithmetic": arithmetic,
-                   "coefficients_stated": coefficients is not None}
-        for field in fields(self):
-            object.__setattr__(self, field.name, places[field.name])
+        stated = {key: value for key, value in locals().items() if key != "self"}
+        for name, value in resolved(stated).items():
+            object.__setattr__(self, name, value)
+
+    def with_coefficient_word(self, word: Word) -> "Fixed":
+        """The same format with coefficients in a word that is given."""
+        changed = object.__new__(Fixed)
+        for name, value in vars(self).items():
+            object.__setattr__(changed, name, value)
+        rule = replace(self.coefficients, word=word, bits=word.bits)
+        object.__setattr__(changed, "coefficients", rule)
+        return changed
 
     @property
     def label(self) -> str:
@@ -119,15 +82,3 @@ class Fixed:
             return self.arithmetic
         wide = f" state {self.state.word}" if self.state.word != self.signal.word else ""
         return f"{self.signal.word}{wide}"
-
-
-def _under_arithmetic(collect: Collector, name: str | None, given: dict[str, object]) -> dict[str, object]:
-    """The keys of a shipped arithmetic, overridden by what is given."""
-    from streamhost.formats.arithmetics import ARITHMETICS
-
-    if name is None:
-        return given
-    if name not in ARITHMETICS:
-        collect.choice("arithmetic", name, tuple(ARITHMETICS))
-        raise FormatError(collect.text(), collect.problems)
-    return {key: ARITHMETICS[name].get(key) if value is None else value for key, value in given.items()}

@@ -13,6 +13,9 @@ from streamhost.host.lane import Lane
 from streamhost.host.meters import Meters
 from streamhost.realization import Realization, Tally
 
+BLOCK = 16384
+"""Frames of a block: more than a sound card takes at once, so that the work between blocks does not count."""
+
 
 @dataclass(frozen=True)
 class Rendered:
@@ -62,8 +65,8 @@ def render_file(
     )
     with writer:
         lane = Lane(realization, source.channels, metered=isinstance(realization.format, Fixed))
-        host = Host([lane])
-        for block in read_blocks(source.path, host.block):
+        host = Host([lane], BLOCK)
+        for block in read_blocks(source.path, BLOCK):
             report(host.frames)
             host.step(block)
             _check_finite(lane.meters, destination, name)

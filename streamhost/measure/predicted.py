@@ -57,7 +57,12 @@ def _density(program: Program, channel: int, rms: FloatArray | None) -> Density:
     if isinstance(program.format, Float):
         assert rms is not None, "what floats round depends on the signal"
         return lambda w: float_spectrum(program, rms, w, channel)
-    return lambda w: noise_spectrum(program, w, channel)
+    return lambda w: _fixed_spectrum(program, w, channel)
+
+
+def _fixed_spectrum(program: Program, w: FloatArray, channel: int) -> FloatArray:
+    with np.errstate(invalid="ignore"):  # an error that does not die out is infinite at every frequency
+        return noise_spectrum(program, w, channel)
 
 
 def _weighted(density: Density, weight: Density | None) -> Density:

@@ -15,6 +15,8 @@ from streamhost.realization import Realization
 JUDGED_DB = 40.0
 PARTS = 16
 ZOOMS = 6
+DIGITS = 6
+"""Of the frequency: a maximum is flat, and where exactly it lies is rounding."""
 
 
 @dataclass(frozen=True)
@@ -58,7 +60,7 @@ def _of_channel(realization: Realization, band: Band, channel: int) -> Deviation
     db = np.where(judged, _deviation_db(asked, rounded), -1.0)
     worst = int(db.argmax())
     at, most = _zoomed(realization, hertz, worst, top, channel)
-    return Deviation(most, at, None if judged.all() else decibels(leak**2))
+    return Deviation(most, float(f"{at:.{DIGITS}g}"), None if judged.all() else decibels(leak**2))
 
 
 def _magnitudes(realization: Realization, hertz: FloatArray, channel: int) -> tuple[FloatArray, FloatArray]:

@@ -62,7 +62,7 @@ class SpectrumSum:
         self._window = 0.5 - 0.5 * np.cos(2.0 * np.pi * np.arange(length) / length)
         self._sum = np.zeros(length // 2 + 1)
         self._pending = np.zeros(0)
-        self._segments = self._overlaps = 0
+        self.segments = self._overlaps = 0
         self._continues = False
 
     def add(self, piece: FloatArray) -> None:
@@ -82,31 +82,31 @@ class SpectrumSum:
     def _take(self, segment: FloatArray) -> None:
         centred = segment - self._window @ segment / self._window.sum()
         self._sum += np.abs(np.fft.rfft(centred * self._window)) ** 2
-        self._segments += 1
+        self.segments += 1
         self._overlaps += self._continues
         self._continues = True
 
     def spectrum(self) -> Spectrum:
         """What has come so far."""
         spacing = self._rate / self._length
-        if not self._segments:
+        if not self.segments:
             return Spectrum(self._sum.copy(), spacing, 0.0, 0.0)
         squares = self._window**2
         one_sided = np.full(len(self._sum), 2.0)
         one_sided[[0, -1]] = 1.0
-        power = one_sided * self._sum / (self._segments * self._length * squares.sum())
+        power = one_sided * self._sum / (self.segments * self._length * squares.sum())
         return Spectrum(power, spacing, self._effective_frames(squares), self._scatter())
 
     def _effective_frames(self, squares: FloatArray) -> float:
         """(sum u)^2 / sum u^2, u the weight with which each frame enters."""
         half = self._length // 2
-        weight = self._segments * squares.sum()
-        square = self._segments * (squares @ squares) + 2.0 * self._overlaps * (squares[:half] @ squares[half:])
+        weight = self.segments * squares.sum()
+        square = self.segments * (squares @ squares) + 2.0 * self._overlaps * (squares[:half] @ squares[half:])
         return float(weight**2 / square)
 
     def _scatter(self) -> float:
         """Of two overlapping Hann segments the powers correlate by 1/36 (Welch 1967)."""
-        return (1.0 + 2.0 * self._overlaps / self._segments / 36.0) / self._segments
+        return (1.0 + 2.0 * self._overlaps / self.segments / 36.0) / self.segments
 
 
 def mean_spectrum(spectra: list[Spectrum]) -> Spectrum:

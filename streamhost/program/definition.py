@@ -128,6 +128,8 @@ class FixedDefinition:
 
     def taps(self, index: int, node: Taps, arithmetic: TapsArithmetic) -> int:
         line = [self.value[node.source], *reversed(self.lines.get(index, ()))]
+        if node.last_first:
+            line.reverse()
         fraction, total, exact = arithmetic.accumulator.fraction, 0, 0
         for i, slot in enumerate(node.coefficients):
             operand, at, halved = self.tap_operand(index, node, arithmetic, line, i)

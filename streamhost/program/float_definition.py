@@ -100,6 +100,8 @@ class FloatDefinition:
 
     def taps(self, index: int, node: Taps) -> Real:
         line = [self.value[node.source], *reversed(self.lines.get(index, ()))]
+        if node.last_first:
+            line.reverse()
         total: Real | None = None
         for i, slot in enumerate(node.coefficients):
             operand = self.tap_operand(node, line, i)

@@ -40,7 +40,7 @@ def nearest_pairs(solved: ZerosPoles) -> tuple[Polynomials, ...]:
 
 def from_circle(pole: complex) -> Fraction:
     """The distance | 1 - |p| | of a pole from the unit circle."""
-    return (1 - square_root(Fraction(pole.real) ** 2 + Fraction(pole.imag) ** 2))
+    return abs(1 - square_root(Fraction(pole.real) ** 2 + Fraction(pole.imag) ** 2))
 
 
 def _filled(solved: ZerosPoles) -> tuple[list[complex], list[complex]]:

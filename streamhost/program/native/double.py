@@ -111,7 +111,7 @@ class _DoublePrinter:
         self.text(f"a{index} = (0.0, 0.0)")
         self.text(f"for j in range({len(node.coefficients)}):")
         with self.text.indented():
-            operand = self.entry(index, node, "j")
+            operand = self.entry(index, node, f"({node.length - 1} - j)" if node.last_first else "j")
             if node.fold is not None:
                 last = self.entry(index, node, f"({node.length - 1} - j)")
                 pair = f"{'dd_add' if node.fold == 'even' else 'dd_sub'}({operand}, {last})"

@@ -124,6 +124,8 @@ class FloatPrinter:
     def operand(self, index: int, node: Taps, j: str) -> str:
         """What multiplication j reads: a tap, or a pair's sum in the operand's type."""
         last = str(node.length - 1 - int(j)) if j.isdigit() else f"({node.length - 1} - {j})"
+        if node.last_first:
+            return self.entry(index, node, last)
         if node.fold is None or last == j:
             return self.entry(index, node, j)
         pair = f"{self.wide(self.entry(index, node, j))} {'+' if node.fold == 'even' else '-'} " \
@@ -136,7 +138,8 @@ class FloatPrinter:
             return f"v{node.source}"
         offset, p, words = self.program.state_offsets[index], f"p{index}", node.stores
         place = f"{offset} + ({p} - {j} if {p} >= {j} else {p} - {j} + {words})"
-        return self.cast(self.program.types[node.source], f"S[{place}, c]")
+        stored = self.cast(self.program.types[node.source], f"S[{place}, c]")
+        return stored if j.isdigit() else f"(v{node.source} if {j} == 0 else {stored})"
 
     def store(self) -> None:
         single, rings = lines(self.program)

@@ -82,17 +82,21 @@ class TapsPrinter:
         place = f"{offset} + ({p} - {j} if {p} >= {j} else {p} - {j} + {words})"
         return f"S[{place}, c]" if j.isdigit() else f"({now} if {j} == 0 else S[{place}, c])"
 
+    def opposite(self, j: str) -> str:
+        """The tap as far from the other end."""
+        last = self.node.length - 1
+        return str(last - int(j)) if j.isdigit() else f"({last} - {j})"
+
     def print_tap(self, j: str, k: int, *, is_middle: bool) -> None:
         i = self.index
-        self.text(f"f{i} = {self.entry(j)}")
+        self.text(f"f{i} = {self.entry(self.opposite(j) if self.node.last_first else j)}")
         value, at, halved = Value(f"f{i}", self.bound), self.at, 0
         ordinals = self.arithmetic.ordinals[k]
         if self.node.fold is None or is_middle:
             operand = self.arithmetic.middle if is_middle else self.arithmetic.operand
         else:
             operand, halved = self.arithmetic.operand, self.arithmetic.halved
-            last = f"({self.node.length - 1} - {j})" if not j.isdigit() else str(self.node.length - 1 - int(j))
-            self.text(f"g{i} = {self.entry(last)}")
+            self.text(f"g{i} = {self.entry(self.opposite(j))}")
             value = value.plus(1 if self.node.fold == "even" else -1, Value(f"g{i}", self.bound))
             at += halved
             if self.arithmetic.pre is not None:

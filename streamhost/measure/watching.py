@@ -1,0 +1,117 @@
+"""What a traced kernel writes: the residues of fixed point, by which the white model is judged, and the power of every
+value in floating point, by which its noise is estimated."""
+
+import numpy as np
+from numpy.typing import NDArray
+
+from streamhost.formats import Fixed
+from streamhost.measure.predicted import Prediction, predicted_noise
+from streamhost.measure.residues import ResidueSum
+from streamhost.measure.whiteness import Expected, Whiteness, judged
+from streamhost.program.program import Program, RoundArithmetic
+from streamhost.program.sources import Source, noise_sources, traced_roundings
+
+FloatArray = NDArray[np.float64]
+
+WATCHED_BLOCKS = 32
+"""At most so many blocks are judged, spread evenly over the run after the settling time."""
+
+
+class FixedWatch:
+    """The residues of a fixed-point program in a run of `frames`, of which the first `wait` do not count."""
+
+    def __init__(self, program: Program, frames: int, wait: int, block: int) -> None:
+        self._program = program
+        self._sources = noise_sources(program)
+        self._columns, self._expected = _watched(program, self._sources)
+        self._sum = ResidueSum(np.array([rounding.lowest for rounding in self._expected]))
+        self._frame, self._chosen = 0, _chosen_blocks(frames, wait, block)
+        self._seen = False
+
+    def add(self, x: FloatArray, trace: FloatArray) -> None:
+        """The next block: the input (frames, channels) and the trace (frames, channels, columns)."""
+        if self._frame in self._chosen and self._expected:
+            for channel in range(x.shape[1]):
+                self._sum.add(x[:, channel], trace[:, channel, self._columns])
+            self._seen = True
+        self._frame += len(x)
+
+    def verdict(self) -> Whiteness:
+        """Whether the white model holds."""
+        sources = len(self._sources)
+        if not sources:
+            return Whiteness(None, "nothing is rounded")
+        if blind := _toward_zero(self._program, self._sources):
+            return Whiteness(False, f"rounding toward zero follows the sign of the signal ({blind})")
+        if len(self._expected) < sources:
+            inside = sources - len(self._expected)
+            return Whiteness(None, f"{inside} of {sources} errors arise inside sums, where none is written down")
+        return judged(self._expected, self._sum.result() if self._seen else None)
+
+    def prediction(self, rate: float) -> Prediction:
+        return predicted_noise(self._program, rate)
+
+
+class FloatWatch:
+    """The power of every value of a floating-point program; the first `wait` frames do not count."""
+
+    def __init__(self, program: Program, wait: int) -> None:
+        self._program, self._wait = program, wait
+        self._frame = self._samples = 0
+        self._squares = np.zeros(len(program.nodes))
+
+    def add(self, x: FloatArray, trace: FloatArray) -> None:
+        """The next block: the input (frames, channels) and the trace (frames, channels, nodes)."""
+        settled = trace[max(0, self._wait - self._frame) :]
+        with np.errstate(over="ignore", invalid="ignore"):  # an unstable one may run away to infinity
+            self._squares += np.einsum("fcn,fcn->n", settled, settled)
+        self._samples += settled.shape[0] * settled.shape[1]
+        self._frame += len(x)
+
+    def verdict(self) -> Whiteness:
+        return Whiteness(None, "what floating point rounds grows and shrinks with the signal: there is no such model")
+
+    def prediction(self, rate: float) -> Prediction:
+        """An estimate."""
+        return predicted_noise(self._program, rate, np.sqrt(self._squares / max(1, self._samples)))
+
+
+def watch(program: Program, frames: int, wait: int, block: int) -> FixedWatch | FloatWatch:
+    """What is to be seen of a program in a run of `frames`, given in blocks of `block`, after the first `wait`."""
+    if isinstance(program.format, Fixed):
+        return FixedWatch(program, frames, wait, block)
+    return FloatWatch(program, wait)
+
+
+def _chosen_blocks(frames: int, wait: int, block: int) -> set[int]:
+    """The first frames of the whole blocks to be judged."""
+    whole = range(-(-wait // block), frames // block)
+    count = min(len(whole), WATCHED_BLOCKS)
+    return {whole[k * len(whole) // count] * block for k in range(count)}
+
+
+def _watched(program: Program, sources: tuple[Source, ...]) -> tuple[list[int], tuple[Expected, ...]]:
+    """The columns of a trace that belong to sources of noise, and what the model says of each."""
+    columns = {index: column for column, index in enumerate(traced_roundings(program))}
+    nodes = [(source.places[0][0], source) for source in sources]
+    seen = [(node, source) for node, source in nodes if node in columns]
+    return [columns[node] for node, _ in seen], tuple(_expected(program, node, source) for node, source in seen)
+
+
+def _expected(program: Program, node: int, source: Source) -> Expected:
+    """A residue is before minus after, a source's error after minus before."""
+    arithmetic = program.arithmetic[node]
+    assert isinstance(arithmetic, RoundArithmetic), "a traced rounding is one"
+    quantizer = arithmetic.quantizer
+    step = 2.0**-quantizer.word.fraction
+    lowest = 0.0 if quantizer.rounding == "floor" else -0.5
+    return Expected(source.label, -source.mean / step, source.variance / step**2, lowest, quantizer.dither)
+
+
+def _toward_zero(program: Program, sources: tuple[Source, ...]) -> str:
+    """A source that rounds toward zero, if there is one: half of such an error is the sign of what is rounded."""
+    for source in sources:
+        arithmetic = program.arithmetic[source.places[0][0]]
+        if isinstance(arithmetic, RoundArithmetic) and arithmetic.quantizer.rounding == "toward-zero":
+            return source.label
+    return ""

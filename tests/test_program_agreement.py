@@ -1,0 +1,191 @@
+"""The agreement matrix: the native kernels against the definition, to the last bit, with the corners counted."""
+
+from collections import Counter
+from random import Random
+
+import numpy as np
+import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
+
+import streamhost as sh
+from native_runs import busy, run_counting, run_native
+from random_diagrams import random_diagram
+from random_formats import random_format
+from streamhost.errors import FormatError
+from streamhost.formats import OVERFLOWS, ROUNDINGS, Fixed, Float, Format
+from streamhost.program.native.kernel import Variant
+from streamhost.program.native.meters import meter_places
+from streamhost.program.program import Program
+from streamhost.program.run import lower, run_definition
+
+FORMS = ("direct-1", "direct-1-swapped", "direct-2", "transposed-1", "transposed-2")
+
+FORMATS: dict[str, Format] = {
+    **{f"Q1.15 {r} {o}": Fixed("Q1.15", coefficients="Q2.14", rounding=r, overflow=o) for r in ROUNDINGS for o in OVERFLOWS},
+    "every product": Fixed("Q1.15", coefficients="Q2.14", rounding_place="product", rounding="half-away", feedback="negated"),
+    "short products": Fixed("Q1.23", coefficients="Q2.22", product={"bits": 26, "rounding": "half-even"}),
+    "saturating accumulator": Fixed("Q1.15", coefficients="Q2.14",
+                                    accumulator={"bits": 32, "drop": -1, "overflow": "saturate"}),
+    "short accumulator": Fixed("Q1.15", coefficients="Q2.14", accumulator={"word": "Q2.20", "overflow": "wrap"}),
+    "high words": Fixed(arithmetic="32x32-high"),
+    "64-bit sums": Fixed(arithmetic="32x32+64"),
+    "two-word sums": Fixed("Q1.31", coefficients="Q2.30", rounding="half-even"),
+    "wide state, narrow operand": Fixed("Q1.15", coefficients="Q2.14", state="Q1.31", operand={"word": "Q1.15"}),
+    "dithered": Fixed("Q1.15", coefficients="Q2.14", state="Q1.23", operand="Q1.19", dither="tpdf", dither_seed=9),
+    "halved pre-sums": Fixed("Q1.15", coefficients="Q2.14", pre_sum="half", operand="Q1.14"),
+    "float32": Float("float32"),
+    "float64": Float("float64"),
+    "float32 fused": Float("float32", fused=True),
+    "float64 fused": Float("float64", fused=True),
+    "float32 sums float64": Float("float32", accumulator="float64", flush_subnormals=True),
+}
+
+
+def agree(program: Program, x: np.ndarray) -> Counter[str]:
+    """Plain, metered and definition agree, meters included; the corners that were taken."""
+    plain, metered = run_native(program, x), run_native(program, x, Variant(metered=True))
+    np.testing.assert_array_equal(plain.y, metered.y)
+    if isinstance(program.format, Float):
+        np.testing.assert_array_equal(plain.y, run_definition(program, x))
+        return Counter()
+    y, corners, evaluators = run_counting(program, x)
+    np.testing.assert_array_equal(plain.y, y)
+    counted: Counter[int] = Counter()
+    for evaluator in evaluators:
+        counters = evaluator.counters
+        for kind in (counters.saturations, counters.wraps, counters.accumulator_overflows):
+            counted.update(kind)
+    for key, place in meter_places(program).items():
+        index = key if key >= 0 else -1 - key
+        if key >= 0 and not any(isinstance(program.nodes[index], t) for t in ()):
+            assert metered.meters[place] == counted[index], program.nodes[index].label
+    assert metered.meters[0] == np.isnan(x).sum()
+    assert metered.marks.any() == (sum(counted.values()) > 0)
+    return corners
+
+
+def filter_of_two_sections() -> sh.Filter:
+    """Low poles and zeros: large inner values, and every term there."""
+    return sh.Filter.from_sections(
+        [[0.45, -0.3, 0.25, 1, -1.6, 0.75], [0.3, 0.2, -0.5, 1, 0.9, 0.5]], rate=48000)
+
+
+@pytest.mark.parametrize("form", FORMS)
+@pytest.mark.parametrize("name", FORMATS)
+def test_kernels_agree_with_the_definition(form: str, name: str) -> None:
+    realization = sh.realize(filter_of_two_sections(), form=form, format=FORMATS[name])
+    agree(realization.program, busy(240, 2, seed=5))
+
+
+@pytest.mark.parametrize("form", FORMS)
+def test_kernels_agree_with_the_definition_for_whole_filters(form: str) -> None:
+    for format in (Fixed("Q1.23", coefficients={"bits": 24}), Float("float32")):
+        agree(sh.realize(filter_of_two_sections(), form=form, decomposition="whole", format=format).program, busy(240, 1, 6))
+
+
+@pytest.mark.parametrize("rounding", ROUNDINGS)
+def test_every_corner_is_taken_many_times(rounding: str) -> None:
+    """Few fraction bits make ties common; half-scale coefficients drive every register over both ends."""
+    corners: Counter[str] = Counter()
+    for seed, overflow in enumerate(OVERFLOWS):
+        for form in FORMS:
+            format = Fixed("Q1.5", coefficients="Q2.3", rounding=rounding, overflow=overflow)
+            corners += agree(sh.realize(filter_of_two_sections(), form=form, format=format).program, busy(360, 2, seed))
+    for corner in ("tie above 0, odd", "tie above 0, even", "tie below 0, odd", "tie below 0, even", "nothing dropped",
+                   "overflow above", "overflow below", "operand lowest", "operand highest", "operand 0"):
+        assert corners[corner] >= 50, corners
+
+
+@settings(max_examples=24)
+@given(st.integers(0, 2**32 - 1))
+def test_kernels_of_random_diagrams_agree_with_the_definition(seed: int) -> None:
+    rng = Random(seed)
+    diagram = random_diagram(rng, rng.randint(3, 20), channels=rng.choice([1, 2]), step=rng.choice([None, 2.0**-6]))
+    try:
+        program = lower(diagram, random_format(rng))
+    except FormatError:
+        return
+    agree(program, busy(72, 2, seed=seed))
+
+
+@pytest.mark.parametrize("fold", [None, "last first", "even", "odd"])
+@pytest.mark.parametrize("name", ["Q1.15 half-up saturate", "dithered", "halved pre-sums", "two-word sums", "float32",
+                                  "saturating accumulator", "short accumulator", "float32 fused", "float32 sums float64"])
+def test_kernels_of_tapped_lines_agree_with_the_definition(fold: str | None, name: str) -> None:
+    rng = Random(3)
+    half = [rng.randint(-8000, 8000) / 16384 for _ in range(4)]
+    middle = [] if fold == "odd" else [0.25]
+    mirrored = [-v for v in reversed(half)] if fold == "odd" else half[::-1]
+    b = sh.Builder()
+    x = b.input()
+    symmetry = None if fold == "last first" else fold
+    line = b.taps(x, "h", half + middle + mirrored, fold=symmetry, last_first=fold == "last first", section=0)
+    b.output(b.sum(line, b.gain(b.delay("d", x, n=5), "g", 0.5, section=0), label="y"))
+    b.output(b.taps(x, "one", [0.75], section=0), "single")
+    agree(lower(b.build(), FORMATS[name]), busy(120, 2, seed=1))
+
+
+PARTS = st.lists(st.sampled_from([0, 1, 2, 3, 5, 7, 13, 31]), min_size=1, max_size=12)
+
+
+@settings(max_examples=25)
+@given(PARTS, st.sampled_from(["dithered", "float32", "Q1.15 half-up saturate"]), st.integers(1, 5))
+def test_any_division_into_blocks_gives_the_same_bits(parts: list[int], name: str, channels: int) -> None:
+    realization = sh.realize(filter_of_two_sections(), form="direct-1", format=FORMATS[name])
+    x = busy(400, channels, seed=8)[: sum(parts)]
+    whole = run_native(realization.program, x, Variant(metered=True))
+    split = run_native(realization.program, x, Variant(metered=True), blocks=parts)
+    np.testing.assert_array_equal(whole.y, split.y)
+    np.testing.assert_array_equal(whole.meters, split.meters)
+    np.testing.assert_array_equal(whole.memory.state, split.memory.state)
+
+
+@pytest.mark.parametrize("name", ["float32", "Q1.15 half-up saturate"])
+def test_a_channel_among_many_is_as_it_is_alone(name: str) -> None:
+    program = sh.realize(filter_of_two_sections(), form="transposed-2", format=FORMATS[name]).program
+    x = busy(200, 11, seed=2)
+    together = run_native(program, x).y
+    for channel in range(11):
+        np.testing.assert_array_equal(together[:, :, channel], run_native(program, x[:, channel : channel + 1]).y[:, :, 0])
+
+
+def test_codes_in_and_out_are_the_same_run_as_samples() -> None:
+    realization = sh.realize(filter_of_two_sections(), form="direct-1", format=FORMATS["Q1.15 half-up saturate"])
+    codes = np.random.default_rng(4).integers(-(2**15), 2**15, (500, 2))
+    out = realization.process_codes(codes)
+    realization.reset()
+    np.testing.assert_array_equal(out / 2.0**15, realization.process(codes / 2.0**15))
+
+
+def test_traced_residues_are_what_the_definition_dropped() -> None:
+    program = sh.realize(filter_of_two_sections(), form="transposed-2", format=FORMATS["Q1.15 half-up saturate"]).program
+    x = busy(100, 1, seed=3)
+    run = run_native(program, x, Variant(traced=True))
+    _, _, (evaluator,) = run_counting(program, x[:0])
+    from streamhost.program.run import input_code
+    from streamhost.program.sources import traced_roundings
+
+    for n, value in enumerate(x[:, 0]):
+        evaluator.step(input_code(float(value), program.format.input))  # type: ignore[union-attr]
+        for k, index in enumerate(traced_roundings(program)):
+            drop = program.arithmetic[index].drop  # type: ignore[union-attr]
+            assert run.trace[n, 0, k] == evaluator.dropped[index] / 2.0**drop
+
+
+def test_the_double_double_kernel_equals_float64_to_its_rounding_and_holds_far_more() -> None:
+    """An independent sum in exact fractions of the same difference equation."""
+    from fractions import Fraction
+
+    from streamhost.program.ideal import ideal_program
+
+    realization = sh.realize(sh.Filter.from_sections([[0.5, 0.25, 0.125, 1, -1.5, 0.6]], rate=48000), form="direct-1")
+    x = np.random.default_rng(0).uniform(-1, 1, (40, 1))
+    y = run_native(ideal_program(realization.program), x, Variant(double=True)).y
+    b, a = [Fraction(v) for v in (0.5, 0.25, 0.125)], [Fraction(v) for v in (-1.5, 0.6)]
+    out: list[Fraction] = []
+    for n in range(len(x)):
+        past = sum(b[k] * Fraction(float(x[n - k, 0])) for k in range(3) if n >= k)
+        out.append(past - sum(a[k - 1] * out[n - k] for k in (1, 2) if n >= k))
+    worst = max(abs(out[n] - Fraction(float(y[n, 0, 0])) - Fraction(float(y[n, 1, 0]))) for n in range(len(x)))
+    assert worst < Fraction(1, 2**95)  # 106 bits, less what 40 frames of a gain of about 10 take
