@@ -2,7 +2,7 @@
 
     python audio_samples/make.py
 
-plucked.wav  stereo, 8 s, peak -6 dBFS: plucked strings over the rumble of a turntable and footsteps, below 30 Hz.
+plucked.wav  stereo, 7.5 s, peak -12 dBFS: plucked strings over the rumble of a turntable and footsteps, below 30 Hz.
              What a small loudspeaker should not be given, under what it should.
 chord.wav    mono, 9 s, peak -30 dBFS: a quiet chord that fades into 3 s of silence.
              Noise and ringing show in the fade and in the silence.
@@ -130,9 +130,9 @@ def fall(count: int, first: int, last: int) -> Sound:
 
 
 def plucked() -> Sound:
-    count = 8 * RATE
+    count = 15 * RATE // 2
     sound = scaled(strings(count), 0.7) + scaled(rumble(count), 0.3)[:, np.newaxis]
-    return scaled(sound * fall(count, 6 * RATE, count - RATE // 20)[:, np.newaxis], 0.501187)  # -6 dBFS
+    return scaled(sound * fall(count, 11 * RATE // 2, count - RATE // 20)[:, np.newaxis], 0.251189)  # -12 dBFS
 
 
 def chord() -> Sound:

@@ -20,7 +20,7 @@ from streamhost.program.run import lower
 from streamhost.structures import Built, build
 
 if TYPE_CHECKING:
-    from streamhost.program.native.kernel import Memory
+    from streamhost.program.native.kernel import Kernel, Memory
 
 MOST_REAL_BITS = 53
 Scalar = TypeVar("Scalar", bound=np.generic)
@@ -48,6 +48,7 @@ class Realization:
         self.diagram: Diagram = built.diagram
         self.program: Program = lower(built.diagram, format)
         self._memory: Memory | None = None
+        self._kernels: dict[bool, Kernel] = {}
 
     @property
     def form(self) -> str:
@@ -117,7 +118,7 @@ class Realization:
         return Memory(self.program, channels)
 
     def _run(self, x: NDArray[Scalar], *, codes: bool) -> NDArray[Scalar]:
-        from streamhost.program.native.kernel import Variant, compile_kernel, no_trace
+        from streamhost.program.native.kernel import no_trace
 
         block = x[:, np.newaxis] if x.ndim == 1 else x
         if block.ndim != 2 or block.shape[1] < 1:
@@ -128,11 +129,18 @@ class Realization:
         if self._memory.channels != channels:
             raise RequestError(f"The blocks before had {self._memory.channels} channels, this one has {channels}. reset() first.")
         y = np.empty((frames, len(self.outputs) * channels), block.dtype)
-        kernel = compile_kernel(self.program, Variant(codes=codes, metered=True))
-        kernel.call(self._memory, np.ascontiguousarray(block), y, marks=np.zeros(block.shape, np.uint8), trace=no_trace())
+        marks = np.zeros(block.shape, np.uint8)
+        self._kernel(codes).call(self._memory, np.ascontiguousarray(block), y, marks=marks, trace=no_trace())
         if len(self.outputs) > 1:
             return y.reshape(frames, len(self.outputs), channels)
         return y[:, 0] if x.ndim == 1 else y
+
+    def _kernel(self, codes: bool) -> "Kernel":
+        from streamhost.program.native.kernel import Variant, compile_kernel
+
+        if codes not in self._kernels:
+            self._kernels[codes] = compile_kernel(self.program, Variant(codes=codes, metered=True))
+        return self._kernels[codes]
 
 
 def tally(program: Program, meters: NDArray[np.int64] | None) -> Tally:

@@ -122,7 +122,8 @@ def _taps(plan: _Plan) -> None:
         values = half + [[sign * c for c in half[i]] for i in reversed(range(length // 2))]
     if length == 1 and fold == "odd":
         fold = None
-    plan.keep(plan.builder.taps(plan.pick(), "t", values, fold=fold))
+    last_first = fold is None and plan.rng.random() < 0.3
+    plan.keep(plan.builder.taps(plan.pick(), "t", values, fold=fold, last_first=last_first))
 
 
 def _round(plan: _Plan) -> None:

@@ -8,7 +8,7 @@ from streamhost.commands.common import GAP
 @click.command()
 @click.argument("name", required=False)
 def forms(name: str | None) -> None:
-    """What can be chosen; with the NAME of a form, how it is drawn, what it costs, what it is good at and where it fails."""
+    """What can be chosen; with the NAME of a form, how it is drawn, what it costs, and what it is good and bad at."""
     from streamhost.structures import form
 
     click.echo(form(name).docs.strip() if name is not None else "\n\n".join(_everything()))
@@ -18,9 +18,7 @@ def _everything() -> list[str]:
     """Paragraphs, each headed by the key of a preset that takes one of the names."""
     from streamhost import structures
     from streamhost.filters import kinds
-    from streamhost.formats import OVERFLOWS, ROUNDINGS
-    from streamhost.formats.arithmetics import ARITHMETICS
-    from streamhost.formats.floats import FLOAT_TYPES
+    from streamhost.formats import ARITHMETICS, FLOATS, OVERFLOWS, ROUNDINGS
 
     summaries = {name: structures.form(name).summary for name in structures.forms()}
     width = max(map(len, summaries))
@@ -30,7 +28,7 @@ def _everything() -> list[str]:
         "structure.pairing": structures.PAIRINGS,
         "structure.ordering": structures.ORDERINGS,
         "structure.scaling": structures.SCALINGS,
-        "format.arithmetic": (*ARITHMETICS, *FLOAT_TYPES),
+        "format.arithmetic": (*ARITHMETICS, *FLOATS),
         "format.rounding": ROUNDINGS,
         "format.overflow": OVERFLOWS,
         "filter.kind": kinds(),

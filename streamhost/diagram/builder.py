@@ -120,9 +120,7 @@ class Builder:
         """The diagram. Raises DiagramError where a rule of signal-flow graphs is broken."""
         from streamhost.diagram.legality import check_diagram
 
-        channels = max((len(v) for v in self._values), default=1)
-        table = np.array([np.broadcast_to(v, (channels,)) for v in self._values], dtype=np.float64)
-        diagram = Diagram(tuple(self._nodes), tuple(self._slots), table.reshape(len(self._slots), channels))
+        diagram = Diagram(tuple(self._nodes), tuple(self._slots), self._table())
         if check:
             check_diagram(diagram)
         return diagram
@@ -130,6 +128,18 @@ class Builder:
     def _add(self, node: Node) -> Ref:
         self._nodes.append(node)
         return Ref(self, len(self._nodes) - 1)
+
+    def _table(self) -> np.ndarray[tuple[int, int], np.dtype[np.float64]]:
+        """The coefficients, (slots, channels)."""
+        channels = max((len(v) for v in self._values), default=1)
+        for slot, values in zip(self._slots, self._values, strict=True):
+            if len(values) not in (1, channels):
+                raise DiagramError(f'The coefficient "{slot.label}" has {len(values)} values, and others have {channels}: '
+                                   f"give one, or one per channel.")
+        table = np.empty((len(self._slots), channels))
+        for row, values in zip(table, self._values, strict=True):
+            row[:] = values
+        return table
 
     def _own(self, ref: Ref) -> int:
         if ref.builder is not self:

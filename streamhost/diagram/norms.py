@@ -67,6 +67,12 @@ def norms_to_output(diagram: Diagram, sources: Sequence[int], channel: int = 0, 
     return _norms(fans.to_output(diagram, sources, channel, output=output))
 
 
+def powers_from_input(diagram: Diagram, channel: int = 0, *, input: int = 0,
+                      nodes: Sequence[int] | None = None) -> FloatArray:
+    """The power that white noise of power 1 at an input gives at nodes, (nodes,): L2^2, without the rest."""
+    return follow(fans.from_input(diagram, channel, input=input, nodes=nodes)).energy
+
+
 def noise_gains(diagram: Diagram, sources: Sequence[int], channel: int = 0, *, output: int = 0) -> FloatArray:
     """The power at an output of white errors of power 1 at the source nodes, (sources,): L2^2, without the rest."""
     return follow(fans.to_output(diagram, sources, channel, output=output)).energy

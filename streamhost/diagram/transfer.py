@@ -86,12 +86,16 @@ def exact_transfer_function(diagram: Diagram, channel: int = 0, *,
 
 
 def transfer_function(diagram: Diagram, channel: int = 0) -> TransferFunction:
-    """The transfer function in float64: the exact one rounded where that is quick, else from determinants by FFT."""
-    matrices = loop_matrices(diagram, channel)
-    if _work(diagram, channel, matrices) <= QUICK_WORK:
+    """The transfer function in float64: the exact one rounded where that is quick, else `float_transfer_function`."""
+    if _work(diagram, channel, loop_matrices(diagram, channel)) <= QUICK_WORK:
         return _rounded(exact_transfer_function(diagram, channel))
+    return float_transfer_function(diagram, channel)
+
+
+def float_transfer_function(diagram: Diagram, channel: int = 0) -> TransferFunction:
+    """The transfer function in float64, nothing cancelled: determinants of the loops from values on the unit circle."""
     denominator = np.ones(1)
-    for matrix in matrices:
+    for matrix in loop_matrices(diagram, channel):
         denominator = np.convolve(denominator, _determinant_by_fft(matrix))
     frames = diagram.counts().delays + 1
     responses = [impulse_response(diagram, channel, input=i, frames=frames) for i in range(len(diagram.inputs))]

@@ -2,8 +2,8 @@
 
 import numpy as np
 
-from streamhost.diagram.norms import response_to_output
 from streamhost.diagram.nodes import Round
+from streamhost.diagram.norms import response_to_output
 from streamhost.formats import Float
 from streamhost.measure.frequencies import FloatArray
 from streamhost.program.ideal import FLOAT_ERROR

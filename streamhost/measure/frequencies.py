@@ -20,7 +20,7 @@ ORDER = 8
 def breakpoints(poles: Iterable[complex], low: float, high: float) -> FloatArray:
     """Points from `low` to `high`, both among them.
 
-    Octaves down from pi; and around the angle of each pole, in steps that double, from half its distance from the circle.
+    Octaves down from pi; and around each pole's angle, in steps that double from half its distance from the circle.
     """
     points = [np.array([low, high]), np.pi * 2.0 ** -np.arange(float(OCTAVES))]
     for angle, distance in {(abs(float(np.angle(pole))), max(abs(1.0 - abs(pole)), NEAREST)) for pole in poles}:

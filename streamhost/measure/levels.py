@@ -2,9 +2,6 @@
 
 from math import inf, log10
 
-import numpy as np
-from numpy.typing import NDArray
-
 
 def decibels(power_ratio: float) -> float:
     """10 lg of a ratio of powers; minus infinity for 0."""
@@ -16,11 +13,6 @@ def power_dbfs(power: float) -> float:
     return decibels(2.0 * power)
 
 
-def rms_dbfs(samples: NDArray[np.float64]) -> float:
-    """The level of all samples together, their mean included."""
-    return power_dbfs(float(np.mean(samples**2)))
-
-
 def peak_dbfs(peak: float) -> float:
     """The largest magnitude of a sample as dBFS: that of a full-scale sine, 1.0, is 0."""
-    return decibels(peak**2)
+    return 20.0 * log10(peak) if peak > 0.0 else -inf

@@ -38,7 +38,7 @@ def limit_band(limits: Mapping[str, object], rate: float) -> Band:
 
 
 def limit_signal(rate: float) -> NDArray[np.float64]:
-    """White noise, uniform, peak -20 dBFS, 10 s, one channel, seed 1: busy, and with the headroom of programme material."""
+    """White noise, uniform, peak -20 dBFS, 10 s, one channel, seed 1: busy, and with headroom as a programme has it."""
     from streamhost.signals import white
 
     return white(round(SECONDS * rate), 1, SEED, PEAK_DBFS)

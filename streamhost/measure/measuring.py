@@ -12,7 +12,7 @@ from streamhost.formats import Fixed
 from streamhost.measure.bands import Band
 from streamhost.measure.levels import peak_dbfs
 from streamhost.measure.noise import Noise, NoiseSum, settling_of_run
-from streamhost.measure.predicted import Prediction, predicted_noise
+from streamhost.measure.predicted import Prediction
 from streamhost.measure.response import Deviation, response_deviation
 from streamhost.measure.running import Block, Run
 from streamhost.measure.timing import ns_per_frame
@@ -34,8 +34,8 @@ class Measured:
     """What was found. Levels in dBFS; a figure that cannot be given is None, with the reason beside it.
 
     `ideal`: the arithmetic of the ideal run. `peak_dbfs`: of the output. `dc_lsb`: the noise's mean in steps of the
-    output's word, None in floating point. `difference_gain_db`: what brings the peak of the difference near -12 dBFS, in
-    whole dB; None where there is no difference. `finite`: whether every sample of the output and of the ideal was.
+    output's word, None in floating point. `difference_gain_db`: what brings the peak of the difference near -12 dBFS,
+    in whole dB; None where there is no difference. `finite`: whether every sample of the output and of the ideal was.
     """
 
     deviation: Deviation
@@ -115,7 +115,8 @@ class Measurement:
 
 def measure(realization: Realization, x: FloatArray, band: Band) -> Measured:
     """A whole signal (frames, channels) through a realization. Raises RequestError as `Measurement` does."""
-    measurement = Measurement(realization, *x.shape, band)
+    frames, channels = x.shape
+    measurement = Measurement(realization, frames, channels, band)
     for start in range(0, len(x), measurement.block):
         measurement.step(x[start : start + measurement.block])
     return measurement.result()

@@ -15,10 +15,11 @@ from streamhost.measure.interval import degrees_of_freedom, half_width_db
 from streamhost.measure.levels import power_dbfs
 from streamhost.measure.moments import Moments
 from streamhost.measure.weighting import a_weighting
-from streamhost.measure.welch import LEAST_LENGTH, SpectrumSum, mean_spectrum, segment_length
+from streamhost.measure.welch import Spectrum, SpectrumSum, mean_spectrum, segment_lengths
 
 MOST_EXCLUDED = 0.01
 LEAST_SETTLING = 64
+ENOUGH_SEEN = 0.5
 
 
 @dataclass(frozen=True)
@@ -26,9 +27,9 @@ class Noise:
     """What was measured; a figure is None where it cannot be given, and `reason` then says why.
 
     dbfs: 20 Hz to the lower of 20 kHz and half the rate; full_dbfs: 0 to half the rate; a_dbfs: A-weighted in the band
-    of dbfs. interval_db: the 95 % interval reaches at most so far from dbfs to either side. mean: of the channel where it
-    is largest in magnitude, 1.0 = full scale. excluded: share of the frames after the settling time that lie within it
-    from an overflow on.
+    of dbfs. interval_db: how far the 95 % interval reaches from dbfs, to the side where it reaches further. mean: of
+    the channel where it is largest in magnitude, 1.0 = full scale. excluded: share of the frames after the settling
+    time that lie within it from an overflow on.
     """
 
     dbfs: float | None
@@ -54,11 +55,10 @@ class NoiseSum:
     def __init__(self, rate: float, frames: int, channels: int, settling: float) -> None:
         self._rate, self._settles = rate, isfinite(settling)
         wait = settling_of_run(settling, frames)
-        self._length = segment_length(rate, frames - wait, wait)
         self._counting = [Counting(wait) for _ in range(channels)]
         self._moments = [Moments() for _ in range(channels)]
-        long_enough = self._length >= LEAST_LENGTH
-        self._spectra = [SpectrumSum(rate, self._length) for _ in range(channels if long_enough else 0)]
+        self._lengths = segment_lengths(rate, frames - wait, wait)
+        self._spectra = [[SpectrumSum(rate, length) for length in self._lengths] for _ in range(channels)]
         self._finite = True
 
     def add(self, difference: NDArray[np.float64], marks: NDArray[np.uint8]) -> None:
@@ -72,16 +72,15 @@ class NoiseSum:
 
     def _add_channel(self, channel: int, difference: NDArray[np.float64], counts: NDArray[np.bool_]) -> None:
         self._moments[channel].add(difference[counts])
-        if not self._spectra:
-            return
-        end = 0
-        for first, last in stretches(counts):
-            if first > end:
-                self._spectra[channel].gap()
-            self._spectra[channel].add(difference[first:last])
-            end = last
-        if end < len(difference):
-            self._spectra[channel].gap()
+        for spectrum in self._spectra[channel]:
+            end = 0
+            for first, last in stretches(counts):
+                if first > end:
+                    spectrum.gap()
+                spectrum.add(difference[first:last])
+                end = last
+            if end < len(difference):
+                spectrum.gap()
 
     def result(self) -> Noise:
         """The figures of all that has come."""
@@ -103,14 +102,20 @@ class NoiseSum:
             return "with its coefficients rounded the filter does not settle, and what it puts out is not only noise"
         if excluded > MOST_EXCLUDED:
             return f"{100 * excluded:.1f} % of the frames lie within the settling time of an overflow, more than 1 %"
-        if not self._spectra:
+        if not self._lengths:
             return "the run is too short"
-        if not any(spectrum.segments for spectrum in self._spectra):
-            return f"no {self._length / self._rate:.2g} s of the run are without an overflow"
+        if not any(spectrum.segments for channel in self._spectra for spectrum in channel):
+            return f"no {self._lengths[-1] / self._rate:.2g} s of the run are without an overflow"
         return ""
 
+    def _spectrum(self) -> Spectrum:
+        """The finest that saw enough of the run, or else the one that saw the most."""
+        spectra = [mean_spectrum([channel[k].spectrum() for channel in self._spectra]) for k in range(len(self._lengths))]
+        enough = ENOUGH_SEEN * max(moments.count for moments in self._moments)
+        return next((fine for fine in spectra if fine.frames >= enough), max(spectra, key=lambda seen: seen.frames))
+
     def _in_band(self, band: Band, full: float, mean: float, excluded: float) -> Noise:
-        spectrum = mean_spectrum([channel.spectrum() for channel in self._spectra])
+        spectrum = self._spectrum()
         shares = bin_shares(len(spectrum.power), spectrum.spacing, band)
         power = float(spectrum.power @ shares)
         weighted = float(spectrum.power @ (shares * a_weighting(spectrum.frequencies)))

@@ -36,8 +36,9 @@ def predicted_noise(program: Program, rate: float, rms: FloatArray | None = None
 
     A floating-point program's is an estimate that needs the `rms` of every node, (nodes,).
     """
-    densities = [_density(program, channel, rms) for channel in range(program.diagram.channels)]
-    poles = {complex(pole) for channel in range(len(densities)) for pole in to_output(program.diagram, [], channel).poles}
+    channels = range(program.diagram.channels)
+    densities = [_density(program, channel, rms) for channel in channels]
+    poles = {complex(pole) for channel in channels for pole in to_output(program.diagram, [], channel).poles}
 
     def level(low: float, high: float, weight: Density | None = None) -> float:
         edges = breakpoints(poles, low, high)

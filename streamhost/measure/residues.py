@@ -4,6 +4,7 @@ Residues are before minus after, in steps of the register that the rounding make
 """
 
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
@@ -75,7 +76,7 @@ class ResidueSum:
         power = np.abs(np.fft.rfft((residues - residues.mean(axis=0)) * window, axis=0)) ** 2
         power[1:-1] *= 2.0
         edges = octave_edges(len(power))
-        for octave, (low, high) in enumerate(zip(edges[:-1], edges[1:], strict=True)):
+        for octave, (low, high) in enumerate(pairwise(edges)):
             shares = bin_shares(len(power), 1.0, (low, high))
             self._octaves[octave] += shares @ power / (high - low)
             self._degrees[octave] += 2.0 * (high - low) * HANN_SHARE

@@ -34,7 +34,7 @@ class Deviation:
 
 
 def response_deviation(realization: Realization, band: Band) -> Deviation:
-    """Of the coefficients as stored, computed from the state space; judged where |H asked| is within 40 dB of its maximum.
+    """Of the coefficients as stored, from the state space; judged where |H asked| is within 40 dB of its maximum.
 
     Seen on a grid of 16 points an interval, intervals being octaves and, around each pole, steps that double from half
     its distance from the circle; the largest deviation of each channel is then zoomed in on.

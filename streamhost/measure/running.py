@@ -32,12 +32,15 @@ class Run:
 
     def __init__(self, realization: Realization, channels: int) -> None:
         if len(realization.outputs) > 1:
-            raise RequestError(f"This realization has {len(realization.outputs)} outputs ({', '.join(realization.outputs)}). "
-                               f"One with a single output can be measured so far.")
+            raise RequestError(
+                f"This realization has {len(realization.outputs)} outputs ({', '.join(realization.outputs)}); those with "
+                "one output can be measured so far."
+            )
         self.program, self.channels = realization.program, channels
         self._memory = realization.memory(channels)
         self._kernel = compile_kernel(self.program, Variant(metered=True, traced=True))
-        self.ideal = ideal_of(self.program)
+        with np.errstate(invalid="ignore"):  # what does not die out is infinite
+            self.ideal = ideal_of(self.program)
         variant = Variant(double=self.ideal.double)
         self._ideal_memory = Memory(self.ideal.program, channels, variant)
         self._ideal_kernel = compile_kernel(self.ideal.program, variant)

@@ -38,15 +38,18 @@ class Spectrum:
 
     @property
     def frequencies(self) -> FloatArray:
-        return np.arange(len(self.power)) * self.spacing
+        """Of the bins, in Hz."""
+        return np.asarray(np.arange(len(self.power)) * self.spacing, dtype=np.float64)
 
 
-def segment_length(rate: float, frames: int, settling: float) -> int:
-    """Frames of a segment, even: as long as the noise's own detail needs and the signal gives."""
-    coarsest = _power_of_two(rate / COARSEST_HZ)
-    wanted = min(_power_of_two(rate / FINEST_HZ), max(coarsest, _power_of_two(DETAIL * settling)))
-    length = min(wanted, max(frames // LEAST_SEGMENTS, min(frames, coarsest)))
-    return length - length % 2
+def segment_lengths(rate: float, frames: int, settling: float) -> tuple[int, ...]:
+    """Frames of a segment, even, in a run of so many frames: as fine as is of use, then, if that is shorter, as the
+    noise's own detail needs, for a run that is often broken off. None for a run that is too short."""
+    coarsest, finest = _power_of_two(rate / COARSEST_HZ), _power_of_two(rate / FINEST_HZ)
+    most = max(frames // LEAST_SEGMENTS, min(frames, coarsest))
+    needed = max(coarsest, _power_of_two(DETAIL * settling))
+    lengths = {length - length % 2 for length in (min(finest, most), min(needed, finest, most))}
+    return tuple(sorted((length for length in lengths if length >= LEAST_LENGTH), reverse=True))
 
 
 def _power_of_two(least: float) -> int:

@@ -83,7 +83,8 @@ class _Judge:
             mean, variance = float(self.residues.mean[k]), float(self.residues.variance[k])
             # the square of a uniform variable scatters by root 0.8 of its mean
             if abs(variance / rounding.variance - 1.0) > VARIANCE_SHARE + self.scatter * sqrt(0.8):
-                return f"{rounding.label} drops values of variance {variance:.3g} steps squared, not {rounding.variance:.3g}"
+                return (f"{rounding.label} drops values of variance {variance:.3g} steps squared, "
+                        f"not {rounding.variance:.3g}")
             if abs(mean - rounding.mean) > MEAN_STEPS + self.scatter * sqrt(rounding.variance):
                 return f"{rounding.label} drops {mean:.3f} of a step in the mean, not {rounding.mean:.3f}"
         return ""

@@ -9,6 +9,9 @@ from streamhost.filters import Polynomials
 
 Half = Literal["numerator", "recursion"]
 
+LONG = 64
+"""Taps beyond which a line without recursion is drawn as one node rather than as delays, gains and a sum."""
+
 
 @dataclass(frozen=True)
 class Draft:
@@ -34,6 +37,15 @@ class Draft:
         """The product b_k source."""
         label = f"b{k}{self.suffix}"
         return self.builder.gain(source, label, self.section.b[k], section=self.index, part="b")
+
+    @property
+    def is_long_line(self) -> bool:
+        """Whether the section is a tapped delay line so long that it is drawn as one node."""
+        return len(self.section.a) == 1 and len(self.section.b) > LONG
+
+    def tapped_line(self, x: Ref) -> Ref:
+        """All b_k x[n-k] as one node, added from the last delay up as the gains of a short line are."""
+        return self.builder.taps(x, "b", self.section.b, last_first=True, section=self.index, part="b")
 
     def a(self, k: int, source: Ref) -> Signed:
         """The product a_k source, to be subtracted."""

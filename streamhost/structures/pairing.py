@@ -3,15 +3,14 @@
 The pole pair nearest the unit circle takes its nearest zeros, and so on with what is left (Jackson, 1970; Oppenheim &
 Schafer, Discrete-Time Signal Processing, ch. 6). A real pole goes with the real pole that is next nearest the circle.
 
-There are as many zeros as poles once roots at z = 0, which change nothing, fill up the smaller number; an odd order
-gets one more of both. Such a root is as near or far as any other: in a low-pass of odd order the zero at 0 goes with
-the pole pair nearest z = 1, and the real pole takes two of the zeros at z = -1. A pure delay z^-1 is a zero at
-infinity: farthest from every pole, it is taken last.
+There are as many zeros as poles once roots at z = 0, which change nothing, fill up the smaller number. Such a root is as
+near or far as any other. A pure delay z^-1 is a zero at infinity: farthest from every pole, it is taken last. Of an odd
+number, the real pole farthest from the circle is left alone: a first-order section, for which a real zero is kept.
 
 Distances are compared exactly, so that the same roots give the same sections on every machine.
 """
 
-from collections.abc import Callable, Iterable
+from collections.abc import Callable
 from fractions import Fraction
 from math import inf
 from typing import Any
@@ -21,7 +20,7 @@ from streamhost.filters.exact import conjugate_section, square_root
 
 AT_INFINITY = complex(inf, 0.0)
 
-Pair = tuple[complex, complex]
+Group = tuple[complex, ...]
 
 
 def nearest_pairs(solved: ZerosPoles) -> tuple[Polynomials, ...]:
@@ -30,11 +29,14 @@ def nearest_pairs(solved: ZerosPoles) -> tuple[Polynomials, ...]:
     Each coefficient is exact in the float64 parts of the roots, and rounded once.
     """
     zeros, poles = _filled(solved)
+    alone = _farthest_real(poles) if _is_odd(poles) else None
     sections = []
     while poles:
-        pole_pair = _take_pair(poles, from_circle)
-        zero_pair = _take_pair(zeros, _distance_to(pole_pair[0]))
-        sections.append(_section(zero_pair, pole_pair))
+        pole_group = _take(poles, from_circle, alone=min(poles, key=from_circle) == alone)
+        alone = None if pole_group == (alone,) else alone
+        distance = _distance_to(pole_group[0])
+        zero_group = _take(zeros, distance, alone=len(pole_group) == 1, spared=_is_odd(zeros))
+        sections.append(_section(zero_group, pole_group))
     return tuple(sections) or (Polynomials((1.0,), (1.0,)),)
 
 
@@ -44,12 +46,10 @@ def from_circle(pole: complex) -> Fraction:
 
 
 def _filled(solved: ZerosPoles) -> tuple[list[complex], list[complex]]:
-    """Equally many zeros and poles, an even number; of each conjugate pair only the upper root."""
+    """Equally many zeros and poles; of each conjugate pair only the upper root."""
     zeros = [*solved.zeros, *[AT_INFINITY] * solved.delay]
-    poles = list(solved.poles)
-    count = max(len(zeros), len(poles))
-    count += count % 2
-    return _uppers(zeros, count), _uppers(poles, count)
+    count = max(len(zeros), len(solved.poles))
+    return _uppers(zeros, count), _uppers(list(solved.poles), count)
 
 
 def _uppers(roots: list[complex], count: int) -> list[complex]:
@@ -58,12 +58,28 @@ def _uppers(roots: list[complex], count: int) -> list[complex]:
     return sorted((root for root in filled if root.imag >= 0), key=lambda r: (r.imag == 0, r.real, r.imag))
 
 
-def _take_pair(roots: list[complex], distance: Callable[[complex], Any]) -> Pair:
-    """Take the nearest root out, with its conjugate, or with the nearest other real root."""
-    first = min(roots, key=distance)
+def _is_odd(roots: list[complex]) -> bool:
+    return sum(root.imag == 0 for root in roots) % 2 == 1
+
+
+def _farthest_real(poles: list[complex]) -> complex:
+    return max((pole for pole in poles if pole.imag == 0), key=from_circle)
+
+
+def _take(roots: list[complex], distance: Callable[[complex], Any], *, alone: bool, spared: bool = False) -> Group:
+    """Take the nearest root out: with its conjugate, with the nearest other real root, or a real one alone.
+
+    `spared`: there is an odd number of real roots, one of which a first-order section still to come must find.
+    """
+    reals = [root for root in roots if root.imag == 0]
+    too_few = spared and len(reals) == 1 and len(roots) > 1
+    candidates = reals if alone and reals else [root for root in roots if not (too_few and root.imag == 0)]
+    first = min(candidates, key=distance)
     roots.remove(first)
     if first.imag != 0:
         return first, first.conjugate()
+    if alone:
+        return (first,)
     second = min((root for root in roots if root.imag == 0), key=distance)
     roots.remove(second)
     return first, second
@@ -81,7 +97,7 @@ def _distance_to(pole: complex) -> Callable[[complex], tuple[bool, Fraction]]:
     return distance
 
 
-def _section(zeros: Iterable[complex], poles: Pair) -> Polynomials:
+def _section(zeros: Group, poles: Group) -> Polynomials:
     finite = [zero for zero in zeros if zero != AT_INFINITY]
     section = conjugate_section(finite, poles, 1.0)
-    return Polynomials((0.0,) * (2 - len(finite)) + section.b, section.a)
+    return Polynomials((0.0,) * (len(zeros) - len(finite)) + section.b, section.a)

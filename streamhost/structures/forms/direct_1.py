@@ -30,6 +30,7 @@ longer state or error feedback helps. It needs the most memory. Drawn whole at a
 coefficient moves the poles far: divide such a filter into a cascade.
 
 Carries: any numerator and denominator of any length, as a section or whole. Trailing zeros are left out.
+A line of more than 64 taps without recursion is one tapped-line node, added in the same order.
 """
 
 from streamhost.diagram.builder import Ref, Signed
@@ -37,6 +38,8 @@ from streamhost.structures.form import Draft, Form
 
 
 def build_section(draft: Draft, x: Ref) -> Ref:
+    if draft.is_long_line:
+        return draft.tapped_line(x)
     b, a = draft.section.b, draft.section.a
     xs = (x, *draft.line("x", len(b) - 1, x))
     ys = draft.line("y", len(a) - 1)

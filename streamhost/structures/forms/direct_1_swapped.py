@@ -32,6 +32,7 @@ thousands at low frequencies: scale it (scaling l2) or give it more integer bits
 same arithmetic.
 
 Carries: any numerator and denominator of any length, as a section or whole. Without recursion w is x itself.
+A line of more than 64 taps without recursion is one tapped-line node, added in the same order.
 """
 
 from streamhost.diagram.builder import Ref
@@ -39,6 +40,8 @@ from streamhost.structures.form import Draft, Form
 
 
 def build_section(draft: Draft, x: Ref) -> Ref:
+    if draft.is_long_line:
+        return draft.tapped_line(x)
     b, a = draft.section.b, draft.section.a
     ws = draft.line("w", len(a) - 1)
     # Only a recursion makes a w that is not yet there; without one the copy's line hangs on x.

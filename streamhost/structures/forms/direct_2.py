@@ -30,6 +30,7 @@ under other coefficients, so a change of coefficients is heard. Drawn whole at a
 coefficient moves the poles far.
 
 Carries: any numerator and denominator of any length, as a section or whole. Without recursion w is x itself.
+A line of more than 64 taps without recursion is one tapped-line node, added in the same order.
 """
 
 from streamhost.diagram.builder import Ref
@@ -37,6 +38,8 @@ from streamhost.structures.form import Draft, Form
 
 
 def build_section(draft: Draft, x: Ref) -> Ref:
+    if draft.is_long_line:
+        return draft.tapped_line(x)
     b, a = draft.section.b, draft.section.a
     recursive = len(a) > 1
     ws = draft.line("w", max(len(a), len(b)) - 1, None if recursive else x)

@@ -1,0 +1,375 @@
+"""`streamhost render`: what is written is the realization's output to the bit, or nothing is written and one is told why."""
+
+import os
+import resource
+import signal
+import subprocess
+import sys
+import time
+import tracemalloc
+from collections.abc import Iterator
+from contextlib import contextmanager
+from dataclasses import replace
+from pathlib import Path
+from random import Random
+from types import SimpleNamespace
+
+import numpy as np
+import pytest
+import soundfile
+from audio_files import wav_bytes, wav_codes, write
+from random_diagrams import random_diagram
+
+import streamhost as sh
+from streamhost.commands.main import main
+from streamhost.commands.render import _minute_by_minute, realized, summary
+from streamhost.errors import RequestError
+from streamhost.files import probe, read_all
+from streamhost.host.rendering import Rendered, default_subtype, render_file
+from streamhost.presets import load_preset
+from streamhost.realization import Realization
+from streamhost.shipped import presets_dir, samples_dir
+from streamhost.structures import build
+
+PRESET = """
+rate = 48000
+[[filter]]
+{filter}
+[structure]
+form = "direct-1"
+[format]
+{format}
+"""
+PEAK = 'kind = "peak"\nfrequency = 1000\ngain_db = 6\nq = 0.7'
+FIXED = 'signal = "Q1.15"\ncoefficients = "Q2.14"'
+
+
+def preset(folder: Path, format: str, filter: str = PEAK) -> str:
+    path = folder / "preset.toml"
+    path.write_text(PRESET.format(filter=filter, format=format))
+    return str(path)
+
+
+def source(folder: Path, frames: int = 20000, channels: int = 2, peak: float = 0.4, name: str = "in.wav") -> str:
+    """More frames than a block, and the last block not full."""
+    write(folder / name, np.random.default_rng(7).uniform(-peak, peak, (frames, channels)))
+    return str(folder / name)
+
+
+def expected(stated: str, given: str) -> np.ndarray:
+    """What the realization makes of the whole file at once."""
+    return realized(load_preset(stated)).process(read_all(given)[0])
+
+
+# What is written
+
+
+@pytest.mark.parametrize("channels", [1, 2, 5])
+@pytest.mark.parametrize(
+    ("format", "bits"),
+    [
+        (FIXED, 16),
+        ('arithmetic = "24x24+56"', 24),
+        ('arithmetic = "32x32+64"', 32),
+        ('arithmetic = "float32"', 24),
+        ('arithmetic = "float64"', 24),
+    ],
+)
+def test_the_file_holds_the_realizations_output_to_the_bit(tmp_path: Path, format: str, bits: int, channels: int) -> None:
+    stated, given, out = preset(tmp_path, format), source(tmp_path, channels=channels), tmp_path / "out.wav"
+    assert main(["render", stated, given, str(out)]) == 0
+    nearest = np.rint(expected(stated, given) * 2.0 ** (bits - 1))
+    top = 2 ** (bits - 1)
+    assert wav_codes(out) == np.clip(nearest, -top, top - 1).astype(np.int64).ravel().tolist()
+    info = probe(out)
+    assert (info.rate, info.channels, info.frames, info.subtype) == (48000, channels, 20000, f"PCM_{bits}")
+
+
+def test_fixed_point_goes_from_codes_to_codes_without_a_change(tmp_path: Path) -> None:
+    stated, given, out = preset(tmp_path, FIXED), source(tmp_path), tmp_path / "out.wav"
+    assert main(["render", stated, given, str(out)]) == 0
+    codes = np.array(wav_codes(Path(given))).reshape(-1, 2)
+    assert wav_codes(out) == realized(load_preset(stated)).process_codes(codes).ravel().tolist()
+
+
+@pytest.mark.parametrize(
+    ("subtype", "name", "kept"),
+    [("pcm16", "PCM_16", 15), ("pcm24", "PCM_24", 23), ("pcm32", "PCM_32", 31), ("float", "FLOAT", None)],
+)
+def test_a_subtype_is_taken_as_said(tmp_path: Path, subtype: str, name: str, kept: int | None) -> None:
+    stated, given, out = preset(tmp_path, 'arithmetic = "float64"'), source(tmp_path), tmp_path / "out.wav"
+    assert main(["render", stated, given, str(out), "--subtype", subtype]) == 0
+    y, back = expected(stated, given), read_all(out)[0]
+    assert probe(out).subtype == name
+    assert np.array_equal(back, y.astype(np.float32) if kept is None else np.rint(y * 2.0**kept) / 2.0**kept)
+
+
+@pytest.mark.parametrize("name", ["out.rf64", "out.flac", "OUT.WAV"])
+def test_other_containers_hold_the_same(tmp_path: Path, name: str) -> None:
+    stated, given = preset(tmp_path, FIXED), source(tmp_path)
+    assert main(["render", stated, given, str(tmp_path / name)]) == 0
+    assert np.array_equal(read_all(tmp_path / name)[0], expected(stated, given))
+
+
+@pytest.mark.parametrize(
+    ("output", "subtype"),
+    [("Q1.7", "pcm16"), ("Q1.15", "pcm16"), ("Q4.12", "pcm16"), ("Q2.15", "pcm16"), ("Q1.16", "pcm24"), ("Q1.23", "pcm24"),
+     ("Q9.23", "pcm24"), ("Q1.24", "pcm32"), ("Q1.31", "pcm32")],
+)
+def test_unless_said_the_shortest_pcm_that_holds_the_outputs_fraction(output: str, subtype: str) -> None:
+    assert default_subtype(sh.Fixed("Q1.15", output=output)) == subtype
+
+
+@pytest.mark.parametrize("format", [sh.Float("float32"), sh.Float("float64")])
+def test_floats_are_written_in_24_bits(format: sh.Float) -> None:
+    assert default_subtype(format) == "pcm24"
+
+
+def test_a_shipped_preset_on_a_shipped_recording(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    given = str(samples_dir() / "plucked.wav")
+    assert main(["render", "rumble-double-state", given, str(tmp_path / "out.wav")]) == 0
+    y = expected(str(presets_dir() / "rumble-double-state.toml"), given)
+    assert np.array_equal(read_all(tmp_path / "out.wav")[0], y)
+    said = capsys.readouterr().out
+    assert f"{len(y)} frames" in said
+    assert "unstable" not in said
+
+
+def test_the_same_command_writes_the_same_bytes(tmp_path: Path) -> None:
+    stated, given = preset(tmp_path, 'arithmetic = "float32"'), source(tmp_path)
+    for name in ("a.wav", "b.wav"):
+        assert main(["render", stated, given, str(tmp_path / name)]) == 0
+    assert (tmp_path / "a.wav").read_bytes() == (tmp_path / "b.wav").read_bytes()
+
+
+def test_memory_does_not_grow_with_the_file(tmp_path: Path) -> None:
+    realization = sh.realize(sh.design("peak", rate=48000, frequency=1000.0, gain_db=6.0, q=0.7), format="float32")
+    source(tmp_path, 40000, name="short.wav"), source(tmp_path, 400000, name="long.wav")
+    peaks = {}
+    for name in ("short.wav", "short.wav", "long.wav"):  # the first run loads what stays
+        info = probe(tmp_path / name)
+        tracemalloc.start()
+        render_file(realization, info, tmp_path / "out.wav", overwrite=True)
+        peaks[name] = tracemalloc.get_traced_memory()[1]
+        tracemalloc.stop()
+    # Ten times the frames are 5.8 MB more as float64; a tenth of a block is allowed for what Python keeps meanwhile.
+    assert peaks["long.wav"] < peaks["short.wav"] + 16384 * 2 * 8 / 10
+
+
+# What is said
+
+
+def test_the_summary_counts_what_happened(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    gain = "b = [1.5]\na = [1.0]"
+    given = tmp_path / "in.wav"
+    given.write_bytes(wav_bytes([16384, 30000, -30000, 100, -26000, 0], 16))
+    out = tmp_path / "out.wav"
+    assert main(["render", preset(tmp_path, FIXED, gain), str(given), str(out)]) == 0
+    assert capsys.readouterr().out == (
+        f"{out}: 6 frames (0.00 s), 1 channel, 48000 Hz, WAV pcm16\n"
+        "peak 0.00 dBFS, 0 samples clipped, no NaN\n"
+        "3 saturations\n"
+    )
+    roomy = 'signal = "Q2.14"\ncoefficients = "Q2.14"\ninput = "Q1.15"'
+    assert main(["render", preset(tmp_path, roomy, gain), str(given), str(out), "--force"]) == 0
+    said = capsys.readouterr().out.splitlines()
+    assert said[1:] == ["peak 2.76 dBFS, 3 samples clipped, no NaN"]  # 1.5 * 30000 / 32768 = 1.373
+    assert wav_codes(out) == [24576, 32767, -32768, 150, -32768, 0]
+
+
+def test_wraps_are_counted_by_their_name(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    given = tmp_path / "in.wav"
+    given.write_bytes(wav_bytes([30000, 100], 16))
+    stated = preset(tmp_path, FIXED + '\noverflow = "wrap"', "b = [1.5]\na = [1.0]")
+    assert main(["render", stated, str(given), str(tmp_path / "out.wav")]) == 0
+    assert capsys.readouterr().out.endswith("no NaN\n1 wrap\n")
+    assert wav_codes(tmp_path / "out.wav") == [45000 - 65536, 150]
+
+
+def test_silence_has_no_level(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    write(tmp_path / "in.wav", np.zeros((10, 1)))
+    assert main(["render", preset(tmp_path, FIXED), str(tmp_path / "in.wav"), str(tmp_path / "out.wav")]) == 0
+    assert "peak silence, 0 samples clipped" in capsys.readouterr().out
+
+
+def test_a_filter_that_rounding_made_unstable_is_run_and_said(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    given = source(tmp_path)
+    assert main(["render", "rumble-naive-16-bit", given, str(tmp_path / "out.wav")]) == 0
+    said = capsys.readouterr().out
+    assert "unstable: 1 pole lies on or outside the unit circle once the coefficients are rounded\n" in said
+
+
+def test_a_filter_that_is_unstable_as_asked_says_so(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    integrator = preset(tmp_path, FIXED, "b = [0.001]\na = [1.0, -1.0]")
+    given = source(tmp_path)
+    assert main(["render", integrator, given, str(tmp_path / "out.wav")]) == 2
+    assert "allow_unstable = true" in capsys.readouterr().err
+    text = Path(integrator).read_text()
+    Path(integrator).write_text("allow_unstable = true\n" + text)
+    assert main(["render", integrator, given, str(tmp_path / "out.wav")]) == 0
+    assert "unstable: 1 pole lies on or outside the unit circle as asked\n" in capsys.readouterr().out
+
+
+def test_hazards_of_the_structure_are_said() -> None:
+    filter = sh.design("butterworth", rate=48000, response="low-pass", order=8, frequency=100.0)
+    realization = sh.realize(filter, form="direct-1", decomposition="whole")
+    lane = SimpleNamespace(peak_dbfs=-3.25)
+    rendered = Rendered(Path("a\x1b.wav"), "WAV", "pcm24", 48000, 1, 1, 0, lane, realization.tally())  # type: ignore[arg-type]
+    lines = summary(rendered, realization)
+    assert lines[0] == "a\N{REPLACEMENT CHARACTER}.wav: 1 frame (0.00 s), 1 channel, 48000 Hz, WAV pcm24"
+    assert lines[1].startswith("peak \N{MINUS SIGN}3.25 dBFS")
+    assert lines[-len(realization.built.hazards) :] == [f"hazard: {text}" for text in realization.built.hazards]
+    assert any("order 8 is drawn undivided" in line for line in lines)
+
+
+def test_progress_moves_on_with_every_minute_that_begins(tmp_path: Path) -> None:
+    steps: list[str] = []
+    progress, info = SimpleNamespace(step=steps.append), SimpleNamespace(rate=100, path=tmp_path / "in.wav")
+    report = _minute_by_minute(progress, info)  # type: ignore[arg-type]
+    begun = []
+    for done in range(0, 9 * 6000 + 1, 16384):
+        report(done)
+        begun.append(len(steps))
+    assert begun == [1, 3, 6, 9]  # at 100 Hz frames 0, 16384, 32768, 49152 lie in minutes 1, 3, 6 and 9
+    assert set(steps) == {"minutes of in.wav"}
+
+
+def test_a_render_reports_before_every_block(tmp_path: Path) -> None:
+    realization, told = sh.realize(sh.Filter.from_coefficients([0.5], [1.0], rate=48000), form="direct-1"), []
+    render_file(realization, probe(source(tmp_path, 40000)), tmp_path / "out.wav", report=told.append)
+    assert told == [0, 16384, 32768]
+
+
+# What is refused
+
+
+def refused(arguments: list[str], capsys: pytest.CaptureFixture[str], status: int = 2) -> str:
+    assert main(["render", *arguments]) == status
+    said = capsys.readouterr()
+    assert said.out == ""
+    return said.err
+
+
+def test_a_file_of_another_rate_is_refused_naming_both(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    stated = preset(tmp_path, FIXED)
+    Path(stated).write_text(Path(stated).read_text().replace("48000", "44100"))
+    given = source(tmp_path)
+    said = refused([stated, given, str(tmp_path / "out.wav")], capsys)
+    assert f"{given} has a rate of 48000 Hz, and {stated} is a filter for 44100 Hz" in said
+    assert not (tmp_path / "out.wav").exists()
+
+
+@pytest.mark.parametrize("force", [[], ["--force"]])
+@pytest.mark.parametrize("name", ["in.wav", "link.wav", "hard.wav", "../{folder}/in.wav"])
+def test_the_input_is_never_the_output(
+    tmp_path: Path, capsys: pytest.CaptureFixture[str], name: str, force: list[str]
+) -> None:
+    given = source(tmp_path, 100)
+    before = Path(given).read_bytes()
+    (tmp_path / "link.wav").symlink_to("in.wav")
+    (tmp_path / "hard.wav").hardlink_to(given)
+    out = tmp_path / name.format(folder=tmp_path.name)
+    assert "input and output are the same file" in refused([preset(tmp_path, FIXED), given, str(out), *force], capsys)
+    assert Path(given).read_bytes() == before
+
+
+def test_an_output_that_exists_is_overwritten_only_by_force(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    stated, given, out = preset(tmp_path, FIXED), source(tmp_path), tmp_path / "out.wav"
+    out.write_text("precious")
+    assert "this file exists" in refused([stated, given, str(out)], capsys)
+    assert out.read_text() == "precious"
+    assert main(["render", stated, given, str(out), "--force"]) == 0
+    assert probe(out).frames == 20000
+
+
+@pytest.mark.parametrize(
+    ("arguments", "reason"),
+    [
+        (["{preset}", "{folder}/none.wav", "{folder}/out.wav"], "there is no such file"),
+        (["nonesuch", "{in}", "{folder}/out.wav"], "nonesuch: there is no such file, and no shipped preset of this name"),
+        (["{preset}", "{preset}", "{folder}/out.wav"], "this is no audio file"),
+        (["{preset}", "{in}", "{folder}/none/out.wav"], "does not exist"),
+        (["{preset}", "{in}", "{folder}/out.mp3"], 'not written as ".mp3"'),
+        (["{preset}", "{in}", "{folder}/out.flac", "--subtype", "pcm32"], "a FLAC file does not hold pcm32 samples"),
+        (["{preset}", "{in}", "{folder}/out.wav", "--subtype", "pcm8"], "'pcm8' is not one of 'pcm16', 'pcm24', 'pcm32', 'float'"),
+        (["{preset}", "{in}"], "Missing argument 'OUT'"),
+    ],
+)
+def test_requests_that_cannot_be_are_refused_and_leave_nothing(
+    tmp_path: Path, capsys: pytest.CaptureFixture[str], arguments: list[str], reason: str
+) -> None:
+    places = {"preset": preset(tmp_path, FIXED), "in": source(tmp_path, 100), "folder": str(tmp_path)}
+    before = sorted(tmp_path.iterdir())
+    assert reason in refused([argument.format(**places) for argument in arguments], capsys)
+    assert sorted(tmp_path.iterdir()) == before
+
+
+def test_nan_in_the_input_is_refused_by_its_frame(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    samples = np.zeros((30000, 1))
+    samples[20001] = np.nan
+    soundfile.write(tmp_path / "in.wav", samples, 48000, subtype="FLOAT")
+    out = tmp_path / "out.wav"
+    assert "frame 20001, channel 1 is nan" in refused([preset(tmp_path, FIXED), str(tmp_path / "in.wav"), str(out)], capsys)
+    assert sorted(file.name for file in tmp_path.iterdir()) == ["in.wav", "preset.toml"]
+
+
+def test_an_output_that_runs_away_is_refused(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    stated = preset(tmp_path, 'arithmetic = "float32"', "b = [1.0]\na = [1.0, -3.0]")
+    Path(stated).write_text("allow_unstable = true\n" + Path(stated).read_text())
+    given = source(tmp_path, 1000)
+    said = refused([stated, given, str(tmp_path / "out.wav")], capsys)
+    assert f"the output of {stated} is no longer finite before frame 1000" in said
+    assert sorted(file.name for file in tmp_path.iterdir()) == ["in.wav", "preset.toml"]
+
+
+def test_a_realization_of_several_outputs_is_refused(tmp_path: Path) -> None:
+    filter = sh.Filter.from_coefficients([1.0], [1.0], rate=48000)
+    diagram = next(d for d in (random_diagram(Random(seed), 10) for seed in range(50)) if len(d.outputs) > 1)
+    built = build(filter, form="direct-1")
+    realization = Realization(filter, replace(built, diagram=diagram), sh.Float())
+    info = probe(source(tmp_path, 100))
+    with pytest.raises(RequestError, match=rf"crossover has {len(diagram.outputs)} outputs \(.*\), and a rendered file takes one"):
+        render_file(realization, info, tmp_path / "out.wav", name="crossover")
+
+
+@contextmanager
+def file_size_limit(size: int) -> Iterator[None]:
+    """The system refuses to let any file grow beyond `size`, as a full disk would; needs no privilege."""
+    soft, hard = resource.getrlimit(resource.RLIMIT_FSIZE)
+    resource.setrlimit(resource.RLIMIT_FSIZE, (size, hard))
+    try:
+        yield
+    finally:
+        resource.setrlimit(resource.RLIMIT_FSIZE, (soft, hard))
+
+
+def test_a_disk_without_room_is_the_machines_failure(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    stated, given = preset(tmp_path, FIXED), source(tmp_path)
+    assert main(["render", stated, given, str(tmp_path / "first.wav")]) == 0  # so that the kernel need not be written
+    capsys.readouterr()
+    with file_size_limit(30000):
+        said = refused([stated, given, str(tmp_path / "out.wav")], capsys, status=3)
+    assert "out.wav: cannot write this file: File too large" in said
+    assert sorted(file.name for file in tmp_path.iterdir()) == ["first.wav", "in.wav", "preset.toml"]
+
+
+@pytest.mark.parametrize("force", [False, True])
+def test_control_c_leaves_nothing_half_written(tmp_path: Path, force: bool) -> None:
+    """Of a whole process that is stopped in the middle of its work: the partial file is there, the output is not."""
+    given = source(tmp_path, 48000 * 60, 8)
+    out = tmp_path / "out.wav"
+    if force:
+        out.write_text("precious")
+    command = [sys.executable, "-m", "streamhost.commands.main", "render", preset(tmp_path, FIXED), given, str(out), "--force"]
+    process = subprocess.Popen(command, stdout=subprocess.PIPE, stderr=subprocess.PIPE, text=True, cwd=Path(sh.__file__).parents[1])
+    partial = tmp_path / f".out.wav.partial-{process.pid}"
+    while process.poll() is None and not (partial.exists() and partial.stat().st_size > 100_000):
+        time.sleep(0.001)
+    os.kill(process.pid, signal.SIGINT)
+    said, told = process.communicate()
+    assert (process.returncode, said) == (130, "")
+    assert told.endswith("Interrupted.\n")
+    assert "Traceback" not in told
+    assert sorted(file.name for file in tmp_path.iterdir()) == ["in.wav", *(["out.wav"] if force else []), "preset.toml"]
+    if force:
+        assert out.read_text() == "precious"
