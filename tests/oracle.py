@@ -131,7 +131,6 @@ def run_fixed(
 
     Sections are (b, a) without trailing zeros, a[0] = 1, in the order in which they are drawn. Raises Refused.
     """
-    format = Format(**parameters)
     places = Format(**parameters)
     m = FixedArithmetic(places, channel)
     held, gain = stored(sections, front, places)

@@ -5,9 +5,6 @@ from itertools import islice
 
 import numpy as np
 import pytest
-from hypothesis import given
-from hypothesis import strategies as st
-
 from diagram_evaluator import evaluate
 from diagram_examples import (
     all_pole_lattice,
@@ -19,7 +16,10 @@ from diagram_examples import (
     second_order,
     transposed_2,
 )
+from hypothesis import given
+from hypothesis import strategies as st
 from random_diagrams import COARSE, diagrams
+
 from streamhost.diagram import Builder, Diagram, minus
 from streamhost.diagram.exact import impulse_responses
 from streamhost.diagram.linear import exact_transfer_function, propagate, state_space, transfer_function

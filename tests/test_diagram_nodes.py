@@ -2,8 +2,8 @@
 
 import numpy as np
 import pytest
-
 from diagram_examples import all_pole_lattice, coupled, direct_1, direct_2, fir, running_sum, transposed_2
+
 from streamhost.diagram import (
     Builder,
     Counts,

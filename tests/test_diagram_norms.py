@@ -6,8 +6,6 @@ from math import ceil, inf, log, log2, sqrt
 
 import numpy as np
 import pytest
-from hypothesis import given
-
 from diagram_evaluator import evaluate
 from diagram_examples import (
     cookbook_low_pass,
@@ -20,7 +18,9 @@ from diagram_examples import (
     second_order,
     transposed_2,
 )
+from hypothesis import given
 from random_diagrams import diagrams
+
 from streamhost.diagram import Builder, Diagram, minus
 from streamhost.diagram.norms import (
     Norms,
@@ -92,7 +92,7 @@ def test_coupled_form_has_the_same_noise_at_every_angle(angle: float) -> None:
 def test_low_pass_as_direct_2(frequency: float, pole_l2: float, pole_peak: float, pole_l1: float, bits: float,
                               l1: float, power: float) -> None:
     # Computed for this project by sum of h^2, closed form and frequency grid (coefficients: Audio EQ Cookbook).
-    # With poles 0.0019 from z = 1 the coefficients' own rounding moves these by 1e-16 / 0.0019^2 = 3e-11; digits printed.
+    # With poles 0.0019 from z = 1 the coefficients' rounding moves these by 1e-16 / 0.0019^2 = 3e-11: digits printed.
     diagram = direct_2(*cookbook_low_pass(frequency))
     norms = norms_from_input(diagram, nodes=[node(diagram, "w"), diagram.outputs[0]])
     assert norms.l2[0] == pytest.approx(pole_l2, abs=5e-5)
@@ -182,7 +182,7 @@ def test_worst_input_reaches_l1_and_a_sine_at_the_resonance_the_peak(form: Calla
         assert worst == pytest.approx(norms.l1[index], rel=1e-9)
         spectrum = np.exp(-1j * np.outer(w[::100], np.arange(frames))) @ h[:, index]
         top = w[::100][np.abs(spectrum).argmax()]
-        sine = evaluate(diagram, np.sin(top * np.arange(4 * frames)))[frames:, index]
+        sine = evaluate(diagram, np.cos(top * np.arange(4 * frames)))[frames:, index]
         # On a grid of pi/2000 the top of a peak 0.2 wide is missed by up to (pi/4000 / 0.1)^2 / 2 = 3e-5, and the
         # sine's own samples miss its crest by less than 1e-4.
         assert np.abs(sine).max() == pytest.approx(norms.peak[index], rel=2e-4)
@@ -191,8 +191,8 @@ def test_worst_input_reaches_l1_and_a_sine_at_the_resonance_the_peak(form: Calla
 @given(diagrams())
 def test_mean_of_the_power_response_is_the_noise_gain(diagram: Diagram) -> None:
     sources = list(range(len(diagram.nodes)))
-    # The mean over 8192 points is exact but for what wraps round: responses longer than 8192 frames, 0.98^8192.
-    power = power_response(diagram, sources, 2.0 * np.pi * np.arange(8192) / 8192)
+    # The mean over 2048 points is exact but for what wraps round, responses longer than that: 0.98^2048 = 1e-18.
+    power = power_response(diagram, sources, 2.0 * np.pi * np.arange(2048) / 2048)
     gains = noise_gains(diagram, sources)
     np.testing.assert_allclose(power.mean(axis=0), gains, rtol=1e-8, atol=1e-12 * gains.max())
 

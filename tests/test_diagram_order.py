@@ -1,8 +1,8 @@
 """Evaluation order: every node after what it needs now, the first created of the ready ones, whatever the size."""
 
 from hypothesis import given
-
 from random_diagrams import diagrams
+
 from streamhost.diagram import Builder, Diagram, Ref, minus
 from streamhost.diagram.norms import responses_from_input
 

@@ -5,8 +5,8 @@ from random import Random
 
 import numpy as np
 import pytest
-
 from random_diagrams import COARSE, KINDS, random_diagram
+
 from streamhost.diagram import Diagram, Gain, Residue, Round, Sum, Taps
 from streamhost.diagram.legality import check_diagram
 from streamhost.diagram.linear import state_space

@@ -16,7 +16,9 @@ LIBRARY = {16: "PCM_16", 24: "PCM_24", 32: "PCM_32"}
 
 @pytest.mark.parametrize("bits", [16, 24, 32])
 @pytest.mark.parametrize(("frames", "channels"), [(1, 1), (3, 1), (4, 2), (7, 5)])
-def test_a_wav_has_the_bytes_that_the_audio_library_writes(tmp_path: Path, bits: int, frames: int, channels: int) -> None:
+def test_a_wav_has_the_bytes_that_the_audio_library_writes(
+    tmp_path: Path, bits: int, frames: int, channels: int
+) -> None:
     top = 2 ** (bits - 1)
     codes = np.random.default_rng(3).integers(-top, top, (frames, channels)).astype(np.int32)
     soundfile.write(tmp_path / "a.wav", codes << (32 - bits), 44100, subtype=LIBRARY[bits])

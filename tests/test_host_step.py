@@ -1,4 +1,4 @@
-"""The compiled step: the same bits for any division into blocks, for lanes alone and together, as the realization gives."""
+"""The compiled step: what the realization gives, to the bit, for any division into blocks, lanes alone or together."""
 
 import math
 import re
@@ -29,7 +29,9 @@ REALIZATIONS = {
     "fused": sh.realize(FILTER, form="direct-2", format="float32-fused"),
     "16x16+40": sh.realize(FILTER, form="direct-1", format="16x16+40"),
     "wrap": sh.realize(FILTER, form="transposed-1", format=LOUD),
-    "dither": sh.realize(FILTER, form="direct-1", format=sh.Fixed("Q1.15", coefficients="Q2.14", dither="tpdf", dither_seed=3)),
+    "dither": sh.realize(
+        FILTER, form="direct-1", format=sh.Fixed("Q1.15", coefficients="Q2.14", dither="tpdf", dither_seed=3)
+    ),
 }
 BLOCKS = (0, 1, 2, 3, 5, 7, 11, 13, 31, 64, 101)
 
@@ -80,7 +82,9 @@ def everything(lane: Lane, output: np.ndarray, marks: np.ndarray) -> tuple[objec
 @pytest.mark.parametrize("name", sorted(REALIZATIONS))
 @given(lengths=divisions, channels=st.integers(1, 5), metered=st.booleans())
 @settings(max_examples=15)
-def test_any_division_into_blocks_leaves_the_same_bits(name: str, lengths: list[int], channels: int, metered: bool) -> None:
+def test_any_division_into_blocks_leaves_the_same_bits(
+    name: str, lengths: list[int], channels: int, metered: bool
+) -> None:
     x = signal(channels)
     whole, parts = (Lane(REALIZATIONS[name], channels, metered=metered) for _ in range(2))
     (y,), (m,) = run([whole], [x])
@@ -88,7 +92,11 @@ def test_any_division_into_blocks_leaves_the_same_bits(name: str, lengths: list[
     assert everything(parts, y_parts, m_parts) == everything(whole, y, m)
 
 
-@given(chosen=st.lists(st.tuples(names, st.booleans()), min_size=1, max_size=16), channels=st.integers(1, 3), lengths=divisions)
+@given(
+    chosen=st.lists(st.tuples(names, st.booleans()), min_size=1, max_size=16),
+    channels=st.integers(1, 3),
+    lengths=divisions,
+)
 @settings(max_examples=25)
 def test_lanes_together_give_what_each_gives_alone(
     chosen: list[tuple[str, bool]], channels: int, lengths: list[int]
@@ -250,11 +258,13 @@ def test_the_compiled_step_allocates_nothing_locks_nothing_and_cannot_raise() ->
     module: dict[str, object] = {"CACHE": False, "__name__": "step_in_memory"}
     exec(step_source(), module)
     text = module["step"].inspect_llvm()  # type: ignore[attr-defined]
-    body = next(part for part in re.split(r"^define ", text, flags=re.MULTILINE) if " i32 @_ZN" in part.partition("(ptr")[0])
+    functions = re.split(r"^define ", text, flags=re.MULTILINE)
+    body = next(function for function in functions if " i32 @_ZN" in function.partition("(ptr")[0])
     body = body[: body.index("\n}")]
     called = set(re.findall(r"\b(?:call|invoke) [^\n(]*?([@%][^\s(]+)\(", body))
     by_address = {name for name in called if name.startswith("%")}
     assert len(by_address) == 1  # the kernels
-    assert {name.removeprefix("@llvm.").partition(".")[0] for name in called - by_address} <= {"memset", "fabs", "assume"}
+    named = {name.removeprefix("@llvm.").partition(".")[0] for name in called - by_address}
+    assert named <= {"memset", "fabs", "assume"}
     # Numba's functions answer 0 when all is well and anything else when an exception is under way.
     assert set(re.findall(r"\bret i32 (\S+)", body)) == {"0"}

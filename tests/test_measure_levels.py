@@ -4,7 +4,8 @@ from math import inf
 
 import numpy as np
 import pytest
-from streamhost import Fixed, Filter, realize
+
+from streamhost import Filter, Fixed, realize
 from streamhost.files import quantize
 from streamhost.measure import measure, noise_of
 from streamhost.measure.bands import audio_band, bin_shares
@@ -61,8 +62,8 @@ def test_rounding_a_full_scale_sine(bits):
 @pytest.mark.parametrize("bits", SNR_TPDF)
 def test_rounding_a_sine_with_dither(bits):
     unity = Filter.from_coefficients([1.0], rate=RATE)
-    realization = realize(unity, form="direct-1", format=Fixed(f"Q1.{bits - 1}", input="Q1.23", operand="Q1.23", dither="tpdf"))
-    noise = measure(realization, sine(2 * RATE, RATE, 997.0, -1.0), (20.0, 20000.0)).noise
+    format = Fixed(f"Q1.{bits - 1}", input="Q1.23", operand="Q1.23", dither="tpdf")
+    noise = measure(realize(unity, form="direct-1", format=format), sine(2 * RATE, RATE, 997.0, -1.0), (20.0, 20000.0)).noise
     assert noise.full_dbfs == pytest.approx(-SNR_TPDF[bits], abs=0.3)  # the table's own tolerance
 
 

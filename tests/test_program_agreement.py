@@ -1,6 +1,7 @@
 """The agreement matrix: the native kernels against the definition, to the last bit, with the corners counted."""
 
 from collections import Counter
+from fractions import Fraction
 from random import Random
 
 import numpy as np
@@ -15,10 +16,13 @@ from random_formats import random_format
 from streamhost.diagram.nodes import Taps
 from streamhost.errors import FormatError
 from streamhost.formats import OVERFLOWS, ROUNDINGS, Fixed, Float, Format
+from streamhost.program.definition import FixedDefinition
+from streamhost.program.ideal import ideal_program
 from streamhost.program.native.kernel import Variant
 from streamhost.program.native.meters import meter_places
 from streamhost.program.program import Program
-from streamhost.program.run import lower, run_definition
+from streamhost.program.run import input_code, lower, run_definition
+from streamhost.program.sources import traced_roundings
 
 FORMS = ("direct-1", "direct-1-swapped", "direct-2", "transposed-1", "transposed-2")
 
@@ -164,10 +168,7 @@ def test_traced_residues_are_what_the_definition_dropped() -> None:
     program = sh.realize(filter_of_two_sections(), form="transposed-2", format=FORMATS["Q1.15 half-up saturate"]).program
     x = busy(100, 1, seed=3)
     run = run_native(program, x, Variant(traced=True))
-    _, _, (evaluator,) = run_counting(program, x[:0])
-    from streamhost.program.run import input_code
-    from streamhost.program.sources import traced_roundings
-
+    evaluator = FixedDefinition(program)
     for n, value in enumerate(x[:, 0]):
         evaluator.step(input_code(float(value), program.format.input))  # type: ignore[union-attr]
         for k, index in enumerate(traced_roundings(program)):
@@ -177,10 +178,6 @@ def test_traced_residues_are_what_the_definition_dropped() -> None:
 
 def test_the_double_double_kernel_equals_float64_to_its_rounding_and_holds_far_more() -> None:
     """An independent sum in exact fractions of the same difference equation."""
-    from fractions import Fraction
-
-    from streamhost.program.ideal import ideal_program
-
     realization = sh.realize(sh.Filter.from_sections([[0.5, 0.25, 0.125, 1, -1.5, 0.6]], rate=48000), form="direct-1")
     x = np.random.default_rng(0).uniform(-1, 1, (40, 1))
     y = run_native(ideal_program(realization.program), x, Variant(double=True)).y

@@ -23,9 +23,10 @@ SUBTYPES = ("pcm16", "pcm24", "pcm32", "float")
 @click.argument("source", metavar="IN")
 @click.argument("destination", metavar="OUT")
 @click.option(
-    "--subtype", type=click.Choice(SUBTYPES),
-    help="Samples of OUT. Unless said: PCM of the shortest of 16, 24, 32 bits that holds the output word's fraction exactly; "
-    "24 bits after floating point.",
+    "--subtype",
+    type=click.Choice(SUBTYPES),
+    help="Samples of OUT. Unless said: PCM of the shortest of 16, 24, 32 bits that holds the output word's fraction "
+    "exactly; 24 bits after floating point.",
 )
 @force_option
 def render(preset: str, source: str, destination: str, subtype: Any, force: bool) -> None:
@@ -43,7 +44,12 @@ def render(preset: str, source: str, destination: str, subtype: Any, force: bool
     realization = realized(stated)
     with Progress("render", math.ceil(info.seconds / 60)) as progress:
         rendered = render_file(
-            realization, info, Path(destination), name=stated.source.name, subtype=subtype, overwrite=force,
+            realization,
+            info,
+            Path(destination),
+            name=stated.source.name,
+            subtype=subtype,
+            overwrite=force,
             report=_minute_by_minute(progress, info),
         )
     if problem := notice():
@@ -56,8 +62,14 @@ def realized(preset: "Preset") -> "Realization":
     from streamhost.realization import realize
 
     return realize(
-        preset.filter, form=preset.form, decomposition=preset.decomposition, pairing=preset.pairing, ordering=preset.ordering,
-        scaling=preset.scaling, format=preset.format, allow_unstable=preset.allow_unstable,
+        preset.filter,
+        form=preset.form,
+        decomposition=preset.decomposition,
+        pairing=preset.pairing,
+        ordering=preset.ordering,
+        scaling=preset.scaling,
+        format=preset.format,
+        allow_unstable=preset.allow_unstable,
     )
 
 
@@ -79,8 +91,8 @@ def summary(rendered: "Rendered", realization: "Realization") -> list[str]:
     seconds = rendered.frames / rendered.rate
     lines = [
         printable(
-            f"{rendered.path}: {_count(rendered.frames, 'frame')} ({seconds:.2f} s), {_count(rendered.channels, 'channel')}, "
-            f"{rendered.rate} Hz, {rendered.container} {rendered.subtype}"
+            f"{rendered.path}: {_count(rendered.frames, 'frame')} ({seconds:.2f} s), "
+            f"{_count(rendered.channels, 'channel')}, {rendered.rate} Hz, {rendered.container} {rendered.subtype}"
         ),
         f"peak {_decibels(rendered.meters.peak_dbfs)}, {_count(rendered.clipped, 'sample')} clipped, no NaN",
     ]
@@ -96,7 +108,11 @@ def summary(rendered: "Rendered", realization: "Realization") -> list[str]:
 
 def _events(rendered: "Rendered") -> list[str]:
     tally = rendered.tally
-    kinds = ((tally.saturations, "saturation"), (tally.wraps, "wrap"), (tally.accumulator_overflows, "accumulator overflow"))
+    kinds = (
+        (tally.saturations, "saturation"),
+        (tally.wraps, "wrap"),
+        (tally.accumulator_overflows, "accumulator overflow"),
+    )
     return [_count(number, kind) for number, kind in kinds if number]
 
 

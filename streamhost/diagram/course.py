@@ -22,7 +22,7 @@ LARGEST_RUN = 1 << 25
 """Frames, and frames times exits, that a response with many states is run for."""
 
 NEGLIGIBLE = 1e-24
-EXPLODED = 1e100
+EXPLODED = 1e30
 
 
 @dataclass(frozen=True, eq=False)
@@ -30,7 +30,7 @@ class Course:
     """The responses of a fan, in order of its exits.
 
     fan: the stable part; head: the first frames, (frames, exits); rest: how they go on, from the frame after the
-    head; ended: exits whose response is over, or has been run down below 1e-12 of itself; energy: sum of squares,
+    head; ended: exits whose response is over, or, where `run_down`, below 1e-12 of itself; energy: sum of squares,
     infinite where the response does not die out.
     """
 
@@ -39,6 +39,7 @@ class Course:
     rest: Fan
     ended: BoolArray
     energy: FloatArray
+    run_down: bool = False
 
     @property
     def lively(self) -> BoolArray:
@@ -58,8 +59,9 @@ def follow(fan: Fan) -> Course:
     states = len(stable.entry)
     with np.errstate(over="ignore", invalid="ignore"):
         head, state = run(stable, 2 * states + 2)
-    ended = ~head[states + 1:].any(axis=0) & ~grows
-    rest = Fan(stable.A, state, np.where(ended[:, None], 0.0, stable.exits), np.zeros_like(stable.direct)).pruned()
+    silent = ~head[states + 1:].any(axis=0)
+    rest = Fan(stable.A, state, np.where(silent[:, None], 0.0, stable.exits), np.zeros_like(stable.direct)).pruned()
+    ended = ~rest.exits.any(axis=1) & ~grows
     if len(rest.entry) > MOST_DENSE:
         return _run_down(stable, grows)
     energy = (head**2).sum(axis=0) + tail_energy(rest)
@@ -81,7 +83,7 @@ def _run_down(fan: Fan, grows: BoolArray) -> Course:
         frames = min(2 * frames, most)
     ended = over & ~grows
     silent = Fan(fan.A, np.zeros_like(fan.entry), fan.exits, np.zeros_like(fan.direct)).pruned()
-    return Course(fan, head, silent, ended, np.where(ended, energy, inf))
+    return Course(fan, head, silent, ended, np.where(ended, energy, inf), run_down=True)
 
 
 def tail_energy(fan: Fan) -> FloatArray:

@@ -118,7 +118,8 @@ def _norms(fan: Fan) -> Norms:
 
 def _absolute_sums(course: Course) -> tuple[FloatArray, FloatArray]:
     l1 = np.where(np.isfinite(course.energy), np.abs(course.head).sum(axis=0), inf)
-    slack = np.where(course.ended & course.head[len(course.head) // 2:].any(axis=0), inf, 0.0)
+    unknown = course.ended & course.head[len(course.head) // 2:].any(axis=0) & course.run_down
+    slack = np.where(unknown, inf, 0.0)
     if course.lively.any():
         lively = course.lively
         total, bound, _ = _summed_until_small(course.rest.watched(lively), l1[lively])

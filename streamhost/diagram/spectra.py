@@ -76,12 +76,14 @@ class ResonantSpectrum:
         return w, np.abs(self.at(w))
 
     def _thinned(self, w: FloatArray) -> FloatArray:
-        """Without points so near to another that only rounding tells their magnitudes apart."""
+        """Without points so near to another that only rounding tells their magnitudes apart; both ends stay."""
         apart = np.abs(np.exp(1j * w)[:, None] - self.fan.poles).min(axis=1) / 20.0
         kept = [0]
         for i in range(1, len(w)):
             if w[i] - w[kept[-1]] >= max(apart[i], MARGINAL / 20.0):
                 kept.append(i)
+        if len(kept) > 1:
+            kept[-1] = len(w) - 1
         return w[kept]
 
     def at(self, w: FloatArray) -> ComplexArray:

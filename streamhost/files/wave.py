@@ -52,6 +52,13 @@ class PcmWave:
     def _format(self) -> bytes:
         frame = self._channels * self._bits // 8
         return struct.pack(
-            "<4sIHHIIHH", b"fmt ", 16, _PCM, self._channels, self._rate, min(self._rate * frame, _LARGEST), frame,
+            "<4sIHHIIHH",
+            b"fmt ",
+            16,
+            _PCM,
+            self._channels,
+            self._rate,
+            min(self._rate * frame, _LARGEST),
+            frame,
             self._bits,
         )

@@ -24,7 +24,7 @@ class Host:
         channels = {lane.channels for lane in lanes}
         if len(channels) != 1:
             raise RequestError(
-                f"A host runs at least one lane, all of one number of channels; these have {sorted(channels) or 'none'}."
+                f"A host runs at least one lane, all of one number of channels; these have {sorted(channels)}."
             )
         if block < 1:
             raise RequestError(f"A host's blocks have at least 1 frame, not {block}.")

@@ -39,7 +39,14 @@ class Lane:
 
     def _connect(self) -> None:
         memory = self.memory
-        arrays = (memory.state, memory.coefficients, memory.keys, memory.meters, self._marks, self._trace)
+        arrays: tuple[NDArray[np.generic], ...] = (
+            memory.state,
+            memory.coefficients,
+            memory.keys,
+            memory.meters,
+            self._marks,
+            self._trace,
+        )
         record = self._record
         record["kernel"], record["output"] = self.kernel.address, self._output.ctypes.data
         for name, array in zip(ARRAYS, arrays, strict=True):
@@ -52,12 +59,12 @@ class Lane:
 
     @property
     def output(self) -> NDArray[np.float64]:
-        """The last block (frames, outputs * channels), all channels of the first output first. The next step overwrites it."""
+        """The last block (frames, outputs * channels), its first output's channels first; the next takes its place."""
         return self._output[: self._block]
 
     @property
     def marks(self) -> NDArray[np.uint8]:
-        """(frames, channels) of the last block: 1 where something overflowed in that frame. Of a metered lane; else no rows."""
+        """(frames, channels) of the last block: 1 where something overflowed; of a metered lane, else without rows."""
         return self._marks[: self._block]
 
     @property

@@ -20,8 +20,19 @@ def pointer(typingctx: Any, address: Any) -> Any:
 
 @intrinsic
 def call_kernel(
-    typingctx: Any, kernel: Any, x: Any, y: Any, state: Any, coefficients: Any, keys: Any, meters: Any, marks: Any,
-    trace: Any, frames: Any, channels: Any, frame0: Any,
+    typingctx: Any,
+    kernel: Any,
+    x: Any,
+    y: Any,
+    state: Any,
+    coefficients: Any,
+    keys: Any,
+    meters: Any,
+    marks: Any,
+    trace: Any,
+    frames: Any,
+    channels: Any,
+    frame0: Any,
 ) -> Any:
     """Call the kernel at an address; its arrays are given by their addresses, x by a pointer."""
 

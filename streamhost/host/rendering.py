@@ -60,8 +60,12 @@ def render_file(
     """
     _check(realization, source, destination, name)
     writer = AudioWriter(
-        destination, rate=source.rate, channels=source.channels, subtype=subtype or default_subtype(realization.format),
-        frames_expected=source.frames, overwrite=overwrite,
+        destination,
+        rate=source.rate,
+        channels=source.channels,
+        subtype=subtype or default_subtype(realization.format),
+        frames_expected=source.frames,
+        overwrite=overwrite,
     )
     with writer:
         lane = Lane(realization, source.channels, metered=isinstance(realization.format, Fixed))
@@ -72,8 +76,15 @@ def render_file(
             _check_finite(lane.meters, destination, name)
             writer.write(lane.output)
     return Rendered(
-        destination, writer.container, writer.subtype, source.rate, source.channels, writer.frames, writer.clipped,
-        lane.meters, lane.tally(),
+        destination,
+        writer.container,
+        writer.subtype,
+        source.rate,
+        source.channels,
+        writer.frames,
+        writer.clipped,
+        lane.meters,
+        lane.tally(),
     )
 
 
@@ -81,13 +92,13 @@ def _check(realization: Realization, source: AudioInfo, destination: Path, name:
     rate = realization.filter.rate
     if source.rate != rate:
         raise RequestError(
-            f"{source.path} has a rate of {source.rate} Hz, and {name} is a filter for {rate:g} Hz. Rates are not converted: "
-            "give a file of that rate, or a filter for this one."
+            f"{source.path} has a rate of {source.rate} Hz, and {name} is a filter for {rate:g} Hz. Rates are not "
+            "converted: give a file of that rate, or a filter for this one."
         )
     if len(realization.outputs) > 1:
         raise RequestError(
-            f"{name} has {len(realization.outputs)} outputs ({', '.join(realization.outputs)}), and a rendered file takes one. "
-            "Give a filter with one output."
+            f"{name} has {len(realization.outputs)} outputs ({', '.join(realization.outputs)}), and a rendered file "
+            "takes one. Give a filter with one output."
         )
     if same_file(source.path, destination):
         raise RequestError(f"{destination}: input and output are the same file. Choose another name for the output.")

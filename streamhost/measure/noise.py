@@ -110,7 +110,8 @@ class NoiseSum:
 
     def _spectrum(self) -> Spectrum:
         """The finest that saw enough of the run, or else the one that saw the most."""
-        spectra = [mean_spectrum([channel[k].spectrum() for channel in self._spectra]) for k in range(len(self._lengths))]
+        by_length = zip(*self._spectra, strict=True)
+        spectra = [mean_spectrum([channel.spectrum() for channel in channels]) for channels in by_length]
         enough = ENOUGH_SEEN * max(moments.count for moments in self._moments)
         return next((fine for fine in spectra if fine.frames >= enough), max(spectra, key=lambda seen: seen.frames))
 

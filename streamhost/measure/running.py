@@ -33,8 +33,8 @@ class Run:
     def __init__(self, realization: Realization, channels: int) -> None:
         if len(realization.outputs) > 1:
             raise RequestError(
-                f"This realization has {len(realization.outputs)} outputs ({', '.join(realization.outputs)}); those with "
-                "one output can be measured so far."
+                f"This realization has {len(realization.outputs)} outputs ({', '.join(realization.outputs)}), and only "
+                "those with one can be measured so far."
             )
         self.program, self.channels = realization.program, channels
         self._memory = realization.memory(channels)

@@ -33,8 +33,15 @@ with soundfile.SoundFile(sys.argv[1]) as source:
             target.write(block)
 """
 
-HEAD = 'title = "Order 8"\nrate = 48000\n\n[[filter]]\n{filter}\n\n[structure]\ndecomposition = "cascade"\n\n' \
-       '[format]\narithmetic = "float32"\n'
+PRESET = """
+rate = 48000
+[[filter]]
+{filter}
+[structure]
+decomposition = "cascade"
+[format]
+arithmetic = "float32"
+"""
 BUTTERWORTH = 'kind = "butterworth"\nresponse = "low-pass"\norder = 8\nfrequency = 1000.0'
 
 
@@ -68,19 +75,19 @@ def make_input(path: Path) -> None:
 def preset(kind: str) -> str:
     """The filter as four sections, which need no design at start, or as what it is called."""
     if kind == "butterworth":
-        return HEAD.format(filter=BUTTERWORTH)
+        return PRESET.format(filter=BUTTERWORTH)
     from scipy import signal
 
     rows = signal.butter(8, 1000, fs=RATE, output="sos").tolist()
-    return HEAD.format(filter="sections = [\n" + "".join(f"    {row},\n" for row in rows) + "]")
+    return PRESET.format(filter="sections = [\n" + "".join(f"    {row},\n" for row in rows) + "]")
 
 
 def say(name: str, runs: list[Run], against: list[Run]) -> None:
     wall, processor = (statistics.median(getattr(run, what) for run in runs) for what in ("wall", "processor"))
     base = statistics.median(run.wall for run in against), statistics.median(run.processor for run in against)
     memory = max(run.memory for run in runs) / 2**20
-    print(f"{name:<8} {wall:6.2f} s ({wall / base[0]:.2f})   processor {processor:6.2f} s ({processor / base[1]:.2f})   "
-          f"memory {memory:.0f} MB")
+    print(f"{name:<8} {wall:6.2f} s ({wall / base[0]:.2f})", end="   ")
+    print(f"processor {processor:6.2f} s ({processor / base[1]:.2f})   memory {memory:.0f} MB")
 
 
 def main() -> None:
@@ -93,8 +100,8 @@ def main() -> None:
         make_input(source)
         stated.write_text(preset(arguments.kind))
         copy = [sys.executable, "-c", COPY, str(source), f"{folder}/copy.wav"]
-        render = [sys.executable, "-m", "streamhost.commands.main", "render", str(stated), str(source), f"{folder}/out.wav",
-                  "--force"]
+        render = [sys.executable, "-m", "streamhost.commands.main", "render", "--force"]
+        render += [str(stated), str(source), f"{folder}/out.wav"]
         timed(render)  # compiles, and keeps what was compiled
         runs = [(timed(copy), timed(render)) for _ in range(arguments.repeats)]
     copies, renders = [run[0] for run in runs], [run[1] for run in runs]
