@@ -19,7 +19,8 @@ def test_float64_moves_nothing():
 
 def test_a_gain_off_by_a_known_amount():
     """0.3 in Q1.7 is stored as 38/128."""
-    realization = realize(Filter.from_coefficients([0.3], rate=RATE), form="direct-1", format=Fixed("Q1.15", coefficients="Q1.7"))
+    filter = Filter.from_coefficients([0.3], rate=RATE)
+    realization = realize(filter, form="direct-1", format=Fixed("Q1.15", coefficients="Q1.7"))
     found = response_deviation(realization, BAND)
     assert found.db == pytest.approx(20.0 * np.log10(0.3 / (38.0 / 128.0)), rel=1e-9)  # float64
     assert found.leak_db is None

@@ -304,8 +304,6 @@ FORMATS = {
     'arithmetic = "float23"':
         '8: arithmetic = "float23" is not known: 16x16+40, 16x16-32, 32x16-high, 32x32-high, 24x24+56, 32x32+64, '
         'float32, float32-fused or float64. Did you mean "float32"?',
-    'rounding = "floor"':
-        '7: signal is missing: a fixed-point format states its signal word, for instance signal = "Q1.15".',
     'signal = "Q20.20"': '8: signal = "Q20.20" has 40 bits. A word here has from 2 to 32 bits.',
     'signal = "Q0.16"': '8: signal = "Q0.16" has no sign bit: m is at least 1, for instance "Q1.16".',
     "signal = 16":

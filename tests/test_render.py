@@ -358,12 +358,12 @@ def test_a_disk_without_room_is_the_machines_failure(tmp_path: Path, capsys: pyt
     assert sorted(file.name for file in tmp_path.iterdir()) == ["first.wav", "in.wav", "preset.toml"]
 
 
-@pytest.mark.parametrize("force", [False, True])
-def test_control_c_leaves_nothing_half_written(tmp_path: Path, force: bool) -> None:
+@pytest.mark.parametrize("there", [False, True])
+def test_control_c_leaves_nothing_half_written(tmp_path: Path, there: bool) -> None:
     """Of a whole process that is stopped in the middle of its work: the partial file is there, the output is not."""
     given = source(tmp_path, 48000 * 60, 8)
     out = tmp_path / "out.wav"
-    if force:
+    if there:
         out.write_text("precious")
     command = [
         sys.executable,
@@ -386,7 +386,7 @@ def test_control_c_leaves_nothing_half_written(tmp_path: Path, force: bool) -> N
     assert (process.returncode, said) == (130, "")
     assert told.endswith("Interrupted.\n")
     assert "Traceback" not in told
-    left = ["in.wav", "out.wav", "preset.toml"] if force else ["in.wav", "preset.toml"]
+    left = ["in.wav", "out.wav", "preset.toml"] if there else ["in.wav", "preset.toml"]
     assert sorted(file.name for file in tmp_path.iterdir()) == left
-    if force:
+    if there:
         assert out.read_text() == "precious"

@@ -59,7 +59,7 @@ def follow(fan: Fan) -> Course:
     states = len(stable.entry)
     with np.errstate(over="ignore", invalid="ignore"):
         head, state = run(stable, 2 * states + 2)
-    silent = ~head[states + 1:].any(axis=0)
+    silent: BoolArray = np.logical_not(head[states + 1:].any(axis=0))
     rest = Fan(stable.A, state, np.where(silent[:, None], 0.0, stable.exits), np.zeros_like(stable.direct)).pruned()
     ended = ~rest.exits.any(axis=1) & ~grows
     if len(rest.entry) > MOST_DENSE:

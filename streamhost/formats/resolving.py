@@ -16,6 +16,7 @@ from streamhost.formats.words import OVERFLOWS, ROUNDINGS, Quantizer, Word
 
 PRE_SUMS = ("exact", "half", "signal")
 FEEDBACKS = ("subtracted", "negated")
+DEFAULT_SIGNAL = "Q1.15"
 _NO_WORD = Word(1, 1)
 _OF_ARITHMETICS = ("signal", "coefficients", "state", "operand", "accumulator")
 
@@ -24,6 +25,7 @@ def resolved(stated: Mapping[str, object]) -> dict[str, object]:
     """The places and choices of a format. Raises FormatError with every problem of a stage."""
     collect = Collector()
     keys = {**stated, **_under_arithmetic(collect, stated)}
+    keys["signal"] = keys["signal"] or DEFAULT_SIGNAL
     _check_choices(collect, keys)
     collect.raise_any()
     rounding, overflow, dither = str(keys["rounding"]), str(keys["overflow"]), keys["dither"] is not None
@@ -68,7 +70,5 @@ def _check_choices(collect: Collector, keys: Mapping[str, object]) -> None:
     collect.seed("dither_seed", keys["dither_seed"])
     collect.flag("allow_vanishing", keys["allow_vanishing"])
     collect.flag("allow_clamping", keys["allow_clamping"])
-    if keys["signal"] is None:
-        collect.add("signal", 'is missing: a fixed-point format states its signal word, for instance signal = "Q1.15".')
     if keys["rounding_place"] == "product" and keys["product"] is not None:
         collect.add("product", 'and rounding_place = "product" say two things about one rounding: state one of them.')

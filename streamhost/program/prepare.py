@@ -93,7 +93,9 @@ def halve_pre_sums(diagram: Diagram, signal: Quantizer) -> Diagram:
             shift = rewriter.put(Shift(f"{node.label}.half", place, -k))
             halved[index] = rewriter.put(Round(f"{node.label}.halved", shift, signal))
         if isinstance(node, Gain) and roles.pre_sum[node.source] and isinstance(pre := diagram.nodes[node.source], Sum):
-            doubled[index] = rewriter.put(Shift(f"{node.label}.double", place, (len(pre.terms) - 1).bit_length()))
+            shift = rewriter.put(Shift(f"{node.label}.double", place, (len(pre.terms) - 1).bit_length()))
+            alone = roles.register[index] or _round_reads(diagram, index)
+            doubled[index] = rewriter.put(Sum(f"{node.label}.sum", (Term(1, shift),))) if alone else shift
 
     def redirected(reader: int, source: int) -> int:
         if isinstance(diagram.nodes[reader], Gain) and source in halved:

@@ -6,7 +6,7 @@ Dekker 1971 and Knuth (two-sum), products by one fused multiply-add.
 
 from streamhost.diagram.nodes import Delay, Gain, Input, Node, Output, Residue, Round, Shift, Sum, Taps
 from streamhost.program.native.frame import Variant, header, lines
-from streamhost.program.native.text import Text
+from streamhost.program.native.text import Text, comment
 from streamhost.program.program import Program
 
 OPERATIONS = '''
@@ -60,7 +60,7 @@ class _DoublePrinter:
         text.depth += 1
         single, rings = lines(self.program)
         for slot, entry in enumerate(self.program.diagram.slots):
-            text(f"k{slot} = C[{slot}, c]  # {entry.label}")
+            text(f"k{slot} = C[{slot}, c]{comment(entry.label)}")
         for index in single:
             text(f"s{index} = {self.word(str(self.program.state_offsets[index]))}")
         for index in rings:

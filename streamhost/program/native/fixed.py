@@ -6,7 +6,7 @@ from streamhost.program.native.doors import input_text
 from streamhost.program.native.frame import Variant, close_loops, has_dither, header, lines, open_loops
 from streamhost.program.native.meters import meter_places
 from streamhost.program.native.taps import print_taps
-from streamhost.program.native.text import Text, Value, overflowed_text, rounded_text
+from streamhost.program.native.text import Text, Value, comment, overflowed_text, rounded_text
 from streamhost.program.program import Program, RoundArithmetic, SumArithmetic, TapsArithmetic, TermArithmetic
 from streamhost.program.sources import traced_roundings
 
@@ -67,7 +67,7 @@ class FixedPrinter:
 
     def assign(self, index: int, value: Value, *, prefix: str = "v") -> Value:
         """A statement that gives a node's value a name."""
-        self.text(f"{prefix}{index} = {value.text}")
+        self.text(f"{prefix}{index} = {value.text}{comment(self.nodes[index].label)}")
         named = Value(f"{prefix}{index}", value.bound, is_wide=value.is_wide)
         if prefix == "v":
             self.values[index] = named

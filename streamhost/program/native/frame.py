@@ -11,7 +11,7 @@ from pathlib import Path
 
 from streamhost.diagram.nodes import Delay, Taps
 from streamhost.program.native.meters import meter_count
-from streamhost.program.native.text import Text
+from streamhost.program.native.text import Text, comment
 from streamhost.program.program import Program
 from streamhost.program.sources import traced_roundings
 
@@ -103,9 +103,9 @@ def open_loops(text: Text, program: Program, variant: Variant, load: str) -> Non
     tapped = {slot for node in program.nodes if isinstance(node, Taps) for slot in node.coefficients}
     for slot, entry in enumerate(program.diagram.slots):
         if slot not in tapped:
-            text(f"k{slot} = {load.format(f'C[{slot}, c]')}  # {entry.label}")
+            text(f"k{slot} = {load.format(f'C[{slot}, c]')}{comment(entry.label)}")
     for index in single:
-        text(f"s{index} = {load_state(program, index, load)}  # {program.nodes[index].label}")
+        text(f"s{index} = {load_state(program, index, load)}{comment(program.nodes[index].label)}")
     for index in rings:
         text(f"p{index} = frame0 % {program.nodes[index].stores}")
     if variant.metered:

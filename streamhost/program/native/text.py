@@ -28,6 +28,11 @@ class Text:
         return "\n".join(self.lines) + "\n"
 
 
+def comment(label: str) -> str:
+    """A label behind a statement; what could end the line is left out."""
+    return "  # " + "".join(character if character.isprintable() else "?" for character in label)
+
+
 class Value:
     """An integer expression of a kernel: its text, the largest magnitude it can have, and whether it is two words."""
 
