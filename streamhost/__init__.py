@@ -1,10 +1,10 @@
 """Hear, measure and hand over every realization of a digital filter in the arithmetic of its target.
 
-    import streamhost as sh
+import streamhost as sh
 
-    f = sh.design("peak", rate=48000, frequency=1000, gain_db=6, q=0.707)
-    r = sh.realize(f, form="direct-1", format=sh.Fixed("Q1.15", coefficients="Q2.14"))
-    y = r.process(x)
+f = sh.design("peak", rate=48000, frequency=1000, gain_db=6, q=0.707)
+r = sh.realize(f, form="direct-1", format=sh.Fixed("Q1.15", coefficients="Q2.14"))
+y = r.process(x)
 """
 
 from importlib import import_module
@@ -19,17 +19,37 @@ if TYPE_CHECKING:
     from streamhost.structures import decompositions, forms
 
 _HOMES = {
-    "Builder": "diagram", "Diagram": "diagram", "minus": "diagram",
-    "Filter": "filters", "design": "filters", "kinds": "filters",
-    "Fixed": "formats", "Float": "formats",
-    "Preset": "presets", "load_preset": "presets",
-    "Realization": "realization", "realize": "realization",
-    "decompositions": "structures", "forms": "structures",
+    "Builder": "diagram",
+    "Diagram": "diagram",
+    "minus": "diagram",
+    "Filter": "filters",
+    "design": "filters",
+    "kinds": "filters",
+    "Fixed": "formats",
+    "Float": "formats",
+    "Preset": "presets",
+    "load_preset": "presets",
+    "Realization": "realization",
+    "realize": "realization",
+    "decompositions": "structures",
+    "forms": "structures",
 }
 
 __all__ = [
-    "Builder", "Diagram", "Filter", "Fixed", "Float", "Preset", "Realization", "decompositions", "design", "forms", "kinds",
-    "load_preset", "minus", "realize",
+    "Builder",
+    "Diagram",
+    "Filter",
+    "Fixed",
+    "Float",
+    "Preset",
+    "Realization",
+    "decompositions",
+    "design",
+    "forms",
+    "kinds",
+    "load_preset",
+    "minus",
+    "realize",
 ]
 
 

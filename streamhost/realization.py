@@ -74,7 +74,10 @@ class Realization:
         x: (frames,) or (frames, channels), of as many channels as the blocks before it. Returns the same shape; with
         several outputs (frames, outputs, channels). Raises RequestError for another shape or number of channels.
         """
-        if isinstance(self.format, Fixed) and max(self.format.input.word.bits, self.format.output.word.bits) > MOST_REAL_BITS:
+        if (
+            isinstance(self.format, Fixed)
+            and max(self.format.input.word.bits, self.format.output.word.bits) > MOST_REAL_BITS
+        ):
             raise RequestError(f"Samples of {self.format.input.word} do not fit a float64. Use process_codes.")
         return self._run(np.asarray(x, dtype=np.float64), codes=False)
 
@@ -91,8 +94,10 @@ class Realization:
             raise RequestError(f"process_codes takes integers, not {array.dtype}.")
         word = self.format.input.word
         if array.size and not word.low <= int(array.min()) <= int(array.max()) <= word.high:
-            raise RequestError(f"A code of {word} runs from {word.low} to {word.high}; the block holds codes from "
-                               f"{array.min()} to {array.max()}.")
+            raise RequestError(
+                f"A code of {word} runs from {word.low} to {word.high}; the block holds codes from "
+                f"{array.min()} to {array.max()}."
+            )
         return self._run(array.astype(np.int64), codes=True)
 
     def reset(self) -> None:
@@ -114,7 +119,9 @@ class Realization:
         from streamhost.program.native.kernel import Memory
 
         if self.diagram.channels not in (1, channels):
-            raise RequestError(f"This realization has coefficients for {self.diagram.channels} channels, and {channels} came.")
+            raise RequestError(
+                f"This realization has coefficients for {self.diagram.channels} channels, and {channels} came."
+            )
         return Memory(self.program, channels)
 
     def _run(self, x: NDArray[Scalar], *, codes: bool) -> NDArray[Scalar]:
@@ -127,7 +134,9 @@ class Realization:
         if self._memory is None:
             self._memory = self.memory(channels)
         if self._memory.channels != channels:
-            raise RequestError(f"The blocks before had {self._memory.channels} channels, this one has {channels}. reset() first.")
+            raise RequestError(
+                f"The blocks before had {self._memory.channels} channels, this one has {channels}. reset() first."
+            )
         y = np.empty((frames, len(self.outputs) * channels), block.dtype)
         marks = np.zeros(block.shape, np.uint8)
         self._kernel(codes).call(self._memory, np.ascontiguousarray(block), y, marks=marks, trace=no_trace())
@@ -170,8 +179,10 @@ def realize(
     Raises FilterError for a filter that is unstable as asked (unless allowed), StructureError, FormatError.
     """
     if (poles := filter.unstable_poles()) and not allow_unstable:
-        raise FilterError(f"The filter as asked is unstable: {poles} of its poles lie on or outside the unit circle. State "
-                          f"allow_unstable = true to run it all the same.")
+        raise FilterError(
+            f"The filter as asked is unstable: {poles} of its poles lie on or outside the unit circle. State "
+            f"allow_unstable = true to run it all the same."
+        )
     arithmetic = named_format(format) if isinstance(format, str) else format
     built = build(filter, form=form, decomposition=decomposition, pairing=pairing, ordering=ordering, scaling=scaling)
     return Realization(filter, built, _with_codes(filter, arithmetic))
@@ -183,7 +194,9 @@ def _with_codes(filter: Filter, format: Format) -> Format:
         return format
     word = parse_word(filter.codes.word, "word", least_integer=-999)
     if format.coefficients_stated and format.coefficients.word != word:
-        raise FormatError(f"The filter is given as codes of {word}, which they keep: leave `coefficients` out of the format.")
+        raise FormatError(
+            f"The filter is given as codes of {word}, which they keep: leave `coefficients` out of the format."
+        )
     return format.with_coefficient_word(word)
 
 

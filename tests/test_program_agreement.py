@@ -8,11 +8,11 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
-
-import streamhost as sh
 from native_runs import busy, run_counting, run_native
 from random_diagrams import random_diagram
 from random_formats import random_format
+
+import streamhost as sh
 from streamhost.diagram.nodes import Taps
 from streamhost.errors import FormatError
 from streamhost.formats import OVERFLOWS, ROUNDINGS, Fixed, Float, Format
@@ -97,7 +97,8 @@ def test_every_corner_is_taken_many_times(rounding: str) -> None:
     for seed, overflow in enumerate(OVERFLOWS):
         for form in FORMS:
             format = Fixed("Q1.5", coefficients="Q2.3", rounding=rounding, overflow=overflow)
-            corners += agree(sh.realize(filter_of_two_sections(), form=form, format=format).program, busy(360, 2, seed), plain=False)
+            program = sh.realize(filter_of_two_sections(), form=form, format=format).program
+            corners += agree(program, busy(360, 2, seed), plain=False)
     for corner in ("tie above 0, odd", "tie above 0, even", "tie below 0, odd", "tie below 0, even", "nothing dropped",
                    "overflow above", "overflow below", "operand lowest", "operand highest", "operand 0"):
         assert corners[corner] >= 50, corners

@@ -6,9 +6,9 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
-
 from random_diagrams import random_diagram
 from random_formats import random_format
+
 from streamhost.diagram import Builder, Diagram, Round, minus
 from streamhost.errors import DiagramError, FormatError
 from streamhost.formats import Fixed, Float, Format

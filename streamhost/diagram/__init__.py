@@ -5,6 +5,21 @@ from streamhost.diagram.diagram import Counts, Diagram
 from streamhost.diagram.nodes import Delay, Gain, Input, Node, Output, Residue, Round, Shift, Slot, Sum, Taps, Term
 
 __all__ = [
-    "Builder", "Counts", "Delay", "Diagram", "Gain", "Input", "Node", "Output", "Ref", "Residue", "Round", "Shift", "Slot",
-    "Sum", "Taps", "Term", "minus",
+    "Builder",
+    "Counts",
+    "Delay",
+    "Diagram",
+    "Gain",
+    "Input",
+    "Node",
+    "Output",
+    "Ref",
+    "Residue",
+    "Round",
+    "Shift",
+    "Slot",
+    "Sum",
+    "Taps",
+    "Term",
+    "minus",
 ]

@@ -1,12 +1,12 @@
 """Writing a signal-flow graph down: plain calls, no operators.
 
-    b = Builder()
-    x = b.input()
-    d = b.delay("d1")
-    y = b.sum(x, b.gain(d, "k", 0.9), label="y")
-    d.takes(y)
-    b.output(y)
-    diagram = b.build()
+b = Builder()
+x = b.input()
+d = b.delay("d1")
+y = b.sum(x, b.gain(d, "k", 0.9), label="y")
+d.takes(y)
+b.output(y)
+diagram = b.build()
 """
 
 from collections.abc import Sequence
@@ -76,8 +76,16 @@ class Builder:
             raise DiagramError(f'The delay "{node.label}" is driven twice.')
         self._nodes[delay.index] = replace(node, source=self._own(source))
 
-    def gain(self, source: Ref, label: str, value: ArrayLike = 1.0, *, section: int | None = None, part: str = "",
-             feedback: bool = False) -> Ref:
+    def gain(
+        self,
+        source: Ref,
+        label: str,
+        value: ArrayLike = 1.0,
+        *,
+        section: int | None = None,
+        part: str = "",
+        feedback: bool = False,
+    ) -> Ref:
         """A multiplication by `value`: a number, or one per channel."""
         slot = self._slot(Slot(label, section, part, feedback), value)
         return self._add(Gain(self._label(label, "g"), self._own(source), slot))
@@ -89,20 +97,33 @@ class Builder:
     def sum(self, *terms: Ref | Signed, label: str = "", grow: int | None = None, overflow: str = "wrap") -> Ref:
         """Signed terms in the drawn order. `grow` marks a longer register that wraps; saturation there is refused."""
         if grow is not None and overflow != "wrap":
-            raise DiagramError(f'The sum "{label}" is marked grow = {grow} with overflow = "{overflow}": a longer register '
-                               f"of a running sum is exact only where it wraps. Saturation there is refused.")
+            raise DiagramError(
+                f'The sum "{label}" is marked grow = {grow} with overflow = "{overflow}": a longer register '
+                f"of a running sum is exact only where it wraps. Saturation there is refused."
+            )
         signed = tuple(Term(-1, self._own(t.ref)) if isinstance(t, Signed) else Term(1, self._own(t)) for t in terms)
         return self._add(Sum(self._label(label, "sum"), signed, grow))
 
-    def taps(self, source: Ref, label: str, values: Sequence[ArrayLike], *, fold: str | None = None,
-             last_first: bool = False, section: int | None = None, part: str = "b") -> Ref:
+    def taps(
+        self,
+        source: Ref,
+        label: str,
+        values: Sequence[ArrayLike],
+        *,
+        fold: str | None = None,
+        last_first: bool = False,
+        section: int | None = None,
+        part: str = "b",
+    ) -> Ref:
         """A tapped delay line with its weighted sum, tap 0 added first, or last.
 
         `values`: one coefficient a tap; folded ("even" or "odd"), all taps are given and must have that symmetry.
         """
         values = list(values)
         if fold is not None and last_first:
-            raise DiagramError(f'The taps "{label}" are folded: pairs are added from both ends inwards, never last first.')
+            raise DiagramError(
+                f'The taps "{label}" are folded: pairs are added from both ends inwards, never last first.'
+            )
         kept = list(enumerate(values if fold is None else folded_half(values, fold, label)))
         ordered = reversed(kept) if last_first else kept
         slots = tuple(self._slot(Slot(f"{label}{i}", section, part), value) for i, value in ordered)
@@ -134,8 +155,10 @@ class Builder:
         channels = max((len(v) for v in self._values), default=1)
         for slot, values in zip(self._slots, self._values, strict=True):
             if len(values) not in (1, channels):
-                raise DiagramError(f'The coefficient "{slot.label}" has {len(values)} values, and others have {channels}: '
-                                   f"give one, or one per channel.")
+                raise DiagramError(
+                    f'The coefficient "{slot.label}" has {len(values)} values, and others have {channels}: '
+                    f"give one, or one per channel."
+                )
         table = np.empty((len(self._slots), channels))
         for row, values in zip(table, self._values, strict=True):
             row[:] = values
@@ -157,7 +180,9 @@ class Builder:
     def _slot(self, slot: Slot, value: ArrayLike) -> int:
         values = np.atleast_1d(np.asarray(value, dtype=np.float64))
         if values.ndim != 1 or not np.isfinite(values).all():
-            raise DiagramError(f'The coefficient "{slot.label}" = {value!r} is not a finite number, or one per channel.')
+            raise DiagramError(
+                f'The coefficient "{slot.label}" = {value!r} is not a finite number, or one per channel.'
+            )
         self._slots.append(slot)
         self._values.append(values)
         return len(self._slots) - 1
@@ -171,10 +196,14 @@ def folded_half(values: Sequence[ArrayLike], fold: str, label: str) -> list[Arra
     length = len(values)
     for i in range(length // 2):
         if not np.array_equal(np.asarray(values[i]), sign * np.asarray(values[length - 1 - i])):
-            raise DiagramError(f'The taps "{label}" have no {fold} symmetry: tap {i} is {values[i]!r}, '
-                               f"tap {length - 1 - i} is {values[length - 1 - i]!r}.")
+            raise DiagramError(
+                f'The taps "{label}" have no {fold} symmetry: tap {i} is {values[i]!r}, '
+                f"tap {length - 1 - i} is {values[length - 1 - i]!r}."
+            )
     if fold == "odd" and length % 2:
         if np.any(np.asarray(values[length // 2]) != 0):
-            raise DiagramError(f'The taps "{label}" have odd symmetry and a middle tap of {values[length // 2]!r}: it must be 0.')
+            raise DiagramError(
+                f'The taps "{label}" have odd symmetry and a middle tap of {values[length // 2]!r}: it must be 0.'
+            )
         return list(values[: length // 2])
     return list(values[: (length + 1) // 2])

@@ -26,7 +26,7 @@ def delay_free_loop(diagram: "Diagram") -> tuple[int, ...]:
         seen[index] = len(path)
         path.append(index)
         index = next(s for s in diagram.nodes[index].needs_now if s in stuck)
-    return tuple(reversed(path[seen[index]:]))
+    return tuple(reversed(path[seen[index] :]))
 
 
 def _schedule(diagram: "Diagram") -> list[int]:

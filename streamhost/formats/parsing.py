@@ -85,7 +85,9 @@ def parse_place(collect: Collector, key: str, given: object, default: Quantizer,
     return quantizer
 
 
-def parse_coefficients(collect: Collector, given: object, bits: int, vanishing: bool, clamping: bool) -> CoefficientRule:
+def parse_coefficients(
+    collect: Collector, given: object, bits: int, vanishing: bool, clamping: bool
+) -> CoefficientRule:
     rule = CoefficientRule(bits, allow_vanishing=vanishing, allow_clamping=clamping)
     if given is None:
         return rule

@@ -39,9 +39,12 @@ def resolved(stated: Mapping[str, object]) -> dict[str, object]:
         "operand": parse_place(collect, "operand", keys["operand"], signal),
         "state": parse_place(collect, "state", keys["state"], follow),
         "output": parse_place(collect, "output", keys["output"], follow),
-        "coefficients": parse_coefficients(collect, keys["coefficients"], signal.word.bits,
-                                           bool(keys["allow_vanishing"]), bool(keys["allow_clamping"])),
-        "product": ProductRule(signal.word.fraction, rounding) if at_product else parse_product(collect, keys["product"]),
+        "coefficients": parse_coefficients(
+            collect, keys["coefficients"], signal.word.bits, bool(keys["allow_vanishing"]), bool(keys["allow_clamping"])
+        ),
+        "product": ProductRule(signal.word.fraction, rounding)
+        if at_product
+        else parse_product(collect, keys["product"]),
         "accumulator": parse_accumulator(collect, keys["accumulator"]),
         "coefficients_stated": stated["coefficients"] is not None,
     }

@@ -57,11 +57,15 @@ def parse_word(text: object, place: str = "word", *, least_integer: int = 1, mos
     """
     match = _Q.fullmatch(text) if isinstance(text, str) else None
     if match is None:
-        raise FormatError(f'{place} = {text!r} is no word. A word is written "Qm.n", m integer bits with the sign and '
-                          f'n fraction bits, for instance "Q1.15".')
+        raise FormatError(
+            f'{place} = {text!r} is no word. A word is written "Qm.n", m integer bits with the sign and '
+            f'n fraction bits, for instance "Q1.15".'
+        )
     word = Word(int(match[1]), int(match[2]))
     if word.integer < least_integer:
-        raise FormatError(f'{place} = "{word}" has no sign bit: m is at least {least_integer}, for instance "Q1.{word.fraction}".')
+        raise FormatError(
+            f'{place} = "{word}" has no sign bit: m is at least {least_integer}, for instance "Q1.{word.fraction}".'
+        )
     if not 2 <= word.bits <= most_bits:
         raise FormatError(f'{place} = "{word}" has {word.bits} bits. A word here has from 2 to {most_bits} bits.')
     return word

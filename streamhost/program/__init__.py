@@ -1,0 +1,1 @@
+"""Programs: a diagram put into a format, the definition that runs it, and the native back end."""

@@ -85,22 +85,28 @@ def _all_fit(values: FloatArray, word: Word, rounding: str) -> bool:
     return all(word.low <= code <= word.high for code in codes)
 
 
-def _check_fit(slot: Slot, word: Word, row: FloatArray, exact: list[int], kept: list[int], rule: CoefficientRule) -> int:
+def _check_fit(
+    slot: Slot, word: Word, row: FloatArray, exact: list[int], kept: list[int], rule: CoefficientRule
+) -> int:
     clamped = [i for i, code in enumerate(exact) if code != kept[i]]
     if clamped and not rule.allow_clamping:
         value = float(row[clamped[0]])
         step = 2.0**-word.fraction
-        raise FormatError(f"The coefficient {slot.label} = {value:.10g} does not fit {word}, which runs from "
-                          f"{word.low * step:.10g} to {word.high * step:.10g}. Give the coefficients more integer bits, "
-                          f"scale the filter, or allow it with allow_clamping = true.")
+        raise FormatError(
+            f"The coefficient {slot.label} = {value:.10g} does not fit {word}, which runs from "
+            f"{word.low * step:.10g} to {word.high * step:.10g}. Give the coefficients more integer bits, "
+            f"scale the filter, or allow it with allow_clamping = true."
+        )
     return len(clamped)
 
 
 def _check_vanished(slot: Slot, word: Word, row: FloatArray, kept: list[int], rule: CoefficientRule) -> int:
     vanished = [i for i, code in enumerate(kept) if code == 0 and row[i] != 0]
     if vanished and not rule.allow_vanishing:
-        raise FormatError(f"The coefficient {slot.label} = {float(row[vanished[0]]):.6g} becomes 0 in {word}, whose step is "
-                          f"{2.0**-word.fraction:.6g}: a part of the filter would be gone. Give the coefficients more bits, "
-                          f'a point of their own (point = "polynomial" or "coefficient"), or allow it with '
-                          f"allow_vanishing = true.")
+        raise FormatError(
+            f"The coefficient {slot.label} = {float(row[vanished[0]]):.6g} becomes 0 in {word}, whose step is "
+            f"{2.0**-word.fraction:.6g}: a part of the filter would be gone. Give the coefficients more bits, "
+            f'a point of their own (point = "polynomial" or "coefficient"), or allow it with '
+            f"allow_vanishing = true."
+        )
     return len(vanished)

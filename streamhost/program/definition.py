@@ -145,7 +145,9 @@ class FixedDefinition:
         assert self.program.stored is not None, "a fixed-point program"
         return self.program.stored.words[slot].fraction
 
-    def tap_operand(self, index: int, node: Taps, arithmetic: TapsArithmetic, line: list[int], i: int) -> tuple[int, int, int]:
+    def tap_operand(
+        self, index: int, node: Taps, arithmetic: TapsArithmetic, line: list[int], i: int
+    ) -> tuple[int, int, int]:
         """What multiplication i reads, its fraction bits, and the shift left behind it."""
         at, last = self.numbers[node.source].fraction, node.length - 1 - i
         pre_ordinal, ordinal = arithmetic.ordinals[i]
@@ -156,12 +158,16 @@ class FixedDefinition:
         pair, at = self.quantized(index, pair, at + arithmetic.halved, arithmetic.pre, pre_ordinal)
         return *self.quantized(index, pair, at, arithmetic.operand, ordinal), arithmetic.halved
 
-    def quantized(self, index: int, value: int, at: int, quantizer: Quantizer | None, ordinal: int | None) -> tuple[int, int]:
+    def quantized(
+        self, index: int, value: int, at: int, quantizer: Quantizer | None, ordinal: int | None
+    ) -> tuple[int, int]:
         """A value inside a tapped line after a quantizer, and its fraction bits."""
         if quantizer is None:
             return value, at
         drop = at - quantizer.word.fraction
-        return self.round(index, value, RoundArithmetic(quantizer, drop, ordinal), residue=False), quantizer.word.fraction
+        return self.round(
+            index, value, RoundArithmetic(quantizer, drop, ordinal), residue=False
+        ), quantizer.word.fraction
 
     # registers
 

@@ -96,7 +96,9 @@ class FloatDefinition:
         return total
 
     def fused(self, sign: int, slot: int, value: Real, total: Real) -> Real:
-        return fused_multiply_add(self.sum_type(sign) * self.sum_type(self.coefficients[slot]), self.sum_type(value), total)
+        return fused_multiply_add(
+            self.sum_type(sign) * self.sum_type(self.coefficients[slot]), self.sum_type(value), total
+        )
 
     def taps(self, index: int, node: Taps) -> Real:
         line = [self.value[node.source], *reversed(self.lines.get(index, ()))]

@@ -58,7 +58,9 @@ def float_noise(program: Program, unit: float, rms: FloatArray | None = None) ->
 
     `rms` of every node; without it that of white noise at full scale. Every multiplication and addition is one rounding.
     """
-    nodes = [i for i, node in enumerate(program.nodes) if node.multiplications or node.additions or isinstance(node, Round)]
+    nodes = [
+        i for i, node in enumerate(program.nodes) if node.multiplications or node.additions or isinstance(node, Round)
+    ]
     if not nodes:
         return 0.0
     if rms is None:

@@ -39,7 +39,9 @@ def lower_fixed(drawn: Diagram, format: Fixed) -> Program:
 def negate_feedback(diagram: Diagram) -> Diagram:
     """Coefficients marked as feedback stored with their sign turned, their terms added instead of subtracted."""
     turned = {i for i, slot in enumerate(diagram.slots) if slot.feedback}
-    slots = tuple(replace(slot, label=f"-{slot.label}", feedback=False) if slot.feedback else slot for slot in diagram.slots)
+    slots = tuple(
+        replace(slot, label=f"-{slot.label}", feedback=False) if slot.feedback else slot for slot in diagram.slots
+    )
     values = diagram.values.copy()
     values[sorted(turned)] *= -1.0
     gains = {i for i, node in enumerate(diagram.nodes) if isinstance(node, Gain) and node.coefficient in turned}
@@ -130,7 +132,9 @@ class RoundingPass:
             return None
         if self.roles.pre_sum[source]:
             assert isinstance(node, Sum), "only a sum is a pre-sum"
-            words = [(self.widths.word(base), shift) for base, shift in (self.widths.base(t.source) for t in node.terms)]
+            words = [
+                (self.widths.word(base), shift) for base, shift in (self.widths.base(t.source) for t in node.terms)
+            ]
             integer = max(word.integer + shift for word, shift in words) + self.widths.pre_sum_growth(source)
             return Word(integer, self.widths.seen(source))
         if self.roles.register[source] or isinstance(node, Input | Delay | Round):
@@ -146,5 +150,3 @@ class RoundingPass:
             self.origin.append(index)
             self.made[key] = len(self.nodes) - 1
         return self.made[key]
-
-

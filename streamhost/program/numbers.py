@@ -158,8 +158,10 @@ class Annotation:
         """Where a sum of that largest magnitude is made; fills in the sum's number."""
         if total >= 1 << 127:
             label = self.nodes[index].label
-            raise FormatError(f'The sum "{label}" may need {total.bit_length() + 1} bits, and at most 128 can be carried. Use '
-                              f"shorter words, or let products keep fewer bits.")
+            raise FormatError(
+                f'The sum "{label}" may need {total.bit_length() + 1} bits, and at most 128 can be carried. Use '
+                f"shorter words, or let products keep fewer bits."
+            )
         word = None if exact else self.word_of_accumulator(fraction)
         bound = total if word is None else min(total, -word.low)
         self.numbers[index] = Number(fraction, bound)
@@ -190,8 +192,18 @@ class Annotation:
         word = Word(source.bound.bit_length() - source.fraction, source.fraction)
         pre, halved, operand, middle = self.operands(index, node, word)
         fraction = self.widths.raw(self.origins[index])
-        read = [pre_operand(i == len(node.coefficients) - 1 and node.fold == "even" and node.length % 2 == 1, pre, operand,
-                            middle, word, node.fold, halved) for i in range(len(node.coefficients))]
+        read = [
+            pre_operand(
+                i == len(node.coefficients) - 1 and node.fold == "even" and node.length % 2 == 1,
+                pre,
+                operand,
+                middle,
+                word,
+                node.fold,
+                halved,
+            )
+            for i in range(len(node.coefficients))
+        ]
         keeps, ordinals, total = [], [], 0
         for slot, (into, pre_drop, operand_drop) in zip(node.coefficients, read, strict=True):
             product = into.fraction + self.stored.words[slot].fraction
@@ -203,10 +215,20 @@ class Annotation:
             ordinals.append((self.ordinal(pre_drop), self.ordinal(operand_drop)))
         accumulator = self.accumulator(index, fraction, total, exact=False)
         self.arithmetic[index] = TapsArithmetic(
-            accumulator, tuple(keeps), self.format.product.rounding, self.counted(index, accumulator), pre, halved, operand,
-            middle, tuple(ordinals))
+            accumulator,
+            tuple(keeps),
+            self.format.product.rounding,
+            self.counted(index, accumulator),
+            pre,
+            halved,
+            operand,
+            middle,
+            tuple(ordinals),
+        )
 
-    def operands(self, index: int, node: Taps, word: Word) -> tuple[Quantizer | None, int, Quantizer | None, Quantizer | None]:
+    def operands(
+        self, index: int, node: Taps, word: Word
+    ) -> tuple[Quantizer | None, int, Quantizer | None, Quantizer | None]:
         """(register of a pair's sum, its shift right, operand of a pair or tap, operand of the middle tap)."""
         reader = self.widths.diagram.nodes[self.origins[index]]
         place = self.widths.operand(reader.reads[0]).quantizer
@@ -223,8 +245,15 @@ class Annotation:
         return None, 0, None if wide.word.holds(word.widened(grown)) else wide, middle
 
 
-def pre_operand(is_middle: bool, pre: Quantizer | None, operand: Quantizer | None, middle: Quantizer | None, word: Word,
-                fold: str | None, halved: int) -> tuple[Word, int, int]:
+def pre_operand(
+    is_middle: bool,
+    pre: Quantizer | None,
+    operand: Quantizer | None,
+    middle: Quantizer | None,
+    word: Word,
+    fold: str | None,
+    halved: int,
+) -> tuple[Word, int, int]:
     """What a multiplier of a tapped line reads: its word, and the bits dropped at the pair's register and the operand."""
     if is_middle or fold is None:
         chosen = middle if is_middle else operand

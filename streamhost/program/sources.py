@@ -11,7 +11,7 @@ from math import inf
 import numpy as np
 from numpy.typing import NDArray
 
-from streamhost.diagram.nodes import Delay, Gain, Input, Residue, Round, Shift, Sum, Taps
+from streamhost.diagram.nodes import Delay, Gain, Input, Residue, Round, Shift, Taps
 from streamhost.diagram.norms import response_to_output
 from streamhost.formats import Fixed
 from streamhost.program.program import Program, RoundArithmetic, SumArithmetic, TapsArithmetic
@@ -114,8 +114,16 @@ class _Finder:
         arithmetic = self.program.arithmetic[index]
         return max(0.0, -arithmetic.drop) if isinstance(arithmetic, RoundArithmetic) else 0.0
 
-    def add(self, key: object, label: str, drop: float, rounding: str, step: float, places: tuple[tuple[int, int], ...],
-            sign: int = 1) -> None:
+    def add(
+        self,
+        key: object,
+        label: str,
+        drop: float,
+        rounding: str,
+        step: float,
+        places: tuple[tuple[int, int], ...],
+        sign: int = 1,
+    ) -> None:
         """A source of an error that drops so many bits, in steps of `step`."""
         if drop > 0 and drop != inf:
             variance, mean = rounding_moments(int(drop), rounding)
@@ -154,7 +162,9 @@ class _Finder:
             label = f"{self.nodes[index].label}, term {k + 1}"
             if term.keep is not None and term.keep < at:
                 scale = 2.0 ** (term.shift - term.keep)
-                self.add((index, k, "product"), label, at - term.keep - zeros, term.rounding, scale, ((index, 0),), term.sign)
+                self.add(
+                    (index, k, "product"), label, at - term.keep - zeros, term.rounding, scale, ((index, 0),), term.sign
+                )
                 zeros, at = max(0.0, zeros - (at - term.keep)), term.keep
             zeros, drop = zeros + max(0, term.shift), at + max(0, -term.shift) - fraction
             self.add((index, k, "term"), label, drop - zeros, "floor", 2.0**-fraction, ((index, 0),), term.sign)
@@ -174,15 +184,28 @@ class _Finder:
             keep, zeros = min(arithmetic.keeps[k], at), trailing_zeros(self.codes[slot])
             halved = 0 if node.fold is None or middle else arithmetic.halved
             label = f"{node.label}, tap {k}"
-            self.add((index, k, "product"), label, at - keep - zeros, arithmetic.rounding, 2.0 ** (halved - keep), ((index, 0),))
+            self.add(
+                (index, k, "product"),
+                label,
+                at - keep - zeros,
+                arithmetic.rounding,
+                2.0 ** (halved - keep),
+                ((index, 0),),
+            )
             self.add((index, k, "term"), label, keep - fraction, "floor", 2.0**-fraction, ((index, 0),))
 
-    def visit_operand(self, index: int, node: Taps, arithmetic: TapsArithmetic, k: int, middle: bool, weight: float) -> int:
+    def visit_operand(
+        self, index: int, node: Taps, arithmetic: TapsArithmetic, k: int, middle: bool, weight: float
+    ) -> int:
         """The errors of one multiplication's operand, weighted by its coefficient; the operand's fraction bits."""
         at = self.program.numbers[node.source].fraction
         paired = node.fold is not None and not middle
         scale = 2.0 ** (arithmetic.halved if paired else 0)
-        steps = ((arithmetic.pre, arithmetic.operand) if paired else (None, arithmetic.middle if middle else arithmetic.operand))
+        steps = (
+            (arithmetic.pre, arithmetic.operand)
+            if paired
+            else (None, arithmetic.middle if middle else arithmetic.operand)
+        )
         at += arithmetic.halved if paired else 0
         for stage, quantizer in enumerate(steps):
             if quantizer is not None:

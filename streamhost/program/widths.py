@@ -59,8 +59,10 @@ class Widths:
                 index = node.source
                 node = self.diagram.nodes[index]
                 if index in path:
-                    raise DiagramError(f'The delays around "{first.label}" drive each other and nothing drives them: such a '
-                                       f"loop has no word.")
+                    raise DiagramError(
+                        f'The delays around "{first.label}" drive each other and nothing drives them: such a '
+                        f"loop has no word."
+                    )
                 path.add(index)
             found[start] = index
         return tuple(found)
@@ -129,8 +131,10 @@ class Widths:
                 continue
             if top in pending:
                 label = self.diagram.nodes[top[1]].label
-                raise FormatError(f'The values around "{label}" form a loop that no register closes, so that their length has '
-                                  f"no end. State a word for the accumulator, or put a round into the loop.")
+                raise FormatError(
+                    f'The values around "{label}" form a loop that no register closes, so that their length has '
+                    f"no end. State a word for the accumulator, or put a round into the loop."
+                )
             pending.add(top)
             stack.extend(missing)
         return self._known[goal]
@@ -192,8 +196,11 @@ class Widths:
 
     def joins(self, index: int) -> bool:
         """Whether a node is a sum that stays in the accumulator of the sum that reads it."""
-        return (isinstance(self.diagram.nodes[index], Sum | Taps) and not self.roles.register[index]
-                and not self.roles.pre_sum[index])
+        return (
+            isinstance(self.diagram.nodes[index], Sum | Taps)
+            and not self.roles.register[index]
+            and not self.roles.pre_sum[index]
+        )
 
     @cached_property
     def _extra(self) -> dict[int, int]:
@@ -216,9 +223,12 @@ class Widths:
             return []
         leaves = self._leaves(index)
         chosen = [leaf for leaf in leaves if not self._residual(leaf[0])] or leaves
-        lines = [node.source for member in self._clusters[index] if isinstance(node := self.diagram.nodes[member], Taps)]
+        lines = [
+            node.source for member in self._clusters[index] if isinstance(node := self.diagram.nodes[member], Taps)
+        ]
         return [("raw" if self.is_product(base) else "seen", base) for base, _ in chosen] + [
-            ("seen", source) for source in lines if self.roles.whole[source]]
+            ("seen", source) for source in lines if self.roles.whole[source]
+        ]
 
     def is_product(self, index: int) -> bool:
         """Whether a node is a product that enters an accumulator as one, and no register."""
@@ -257,8 +267,10 @@ class Widths:
         exact = [fraction + extra for fraction, extra in products]
         fraction = max(exact or others) - rule.drop
         if rule.bits - fraction < 1:
-            raise FormatError(f"An accumulator of {rule.bits} bits has no room for {fraction} fraction bits and a sign, which "
-                              f"the products of this filter need. Give it more bits, a larger drop, or shorter coefficients.")
+            raise FormatError(
+                f"An accumulator of {rule.bits} bits has no room for {fraction} fraction bits and a sign, which "
+                f"the products of this filter need. Give it more bits, a larger drop, or shorter coefficients."
+            )
         return fraction
 
     def _entering(self, index: int) -> tuple[list[tuple[int, int]], list[int]]:
@@ -274,10 +286,12 @@ class Widths:
         return products, others
 
     def _tap_products(self, index: int) -> list[tuple[int, int]]:
-        return [(self.operand(node.source).fraction + self.coefficient_words[slot].fraction, self._extra.get(member, 0))
-                for member in self._clusters[index]
-                if isinstance(node := self.diagram.nodes[member], Taps)
-                for slot in node.coefficients]
+        return [
+            (self.operand(node.source).fraction + self.coefficient_words[slot].fraction, self._extra.get(member, 0))
+            for member in self._clusters[index]
+            if isinstance(node := self.diagram.nodes[member], Taps)
+            for slot in node.coefficients
+        ]
 
 
 def growth(terms: list[tuple[int, Word, int]]) -> int:

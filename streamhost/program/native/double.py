@@ -9,7 +9,7 @@ from streamhost.program.native.frame import Variant, header, lines
 from streamhost.program.native.text import Text, comment
 from streamhost.program.program import Program
 
-OPERATIONS = '''
+OPERATIONS = """
 from numba import njit
 from streamhost.program.native.intrinsics import fma
 
@@ -40,7 +40,7 @@ def dd_mul(k, a):
     e = fma(k, a[1], fma(k, a[0], -p))
     r = p + e
     return r, e - (r - p)
-'''
+"""
 
 
 def print_double(program: Program, variant: Variant) -> str:
@@ -55,7 +55,9 @@ class _DoublePrinter:
 
     def source(self) -> str:
         text = self.text
-        header(text, self.program, self.variant, OPERATIONS.strip(), "float64", f"double-double: {len(self.nodes)} nodes.")
+        header(
+            text, self.program, self.variant, OPERATIONS.strip(), "float64", f"double-double: {len(self.nodes)} nodes."
+        )
         text("for c in range(channels):")
         text.depth += 1
         single, rings = lines(self.program)

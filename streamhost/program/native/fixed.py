@@ -11,7 +11,7 @@ from streamhost.program.program import Program, RoundArithmetic, SumArithmetic, 
 from streamhost.program.sources import traced_roundings
 
 IMPORTS = "from streamhost.program.native.intrinsics import clamp, differs, narrow, wide"
-MIX = '''
+MIX = """
 @njit(inline="always")
 def dither_word(key, step):
     z = key + np.uint64(0x9E3779B97F4A7C15) * step
@@ -20,7 +20,7 @@ def dither_word(key, step):
     z ^= z >> np.uint64(27)
     z *= np.uint64(0x94D049BB133111EB)
     return z ^ (z >> np.uint64(31))
-'''
+"""
 
 
 def print_fixed(program: Program, variant: Variant) -> str:
@@ -152,8 +152,11 @@ class FixedPrinter:
             return
         shadow = self.variant.metered
         if shadow:
-            exact = self.assign(index, self.added([
-                (t.sign, self.term(t, accumulator.fraction, self.exact)) for t in arithmetic.terms]), prefix="e")
+            exact = self.assign(
+                index,
+                self.added([(t.sign, self.term(t, accumulator.fraction, self.exact)) for t in arithmetic.terms]),
+                prefix="e",
+            )
             self.exact[index] = exact
         if accumulator.overflow == "saturate":
             self.print_saturating_sum(index, arithmetic)
@@ -235,7 +238,9 @@ class FixedPrinter:
     def print_round(self, index: int, node: Round, arithmetic: RoundArithmetic) -> None:
         source = self.values[node.source]
         code = self.rounded(f"{index}", source, arithmetic.quantizer, arithmetic.drop, arithmetic.ordinal)
-        asked = index in self.traced or any(isinstance(self.nodes[r], Residue) for r in self.program.diagram.readers[index])
+        asked = index in self.traced or any(
+            isinstance(self.nodes[r], Residue) for r in self.program.diagram.readers[index]
+        )
         if asked and arithmetic.drop > 0:
             assert arithmetic.drop < 62, "a residue of more than 62 bits"
             before, after = self.modular(source), self.modular(code)
@@ -258,8 +263,10 @@ class FixedPrinter:
     def print_dither(self, name: str, place: str, drop: int) -> None:
         """d{name}: the triangular dither of a rounding that drops so many bits; `place` is its row of keys."""
         assert drop < 64, "dither of 64 dropped bits or more"
-        first, second = (f"np.int64(dither_word(K[{place}, c], {step}) >> np.uint64({64 - drop}))"
-                         for step in ("t", "t + np.uint64(1)"))
+        first, second = (
+            f"np.int64(dither_word(K[{place}, c], {step}) >> np.uint64({64 - drop}))"
+            for step in ("t", "t + np.uint64(1)")
+        )
         self.text(f"d{name} = {first} - {second}")
 
     def overflow(self, index: int, code: Value, quantizer: Quantizer, meter: int, name: str | None = None) -> Value:

@@ -28,7 +28,9 @@ class FloatPrinter:
 
     def source(self) -> str:
         imports = IMPORTS if self.format.fused else ""
-        header(self.text, self.program, self.variant, imports, "float64", f"{self.format.label}: {len(self.nodes)} nodes.")
+        header(
+            self.text, self.program, self.variant, imports, "float64", f"{self.format.label}: {len(self.nodes)} nodes."
+        )
         open_loops(self.text, self.program, self.variant, f"np.{self.type}({{}})")
         for index in self.program.diagram.order:
             self.print(index, self.nodes[index])
@@ -128,8 +130,10 @@ class FloatPrinter:
             return self.entry(index, node, last)
         if node.fold is None or last == j:
             return self.entry(index, node, j)
-        pair = f"{self.wide(self.entry(index, node, j))} {'+' if node.fold == 'even' else '-'} " \
-               f"{self.wide(self.entry(index, node, last))}"
+        pair = (
+            f"{self.wide(self.entry(index, node, j))} {'+' if node.fold == 'even' else '-'} "
+            f"{self.wide(self.entry(index, node, last))}"
+        )
         return self.cast(self.type, pair)
 
     def entry(self, index: int, node: Taps, j: str) -> str:

@@ -15,7 +15,19 @@ from streamhost.program.native.text import Text, comment
 from streamhost.program.program import Program
 from streamhost.program.sources import traced_roundings
 
-ARGUMENTS = ("x_", "y_", "state_", "coefficients_", "keys_", "meters_", "marks_", "trace_", "frames", "channels", "frame0")
+ARGUMENTS = (
+    "x_",
+    "y_",
+    "state_",
+    "coefficients_",
+    "keys_",
+    "meters_",
+    "marks_",
+    "trace_",
+    "frames",
+    "channels",
+    "frame0",
+)
 
 
 @dataclass(frozen=True)

@@ -45,7 +45,9 @@ class TapsPrinter:
             total = Value(overflowed_text(Value(f"a{i}", 0), word, "wrap"), -word.low, is_wide=False)
         self.printer.assign(i, total)
         if self.shadow:
-            self.printer.exact[i] = Value(f"e{i}", 1 << 120 if self.exact_wide else self.total_bound, is_wide=self.exact_wide)
+            self.printer.exact[i] = Value(
+                f"e{i}", 1 << 120 if self.exact_wide else self.total_bound, is_wide=self.exact_wide
+            )
             if self.arithmetic.counted:
                 self.printer.count_overflow(i)
 
@@ -105,8 +107,9 @@ class TapsPrinter:
             value, at = self.quantized(f"{i}o", value, at, operand, ordinals[1], j, k)
         self.print_product(j, k, value, at, halved)
 
-    def quantized(self, name: str, value: Value, at: int, quantizer: object, ordinal: int | None, j: str,
-                  k: int) -> tuple[Value, int]:
+    def quantized(
+        self, name: str, value: Value, at: int, quantizer: object, ordinal: int | None, j: str, k: int
+    ) -> tuple[Value, int]:
         """An operand after a quantizer; its dither key moves on with the tap."""
         from streamhost.formats import Quantizer
 
@@ -140,7 +143,9 @@ class TapsPrinter:
         keep = min(self.arithmetic.keeps[k], at)
         if keep < at:
             self.text(f"h{i} = {product.text}")
-            product = rounded_text(Value(f"h{i}", product.bound, is_wide=product.is_wide), at - keep, self.arithmetic.rounding)
+            product = rounded_text(
+                Value(f"h{i}", product.bound, is_wide=product.is_wide), at - keep, self.arithmetic.rounding
+            )
         term = product.left(halved).floored(keep - accumulator.fraction)
         if self.shadow:
             self.text(f"l{i} = {term.as_wide_as(self.exact_wide or term.is_wide).text}")
