@@ -52,4 +52,5 @@ def test_predicted_noise_is_measured_wherever_the_white_model_holds(bits):
         held += 1
         allowed = max(0.5, measured.noise.interval_db)
         assert measured.noise.dbfs == pytest.approx(measured.prediction.dbfs, abs=allowed), f"seed {seed}"
-    assert held >= 16  # else the test says little: most of these signals are busy
+    # 16 bits are coarse for some of these filters, which the verdict says; were it to say so of most, this would be no test
+    assert held >= {16: 12, 24: 19}[bits]

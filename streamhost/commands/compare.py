@@ -132,7 +132,7 @@ def _compare_all(
 def _compare_one(
     preset: "Preset", realization: "Realization", info: "AudioInfo", place: "Destination | None", *, force: bool
 ) -> Compared:
-    from streamhost.commands.compare_files import DifferenceFile, OutputFile
+    from streamhost.commands.compare_files import DifferenceFile, OutputFile, make_folder
     from streamhost.files import read_blocks
     from streamhost.measure import Measurement, limit_band
 
@@ -140,7 +140,7 @@ def _compare_one(
     output = difference = None
     with ExitStack() as stack:
         if place is not None:
-            place.folder.mkdir(exist_ok=True)
+            make_folder(place.folder)
             output = stack.enter_context(OutputFile(place.output, realization, info, force=force))
             difference = stack.enter_context(DifferenceFile(place.difference, info, force=force))
         for x in read_blocks(info.path, measurement.block):

@@ -9,7 +9,7 @@ from typing import Self
 import numpy as np
 from numpy.typing import NDArray
 
-from streamhost.errors import RequestError
+from streamhost.errors import MachineError, RequestError
 from streamhost.files import AudioInfo, AudioWriter, same_file
 from streamhost.host.rendering import default_subtype
 from streamhost.presets import Preset
@@ -52,12 +52,20 @@ def destinations(
     return found
 
 
+def make_folder(folder: Path) -> None:
+    """The folder, unless it is there. MachineError where it cannot be made."""
+    try:
+        folder.mkdir(exist_ok=True)
+    except OSError as problem:
+        raise MachineError(f"{folder}: cannot make this folder: {problem.strerror}. Choose another place.") from problem
+
+
 def check_new(path: Path, info: AudioInfo, *, force: bool) -> None:
     """RequestError for the input itself, and for a file that exists unless `force`."""
     if same_file(path, info.path):
         raise RequestError(f"{path}: this would be written over the input. Choose another name.")
     if path.exists() and not force:
-        raise RequestError(f"{path}: this file exists. Choose another name, or allow it to be overwritten by --force.")
+        raise RequestError(f"{path}: this file exists. Choose another name, or overwrite it with --force.")
 
 
 class OutputFile(AudioWriter):

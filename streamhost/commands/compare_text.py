@@ -64,7 +64,9 @@ def _verdict(compared: Sequence[Compared]) -> Iterator[str]:
     if not asked:
         return
     met = sum(not one.misses for one in asked)
-    yield f"{met} of {len(asked)} with limits {'meets' if met == 1 else 'meet'} every limit."
+    others = [str(number) for number, one in enumerate(compared, 1) if not one.verdicts]
+    rest = f"; {', '.join(others)} {'states' if len(others) == 1 else 'state'} none" if others else ""
+    yield f"{met} of {len(asked)} with limits {'meets' if met == 1 else 'meet'} every limit{rest}."
     for number, one in enumerate(compared, 1):
         if one.misses:
             yield f"{number} misses " + "; ".join(_miss(verdict) for verdict in one.misses) + "."

@@ -16,10 +16,12 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from streamhost.diagram.diagram import Diagram
+from streamhost.diagram.hints import General, Hints, Part, Place, Point, Trunk
 from streamhost.diagram.nodes import Delay, Gain, Input, Node, Output, Residue, Round, Shift, Slot, Sum, Taps, Term
 from streamhost.errors import DiagramError
 
 UNDRIVEN = -1
+FACES = ("E", "S", "W", "N")
 
 
 @dataclass(frozen=True)
@@ -54,6 +56,8 @@ class Builder:
         self._slots: list[Slot] = []
         self._values: list[np.ndarray[tuple[int], np.dtype[np.float64]]] = []
         self._labels: set[str] = set()
+        self._places: dict[int, Place] = {}
+        self._trunks: list[Trunk] = []
 
     def input(self, label: str = "x") -> Ref:
         return self._add(Input(self._label(label, "x")))
@@ -137,11 +141,26 @@ class Builder:
         """What the rounding of a register dropped in this frame."""
         return self._add(Residue(self._label(label, "residue"), self._own(register)))
 
-    def build(self, *, check: bool = True) -> Diagram:
-        """The diagram. Raises DiagramError where a rule of signal-flow graphs is broken."""
+    def place(self, ref: Ref, at: Point, face: str = "E", *, parts: Sequence[Part] = (), small: bool = False) -> Ref:
+        """Where a node is drawn, see `diagram/hints.py`; the drawing places all nodes itself unless all are placed."""
+        if face not in FACES:
+            raise DiagramError(f"The face {face!r} is not known: an arrow leaves by one of the sides {', '.join(FACES)}.")
+        if any(coordinate * 8 != round(coordinate * 8) for coordinate in at):
+            raise DiagramError(f"The place {at} is not on the grid: columns and rows are multiples of 1/8.")
+        self._places[self._own(ref)] = Place(at, face, tuple(parts), small)
+        return ref
+
+    def trunk(self, source: Ref, *points: Point) -> None:
+        """The wire out of a node runs straight from point to point before it branches."""
+        self._trunks.append(Trunk(self._own(source), points))
+
+    def build(self, *, check: bool = True, general: General | None = None) -> Diagram:
+        """The diagram; `general` stands for it in drawings. DiagramError where a rule of signal-flow graphs is broken."""
         from streamhost.diagram.legality import check_diagram
 
-        diagram = Diagram(tuple(self._nodes), tuple(self._slots), self._table())
+        nodes = tuple(self._nodes)
+        hints = Hints(nodes, dict(self._places), tuple(self._trunks), general)
+        diagram = Diagram(nodes, tuple(self._slots), self._table(), hints)
         if check:
             check_diagram(diagram)
         return diagram

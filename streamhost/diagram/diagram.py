@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
+from streamhost.diagram.hints import NO_HINTS, Hints
 from streamhost.diagram.nodes import Input, Node, Output, Slot
 
 if TYPE_CHECKING:
@@ -27,11 +28,12 @@ class Counts:
 
 @dataclass(frozen=True, eq=False)
 class Diagram:
-    """A signal-flow graph. `values` is (slots, channels); new values need no new graph."""
+    """A signal-flow graph. `values` is (slots, channels); new values need no new graph. `hints` are for its drawing only."""
 
     nodes: tuple[Node, ...]
     slots: tuple[Slot, ...]
     values: FloatArray
+    hints: Hints = NO_HINTS
 
     @cached_property
     def hash(self) -> str:
@@ -102,3 +104,14 @@ class Diagram:
         from streamhost.diagram.linear import transfer_function
 
         return transfer_function(self, channel)
+
+    def equation(self, *, nodes: bool = False, digits: int | None = None, channel: int = 0) -> str:
+        """The difference equation of one channel, one for each output; or with `nodes` one line for each node.
+
+        Coefficients are written so that they read back to the same float64, or with so many significant `digits`.
+        What follows # says whether it is recursive. Of one input and one output, `Filter.from_equation` reads it.
+        Raises DiagramError for `digits` other than 1 to 17, and for a coefficient beyond float64.
+        """
+        from streamhost.diagram.equation import equation, node_equations
+
+        return node_equations(self, digits, channel) if nodes else equation(self, digits, channel)

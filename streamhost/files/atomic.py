@@ -101,7 +101,7 @@ def _checked_target(shown: Path, overwrite: bool, refusal: type[RequestError]) -
 
 
 def _exists(shown: Path, refusal: type[RequestError]) -> RequestError:
-    return refusal(f"{shown}: this file exists. Choose another name, or allow it to be overwritten.")
+    return refusal(f"{shown}: this file exists. Choose another name, or overwrite it with --force.")
 
 
 def _create(partial: Path, shown: Path) -> FileIO:

@@ -9,6 +9,7 @@ import numpy.typing as npt
 
 from streamhost.errors import FilterError
 from streamhost.filters import entry, response, stability
+from streamhost.filters.equation import coefficients
 from streamhost.filters.exact import ONE, Polynomial, exactly, from_roots, product, rounded, scaled, stripped
 from streamhost.filters.factors import Codes, Polynomials, ZerosPoles
 from streamhost.filters.roots import roots
@@ -39,6 +40,15 @@ class Filter:
             raise FilterError(f"a[0] is 0; the first of the {len(denominator)} numbers in a must not be 0.")
         factor = _normalized(stripped(numerator), stripped(denominator))
         return cls(entry.rate(rate), (factor,), max(len(factor.b), len(factor.a)) <= 3)
+
+    @classmethod
+    def from_equation(cls, text: object, *, rate: object) -> "Filter":
+        """The filter of a difference equation such as y[n] = 0.5 x[n] + 0.5 x[n-1] + 0.9 y[n-1].
+
+        Terms may stand on either side, 1/3 is exact, the coefficient of y[n] is divided out exactly, and each quotient
+        is rounded once. The syntax is told in `streamhost.filters.equation`.
+        """
+        return cls.from_coefficients(*coefficients(text), rate=rate)
 
     @classmethod
     def from_sections(cls, sos: object, *, rate: object) -> "Filter":

@@ -35,7 +35,7 @@ class Measured:
 
     `ideal`: the arithmetic of the ideal run. `peak_dbfs`: of the output. `dc_lsb`: the noise's mean in steps of the
     output's word, None in floating point. `difference_gain_db`: what brings the peak of the difference near -12 dBFS,
-    in whole dB; None where there is no difference. `finite`: whether every sample of the output and of the ideal was.
+    in whole dB; None where there is no difference.
     """
 
     deviation: Deviation
@@ -46,7 +46,6 @@ class Measured:
     dc_lsb: float | None
     peak_dbfs: float
     difference_gain_db: int | None
-    finite: bool
     tally: Tally
     counts: Counts
     ns_per_frame: float
@@ -105,7 +104,6 @@ class Measurement:
             dc_lsb=_in_steps(noise.mean, realization) if fixed else None,
             peak_dbfs=peak_dbfs(self._peak),
             difference_gain_db=_listening_gain(self._difference_peak) if self._finite else None,
-            finite=self._finite,
             tally=self._run.tally(),
             counts=realization.program.drawn.counts(),
             ns_per_frame=ns_per_frame(realization, self._first),

@@ -53,7 +53,7 @@ def segment_lengths(rate: float, frames: int, settling: float) -> tuple[int, ...
 
 
 def _power_of_two(least: float) -> int:
-    return 1 << max(0, int(np.ceil(np.log2(least))))
+    return 1 << int(np.ceil(np.log2(max(1.0, least))))
 
 
 class SpectrumSum:

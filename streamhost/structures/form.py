@@ -5,6 +5,7 @@ from dataclasses import dataclass
 from typing import Literal
 
 from streamhost.diagram.builder import Builder, Ref, Signed, minus
+from streamhost.diagram.hints import Part, Point
 from streamhost.filters import Polynomials
 
 Half = Literal["numerator", "recursion"]
@@ -15,28 +16,34 @@ LONG = 64
 
 @dataclass(frozen=True)
 class Draft:
-    """A section being drawn: its polynomials, its index, and what its labels end with where there are several."""
+    """A section being drawn: its polynomials, its index, and what its labels end with where there are several.
+
+    `origin` is where its first column and row are on the page; places are said from there.
+    """
 
     builder: Builder
     section: Polynomials
     index: int = 0
     suffix: str = ""
+    origin: Point = (0.0, 0.0)
 
-    def line(self, name: str, length: int, source: Ref | None = None) -> tuple[Ref, ...]:
-        """`length` delays in a row, the first driven by `source`, or later where there is none."""
+    def line(self, name: str, length: int, source: Ref | None = None, *, column: float) -> tuple[Ref, ...]:
+        """`length` delays in a row, the first driven by `source`, or later where there is none; drawn downwards."""
         delays: list[Ref] = []
         for k in range(1, length + 1):
-            delays.append(self.builder.delay(f"{name}{k}{self.suffix}", delays[-1] if delays else source))
+            delay = self.builder.delay(f"{name}{k}{self.suffix}", delays[-1] if delays else source)
+            delays.append(self._placed(delay, (column, k - 0.5), "S"))
         return tuple(delays)
 
-    def separate(self, name: str, length: int) -> tuple[Ref, ...]:
-        """`length` delays that are all driven later, each by a node of its own."""
-        return tuple(self.builder.delay(f"{name}{k}{self.suffix}") for k in range(1, length + 1))
+    def separate(self, name: str, length: int, *, column: float, pitch: float) -> tuple[Ref, ...]:
+        """`length` delays that are all driven later, each by a node of its own; drawn upwards."""
+        delays = [self.builder.delay(f"{name}{k}{self.suffix}") for k in range(1, length + 1)]
+        return tuple(self._placed(delay, (column, (k + 0.5) * pitch), "N") for k, delay in enumerate(delays))
 
-    def b(self, k: int, source: Ref) -> Ref:
+    def b(self, k: int, source: Ref, *, at: Point) -> Ref:
         """The product b_k source."""
         label = f"b{k}{self.suffix}"
-        return self.builder.gain(source, label, self.section.b[k], section=self.index, part="b")
+        return self._placed(self.builder.gain(source, label, self.section.b[k], section=self.index, part="b"), at)
 
     @property
     def is_long_line(self) -> bool:
@@ -45,19 +52,52 @@ class Draft:
 
     def tapped_line(self, x: Ref) -> Ref:
         """All b_k x[n-k] as one node, added from the last delay up as the gains of a short line are."""
-        return self.builder.taps(x, "b", self.section.b, last_first=True, section=self.index, part="b")
+        taps = self.builder.taps(x, "b", self.section.b, last_first=True, section=self.index, part="b")
+        return self._placed(taps, (1.5, 0.0))
 
-    def a(self, k: int, source: Ref) -> Signed:
+    def a(self, k: int, source: Ref, *, at: Point) -> Signed:
         """The product a_k source, to be subtracted."""
         label = f"a{k}{self.suffix}"
         product = self.builder.gain(source, label, self.section.a[k], section=self.index, part="a", feedback=True)
-        return minus(product)
+        return minus(self._placed(product, at, "W"))
 
-    def add(self, name: str, terms: Sequence[Ref | Signed]) -> Ref:
-        """The sum of the terms in their order. One term alone is no sum, unless it is subtracted."""
+    def add(self, name: str, terms: Sequence[Ref | Signed], *, at: Point, face: str = "E") -> Ref:
+        """The sum of the terms in their order, drawn as one adder. One term alone is no sum, unless it is subtracted."""
+        return self._summed(name, terms, [Part(self._on_page(at), len(terms), face)])
+
+    def climb(self, name: str, terms: Sequence[Ref | Signed], *, column: float, rows: Sequence[int]) -> Ref:
+        """The same, drawn as a chain of adders upwards: each term enters at its row, the last leaves to the right."""
+        counts = adders(rows)
+        parts = [Part(self._on_page((column, row)), count, "N") for row, count in counts[:-1]]
+        row, count = counts[-1]
+        return self._summed(name, terms, [*parts, Part(self._on_page((column, row)), count)])
+
+    def trunk(self, source: Ref, *points: Point) -> None:
+        """The wire out of a node runs along these points before it branches."""
+        self.builder.trunk(source, *map(self._on_page, points))
+
+    def _summed(self, name: str, terms: Sequence[Ref | Signed], parts: Sequence[Part]) -> Ref:
         if len(terms) == 1 and isinstance(terms[0], Ref):
             return terms[0]
-        return self.builder.sum(*terms, label=f"{name}{self.suffix}")
+        total = self.builder.sum(*terms, label=f"{name}{self.suffix}")
+        return self.builder.place(total, parts[-1].at, parts[-1].face, parts=parts if len(parts) > 1 else ())
+
+    def _placed(self, ref: Ref, at: Point, face: str = "E") -> Ref:
+        return self.builder.place(ref, self._on_page(at), face)
+
+    def _on_page(self, point: Point) -> Point:
+        return self.origin[0] + point[0], self.origin[1] + point[1]
+
+
+def adders(rows: Sequence[int]) -> list[tuple[int, int]]:
+    """(row, how many terms enter there) of each adder of a chain; a first term alone joins at the row after it."""
+    found: list[tuple[int, int]] = []
+    for row in rows:
+        if found and (found[-1][0] == row or (len(found) == 1 and found[0][1] == 1)):
+            found[-1] = (row, found[-1][1] + 1)
+        else:
+            found.append((row, 1))
+    return found
 
 
 @dataclass(frozen=True)
@@ -66,7 +106,8 @@ class Form:
 
     `build_section` takes a draft and the section's input and returns the section's output; the order in which it
     creates nodes is the order in which ready nodes are evaluated. `begins_with` says which half the signal meets
-    first, which is what scaling must know. `docs` explains the form to a user.
+    first, which is what scaling must know. `docs` explains the form to a user. Drawn, a section is `width` columns
+    wide and has `pitch` rows for each delay.
     """
 
     name: str
@@ -74,3 +115,5 @@ class Form:
     begins_with: Half
     build_section: Callable[[Draft, Ref], Ref]
     docs: str
+    width: float
+    pitch: float = 1.0

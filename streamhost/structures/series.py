@@ -1,8 +1,20 @@
 """Sections in series, as a diagram."""
 
-from streamhost.diagram import Builder, Diagram
-from streamhost.structures.division import Division
+from streamhost.diagram import Builder, Diagram, Ref
+from streamhost.diagram.hints import General
+from streamhost.filters import Polynomials
+from streamhost.structures.division import Division, Sections
 from streamhost.structures.form import Draft, Form
+
+A_ROW = 2
+"""Sections drawn side by side: two fit the width of a page in every form."""
+
+MOST_DRAWN = 8
+"""Sections beyond which one that stands for all is drawn."""
+
+LEAD = 0.875
+GAP = 0.875
+GUTTER = 1.5
 
 
 def draw(division: Division, form: Form) -> Diagram:
@@ -11,14 +23,66 @@ def draw(division: Division, form: Form) -> Diagram:
     Sections share no delays. The gain in front is drawn before the first section and belongs to it.
     """
     builder = Builder()
-    signal = builder.input()
+    signal = builder.place(builder.input(), (0.0, 0.0))
+    left = LEAD
     if division.front is not None:
-        signal = builder.gain(signal, "g", division.front, section=0, part="b")
+        signal = builder.place(builder.gain(signal, "g", division.front, section=0, part="b"), (LEAD, 0.0))
+        left += LEAD
     several = len(division.sections) > 1
+    tiles = Tiles(builder, form, left, max(map(delays_down, division.sections)))
     for index, section in enumerate(division.sections):
         if index > 0:
-            signal = builder.round(signal, f"between_{index}")
-        draft = Draft(builder, section, index, f"_{index + 1}" if several else "")
+            signal = tiles.register(signal, index)
+        draft = Draft(builder, section, index, f"_{index + 1}" if several else "", tiles.origin(index))
         signal = form.build_section(draft, signal)
-    builder.output(signal)
-    return builder.build()
+    tiles.place_output(builder.output(signal), len(division.sections) - 1)
+    return builder.build(general=general_section(division.sections, form))
+
+
+class Tiles:
+    """Where the sections of a series are drawn: side by side, row under row."""
+
+    def __init__(self, builder: Builder, form: Form, left: float, delays: int) -> None:
+        self.builder, self.width, self.left = builder, form.width, left
+        self.height = form.pitch * delays + GUTTER
+
+    def origin(self, index: int) -> tuple[float, float]:
+        """The first column and row of a section."""
+        return self.left + index % A_ROW * (self.width + GAP), index // A_ROW * self.height
+
+    def right(self, index: int) -> tuple[float, float]:
+        """Where the signal leaves a section."""
+        column, row = self.origin(index)
+        return column + self.width, row
+
+    def register(self, signal: Ref, index: int) -> Ref:
+        """The register before a section, at the end of the section before it; the wire to a new row runs in the gutter."""
+        column, row = self.right(index - 1)
+        between = self.builder.place(self.builder.round(signal, f"between_{index}"), (column + 0.375, row), small=True)
+        left, below = self.origin(index)
+        if below > row:
+            gutter, out, back = below - LEAD, column + 0.875, left - 0.5
+            self.builder.trunk(between, (out, row), (out, gutter), (back, gutter), (back, below))
+        return between
+
+    def place_output(self, output: Ref, last: int) -> None:
+        column, row = self.right(last)
+        self.builder.place(output, (column + LEAD, row))
+
+
+def delays_down(section: Polynomials) -> int:
+    """How many delays a section has below each other."""
+    return max(len(section.a), len(section.b)) - 1
+
+
+def general_section(sections: Sections, form: Form) -> General | None:
+    """One section with the index i, where there are too many to draw."""
+    if len(sections) <= MOST_DRAWN:
+        return None
+    builder = Builder()
+    fullest = max(sections, key=lambda section: len(section.a) + len(section.b))
+    x = builder.place(builder.input("x_i"), (0.0, 0.0))
+    y = form.build_section(Draft(builder, fullest, 0, "_i", (LEAD, 0.0)), x)
+    builder.place(builder.output(y, "y_i"), (LEAD + form.width + LEAD, 0.0))
+    return General(builder.build(), f"Section i of {len(sections)} in series, each rounded before the next: "
+                                    f"x_1 = x, x_i+1 = y_i, y = y_{len(sections)}.")

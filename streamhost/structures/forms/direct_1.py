@@ -41,15 +41,17 @@ def build_section(draft: Draft, x: Ref) -> Ref:
     if draft.is_long_line:
         return draft.tapped_line(x)
     b, a = draft.section.b, draft.section.a
-    xs = (x, *draft.line("x", len(b) - 1, x))
-    ys = draft.line("y", len(a) - 1)
+    xs = (x, *draft.line("x", len(b) - 1, x, column=0))
+    ys = draft.line("y", len(a) - 1, column=4)
     terms: list[Ref | Signed] = []
+    rows: list[int] = []
     for k in reversed(range(max(len(b), len(a)))):
         if k < len(b):
-            terms.append(draft.b(k, xs[k]))
+            terms.append(draft.b(k, xs[k], at=(1, k)))
         if 1 <= k < len(a):
-            terms.append(draft.a(k, ys[k - 1]))
-    y = draft.add("y", terms)
+            terms.append(draft.a(k, ys[k - 1], at=(3, k)))
+        rows += [k] * (len(terms) - len(rows))
+    y = draft.climb("y", terms, column=2, rows=rows)
     if ys:
         ys[0].takes(y)
     return y
@@ -61,4 +63,5 @@ FORM = Form(
     begins_with="numerator",
     build_section=build_section,
     docs=__doc__,
+    width=4,
 )

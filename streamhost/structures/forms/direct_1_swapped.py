@@ -43,15 +43,17 @@ def build_section(draft: Draft, x: Ref) -> Ref:
     if draft.is_long_line:
         return draft.tapped_line(x)
     b, a = draft.section.b, draft.section.a
-    ws = draft.line("w", len(a) - 1)
+    ws = draft.line("w", len(a) - 1, column=1.75)
     # Only a recursion makes a w that is not yet there; without one the copy's line hangs on x.
-    vs = draft.line("v", len(b) - 1, None if ws else x)
-    w = draft.add("w", [*(draft.a(k, ws[k - 1]) for k in reversed(range(1, len(a)))), x])
+    vs = draft.line("v", len(b) - 1, None if ws else x, column=2.625)
+    fed_back = [draft.a(k, ws[k - 1], at=(0.875, k)) for k in reversed(range(1, len(a)))]
+    w = draft.climb("w", [*fed_back, x], column=0, rows=range(len(a) - 1, -1, -1))
     if ws:
         ws[0].takes(w)
     if ws and vs:
         vs[0].takes(w)
-    return draft.add("y", [draft.b(k, (w, *vs)[k]) for k in reversed(range(len(b)))])
+    products = [draft.b(k, (w, *vs)[k], at=(3.5, k)) for k in reversed(range(len(b)))]
+    return draft.climb("y", products, column=4.375, rows=range(len(b) - 1, -1, -1))
 
 
 FORM = Form(
@@ -60,4 +62,5 @@ FORM = Form(
     begins_with="recursion",
     build_section=build_section,
     docs=__doc__,
+    width=4.375,
 )

@@ -42,11 +42,13 @@ def build_section(draft: Draft, x: Ref) -> Ref:
         return draft.tapped_line(x)
     b, a = draft.section.b, draft.section.a
     recursive = len(a) > 1
-    ws = draft.line("w", max(len(a), len(b)) - 1, None if recursive else x)
-    w = draft.add("w", [*(draft.a(k, ws[k - 1]) for k in reversed(range(1, len(a)))), x])
+    ws = draft.line("w", max(len(a), len(b)) - 1, None if recursive else x, column=1.75)
+    fed_back = [draft.a(k, ws[k - 1], at=(0.875, k)) for k in reversed(range(1, len(a)))]
+    w = draft.climb("w", [*fed_back, x], column=0, rows=range(len(a) - 1, -1, -1))
     if recursive:
         ws[0].takes(w)
-    return draft.add("y", [draft.b(k, (w, *ws)[k]) for k in reversed(range(len(b)))])
+    products = [draft.b(k, (w, *ws)[k], at=(2.625, k)) for k in reversed(range(len(b)))]
+    return draft.climb("y", products, column=3.5, rows=range(len(b) - 1, -1, -1))
 
 
 FORM = Form(
@@ -55,4 +57,5 @@ FORM = Form(
     begins_with="recursion",
     build_section=build_section,
     docs=__doc__,
+    width=3.5,
 )

@@ -38,18 +38,22 @@ Carries: any numerator and denominator of any length, as a section or whole. Wit
 from streamhost.diagram.builder import Ref, Signed
 from streamhost.structures.form import Draft, Form
 
+PITCH = 1.25
+
 
 def build_section(draft: Draft, x: Ref) -> Ref:
     b, a = draft.section.b, draft.section.a
-    ds = draft.separate("ds", len(a) - 1)
-    dt = draft.separate("dt", len(b) - 1)
-    v = draft.add("v", [x, *ds[:1]])
+    ds = draft.separate("ds", len(a) - 1, column=0, pitch=PITCH)
+    dt = draft.separate("dt", len(b) - 1, column=3.5, pitch=PITCH)
+    v = draft.add("v", [x, *ds[:1]], at=(0, 0))
+    draft.trunk(v, (1.75, 0), (1.75, PITCH * (max(len(a), len(b)) - 1)))
     for k in range(1, len(a)):
-        s: list[Ref | Signed] = [draft.a(k, v), *ds[k : k + 1]]
-        ds[k - 1].takes(draft.add(f"s{k}", s))
-    y = draft.add("y", [draft.b(0, v), *dt[:1]])
+        s: list[Ref | Signed] = [draft.a(k, v, at=(0.875, k * PITCH)), *ds[k : k + 1]]
+        ds[k - 1].takes(draft.add(f"s{k}", s, at=(0, k * PITCH), face="N"))
+    y = draft.add("y", [draft.b(0, v, at=(2.625, 0)), *dt[:1]], at=(3.5, 0))
     for k in range(1, len(b)):
-        dt[k - 1].takes(draft.add(f"t{k}", [draft.b(k, v), *dt[k : k + 1]]))
+        t = [draft.b(k, v, at=(2.625, k * PITCH)), *dt[k : k + 1]]
+        dt[k - 1].takes(draft.add(f"t{k}", t, at=(3.5, k * PITCH), face="N"))
     return y
 
 
@@ -59,4 +63,6 @@ FORM = Form(
     begins_with="recursion",
     build_section=build_section,
     docs=__doc__,
+    width=3.5,
+    pitch=PITCH,
 )

@@ -34,19 +34,24 @@ Carries: any numerator and denominator of any length, as a section or whole. Tra
 from streamhost.diagram.builder import Ref, Signed
 from streamhost.structures.form import Draft, Form
 
+PITCH = 1.25
+
 
 def build_section(draft: Draft, x: Ref) -> Ref:
     b, a = draft.section.b, draft.section.a
     last = max(len(a), len(b)) - 1
-    d = draft.separate("d", last)
-    y = draft.add("y", [draft.b(0, x), *d[:1]])
+    d = draft.separate("d", last, column=1.5, pitch=PITCH)
+    y = draft.add("y", [draft.b(0, x, at=(0.75, 0)), *d[:1]], at=(1.5, 0))
+    draft.trunk(x, (0, 0), (0, PITCH * (len(b) - 1)))
+    draft.trunk(y, (3, 0), (3, PITCH * (len(a) - 1)))
     for k in range(1, last + 1):
         terms: list[Ref | Signed] = []
         if k < len(b):
-            terms.append(draft.b(k, x))
+            terms.append(draft.b(k, x, at=(0.75, k * PITCH)))
         if k < len(a):
-            terms.append(draft.a(k, y))
-        d[k - 1].takes(draft.add(f"s{k}", [*terms, *d[k : k + 1]]))
+            terms.append(draft.a(k, y, at=(2.25, k * PITCH)))
+        s = draft.add(f"s{k}", [*terms, *d[k : k + 1]], at=(1.5, k * PITCH), face="N")
+        d[k - 1].takes(s)
     return y
 
 
@@ -56,4 +61,6 @@ FORM = Form(
     begins_with="numerator",
     build_section=build_section,
     docs=__doc__,
+    width=3,
+    pitch=PITCH,
 )

@@ -1,0 +1,161 @@
+"""What is drawn: symbols and the wires between them, made of a diagram's nodes."""
+
+import re
+from collections.abc import Collection, Mapping
+from dataclasses import dataclass, field
+
+from streamhost.diagram import Delay, Diagram, Gain, Input, Node, Output, Residue, Round, Shift, Sum, Taps
+from streamhost.diagram.hints import Part, Place, Point
+from streamhost.drawing import text
+from streamhost.drawing.symbols import (
+    COLUMN, MARK, MOST_ON_CIRCLE, RADIUS, SIDES, TERMINAL, TRIANGLE, Cell, Symbol, box, pill,
+)
+
+ROOM_FOR_MARKS = 1.6
+"""How much taller the rows become where symbols that face up or down carry a mark."""
+
+Nothing: Place = Place((0.0, 0.0))
+
+
+@dataclass(frozen=True)
+class Wire:
+    """From a symbol to a symbol, by their indices; `sign` -1: it is subtracted."""
+
+    source: int
+    sink: int
+    sign: int = 1
+
+
+@dataclass(frozen=True)
+class Sheet:
+    """Symbols, wires, and for some sources the cells that their wire runs through first."""
+
+    symbols: tuple[Symbol, ...]
+    wires: tuple[Wire, ...]
+    trunks: Mapping[int, tuple[Cell, ...]]
+
+    @property
+    def sinks(self) -> dict[int, list[int]]:
+        """The wires of each net, by its source."""
+        found: dict[int, list[int]] = {}
+        for index, wire in enumerate(self.wires):
+            found.setdefault(wire.source, []).append(index)
+        return found
+
+
+@dataclass
+class Pen:
+    """Draws node after node; `ends` is the symbol that each node's wire leaves from."""
+
+    diagram: Diagram
+    places: Mapping[int, Place]
+    marked: Collection[int]
+    stretch: float
+    symbols: list[Symbol] = field(default_factory=list)
+    ends: dict[int, int] = field(default_factory=dict)
+
+    def draw(self, index: int) -> None:
+        node, place = self.diagram.nodes[index], self.places.get(index, Nothing)
+        marked = index in self.marked and not isinstance(node, Round)
+        if isinstance(node, Sum):
+            self.draw_sum(index, node, place, marked)
+        else:
+            looks = looks_of(self.diagram, node, place.small)
+            self.put(looks.symbol(index, self.cell(place.at), place.face, marked))
+        self.ends[index] = len(self.symbols) - 1
+
+    def draw_sum(self, index: int, node: Sum, place: Place, marked: bool) -> None:
+        parts = place.parts or (Part(place.at, len(node.terms), place.face),)
+        assert sum(part.terms for part in parts) == len(node.terms), f"the parts of {node.label} take all its terms"
+        for number, part in enumerate(parts):
+            inputs = part.terms + (number > 0)
+            round_one = inputs <= MOST_ON_CIRCLE
+            looks = Looks("sum" if round_one else "pill", (RADIUS, RADIUS) if round_one else pill(inputs), inputs=inputs)
+            last = number == len(parts) - 1
+            self.put(looks.symbol(index, self.cell(part.at), part.face, marked and last, number))
+
+    def put(self, symbol: Symbol) -> None:
+        self.symbols.append(symbol)
+
+    def cell(self, point: Point) -> Cell:
+        return round(point[0] * COLUMN), round(point[1] * COLUMN * self.stretch)
+
+    def wires(self) -> list[Wire]:
+        found: list[Wire] = []
+        for index, node in enumerate(self.diagram.nodes):
+            if isinstance(node, Sum):
+                found += self.sum_wires(index, node)
+            else:
+                found += [Wire(self.ends[source], self.ends[index]) for source in node.reads]
+        return found
+
+    def sum_wires(self, index: int, node: Sum) -> list[Wire]:
+        found: list[Wire] = []
+        terms = iter(node.terms)
+        first = self.ends[index] - len(self.places.get(index, Nothing).parts or (None,)) + 1
+        for adder in range(first, self.ends[index] + 1):
+            chained = adder > first
+            found += [Wire(adder - 1, adder)] if chained else []
+            for term, _ in zip(terms, range(self.symbols[adder].inputs - chained)):
+                found.append(Wire(self.ends[term.source], adder, term.sign))
+        return found
+
+
+@dataclass(frozen=True)
+class Looks:
+    """How a node is drawn wherever it stands."""
+
+    kind: str
+    half: tuple[float, float]
+    text: text.Label = ()
+    name: text.Label = ()
+    inputs: int = 1
+
+    def symbol(self, node: int, at: Cell, face: str, marked: bool, part: int = 0) -> Symbol:
+        return Symbol(self.kind, node, part, at, SIDES.index(face), self.half, self.text, self.name, self.inputs, marked)
+
+
+def looks_of(diagram: Diagram, node: Node, small: bool) -> Looks:
+    """The looks of every node but a sum."""
+    match node:
+        case Input():
+            return Looks("input", (TERMINAL, TERMINAL), name=text.signal(node.label), inputs=0)
+        case Output():
+            return Looks("output", (TERMINAL, TERMINAL), name=text.signal(node.label))
+        case Gain():
+            return Looks("gain", (TRIANGLE, TRIANGLE), name=text.coefficient(diagram.slots[node.coefficient].label))
+        case Shift():
+            return Looks("gain", (TRIANGLE, TRIANGLE), name=text.power_of_two(node.k))
+        case Round():
+            return Looks("mark", (MARK / 2, MARK / 2)) if small else Looks("round", box(()))
+        case Delay():
+            return boxed("delay", text.delay(node.n))
+        case Taps():
+            first = diagram.slots[node.coefficients[0]].label if node.coefficients else node.label
+            return boxed("taps", text.tap_names(re.sub(r"\d+$", "", first), node.length))
+        case Residue():
+            return boxed("residue", (text.Run("e", italic=True),))
+    raise AssertionError(f"no looks for a {node.kind}")
+
+
+def boxed(kind: str, label: text.Label) -> Looks:
+    return Looks(kind, box(label), text=label)
+
+
+def sheet_of(diagram: Diagram, marked: Collection[int] = ()) -> Sheet:
+    """The drawing's symbols and wires; at their places if the diagram's maker said them, else all at one."""
+    places = diagram.hints.places_for(diagram.nodes)
+    pen = Pen(diagram, places or {}, marked, stretch(places, marked))
+    for index in range(len(diagram.nodes)):
+        pen.draw(index)
+    trunks: dict[int, tuple[Cell, ...]] = {}
+    for trunk in diagram.hints.trunks if places else ():
+        source = pen.ends[trunk.source]
+        trunks[source] = trunks.get(source, ()) + tuple(map(pen.cell, trunk.points))
+    return Sheet(tuple(pen.symbols), tuple(pen.wires()), trunks)
+
+
+def stretch(places: Mapping[int, Place] | None, marked: Collection[int]) -> float:
+    """How much taller the rows are drawn."""
+    upright = places is not None and any(places[index].face in "NS" for index in marked if index in places)
+    return ROOM_FOR_MARKS if upright else 1.0
