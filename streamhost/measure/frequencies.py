@@ -39,7 +39,12 @@ def refined(edges: FloatArray, parts: int) -> FloatArray:
 
 def integral(density: Callable[[FloatArray], FloatArray], edges: FloatArray) -> float:
     """The integral from the first to the last of the edges, by the rule of Gauss and Legendre between each two."""
+    return float(integrals(lambda w: density(w)[:, None], edges)[0])
+
+
+def integrals(densities: Callable[[FloatArray], FloatArray], edges: FloatArray) -> FloatArray:
+    """The same of several densities at once, which come as (frequencies, densities)."""
     nodes, weights = np.polynomial.legendre.leggauss(ORDER)
     half = np.diff(edges)[:, None] / 2.0
     points = edges[:-1, None] + half * (nodes + 1.0)
-    return float(np.sum(half * weights * density(points.ravel()).reshape(points.shape)))
+    return np.asarray((half * weights).ravel() @ densities(points.ravel()), dtype=np.float64)

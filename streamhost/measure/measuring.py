@@ -100,7 +100,7 @@ class Measurement:
             unstable=realization.unstable,
             noise=noise,
             prediction=self._watch.prediction(realization.filter.rate) if self._finite else None,
-            white=self._watch.verdict(),
+            white=self._watch.verdict(realization.filter.rate),
             dc_lsb=_in_steps(noise.mean, realization) if fixed else None,
             peak_dbfs=peak_dbfs(self._peak),
             difference_gain_db=_listening_gain(self._difference_peak) if self._finite else None,

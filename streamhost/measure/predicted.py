@@ -2,6 +2,7 @@
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from itertools import pairwise
 from math import inf, isfinite
 
 import numpy as np
@@ -9,12 +10,12 @@ import numpy as np
 from streamhost.diagram.fan import to_output
 from streamhost.formats import Float
 from streamhost.measure.bands import audio_band
-from streamhost.measure.float_errors import float_spectrum
-from streamhost.measure.frequencies import FloatArray, breakpoints, integral
+from streamhost.measure.frequencies import FloatArray, breakpoints, integral, integrals
 from streamhost.measure.levels import power_dbfs
 from streamhost.measure.weighting import a_weighting
+from streamhost.program.float_errors import float_spectrum
 from streamhost.program.program import Program
-from streamhost.program.sources import noise_spectrum
+from streamhost.program.sources import noise_sources, noise_spectrum, source_spectra
 
 Density = Callable[[FloatArray], FloatArray]
 
@@ -58,12 +59,24 @@ def _density(program: Program, channel: int, rms: FloatArray | None) -> Density:
     if isinstance(program.format, Float):
         assert rms is not None, "what floats round depends on the signal"
         return lambda w: float_spectrum(program, rms, w, channel)
-    return lambda w: _fixed_spectrum(program, w, channel)
+    return lambda w: noise_spectrum(program, w, channel)
 
 
-def _fixed_spectrum(program: Program, w: FloatArray, channel: int) -> FloatArray:
-    with np.errstate(invalid="ignore"):  # an error that does not die out is infinite at every frequency
-        return noise_spectrum(program, w, channel)
+def source_shares(program: Program, rate: float, edges: FloatArray) -> FloatArray:
+    """What each source puts into each band of the predicted noise, as a share of all of it, (bands, sources).
+
+    edges: of the bands, in radians a frame; only what lies in the audio band counts, where the rate has one. Sources
+    that do not die out count alike, and then nothing else does.
+    """
+    band = audio_band(rate) or (0.0, rate / 2.0)
+    low, high = (2.0 * np.pi * edge / rate for edge in band)
+    poles = {complex(pole) for pole in to_output(program.diagram, [], 0).poles}
+    inside = np.clip(edges, low, high)
+    power = np.array([integrals(lambda w: source_spectra(program, w), breakpoints(poles, *pair)) if pair[1] > pair[0]
+                      else np.zeros(len(noise_sources(program))) for pair in pairwise(inside)])
+    if not np.isfinite(power).all():
+        power = np.where(np.isfinite(power), 0.0, 1.0)
+    return np.asarray(power / power.sum(), dtype=np.float64)
 
 
 def _weighted(density: Density, weight: Density | None) -> Density:

@@ -39,8 +39,7 @@ class Run:
         self.program, self.channels = realization.program, channels
         self._memory = realization.memory(channels)
         self._kernel = compile_kernel(self.program, Variant(metered=True, traced=True))
-        with np.errstate(invalid="ignore"):  # what does not die out is infinite
-            self.ideal = ideal_of(self.program)
+        self.ideal = ideal_of(self.program)
         variant = Variant(double=self.ideal.double)
         self._ideal_memory = Memory(self.ideal.program, channels, variant)
         self._ideal_kernel = compile_kernel(self.ideal.program, variant)

@@ -1,12 +1,14 @@
 """What a traced kernel writes: the residues of fixed point, by which the white model is judged, and the power of every
 value in floating point, by which its noise is estimated."""
 
+from dataclasses import replace
+
 import numpy as np
 from numpy.typing import NDArray
 
 from streamhost.formats import Fixed
-from streamhost.measure.predicted import Prediction, predicted_noise
-from streamhost.measure.residues import ResidueSum
+from streamhost.measure.predicted import Prediction, predicted_noise, source_shares
+from streamhost.measure.residues import ResidueSum, octave_edges
 from streamhost.measure.whiteness import Expected, Whiteness, judged
 from streamhost.program.program import Program, RoundArithmetic
 from streamhost.program.sources import Source, noise_sources, traced_roundings
@@ -36,8 +38,8 @@ class FixedWatch:
             self._seen = True
         self._frame += len(x)
 
-    def verdict(self) -> Whiteness:
-        """Whether the white model holds."""
+    def verdict(self, rate: float) -> Whiteness:
+        """Whether the white model holds at that rate, each rounding judged by its part in the noise."""
         sources = len(self._sources)
         if not sources:
             return Whiteness(None, "nothing is rounded")
@@ -46,7 +48,9 @@ class FixedWatch:
         if len(self._expected) < sources:
             inside = sources - len(self._expected)
             return Whiteness(None, f"{inside} of {sources} errors arise inside sums, where none is written down")
-        return judged(self._expected, self._sum.result() if self._seen else None)
+        shares = source_shares(self._program, rate, np.pi * octave_edges(2))
+        expected = tuple(replace(rounding, shares=tuple(shares[:, k])) for k, rounding in enumerate(self._expected))
+        return judged(expected, self._sum.result() if self._seen else None)
 
     def prediction(self, rate: float) -> Prediction:
         return predicted_noise(self._program, rate)
@@ -68,7 +72,7 @@ class FloatWatch:
         self._samples += settled.shape[0] * settled.shape[1]
         self._frame += len(x)
 
-    def verdict(self) -> Whiteness:
+    def verdict(self, rate: float) -> Whiteness:
         return Whiteness(None, "what floating point rounds grows and shrinks with the signal: there is no such model")
 
     def prediction(self, rate: float) -> Prediction:

@@ -2,7 +2,9 @@
 
 The model (Bennett 1948; Oppenheim & Schafer, ch. 6): every error is uniform over the values it can take, white, and
 uncorrelated with the input and the other errors. Each bound is what one of a hundred runs of such errors would pass by
-chance, all checks together, plus an allowance for what makes no difference of half a dB.
+chance, all checks together, plus an allowance for what makes no difference of half a dB: a rounding's departures
+count by its part in the predicted noise, octave by octave, and one with next to no part is looked at for its spectrum
+alone.
 """
 
 from dataclasses import dataclass
@@ -25,6 +27,8 @@ CORRELATION = 0.01
 DENSITY_SHARE = 0.12
 """Half a dB."""
 
+LEAST_SHARE = 0.05
+
 UNIFORM_VARIANCE_SHARE = 4.0**-5
 """A rounding that drops some six bits or more has a variance this near to that of a continuous error."""
 
@@ -46,6 +50,13 @@ class Expected:
     variance: float
     lowest: float
     dithered: bool
+    shares: tuple[float, ...] = (1.0,) * OCTAVES
+    """Its part in the predicted noise of all roundings, by octave from the lowest up."""
+
+    @property
+    def matters(self) -> bool:
+        """Whether half again as much of it would be a tenth of a dB of the noise."""
+        return sum(self.shares) >= LEAST_SHARE
 
 
 def judged(expected: tuple[Expected, ...], residues: Residues | None) -> Whiteness:
@@ -70,6 +81,11 @@ class _Judge:
         count = len(self.expected)
         return CHANCE / (count * (4 + OCTAVES + (LAGS + 1) * (count + 1)))
 
+    @property
+    def that_matter(self) -> list[tuple[int, Expected]]:
+        """Roundings with a part in the noise, with their place."""
+        return [(k, rounding) for k, rounding in enumerate(self.expected) if rounding.matters]
+
     @cached_property
     def sigmas(self) -> float:
         return NormalDist().inv_cdf(1.0 - self.chance / 2.0)
@@ -80,7 +96,7 @@ class _Judge:
         return self.sigmas / sqrt(self.residues.frames)
 
     def moments(self) -> str:
-        for k, rounding in enumerate(self.expected):
+        for k, rounding in self.that_matter:
             mean, variance = float(self.residues.mean[k]), float(self.residues.variance[k])
             # the square of a uniform variable scatters by root 0.8 of its mean
             if abs(variance / rounding.variance - 1.0) > VARIANCE_SHARE + self.scatter * sqrt(0.8):
@@ -92,7 +108,7 @@ class _Judge:
 
     def distribution(self) -> str:
         """By the largest distance between cumulative distributions (Kolmogorov and Smirnov)."""
-        for k, rounding in enumerate(self.expected):
+        for k, rounding in self.that_matter:
             continuous = abs(12.0 * rounding.variance - 1.0) < UNIFORM_VARIANCE_SHARE
             if rounding.dithered or not continuous:
                 continue
@@ -102,29 +118,36 @@ class _Judge:
         return ""
 
     def density(self) -> str:
-        for k, rounding in enumerate(self.expected):
-            if not self.as_white(self.residues.drift[k], self.residues.drift_degrees):
+        """The power that roundings put into octaves beyond what chance explains, by its part in the noise."""
+        for k, rounding in self.that_matter:
+            if abs(self.beyond(self.residues.drift[k], self.residues.drift_degrees)) > DENSITY_SHARE:
                 return f"the mean of what {rounding.label} drops drifts"
-            for octave, degrees in enumerate(self.residues.octave_degrees):
-                if not self.as_white(self.residues.octaves[octave, k], degrees):
-                    where = f"{OCTAVES - octave} octaves below half the rate" if octave else "at the lowest frequencies"
-                    return f"what {rounding.label} drops is not white {where}"
-        return ""
+        excess = np.array([[self.beyond(self.residues.octaves[octave, k], degrees) for k in range(len(self.expected))]
+                           for octave, degrees in enumerate(self.residues.octave_degrees)])
+        weighted = excess * np.array([rounding.shares for rounding in self.expected]).T
+        if max(weighted.clip(min=0.0).sum(), -weighted.clip(max=0.0).sum()) <= DENSITY_SHARE:
+            return ""
+        octave, worst = divmod(int(np.argmax(np.abs(weighted))), len(self.expected))
+        where = f"{OCTAVES - octave} octaves below half the rate" if octave else "at the lowest frequencies"
+        return f"what {self.expected[worst].label} drops is not white {where}"
 
-    def as_white(self, ratio: float, degrees: float) -> bool:
-        """Whether a power over the expected one is what a chi-square variable of those degrees may show."""
+    def beyond(self, ratio: float, degrees: float) -> float:
+        """How far a power over the expected one is from what a chi-square variable of those degrees may show."""
         from scipy.special import chdtri
 
         low, high = (float(chdtri(degrees, p)) / degrees for p in (1.0 - self.chance / 2.0, self.chance / 2.0))
-        return low - DENSITY_SHARE <= ratio <= high + DENSITY_SHARE
+        return float(ratio - min(max(ratio, low), high))
 
     def correlations(self) -> str:
         allowed = CORRELATION + self.scatter
-        to_input, between = self.residues.to_input, self.residues.correlation
+        to_input, between = self.residues.to_input.copy(), self.residues.correlation
         if (beyond := np.argwhere(np.abs(to_input) > allowed)).size:
             return f"what {self.expected[beyond[0][1]].label} drops follows the input"
+        count = len(self.expected)
         own = np.zeros_like(between, dtype=np.bool_)
-        own[0][np.diag_indices(len(self.expected))] = True
+        own[0][np.diag_indices(count)] = True
+        idle = [k for k in range(count) if not self.expected[k].matters]
+        own[:, idle], own[:, :, idle], to_input[:, idle] = True, True, 0.0
         if not (beyond := np.argwhere((np.abs(between) > allowed) & ~own)).size:
             return ""
         lag, earlier, later = beyond[0]

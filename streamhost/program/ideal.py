@@ -4,19 +4,14 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from streamhost.diagram.nodes import Round
-from streamhost.diagram.norms import norms_from_input, response_to_output
+from streamhost.diagram.norms import norms_from_input
 from streamhost.formats import Fixed, Float
+from streamhost.program.float_errors import float_spectrum
 from streamhost.program.floating import lower_float
 from streamhost.program.program import Program
 from streamhost.program.sources import FloatArray, noise_spectrum
 
 MARGIN_DB = 20.0
-UNIT_64 = 2.0**-53
-
-FLOAT_ERROR = 0.18
-"""Mean square of a rounding's relative error in units of the unit roundoff squared, for mantissas spread as a signal's are:
-a uniform error in the last place over a logarithmically uniform mantissa gives (1/3) * (3/8) / ln 2 = 0.18."""
 
 
 @dataclass(frozen=True)
@@ -41,34 +36,21 @@ def ideal_of(program: Program) -> Ideal:
     grid = np.linspace(0.0, np.pi, 4097)
     if isinstance(program.format, Float):
         return Ideal(plain, program.format.type == "float64")
-    own, judged = float_noise(plain, UNIT_64), float(np.mean(noise_spectrum(program, grid)))
+    own, judged = _noise_at_full_scale(plain, grid), float(np.mean(noise_spectrum(program, grid)))
     if not (np.isfinite(own) and np.isfinite(judged)):
         widest = max(quantizer.word.bits for quantizer in program.quantizers)
         return Ideal(plain, widest > 32)
     return Ideal(plain, own > judged * 10 ** (-MARGIN_DB / 10))
 
 
+def _noise_at_full_scale(program: Program, grid: FloatArray) -> float:
+    """Estimated noise power of a floating-point program for white noise at full scale."""
+    return float(np.mean(float_spectrum(program, norms_from_input(program.diagram).l2, grid)))
+
+
 def ideal_program(program: Program) -> Program:
     """The diagram of a program with its stored coefficients in float64, roundings left out. Its input is the quantized one."""
     return lower_float(program.diagram, Float("float64"))
-
-
-def float_noise(program: Program, unit: float, rms: FloatArray | None = None) -> float:
-    """Estimated noise power at the first output of a floating-point program of that unit roundoff.
-
-    `rms` of every node; without it that of white noise at full scale. Every multiplication and addition is one rounding.
-    """
-    nodes = [
-        i for i, node in enumerate(program.nodes) if node.multiplications or node.additions or isinstance(node, Round)
-    ]
-    if not nodes:
-        return 0.0
-    if rms is None:
-        rms = norms_from_input(program.diagram).l2
-    grid = np.linspace(0.0, np.pi, 4097)
-    gains = np.abs(response_to_output(program.diagram, nodes, grid)) ** 2
-    operations = np.array([max(1, program.nodes[i].multiplications + program.nodes[i].additions) for i in nodes])
-    return float(np.sum(gains.mean(axis=0) * operations * (FLOAT_ERROR * unit**2) * rms[nodes] ** 2))
 
 
 def quantized_input(program: Program, x: FloatArray) -> FloatArray:

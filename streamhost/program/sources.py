@@ -49,17 +49,21 @@ def noise_spectrum(program: Program, frequencies: FloatArray, channel: int = 0, 
 
     Its mean over 0 .. pi is the noise power in units of full scale squared. Infinite where an error does not die out.
     """
-    power = np.zeros(len(frequencies))
+    return np.asarray(source_spectra(program, frequencies, channel, output).sum(axis=1), dtype=np.float64)
+
+
+def source_spectra(program: Program, frequencies: FloatArray, channel: int = 0, output: int = 0) -> FloatArray:
+    """The same of each source alone, (frequencies, sources)."""
     sources = noise_sources(program, channel)
     nodes = sorted({node for source in sources for node, _ in source.places})
-    if not nodes:
-        return power
     response = response_to_output(program.diagram, nodes, frequencies, channel, output=output)
     column = {node: response[:, k] for k, node in enumerate(nodes)}
-    for source in sources:
-        total = sum(np.exp(-1j * delay * frequencies) * column[node] for node, delay in source.places)
-        power += source.variance * np.abs(total) ** 2
-    return np.where(np.isnan(power), inf, power)
+    power = np.full((len(frequencies), len(sources)), inf)
+    for k, source in enumerate(sources):
+        if all(np.isfinite(column[node]).all() for node, _ in source.places):
+            seen = [np.exp(-1j * delay * frequencies) * column[node] for node, delay in source.places]
+            power[:, k] = source.variance * np.abs(sum(seen)) ** 2
+    return power
 
 
 def rounding_moments(drop: int, rounding: str) -> tuple[float, float]:

@@ -5,9 +5,12 @@ import numpy as np
 from streamhost.diagram.nodes import Round
 from streamhost.diagram.norms import response_to_output
 from streamhost.formats import Float
-from streamhost.measure.frequencies import FloatArray
-from streamhost.program.ideal import FLOAT_ERROR
 from streamhost.program.program import Program
+from streamhost.program.sources import FloatArray
+
+FLOAT_ERROR = 0.18
+"""Mean square of a rounding's relative error in units of the unit roundoff squared, for mantissas spread as a signal's
+are: a uniform error in the last place over a logarithmically uniform mantissa gives (1/3) * (3/8) / ln 2 = 0.18."""
 
 UNITS = {"float32": 2.0**-24, "float64": 2.0**-53}
 """Unit roundoffs of IEEE 754 binary32 and binary64."""
