@@ -133,7 +133,7 @@ def _conditions(compared: Sequence[Compared], info: AudioInfo) -> str:
     said = "; ".join(f"{ideal} for {', '.join(numbers)}" for ideal, numbers in ideals.items())
     channels = "1 channel" if info.channels == 1 else f"{info.channels} channels"
     sentences = [
-        f"Input: {printable(str(info.path))}, {info.seconds:.2f} s, {channels}, {info.rate} Hz.",
+        f"Input: {printable(info.path.name)}, {info.seconds:.2f} s, {channels}, {info.rate} Hz.",
         f"The ideal ran in {said}.",
     ]
     if seed_of(compared) is not None:
