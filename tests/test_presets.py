@@ -239,9 +239,12 @@ FILTERS = {
         "one [[filter]] table for each, and they stand in cascade.",
     "": "mine.toml:2: this [[filter]] states no filter: by kind, equation, b and a, sections or "
         "zeros, poles and factor.",
-    'equation = "y[n] = x[n]"\n':
-        "mine.toml:3: equation is not offered yet: state the filter by kind, by b and a, by sections, or by "
-        "zeros, poles and factor.",
+    'equation = "y[n] = z[n]"\n':
+        'mine.toml:3: equation, column 8: "z" is not known; the signals are x and y, each with a time, as in x[n-1].',
+    'equation = """\ny[n] = x[n]\n  + y[n+1]"""\n':
+        "mine.toml:3: equation, line 2, column 5: y[n+1] lies in the future, which a filter does not know; a time is n, "
+        "n-1, n-2 and so on.",
+    "equation = 1\n": "mine.toml:3: equation = 1 is not allowed: equation is a text in quotes.",
     'kind = "high-pass"\nfrequency = 28\nchannels = [1]\n':
         "mine.toml:5: channels is not offered yet: a filter is the same on all channels.",
 }

@@ -1,25 +1,30 @@
 """The difference equation that a diagram computes, as text.
 
-One equation for each output, from the exact transfer function with nothing cancelled: the recursion stays as drawn, so
-that a running sum reads y[n] = x[n] - x[n-8] + y[n-1] and not as the FIR that it equals. Or one equation for each node.
+One equation for each output, with nothing cancelled: the recursion stays as drawn, so that a running sum reads
+y[n] = x[n] - x[n-8] + y[n-1] and not as the FIR that it equals. Or one equation for each node.
 The arithmetic is the ideal one: a register is what it takes in, a residue is 0.
 """
 
 import re
-from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import replace
+from collections.abc import Iterator, Sequence
 from fractions import Fraction
 
+import numpy as np
+from numpy.typing import NDArray
+
 from streamhost.diagram.diagram import Diagram
-from streamhost.diagram.graph import loops, reachable
-from streamhost.diagram.nodes import Delay, Gain, Input, Node, OneSource, Output, Residue, Round, Shift, Sum, Taps
+from streamhost.diagram.difference import difference
+from streamhost.diagram.graph import loops
+from streamhost.diagram.nodes import Delay, Gain, Input, Node, Output, Residue, Round, Shift, Sum, Taps
 from streamhost.diagram.rows import tap_weights
-from streamhost.diagram.transfer import exact_transfer_function, float_transfer_function
+from streamhost.diagram.transfer import float_transfer_function
 from streamhost.errors import DiagramError
 
 WIDTH = 100
 MOST_DIGITS = 17
-IN_FLOAT64 = "# not exact: the loops are too large for fractions, the coefficients were computed in float64"
+DUST = 1e-14
+IN_FLOAT64 = f"""# not exact: the loops are too large for fractions; computed in float64,
+# and what is below {DUST:g} of the largest coefficient is left out"""
 
 Term = tuple[float, str, int]
 """A coefficient, a signal's name and its age."""
@@ -34,12 +39,12 @@ def equation(diagram: Diagram, digits: int | None = None, channel: int = 0) -> s
     _check(digits)
     inputs, outputs = _names(diagram)
     blocks = []
-    for name, output in zip(outputs, diagram.outputs, strict=True):
-        part = _part(diagram, output)
-        numerators, denominator, exact = _polynomials(part, channel)
-        terms = [(c, x, age) for x, numerator in zip(inputs, numerators, strict=True) for age, c in enumerate(numerator)]
-        past = [(-c, name, age) for age, c in enumerate(denominator) if age]
-        lines = [_wrapped(f"{name}[n]", _texts([*terms, *past], digits)), _mark(part, name, any(c for c, _, _ in past))]
+    for which, name in enumerate(outputs):
+        numerators, denominator, exact = _polynomials(diagram, which, channel)
+        now = [(c, x, age) for x, numerator in zip(inputs, numerators, strict=True) for age, c in enumerate(numerator)]
+        past = [(-c, name, age) for age, c in enumerate(denominator) if age and c]
+        terms = _texts([term for term in [*now, *past] if term[0]], digits)
+        lines = [_wrapped(f"{name}[n]", terms), _mark(name, bool(past), diagram.has_loop())]
         blocks.append("\n".join(lines if exact else [*lines, IN_FLOAT64]))
     return "\n".join(blocks)
 
@@ -75,27 +80,14 @@ def _numbered(stem: str, count: int) -> list[str]:
     return [stem] if count == 1 else [f"{stem}{i + 1}" for i in range(count)]
 
 
-def _part(diagram: Diagram, output: int) -> Diagram:
-    """The diagram with this output alone: all inputs, and what it depends on."""
-    kept = sorted({*reachable([node.reads for node in diagram.nodes], [output]), *diagram.inputs})
-    new = {index: i for i, index in enumerate(kept)}
-    return replace(diagram, nodes=tuple(_renumbered(diagram.nodes[index], new) for index in kept))
-
-
-def _renumbered(node: Node, new: Mapping[int, int]) -> Node:
-    if isinstance(node, Sum):
-        return replace(node, terms=tuple(replace(term, source=new[term.source]) for term in node.terms))
-    return replace(node, source=new[node.source]) if isinstance(node, OneSource) else node
-
-
-def _polynomials(part: Diagram, channel: int) -> tuple[list[list[float]], list[float], bool]:
-    """The numerator of each input, the denominator, and whether each coefficient is exact and rounded once."""
+def _polynomials(diagram: Diagram, which: int, channel: int) -> tuple[list[list[float]], list[float], bool]:
+    """Of one output the numerator of each input, the denominator, and whether each coefficient is exact, rounded once."""
     try:
-        exact = exact_transfer_function(part, channel, lowest_terms=False)
+        exact = difference(diagram, diagram.outputs[which], channel)
     except DiagramError:
-        rounded = float_transfer_function(part, channel)
-        return rounded.numerators[0].tolist(), rounded.denominator.tolist(), False
-    return [_rounded(numerator) for numerator in exact.numerators[0]], _rounded(exact.denominator), True
+        rounded = float_transfer_function(diagram, channel)
+        return list(map(_without_dust, rounded.numerators[which])), _without_dust(rounded.denominator), False
+    return [_rounded(numerator) for numerator in exact.numerators], _rounded(exact.denominator), True
 
 
 def _rounded(polynomial: Sequence[Fraction]) -> list[float]:
@@ -106,17 +98,23 @@ def _rounded(polynomial: Sequence[Fraction]) -> list[float]:
                            "equation can be had node by node.") from None
 
 
-def _mark(part: Diagram, name: str, recursive: bool) -> str:
+def _without_dust(polynomial: NDArray[np.float64]) -> list[float]:
+    """What transforms leave where a coefficient is 0 is made 0 again."""
+    kept: list[float] = np.where(np.abs(polynomial) < DUST * np.abs(polynomial).max(), 0.0, polynomial).tolist()
+    return kept
+
+
+def _mark(name: str, recursive: bool, has_loop: bool) -> str:
     if recursive:
         return f"# recursive: {name}[n] depends on its own past"
-    return "# not recursive" + (", although the diagram has a loop" if part.has_loop() else "")
+    return "# not recursive" + (", although the diagram has a loop" if has_loop else "")
 
 
 def _node_line(diagram: Diagram, node: Node, coefficients: Sequence[float], digits: int | None) -> str:
     if isinstance(node, Input):
         return f"{node.label}[n] = input"
     terms = list(_node_terms(diagram, node, coefficients))
-    right = " ".join(_texts(terms, digits)) or "0"
+    right = " ".join(_texts(terms, digits))
     match node:
         case Output():
             return f'output "{node.label}" = {right}'
@@ -148,14 +146,14 @@ def _node_terms(diagram: Diagram, node: Node, coefficients: Sequence[float]) -> 
 
 
 def _texts(terms: Sequence[Term], digits: int | None) -> list[str]:
-    """The terms that are not 0, each with its sign in front; the first has it only where it is a minus."""
-    texts = []
+    """Each term with its sign in front; the first has it only where it is a minus."""
+    texts: list[str] = []
     for c, name, age in terms:
-        if c:
-            number = repr(abs(c)) if digits is None else f"{abs(c):.{digits}g}"
-            factor = "" if number in ("1", "1.0") else f"{number.removesuffix('.0')} "
-            sign = ("-" if c < 0 else "") if not texts else ("- " if c < 0 else "+ ")
-            texts.append(f"{sign}{factor}{name}[n-{age}]" if age else f"{sign}{factor}{name}[n]")
+        number = repr(abs(c)) if digits is None else f"{abs(c):.{digits}g}"
+        factor = "" if number in ("1", "1.0") else f"{number.removesuffix('.0')} "
+        sign = "-" if c < 0 else "+" if texts else ""
+        gap = " " if texts else ""
+        texts.append(f"{sign}{gap}{factor}{name}[n-{age}]" if age else f"{sign}{gap}{factor}{name}[n]")
     return texts
 
 

@@ -60,13 +60,13 @@ class ExactTransferFunction:
     denominator: tuple[Fraction, ...]
 
 
-def exact_transfer_function(diagram: Diagram, channel: int = 0, *, lowest_terms: bool = True,
+def exact_transfer_function(diagram: Diagram, channel: int = 0, *,
                             most_work: float = MOST_WORK) -> ExactTransferFunction:
-    """The transfer function of the coefficients as stored, in lowest terms unless asked otherwise.
+    """The transfer function of the coefficients as stored, in lowest terms.
 
     The denominator is the product of the determinants of the loops; as many frames of the impulse response as there
-    are states, and one, times it are the numerators. In lowest terms, what all have in common is divided out, so that a
-    running sum gives its FIR; else the recursion stays as drawn. Raises DiagramError where that would take more than about `most_work` word operations.
+    are states, and one, times it are the numerators; what all have in common is divided out, so that a running sum
+    gives its FIR. Raises DiagramError where that would take more than about `most_work` word operations.
     """
     matrices = loop_matrices(diagram, channel)
     if _work(diagram, channel, matrices) > most_work:
@@ -80,9 +80,7 @@ def exact_transfer_function(diagram: Diagram, channel: int = 0, *, lowest_terms:
     for i in range(len(diagram.inputs)):
         responses = zip(*islice(impulse_responses(diagram, channel, i), frames), strict=True)
         columns.append([product(list(map(Fraction, h)), denominator)[:frames] for h in responses])
-    shared: Polynomial = [Fraction(1)]
-    if lowest_terms:
-        shared = _shared(denominator, [trimmed(numerator) for column in columns for numerator in column])
+    shared = _shared(denominator, [trimmed(numerator) for column in columns for numerator in column])
     reduced = [[tuple(quotient(trimmed(numerator), shared)) for numerator in column] for column in columns]
     return ExactTransferFunction(tuple(zip(*reduced, strict=True)), tuple(quotient(denominator, shared)))
 

@@ -1,5 +1,7 @@
 """Classical designs of any order: the analogue prototype through the bilinear transform, kept as zeros and poles.
 
+`order` is the prototype's: a band-pass or band-stop has twice as many poles. The edges are prewarped.
+
 All zeros of these families lie on the unit circle. Where float64 can say so they are put there to the last bit:
 a section's numerator is then 1, -2 cos, 1 as it should be, and a structure can see that its outer gains are 1.
 """
@@ -10,32 +12,63 @@ from math import copysign, inf, isfinite, nextafter, sqrt
 
 from streamhost.errors import FilterError
 from streamhost.filters.filter import Filter
+from streamhost.filters.kind import Kind, Values
+from streamhost.filters.parameters import Above, Between, Count, Edges, Parameter, Word
+from streamhost.filters.responses import EDGES, RESPONSE, edge_conflicts
 
-RESPONSES = {"low-pass": "lowpass", "high-pass": "highpass", "band-pass": "bandpass", "band-stop": "bandstop"}
-BANDS = ("band-pass", "band-stop")
+NORMS = {"magnitude": "mag", "phase": "phase", "delay": "delay"}
 SMALLEST_PART = 2.0**-13
 # What the bilinear transform's rounding leaves of a real part that is 0, as at a quarter of the rate.
 NOISE = 2.0**-50
 
-Edges = float | tuple[float, float]
+Frequencies = float | tuple[float, float]
 
 
-def butterworth(rate: float, *, response: str, order: int, frequency: Edges) -> Filter:
-    """-3.01 dB at the edges. `order` is the prototype's: a band-pass or band-stop has twice as many poles."""
+def butterworth(rate: float, *, response: str, order: int, frequency: Frequencies) -> Filter:
+    """-3.01 dB at the edges."""
     from scipy import signal
 
-    z, p, k = signal.butter(order, frequency, RESPONSES[response], output="zpk", fs=rate)
-    return _filter(rate, z, p, k)
+    return _filter(rate, *signal.butter(order, frequency, _words(response), output="zpk", fs=rate))
+
+
+def chebyshev_1(rate: float, *, response: str, order: int, frequency: Frequencies, ripple_db: float) -> Filter:
+    """-ripple_db at the edges, 0 dB at the highest points of the pass-band."""
+    from scipy import signal
+
+    return _filter(rate, *signal.cheby1(order, ripple_db, frequency, _words(response), output="zpk", fs=rate))
+
+
+def chebyshev_2(rate: float, *, response: str, order: int, frequency: Frequencies, stopband_db: float) -> Filter:
+    """-stopband_db first reached at the edges, which are those of the stop-band."""
+    from scipy import signal
+
+    return _filter(rate, *signal.cheby2(order, stopband_db, frequency, _words(response), output="zpk", fs=rate))
 
 
 def elliptic(
-    rate: float, *, response: str, order: int, frequency: Edges, ripple_db: float, stopband_db: float
+    rate: float, *, response: str, order: int, frequency: Frequencies, ripple_db: float, stopband_db: float
 ) -> Filter:
-    """-ripple_db at the edges. `order` is the prototype's: a band-pass or band-stop has twice as many poles."""
+    """-ripple_db at the edges."""
     from scipy import signal
 
-    z, p, k = signal.ellip(order, ripple_db, stopband_db, frequency, RESPONSES[response], output="zpk", fs=rate)
-    return _filter(rate, z, p, k)
+    design = signal.ellip(order, ripple_db, stopband_db, frequency, _words(response), output="zpk", fs=rate)
+    return _filter(rate, *design)
+
+
+def bessel(rate: float, *, response: str, order: int, frequency: Frequencies, norm: str) -> Filter:
+    """What the edges mean is said by `norm`.
+
+    "magnitude": -3.01 dB there. "phase": the asymptotes of the prototype's response meet there, as they do in a
+    Butterworth filter, and a low-pass has half its phase there. "delay": the prototype's delay at 0 Hz is 1 / (2 pi
+    frequency), of the prewarped frequency. The transform bends the delay: flat it is well below half the rate only.
+    """
+    from scipy import signal
+
+    return _filter(rate, *signal.bessel(order, frequency, _words(response), output="zpk", norm=NORMS[norm], fs=rate))
+
+
+def _words(response: str) -> str:
+    return response.replace("-", "")
 
 
 def on_circle(root: complex) -> complex:
@@ -84,3 +117,66 @@ def _filter(rate: float, z: Iterable[complex], p: Iterable[complex], k: float) -
     upper = [on_circle(zero) for zero in zeros if zero.imag > 0]
     real = [on_circle(zero) for zero in zeros if zero.imag == 0]
     return Filter.from_zeros_poles([*upper, *(zero.conjugate() for zero in upper), *real], poles, gain, rate=rate)
+
+
+def _elliptic_conflicts(values: Values) -> list[str]:
+    problems = edge_conflicts(values)
+    if values["stopband_db"] <= values["ripple_db"]:
+        problems.append(
+            f"stopband_db is {values['stopband_db']:g}; it must be above ripple_db, {values['ripple_db']:g}"
+        )
+    return problems
+
+
+SOURCE = "analogue prototype and bilinear transform with the edges prewarped; Oppenheim & Schafer, ch. 7"
+
+ORDER = Parameter("order", "", "order of the prototype; a band has twice as many poles", Count(1, 64))
+# Beyond 25 no one asks for a Bessel filter (common practice), and its poles take long to find.
+BESSEL_ORDER = Parameter("order", "", ORDER.meaning, Count(1, 25))
+RIPPLE = Parameter("ripple_db", "dB", "ripple in the pass-band", Between(1e-6, 20.0))
+STOPBAND = Parameter("stopband_db", "dB", "attenuation in the stop-band", Above(0.0, 300.0))
+STOP_EDGES = Parameter("frequency", "Hz", "edge of the stop-band, or two for a band", Edges())
+NORM = Parameter("norm", "", "what the edges mean", Word(tuple(NORMS)), default="magnitude")
+
+KINDS = (
+    Kind(
+        "butterworth",
+        "maximally flat, -3.01 dB at the edges",
+        SOURCE,
+        (RESPONSE, ORDER, EDGES),
+        butterworth,
+        conflicts=edge_conflicts,
+    ),
+    Kind(
+        "chebyshev-1",
+        "equal ripple in the pass-band, -ripple_db at the edges",
+        SOURCE,
+        (RESPONSE, ORDER, EDGES, RIPPLE),
+        chebyshev_1,
+        conflicts=edge_conflicts,
+    ),
+    Kind(
+        "chebyshev-2",
+        "maximally flat pass-band, equal ripple in the stop-band, whose edges are given",
+        SOURCE,
+        (RESPONSE, ORDER, STOP_EDGES, STOPBAND),
+        chebyshev_2,
+        conflicts=edge_conflicts,
+    ),
+    Kind(
+        "elliptic",
+        "equal ripple in pass-band and stop-band, the steepest of its order",
+        SOURCE,
+        (RESPONSE, ORDER, EDGES, RIPPLE, STOPBAND),
+        elliptic,
+        conflicts=_elliptic_conflicts,
+    ),
+    Kind(
+        "bessel",
+        "flattest delay (of the prototype), hardly any overshoot; -3.01 dB at the edges unless norm says otherwise",
+        SOURCE,
+        (RESPONSE, BESSEL_ORDER, EDGES, NORM),
+        bessel,
+        conflicts=edge_conflicts,
+    ),
+)

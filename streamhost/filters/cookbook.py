@@ -7,6 +7,8 @@ from math import cos, inf, isfinite, log, pi, sin, sinh, sqrt
 
 from streamhost.errors import FilterError
 from streamhost.filters.filter import Filter
+from streamhost.filters.kind import Kind, Values
+from streamhost.filters.parameters import Above, Between, Frequency, Parameter
 
 Triple = tuple[float, float, float]
 
@@ -127,3 +129,59 @@ def _section(rate: float, b: Triple, a: Triple) -> Filter:
             "the pass-band or the bell is too wide, or the frequency too near half the rate."
         )
     return Filter.from_coefficients(b, a, rate=rate)
+
+
+def _slope_conflicts(values: Values) -> list[str]:
+    if "slope" not in values:
+        return []
+    limit = steepest_slope(values["gain_db"])
+    if values["slope"] < limit:
+        return []
+    return [f"slope is {values['slope']:g}; at {values['gain_db']:g} dB it must be below {limit:g}"]
+
+
+SOURCE = "W3C Audio Working Group Note, Audio EQ Cookbook, 2021"
+
+FREQUENCY = Parameter("frequency", "Hz", "cut-off or centre", Frequency())
+Q = Parameter("q", "", "quality factor", Above(0.0))
+FLAT_Q = Parameter("q", "", "quality factor; 1/sqrt(2) is maximally flat", Above(0.0), default=1 / sqrt(2))
+# A factor of a million: no equalizer asks for more (common practice), and a larger figure is most often
+# a frequency or a factor in the wrong place.
+GAIN = Parameter("gain_db", "dB", "gain at the centre or on the shelf", Between(-120.0, 120.0))
+# Ten octaves is 20 Hz to 20 kHz.
+BANDWIDTH = Parameter("bandwidth", "octaves", "between the points at half the gain in dB", Above(0.0, 10.0))
+SLOPE = Parameter("slope", "", "shelf slope, 1 the steepest without overshoot", Above(0.0))
+
+KINDS = (
+    Kind("low-pass", "passes below the frequency", SOURCE, (FREQUENCY, FLAT_Q), low_pass),
+    Kind("high-pass", "passes above the frequency", SOURCE, (FREQUENCY, FLAT_Q), high_pass),
+    Kind("band-pass", "passes about the frequency, 0 dB there", SOURCE, (FREQUENCY, Q), band_pass),
+    Kind("notch", "takes the frequency out", SOURCE, (FREQUENCY, Q), notch),
+    Kind("all-pass", "turns the phase, 180 degrees at the frequency", SOURCE, (FREQUENCY, Q), all_pass),
+    Kind(
+        "peak",
+        "raises or lowers a bell about the frequency",
+        SOURCE,
+        (FREQUENCY, GAIN, Q, BANDWIDTH),
+        peak,
+        alternatives=("q", "bandwidth"),
+    ),
+    Kind(
+        "low-shelf",
+        "raises or lowers what is below the frequency, half the gain there",
+        SOURCE,
+        (FREQUENCY, GAIN, Q, SLOPE),
+        low_shelf,
+        alternatives=("q", "slope"),
+        conflicts=_slope_conflicts,
+    ),
+    Kind(
+        "high-shelf",
+        "raises or lowers what is above the frequency, half the gain there",
+        SOURCE,
+        (FREQUENCY, GAIN, Q, SLOPE),
+        high_shelf,
+        alternatives=("q", "slope"),
+        conflicts=_slope_conflicts,
+    ),
+)

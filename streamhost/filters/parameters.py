@@ -51,6 +51,35 @@ class Between:
 
 
 @dataclass(frozen=True)
+class Inside:
+    """A number between two limits, both left out."""
+
+    low: float
+    high: float
+
+    def allowed(self, rate: float | None) -> str:
+        return f"a number above {self.low:g} and below {self.high:g}"
+
+    def taken(self, value: object, rate: float | None) -> float | None:
+        number = _float(value)
+        return number if number is not None and self.low < number < self.high else None
+
+
+@dataclass(frozen=True)
+class Choice:
+    """One of some numbers."""
+
+    numbers: tuple[float, ...]
+
+    def allowed(self, rate: float | None) -> str:
+        return "one of " + ", ".join(f"{number:g}" for number in self.numbers)
+
+    def taken(self, value: object, rate: float | None) -> float | None:
+        number = _float(value)
+        return number if number in self.numbers else None
+
+
+@dataclass(frozen=True)
 class Count:
     """A whole number from one limit to another, both allowed."""
 
@@ -115,7 +144,7 @@ class Parameter:
     unit: str
     meaning: str
     range: Range
-    default: float | None = None
+    default: object = None
 
 
 def _float(value: object) -> float | None:

@@ -13,6 +13,7 @@ from streamhost.presets.tables import (
     LATER,
     CodesTable,
     CoefficientsTable,
+    EquationTable,
     RootsTable,
     SectionsTable,
     Text,
@@ -92,8 +93,11 @@ def _parameters_good(mistakes: Mistakes, kind: str, given: Table, path: Path, ra
     return len(mistakes.found) == before
 
 
-def _by_equation(mistakes: Mistakes, table: Table, path: Path, rate: float | None) -> None:
-    mistakes.add((*path, "equation"), f"equation {LATER['equation']}")
+def _by_equation(mistakes: Mistakes, table: Table, path: Path, rate: float | None) -> Filter | None:
+    values = read_whole(mistakes, table, path, EquationTable)
+    if values is None:
+        return None
+    return _made(mistakes, path, lambda: Filter.from_equation(values["equation"], rate=rate or 1.0))
 
 
 def _by_coefficients(mistakes: Mistakes, table: Table, path: Path, rate: float | None) -> Filter | None:
@@ -132,12 +136,15 @@ def _complex(roots: list[float | tuple[float, float]]) -> list[complex]:
 
 
 def _made(mistakes: Mistakes, path: Path, make: Callable[[], Filter]) -> Filter | None:
-    """The filter, or None with the filter's own refusal put on the line of the key or element that it begins with."""
+    """The filter, or None with the filter's own refusal put on the line of the key or element that it begins with.
+
+    Below the first line of a refusal stands only what marks the place in an equation, and a preset tells one line.
+    """
     try:
         return make()
     except FilterError as error:
-        text = str(error)
-        named = re.match(r"(?:a0 of )?(b|a|sections|codes|word|zeros|poles|factor)((?:\[\d+\])*)", text)
+        text = str(error).partition("\n")[0]
+        named = re.match(r"(?:a0 of )?(b|a|sections|codes|word|zeros|poles|factor|equation)((?:\[\d+\])*)", text)
         inside: Path = (named[1], *map(int, re.findall(r"\d+", named[2]))) if named else ()
         mistakes.add((*path, *inside), text)
         return None

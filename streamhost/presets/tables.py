@@ -14,7 +14,6 @@ from streamhost.presets.mistakes import Mistakes
 
 LATER = {
     "rates": "is not offered yet: state rate, one number, and vary it from the command line.",
-    "equation": "is not offered yet: state the filter by kind, by b and a, by sections, or by zeros, poles and factor.",
     "channels": "is not offered yet: a filter is the same on all channels.",
 }
 
@@ -109,6 +108,12 @@ class LimitsTable(msgspec.Struct, kw_only=True):
     band_hz: Numbers | None = None
     noise_dbfs: Number | None = None
     response_deviation_db: Number | None = None
+
+
+class EquationTable(msgspec.Struct, kw_only=True):
+    """A [[filter]] given as a difference equation."""
+
+    equation: Text
 
 
 class CoefficientsTable(msgspec.Struct, kw_only=True):
