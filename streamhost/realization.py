@@ -14,7 +14,7 @@ from streamhost.diagram.polynomials import determinant
 from streamhost.errors import FilterError, FormatError, RequestError
 from streamhost.filters import Filter, Polynomials
 from streamhost.filters.stability import unstable_poles
-from streamhost.formats import Fixed, Format, named_format, parse_word
+from streamhost.formats import Fixed, Float, Format, named_format, parse_word
 from streamhost.program.program import Program
 from streamhost.program.run import lower
 from streamhost.structures import Built, build
@@ -50,6 +50,9 @@ class Realization:
         self._memory: Memory | None = None
         self._kernels: dict[bool, Kernel] = {}
 
+    def __repr__(self) -> str:
+        return f"<Realization {self.form} · {self.decomposition} · {self.format.label}, {self.diagram.counts()}>"
+
     @property
     def form(self) -> str:
         return self.built.form
@@ -79,7 +82,10 @@ class Realization:
             and max(self.format.input.word.bits, self.format.output.word.bits) > MOST_REAL_BITS
         ):
             raise RequestError(f"Samples of {self.format.input.word} do not fit a float64. Use process_codes.")
-        return self._run(np.asarray(x, dtype=np.float64), codes=False)
+        samples = np.asarray(x)
+        if samples.dtype.kind not in "fiub":
+            raise RequestError(f"process takes real numbers, not {samples.dtype}.")
+        return self._run(samples.astype(np.float64, copy=False), codes=False)
 
     def process_codes(self, codes: ArrayLike) -> NDArray[np.int64]:
         """Filter a block of integers: codes of the input's word in, codes of the output's word out.
@@ -90,7 +96,7 @@ class Realization:
         if not isinstance(self.format, Fixed):
             raise RequestError(f"{self.format.label} has no codes. Use process.")
         array = np.asarray(codes)
-        if array.dtype.kind not in "iu":
+        if array.size and array.dtype.kind not in "iu":
             raise RequestError(f"process_codes takes integers, not {array.dtype}.")
         word = self.format.input.word
         if array.size and not word.low <= int(array.min()) <= int(array.max()) <= word.high:
@@ -108,8 +114,8 @@ class Realization:
         """What happened since reset."""
         return tally(self.program, self._memory.meters if self._memory is not None else None)
 
-    def source(self, *, codes: bool = False, metered: bool = False) -> str:
-        """The readable source of the kernel that runs this realization."""
+    def source(self, *, codes: bool = False, metered: bool = True) -> str:
+        """The readable source of the kernel that `process` runs, or of the one for codes, or without meters."""
         from streamhost.program.native.kernel import Variant, kernel_source
 
         return kernel_source(self.program, Variant(codes=codes, metered=metered))
@@ -134,9 +140,8 @@ class Realization:
         if self._memory is None:
             self._memory = self.memory(channels)
         if self._memory.channels != channels:
-            raise RequestError(
-                f"The blocks before had {self._memory.channels} channels, this one has {channels}. reset() first."
-            )
+            before = self._memory.channels
+            raise RequestError(f"Number of channels: {before} in the blocks before, {channels} in this one. reset() first.")
         y = np.empty((frames, len(self.outputs) * channels), block.dtype)
         marks = np.zeros(block.shape, np.uint8)
         self._kernel(codes).call(self._memory, np.ascontiguousarray(block), y, marks=marks, trace=no_trace())
@@ -178,6 +183,10 @@ def realize(
     nearest, ordering outward, scaling none; a filter given as sections keeps them.
     Raises FilterError for a filter that is unstable as asked (unless allowed), StructureError, FormatError.
     """
+    if not isinstance(filter, Filter):
+        raise FilterError(f"realize takes a Filter, not {type(filter).__name__}. streamhost.design and Filter.from_... make one.")
+    if not isinstance(format, Fixed | Float | str):
+        raise FormatError(f"format = {format!r} is no Fixed, no Float and no name of an arithmetic.")
     if (poles := filter.unstable_poles()) and not allow_unstable:
         raise FilterError(
             f"The filter as asked is unstable: {poles} of its poles lie on or outside the unit circle. State "

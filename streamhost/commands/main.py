@@ -3,7 +3,9 @@
 import errno
 import io
 import os
+import signal
 import sys
+import threading
 import traceback
 from collections.abc import Callable, Sequence
 from contextlib import suppress
@@ -43,6 +45,7 @@ COMMANDS = {
         "streamhost.commands.compare:compare",
         "All realizations of one filter on one signal: a table, the audio, the differences.",
     ),
+    "draw": Entry("streamhost.commands.draw:draw", "The block diagram of a realization, as text or SVG."),
     "forms": Entry("streamhost.commands.forms:forms", "What can be chosen; one form explained."),
 }
 
@@ -104,7 +107,16 @@ def main(arguments: Sequence[str] | None = None) -> int:
         if hasattr(stream, "reconfigure"):
             stream.reconfigure(errors="replace")  # a terminal without the minus sign shows a mark instead
     given = list(sys.argv[1:] if arguments is None else arguments)
+    _unwind_when_told_to_end()
     return _guarded(lambda: _run(given))
+
+
+def _unwind_when_told_to_end() -> None:
+    """SIGTERM and a closed terminal end the work as Ctrl-C does, so that nothing half-written stays."""
+    if threading.current_thread() is threading.main_thread():
+        for name in ("SIGTERM", "SIGHUP"):
+            if hasattr(signal, name):
+                signal.signal(getattr(signal, name), signal.default_int_handler)
 
 
 def _run(arguments: list[str]) -> int:

@@ -153,5 +153,6 @@ class _Judge:
             return ""
         lag, earlier, later = beyond[0]
         if earlier == later:
-            return f"what {self.expected[later].label} drops is correlated with what it dropped {lag} frame{'s' * (lag > 1)} before"
+            frames = f"{lag} frame{'s' * (lag > 1)}"
+            return f"what {self.expected[later].label} drops is correlated with what it dropped {frames} before"
         return f"what {self.expected[earlier].label} and {self.expected[later].label} drop is correlated"

@@ -14,6 +14,7 @@ from streamhost.presets.lines import scan
 from streamhost.presets.mistakes import Mistakes, listed
 from streamhost.presets.preset import Preset, Source
 from streamhost.presets.tables import LimitsTable, PresetTable, StructureTable, read_table
+from streamhost.shipped import names, resolve
 
 LARGEST_BYTES = 1_000_000
 UNNAMED = "preset"
@@ -32,11 +33,13 @@ _IN_OUR_WORDS = (
 
 
 def load_preset(path: str | Path) -> Preset:
-    """The preset in a file of at most 1 MB.
+    """The preset in a file of at most 1 MB, or the shipped one of that name.
 
     Raises PresetError with every mistake of the file, MachineError where the file cannot be read.
     """
     path = Path(path)
+    if not path.exists() and path.as_posix() in names("preset"):
+        path = resolve(path, "preset")
     content = _content(path)
     if len(content) > LARGEST_BYTES:
         raise PresetError([f"{path}: the file is larger than 1 MB, which no preset is."])

@@ -20,11 +20,10 @@ from streamhost.program.native.kernel import compile_kernel, no_marks, no_trace
 FRAMES, REPEATS, PROCESSES = 4096, 400, 7
 
 FIRST_CALL = """
-import time, numpy as np, streamhost as sh
+import time, numpy as np, numba, streamhost as sh
 from streamhost.program.native.kernel import compile_kernel
-filter = sh.Filter.from_sections({sections!r}, rate=48000)
+filter = {filter}
 realization = sh.realize(filter, form={form!r}, decomposition={decomposition!r}, format={format!r})
-import numba
 start = time.perf_counter()
 kernel = compile_kernel(realization.program)
 from streamhost.program.native.kernel import no_marks, no_trace
@@ -65,7 +64,8 @@ def against_sosfilt(type_name: str, channels: int) -> None:
 
 
 def first_call(label: str, **choices: object) -> None:
-    """Seconds to a first block in fresh processes, with an empty kernel cache and with a filled one."""
+    """Seconds from a realization to its first block in fresh processes that have imported numba: with an empty kernel
+    cache and with a filled one. Medians of 3 and 6."""
     cold, warm = [], []
     for _ in range(3):
         with tempfile.TemporaryDirectory() as folder:
@@ -95,7 +95,11 @@ def main() -> None:
     rows = [[*map(float, s.b), *map(float, s.a)] for s in sh.realize(order_8()).built.sections]
     for format in ("float32", "float64", "16x16+40"):
         sections = rows if format != "16x16+40" else [[0.25, 0.5, 0.25, *row[3:]] for row in rows]
-        first_call(f"order-8 cascade, {format}", sections=sections, form="transposed-2", decomposition="cascade", format=format)
+        first_call(f"order-8 cascade, {format}", filter=f"sh.Filter.from_sections({sections!r}, rate=48000)",
+                   form="transposed-2", decomposition="cascade", format=format)
+    taps = "sh.Filter.from_coefficients(np.random.default_rng(1).uniform(-0.05, 0.05, 1000), rate=48000)"
+    for format in ("float32", "float64"):
+        first_call(f"1,000-tap FIR, {format}", filter=taps, form="direct-1", decomposition="whole", format=format)
     help_start()
 
 

@@ -47,7 +47,7 @@ class FixedPrinter:
         imports = IMPORTS
         if has_dither(self.program):
             imports = "from numba import njit\n" + IMPORTS + "\n" + MIX
-        title = f"{self.format.label}: {len(self.nodes)} nodes, {len(self.program.roundings)} roundings."
+        title = f"{self.format.label}: nodes {len(self.nodes)}, roundings {len(self.program.roundings)}."
         header(self.text, self.program, self.variant, imports, "int64", title)
         open_loops(self.text, self.program, self.variant, "{}")
         if self.variant.metered and any(isinstance(node, Taps) for node in self.nodes):
