@@ -84,7 +84,7 @@ class _Plan:
         if self.rng.random() < 0.1:
             return self.rng.choice((0.0, 1.0, -1.0)) if size >= 1.0 else 0.0
         if self.step is None:
-            return self.rng.randint(-(2**50), 2**50) * 2.0**-50 * 1.9 * size
+            return self.rng.randint(-(2**20), 2**20) * 2.0**-20 * 1.9 * size
         most = round(2 / self.step) - 1
         return self.step * int(self.rng.randint(-most, most) * size)
 

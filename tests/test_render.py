@@ -358,8 +358,9 @@ def test_a_disk_without_room_is_the_machines_failure(tmp_path: Path, capsys: pyt
     assert sorted(file.name for file in tmp_path.iterdir()) == ["first.wav", "in.wav", "preset.toml"]
 
 
+@pytest.mark.parametrize("number", [signal.SIGINT, signal.SIGTERM, signal.SIGHUP])
 @pytest.mark.parametrize("there", [False, True])
-def test_control_c_leaves_nothing_half_written(tmp_path: Path, there: bool) -> None:
+def test_an_end_by_signal_leaves_nothing_half_written(tmp_path: Path, there: bool, number: signal.Signals) -> None:
     """Of a whole process that is stopped in the middle of its work: the partial file is there, the output is not."""
     given = source(tmp_path, 48000 * 60, 8)
     out = tmp_path / "out.wav"
@@ -381,7 +382,7 @@ def test_control_c_leaves_nothing_half_written(tmp_path: Path, there: bool) -> N
     partial = tmp_path / f".out.wav.partial-{process.pid}"
     while process.poll() is None and not (partial.exists() and partial.stat().st_size > 100_000):
         time.sleep(0.001)
-    os.kill(process.pid, signal.SIGINT)
+    os.kill(process.pid, number)
     said, told = process.communicate()
     assert (process.returncode, said) == (130, "")
     assert told.endswith("Interrupted.\n")

@@ -56,6 +56,7 @@ class Builder:
         self._slots: list[Slot] = []
         self._values: list[np.ndarray[tuple[int], np.dtype[np.float64]]] = []
         self._labels: set[str] = set()
+        self._numbers: dict[str, int] = {}
         self._places: dict[int, Place] = {}
         self._trunks: list[Trunk] = []
 
@@ -189,11 +190,13 @@ class Builder:
         return ref.index
 
     def _label(self, wanted: str, stem: str) -> str:
-        label, count = wanted or stem, 1
+        stem = wanted or stem
+        label, count = stem, self._numbers.get(stem, 1)
         while label in self._labels:
             count += 1
-            label = f"{wanted or stem}_{count}"
+            label = f"{stem}_{count}"
         self._labels.add(label)
+        self._numbers[stem] = count
         return label
 
     def _slot(self, slot: Slot, value: ArrayLike) -> int:

@@ -1,8 +1,10 @@
 """A diagram: nodes, coefficient slots, and the coefficients' values beside them."""
 
 import hashlib
+from collections.abc import Collection
 from dataclasses import dataclass, replace
 from functools import cached_property
+from importlib import import_module
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -92,6 +94,15 @@ class Diagram:
         from streamhost.diagram.questions import response_ends
 
         return response_ends(self)
+
+    def svg(self, *, rounded: Collection[int] = ()) -> str:
+        """The block diagram as the text of an SVG file; `rounded`: the nodes that are marked as rounded.
+
+        DiagramError where the places that the diagram's maker gave leave no room for the wires.
+        """
+        # By name, since drawings are made of diagrams and not the other way round.
+        text: str = import_module("streamhost.drawing").svg(self, rounded=rounded)
+        return text
 
     def state_space(self, channel: int = 0) -> "StateSpace":
         """A, B, C, D of one channel: x[n+1] = A x[n] + B u[n], y[n] = C x[n] + D u[n]."""

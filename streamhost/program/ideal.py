@@ -4,7 +4,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from streamhost.diagram.norms import norms_from_input
+from streamhost.diagram.norms import powers_from_input
 from streamhost.formats import Fixed, Float
 from streamhost.program.float_errors import float_spectrum
 from streamhost.program.floating import lower_float
@@ -45,7 +45,7 @@ def ideal_of(program: Program) -> Ideal:
 
 def _noise_at_full_scale(program: Program, grid: FloatArray) -> float:
     """Estimated noise power of a floating-point program for white noise at full scale."""
-    return float(np.mean(float_spectrum(program, norms_from_input(program.diagram).l2, grid)))
+    return float(np.mean(float_spectrum(program, np.sqrt(powers_from_input(program.diagram)), grid)))
 
 
 def ideal_program(program: Program) -> Program:
