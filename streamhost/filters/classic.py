@@ -58,9 +58,9 @@ def elliptic(
 def bessel(rate: float, *, response: str, order: int, frequency: Frequencies, norm: str) -> Filter:
     """What the edges mean is said by `norm`.
 
-    "magnitude": -3.01 dB there. "phase": the asymptotes of the prototype's response meet there, as they do in a
-    Butterworth filter, and a low-pass has half its phase there. "delay": the prototype's delay at 0 Hz is 1 / (2 pi
-    frequency), of the prewarped frequency. The transform bends the delay: flat it is well below half the rate only.
+    "magnitude": -3.01 dB there. "phase": the asymptotes of the prototype's gain meet there, as a Butterworth filter's
+    do. "delay": the prototype's delay at 0 Hz is 1 / (2 pi f), f the prewarped edge. The transform bends the delay: it
+    is flat well below half the rate only.
     """
     from scipy import signal
 

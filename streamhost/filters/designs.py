@@ -3,11 +3,11 @@
 from collections.abc import Mapping
 
 from streamhost.errors import FilterError, nearest
-from streamhost.filters import classic, cookbook, entry, fir, simple
+from streamhost.filters import classic, cookbook, curves, entry, fir, simple
 from streamhost.filters.filter import Filter
 from streamhost.filters.kind import Kind
 
-KINDS: Mapping[str, Kind] = {kind.name: kind for family in (cookbook, classic, simple, fir) for kind in family.KINDS}
+KINDS: Mapping[str, Kind] = {kind.name: kind for family in (cookbook, classic, simple, fir, curves) for kind in family.KINDS}
 
 
 def design(kind: str, *, rate: object, **parameters: object) -> Filter:
@@ -50,7 +50,7 @@ def _values(spec: Kind, given: Mapping[str, object], rate: float | None) -> tupl
     """What the formulas are called with, and everything that is wrong with what was given."""
     names = [parameter.name for parameter in spec.parameters]
     problems = [
-        f'parameter "{name}" is unknown.{nearest(name, names)} Known are {", ".join(names)}'
+        f'parameter "{name}" is unknown.{nearest(name, names)} Known are {", ".join(names) or "none"}'
         for name in given
         if name not in names
     ]

@@ -1,7 +1,7 @@
 """Linear-phase filters: symmetric taps, symmetric to the last bit, so that a structure may fold them.
 
-The delay is (taps - 1) / 2 frames. Even numbers of taps force a zero at half the rate, so that what passes there needs
-an odd number.
+The delay is half of one less than the number of taps. Even numbers of taps force a zero at half the rate, so that what
+passes there needs an odd number.
 """
 
 import numpy as np
@@ -19,6 +19,10 @@ Frequencies = float | tuple[float, float]
 WINDOWS = ("rectangular", "hann", "hamming", "blackman")
 # What rounding leaves of a tap that is 0, as every second one of a filter at a quarter of the rate.
 NOISE = 2.0**-50
+
+MOST_EXCHANGES = 250
+# Points for each free tap; with the usual 16 the ripples differ by some percent.
+GRID_DENSITY = 64
 
 
 def windowed(
@@ -71,7 +75,15 @@ def equiripple(
 
     bands, wanted = _bands(rate, response, frequency, stop_frequency)
     weights = _weights(wanted, stop_weight)
-    found = signal.remez(taps, bands, wanted, weight=weights, fs=rate, maxiter=MOST_EXCHANGES)
+    try:
+        found = signal.remez(
+            taps, bands, wanted, weight=weights, fs=rate, maxiter=MOST_EXCHANGES, grid_density=GRID_DENSITY
+        )
+    except ValueError:
+        raise FilterError(
+            "the exchange algorithm does not converge: the ripple is too small for float64. "
+            "Fewer taps, or bands that lie nearer to each other, help."
+        ) from None
     return _filter(rate, np.asarray(found, np.float64))
 
 
@@ -87,7 +99,7 @@ def _ideal(response: str, edges: Taps, taps: int) -> Taps:
     """Taps of the ideal response; edges as parts of half the rate."""
     time = np.arange(taps) - (taps - 1) / 2
     low = [edge * np.sinc(edge * time) for edge in edges]
-    # `edge_conflicts` and `_parity` leave only odd numbers of taps to the responses that need the impulse.
+    # The responses that need the impulse have odd numbers of taps: `_parity`.
     impulse = (time == 0).astype(np.float64)
     ideal = {
         "low-pass": low[0],
@@ -174,7 +186,6 @@ def _odd_conflicts(values: Values) -> list[str]:
     return problems
 
 
-MOST_EXCHANGES = 250
 
 WINDOW_SOURCE = "window method; Oppenheim & Schafer, ch. 7"
 LEAST_SQUARES_SOURCE = "least squares of the error; Mitra, least mean-square error design of linear-phase filters"

@@ -45,9 +45,11 @@ class Mistakes:
 
 
 def listed(names: Iterable[str]) -> str:
-    """'a, b or c'."""
+    """'a, b or c'; of no names 'nothing'."""
     names = tuple(names)
-    return names[0] if len(names) == 1 else f"{', '.join(names[:-1])} or {names[-1]}"
+    if len(names) < 2:
+        return names[0] if names else "nothing"
+    return f"{', '.join(names[:-1])} or {names[-1]}"
 
 
 def place_text(path: Path) -> str:

@@ -32,29 +32,33 @@ _IN_OUR_WORDS = (
 )
 
 
-def load_preset(path: str | Path) -> Preset:
-    """The preset in a file of at most 1 MB, or the shipped one of that name.
+def load_preset(path: str | Path, *, name: str | None = None) -> Preset:
+    """The preset in a file of at most 1 MB, or the shipped one of that name. `name` is what messages call it.
 
     Raises PresetError with every mistake of the file, MachineError where the file cannot be read.
     """
     path = Path(path)
-    if not path.exists() and path.as_posix() in names("preset"):
+    name = name or str(path)
+    if path.as_posix() in names("preset") and not path.exists():
         path = resolve(path, "preset")
     content = _content(path)
     if len(content) > LARGEST_BYTES:
-        raise PresetError([f"{path}: the file is larger than 1 MB, which no preset is."])
+        raise PresetError([f"{name}: the file is larger than 1 MB, which no preset is."])
     try:
         text = content.decode("utf-8-sig")
     except UnicodeDecodeError as error:
         line = content.count(b"\n", 0, error.start) + 1
         byte = f"0x{content[error.start]:02X}"
-        raise PresetError([f"{path}:{line}: the file is no text in UTF-8: the byte {byte} is none."]) from None
-    return parse_preset(text, path)
+        raise PresetError([f"{name}:{line}: the file is no text in UTF-8: the byte {byte} is none."]) from None
+    return _parsed(text, name, path)
 
 
 def parse_preset(text: str, path: Path | None = None) -> Preset:
     """The preset that a text states; raises PresetError with all its mistakes. `path` only names the text."""
-    name = str(path) if path else UNNAMED
+    return _parsed(text, str(path) if path else UNNAMED, path)
+
+
+def _parsed(text: str, name: str, path: Path | None) -> Preset:
     if not text.strip():
         raise PresetError([f"{name}: the preset is empty: it states at least rate and one [[filter]]."])
     lines = scan(text)

@@ -1,0 +1,54 @@
+"""The mask of IEC 61260-1:2014 for octave bands and parts of them, class 1 (Table 1, as quoted)."""
+
+from collections.abc import Iterator, Sequence
+from itertools import pairwise
+from math import inf, log10
+
+from streamhost.filters.curves.bands import OCTAVE_RATIO, band_edges, exact_hz
+from streamhost.filters.curves.goal import Goal
+
+# x and attenuation in dB at octave_ratio^x of the mid-band: at most, inside; at least, outside.
+INSIDE = ((0.0, 0.4), (1 / 8, 0.5), (1 / 4, 0.7), (3 / 8, 1.4), (1 / 2, 5.3))
+OUTSIDE = ((1 / 2, 1.2), (1.0, 16.6), (2.0, 40.5), (3.0, 60.0), (4.0, 70.0), (5.0, 70.0), (6.0, 70.0))
+LEAST_INSIDE = -0.4
+STEPS = 8
+"""Points from one breakpoint to the next: between them the limits run straight over the logarithm of frequency."""
+
+
+def band_goals(nominal_hz: float, bands_per_octave: int, order: int) -> tuple[Goal, ...]:
+    """Goals relative to the gain at the exact mid-band, on both sides, rising; the analogue filter is Butterworth's."""
+    goals = [
+        Goal(f, _butterworth(f, nominal_hz, bands_per_octave, order), 0.0, lower, upper)
+        for ratio, lower, upper in _mask(bands_per_octave)
+        for f in {exact_hz(nominal_hz) * ratio, exact_hz(nominal_hz) / ratio}
+    ]
+    return tuple(sorted(goals, key=lambda goal: (goal.hertz, goal.upper_db)))
+
+
+def breakpoint_ratio(x: float, bands_per_octave: int) -> float:
+    """f / mid-band at octave_ratio^x, drawn together for a part of an octave (IEC 61260-1, formula from memory)."""
+    part = (OCTAVE_RATIO ** (0.5 / bands_per_octave) - 1) / (OCTAVE_RATIO**0.5 - 1)
+    return float(1 + part * (OCTAVE_RATIO**x - 1))
+
+
+def _mask(bands_per_octave: int) -> Iterator[tuple[float, float, float]]:
+    """(ratio, lowest gain, highest gain) at and above the mid-band; the edge itself stands on both sides."""
+    for ratio, most in _interpolated(INSIDE, bands_per_octave):
+        yield ratio, -most, -LEAST_INSIDE
+    for ratio, least in _interpolated(OUTSIDE, bands_per_octave):
+        yield ratio, -inf, -least
+
+
+def _interpolated(corners: Sequence[tuple[float, float]], bands_per_octave: int) -> Iterator[tuple[float, float]]:
+    points = [(log10(breakpoint_ratio(x, bands_per_octave)), limit) for x, limit in corners]
+    for (start, first), (end, last) in pairwise(points):
+        for step in range(STEPS):
+            part = step / STEPS
+            yield 10 ** (start + part * (end - start)), first + part * (last - first)
+    yield 10 ** points[-1][0], points[-1][1]
+
+
+def _butterworth(hertz: float, nominal_hz: float, bands_per_octave: int, order: int) -> float:
+    low, high = band_edges(nominal_hz, bands_per_octave)
+    detuning = (hertz - low * high / hertz) / (high - low)
+    return float(-10 * log10(1 + detuning ** (2 * order)))
