@@ -188,8 +188,9 @@ def realize(
     if not isinstance(format, Fixed | Float | str):
         raise FormatError(f"format = {format!r} is no Fixed, no Float and no name of an arithmetic.")
     if (poles := filter.unstable_poles()) and not allow_unstable:
+        lie = "lies" if poles == 1 else "lie"
         raise FilterError(
-            f"The filter as asked is unstable: {poles} of its poles lie on or outside the unit circle. State "
+            f"The filter as asked is unstable: {poles} of its poles {lie} on or outside the unit circle. State "
             f"allow_unstable = true to run it all the same."
         )
     arithmetic = named_format(format) if isinstance(format, str) else format

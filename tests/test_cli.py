@@ -104,8 +104,8 @@ def test_a_command_module_imports_nothing_heavy_at_its_top(name):
 @pytest.mark.parametrize(
     ("arguments", "start"),
     [
-        (["comprae"], 'streamhost: There is no command "comprae": render, compare, forms. Did you mean "compare"?'),
-        (["xyz"], 'streamhost: There is no command "xyz": render, compare, forms. (streamhost --help'),
+        (["comprae"], f'streamhost: There is no command "comprae": {", ".join(COMMANDS)}. Did you mean "compare"?'),
+        (["xyz"], f'streamhost: There is no command "xyz": {", ".join(COMMANDS)}. (streamhost --help'),
         (["--versoin"], "streamhost: No such option"),
     ],
 )

@@ -1,11 +1,14 @@
 """`streamhost compare`: the main job."""
 
+import errno
 import json
+import os
 
 import numpy as np
 import pytest
 
 from streamhost import load_preset, realize
+from streamhost.commands.compare_files import LONGEST_VARIED
 from streamhost.commands.main import main
 from streamhost.files import AudioWriter, read_all
 from streamhost.measure import Measurement
@@ -77,10 +80,11 @@ def test_the_shipped_presets_on_the_shipped_audio(tmp_path, capsys):
     shown = capsys.readouterr().out
     document = json.loads(figures.read_text(encoding="utf-8"))
     assert list(document) == ["rate", "input", "seed", "realizations"]
-    assert (document["rate"], document["seed"]) == (RATE, 1)
+    assert (document["rate"], document["input"], document["seed"]) == (RATE, "plucked", 1)
     assert len(document["realizations"]) == len(names) >= 6
     for number, (name, row) in enumerate(zip(names, document["realizations"], strict=True), 1):
         assert list(row) == KEYS
+        assert row["preset"] == name
         assert row["title"] in shown
         assert row["output"] == str(folder / f"{number}-{name}.wav")
         assert row["difference"] == str(folder / f"{number}-{name}-difference.wav")
@@ -91,6 +95,10 @@ def test_the_shipped_presets_on_the_shipped_audio(tmp_path, capsys):
     naive = by_name["rumble-naive-16-bit"]
     assert naive["unstable"] == 1
     assert naive["response_deviation_db"] is naive["noise_dbfs"] is naive["noise_predicted_dbfs"] is None
+    assert naive["white_model_holds"] is None
+    assert "3 has no noise figure and no verdict on the white model: with its coefficients rounded" in shown
+    assert "what the output drops" in shown
+    assert ".q0" not in shown
     assert "3 is unstable with its coefficients rounded: 1 pole" in shown
     assert "2 of 2 with limits meet every limit; 3, 4, 5, 6 state none." in shown
     # 16-bit state: -33.6 dBFS in the band and -29.5 over all are what the closed form of 1/A gives
@@ -149,6 +157,33 @@ def test_a_family_of_one_preset(preset, recording, capsys):
     for row in rows:
         assert row["noise_dbfs"] == pytest.approx(row["noise_predicted_dbfs"], abs=max(0.5, row["noise_interval_db"]))
     assert document["seed"] is None
+
+
+def test_what_was_varied_tells_rows_and_files_apart(preset, recording, tmp_path, capsys):
+    title = "A title that would fill the whole column of the table by itself"
+    folder = tmp_path / "out"
+    assert main(["compare", preset("mine", title=title), "--input", recording, "--output", str(folder),
+                 "--vary", "structure.form=direct-1,direct-2", "--vary", "format.rounding=half-up,floor",
+                 "--vary", "filter.gain_db=-6"]) == 0
+    varied = [("direct-1", "half-up"), ("direct-1", "floor"), ("direct-2", "half-up"), ("direct-2", "floor")]
+    rows = [line for line in capsys.readouterr().out.splitlines() if "A title" in line]
+    for (form, rounding), row in zip(varied, rows, strict=True):
+        assert f"…, {form}, {rounding}, gain_db -6  " in row
+    assert sorted(path.name for path in folder.iterdir()) == sorted(
+        f"{number}-mine-{form}-{rounding}-gain_db--6{kind}.wav"
+        for number, (form, rounding) in enumerate(varied, 1) for kind in ("", "-difference"))
+
+
+def test_varied_values_make_names_that_a_disk_takes(preset, recording, tmp_path):
+    folder = tmp_path / "out"
+    states = '{ word = "Q1.31", rounding = "floor" },"Q1.23"'
+    assert main(["compare", preset("mine"), "--input", recording, "--output", str(folder),
+                 "--vary", f"format.state={states}", "--vary", f"title={'a/b:' * 40}"]) == 0
+    names = sorted(path.name for path in folder.iterdir())
+    assert len(names) == 4
+    assert names[0].startswith("1-mine-state-word-Q1.31-rounding-floor-a-b-a-b-")
+    assert names[2].startswith("2-mine-Q1.23-a-b-a-b-")
+    assert max(map(len, names)) <= len("1-mine-difference.wav") + LONGEST_VARIED
 
 
 def test_the_same_command_gives_the_same_figures(preset, recording, capsys):
@@ -211,6 +246,14 @@ def test_limits(noise, deviation, status, said, preset, recording, capsys):
     assert "seed 1" in shown
 
 
+def test_misses_are_said_beside_figures_on_standard_output(preset, recording, capsys):
+    name = preset(more="\n[limits]\nnoise_dbfs = -140.0\n")
+    assert main(["compare", name, "--input", recording, "--json", "-"]) == 1
+    captured = capsys.readouterr()
+    assert json.loads(captured.out)["seed"] == 1
+    assert "1 misses noise_dbfs: −" in captured.err
+
+
 # Requests that are wrong
 
 
@@ -237,10 +280,21 @@ def test_a_missing_recording_is_refused(preset, capsys):
     assert "no shipped recording of this name" in refusal(capsys, preset(), "--input", "nowhere.wav")
 
 
-def test_a_mistake_in_a_format_names_the_preset(preset, recording, capsys):
-    said = refusal(capsys, preset(format='signal = "Q1.15"\ncoefficients = "Q1.15"'), "--input", recording)
-    assert "peak.toml" in said
-    assert "does not fit Q1.15" in said
+def test_what_cannot_be_realized_is_told_of_all_presets_at_once(preset, recording, tmp_path, capsys):
+    narrow = preset("narrow", format='signal = "Q1.15"\ncoefficients = "Q1.15"')
+    unstable = tmp_path / "unstable.toml"
+    unstable.write_text("rate = 48000\n[[filter]]\nb = [1.0]\na = [1.0, -2.0]\n", encoding="utf-8")
+    first, second = refusal(capsys, narrow, str(unstable), preset(), "--input", recording).splitlines()
+    assert first.startswith(f'{narrow}:16: coefficients = "Q1.15": The coefficient b1')
+    assert second.startswith(f"{unstable}:2: The filter as asked is unstable: 1 of its poles lies on")
+
+
+def test_messages_call_what_ships_by_the_name_that_was_given(preset, recording, tmp_path, capsys):
+    said = refusal(capsys, "rumble-float32", preset(), "--input", recording)
+    assert said.count("rumble-float32 (Rumble filter, float32) asks for") == 1
+    assert "rumble-float32.toml" not in said
+    said = refusal(capsys, preset(rate=44100), "--input", "plucked")
+    assert "and plucked has 48000 Hz" in said
 
 
 def test_existing_files_are_kept_unless_forced(preset, recording, tmp_path, capsys):
@@ -259,6 +313,32 @@ def test_existing_figures_are_kept_and_nothing_is_run(preset, recording, tmp_pat
     assert "figures.json: this file exists" in said
     assert figures.read_text(encoding="utf-8") == "mine"
     assert not folder.exists()
+
+
+@pytest.mark.parametrize("place", ["nowhere/figures.json", "noise.wav/figures.json", "."])
+def test_a_place_where_no_figures_can_be_written_is_refused_before_the_run(place, preset, recording, tmp_path, capsys):
+    folder = tmp_path / "out"
+    refusal(capsys, preset(), "--input", recording, "--output", str(folder), "--json", str(tmp_path / place))
+    assert not folder.exists()
+
+
+def test_a_folder_that_may_not_be_written_is_told_before_the_run(preset, recording, tmp_path, monkeypatch, capsys):
+    def denied(dir):
+        raise PermissionError(errno.EACCES, os.strerror(errno.EACCES))
+
+    monkeypatch.setattr("streamhost.commands.common.TemporaryFile", denied)
+    folder = tmp_path / "out"
+    arguments = [preset(), "--input", recording, "--output", str(folder), "--json", str(tmp_path / "figures.json")]
+    assert main(["compare", *arguments]) == 3
+    assert "figures.json: cannot write this file: Permission denied" in capsys.readouterr().err
+    assert not folder.exists()
+
+
+def test_figures_go_into_the_folder_that_the_run_makes(preset, recording, tmp_path):
+    folder = tmp_path / "out"
+    place = folder / "figures.json"
+    assert main(["compare", preset(), "--input", recording, "--output", str(folder), "--json", str(place)]) == 0
+    assert sorted(path.name for path in folder.iterdir()) == ["1-peak-difference.wav", "1-peak.wav", "figures.json"]
 
 
 def test_the_input_is_never_overwritten(preset, tmp_path, capsys):
@@ -294,6 +374,23 @@ def test_an_interruption_leaves_whole_files_only(preset, recording, tmp_path, mo
     folder = tmp_path / "out"
     names = [preset("one"), preset("two", form="direct-2")]
     assert main(["compare", *names, "--input", recording, "--output", str(folder)]) == 130
-    assert "Interrupted." in capsys.readouterr().err
+    said = capsys.readouterr().err
+    assert "Interrupted." in said
+    assert f"{folder}: the files of the realizations that were done stay there." in said
     assert sorted(path.name for path in folder.iterdir()) == ["1-one-difference.wav", "1-one.wav"]
     assert read_all(folder / "1-one.wav")[1].frames == 2 * RATE
+
+
+@pytest.mark.parametrize("there", [False, True])
+@pytest.mark.parametrize(("failure", "status"), [(KeyboardInterrupt(), 130), (OSError(errno.ENOSPC, "No space left"), 3)])
+def test_a_folder_made_for_nothing_goes(failure, status, there, preset, recording, tmp_path, monkeypatch, capsys):
+    def broken(self, x):
+        raise failure
+
+    monkeypatch.setattr(Measurement, "step", broken)
+    folder = tmp_path / "out"
+    if there:
+        folder.mkdir()
+    assert main(["compare", preset(), "--input", recording, "--output", str(folder)]) == status
+    assert folder.exists() is there
+    assert "stay there" not in capsys.readouterr().err

@@ -90,6 +90,16 @@ def test_what_is_varied_is_varied_again_and_the_first_is_left_alone():
     assert (once.filter, PEAK.form, PEAK.filter) == (parse_preset(TEXT).filter, "transposed-2", once.filter)
 
 
+def test_values_that_look_alike_when_shortened_are_numbered():
+    long = ", ".join(["0.125"] * 20)
+    made = vary([TWO], [f"filter.2.b=[{long}],[{long}, 1.0],[1.0]"])
+    first, second, third = (preset.source.varied[0] for preset in made)
+    assert first.startswith("b [0.125, 0.125,")
+    assert (first.removesuffix(" (1)"), third) == (second.removesuffix(" (2)"), "b [1.0]")
+    assert first != second
+    assert [preset.own_title for preset in made] == ["Peak"] * 3
+
+
 def test_a_value_that_cannot_be_is_told_with_the_line_and_with_what_was_asked():
     assert refused(["filter.q=high"]) == (
         'preset:7: q = "high" is not allowed: a finite number above 0. (Asked for by --vary filter.q=high)'

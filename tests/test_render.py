@@ -20,11 +20,12 @@ from test_files_whole import file_size_limit
 
 import streamhost as sh
 from streamhost.commands.main import main
-from streamhost.commands.render import _minute_by_minute, realized, summary
+from streamhost.commands.render import _minute_by_minute, summary
 from streamhost.errors import RequestError
 from streamhost.files import probe, read_all
 from streamhost.host.rendering import Rendered, default_subtype, render_file
 from streamhost.presets import load_preset
+from streamhost.presets.realizing import realize_preset
 from streamhost.realization import Realization
 from streamhost.shipped import presets_dir, samples_dir
 from streamhost.structures import build
@@ -56,7 +57,7 @@ def source(folder: Path, frames: int = 20000, channels: int = 2, peak: float = 0
 
 def expected(stated: str, given: str) -> np.ndarray:
     """What the realization makes of the whole file at once."""
-    return realized(load_preset(stated)).process(read_all(given)[0])
+    return realize_preset(load_preset(stated)).process(read_all(given)[0])
 
 
 # What is written
@@ -89,7 +90,7 @@ def test_fixed_point_goes_from_codes_to_codes_without_a_change(tmp_path: Path) -
     stated, given, out = preset(tmp_path, FIXED), source(tmp_path), tmp_path / "out.wav"
     assert main(["render", stated, given, str(out)]) == 0
     codes = np.array(wav_codes(Path(given))).reshape(-1, 2)
-    assert wav_codes(out) == realized(load_preset(stated)).process_codes(codes).ravel().tolist()
+    assert wav_codes(out) == realize_preset(load_preset(stated)).process_codes(codes).ravel().tolist()
 
 
 @pytest.mark.parametrize(
@@ -135,9 +136,8 @@ def test_floats_are_written_in_24_bits(format: sh.Float) -> None:
 
 
 def test_a_shipped_preset_on_a_shipped_recording(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
-    given = str(samples_dir() / "plucked.wav")
-    assert main(["render", "rumble-double-state", given, str(tmp_path / "out.wav")]) == 0
-    y = expected(str(presets_dir() / "rumble-double-state.toml"), given)
+    assert main(["render", "rumble-double-state", "plucked", str(tmp_path / "out.wav")]) == 0
+    y = expected(str(presets_dir() / "rumble-double-state.toml"), str(samples_dir() / "plucked.wav"))
     assert np.array_equal(read_all(tmp_path / "out.wav")[0], y)
     said = capsys.readouterr().out
     assert f"{len(y)} frames" in said

@@ -8,12 +8,14 @@ import time
 import unicodedata
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
+from pathlib import Path
+from tempfile import TemporaryFile
 from types import TracebackType
 from typing import TYPE_CHECKING, Any, TextIO
 
 import click
 
-from streamhost.errors import PresetError
+from streamhost.errors import PresetError, RequestError
 
 if TYPE_CHECKING:
     from streamhost.presets import Preset
@@ -44,7 +46,7 @@ def presets_named(names: Sequence[str], variations: Sequence[str] = ()) -> "list
     problems: list[str] = []
     for name in names:
         try:
-            presets.append(load_preset(resolve(name, "preset")))
+            presets.append(load_preset(resolve(name, "preset"), name=name))
         except PresetError as error:
             problems += error.problems
     if problems:
@@ -61,6 +63,21 @@ def write_json(destination: str, document: object, *, force: bool = False) -> No
     from streamhost.files import write_text_atomic
 
     write_text_atomic(destination, text, overwrite=force)
+
+
+def check_place(path: Path) -> None:
+    """RequestError or MachineError where no file can be written: before the work whose result it is to hold."""
+    from streamhost.files.atomic import machine_error
+
+    if path.is_dir():
+        raise RequestError(f"{path}: this is a folder. Give the name of a file in it.")
+    try:
+        with TemporaryFile(dir=path.absolute().parent):
+            pass
+    except (FileNotFoundError, NotADirectoryError):
+        raise RequestError(f"{path}: the folder {path.parent} does not exist. Make it first, or choose another.") from None
+    except OSError as problem:
+        raise machine_error("write", path, problem) from problem
 
 
 def _finite(value: Any) -> Any:

@@ -59,54 +59,55 @@ def compare(
 
     Every PRESET is a preset file or the name of a shipped one; all ask for the same filter. The difference is the
     realization's output minus that of its ideal: unrounded arithmetic with the same stored coefficients on the same
-    quantized input. Exit status 1 says that a limit of a preset is not met.
+    quantized input. Exit status 1 says that a limit of a preset is not met. When the run is broken off, the files of
+    the realizations that were done stay.
     """
     from streamhost.cache import notice
-    from streamhost.commands.compare_files import check_new, destinations
-    from streamhost.commands.compare_text import document, text
+    from streamhost.commands.compare_files import check_figures, destinations, output_folder
+    from streamhost.commands.compare_text import document, misses, text
     from streamhost.files import probe
     from streamhost.shipped import resolve
 
     info = probe(resolve(source, "sample"))
     stated = presets_named(presets, variations)
-    realizations = [_realized(preset) for preset in stated]
-    _check_one_filter(stated, info)
+    realizations = _realized(stated)
+    _check_one_filter(stated, info, source)
     places = destinations(folder, stated, info, force=force)
-    if json_file is not None and json_file != "-":
-        check_new(Path(json_file), info, force=force)
-    compared = _compare_all(stated, realizations, info, places, force=force)
+    with output_folder(places):
+        check_figures(json_file, info, force=force)
+        compared = _compare_all(stated, realizations, info, places, force=force)
     if problem := notice():
         click.echo(problem, err=True)
     if json_file != "-":
         click.echo(text(compared, info))
+    elif missed := list(misses(compared)):
+        click.echo("\n".join(missed), err=True)
     if json_file is not None:
-        write_json(json_file, document(compared, info), force=force)
+        write_json(json_file, document(compared, info, source), force=force)
     return int(any(one.misses for one in compared))
 
 
-def _realized(preset: "Preset") -> "Realization":
-    from streamhost.commands.render import realized
+def _realized(presets: "Sequence[Preset]") -> "list[Realization]":
+    from streamhost.presets.realizing import realize_presets
 
-    try:
-        realization = realized(preset)
-    except RequestError as problem:
-        raise RequestError(f"{preset.source.name}: {problem}") from problem
-    if len(realization.outputs) > 1:
-        raise RequestError(
-            f"{preset.source.name}: this realization has {len(realization.outputs)} outputs "
-            f"({', '.join(realization.outputs)}), and those with one output can be compared so far."
-        )
-    return realization
+    realizations = realize_presets(presets)
+    for preset, realization in zip(presets, realizations, strict=True):
+        if len(realization.outputs) > 1:
+            raise RequestError(
+                f"{preset.source.name}: this realization has {len(realization.outputs)} outputs "
+                f"({', '.join(realization.outputs)}), and those with one output can be compared so far."
+            )
+    return realizations
 
 
-def _check_one_filter(presets: "Sequence[Preset]", info: "AudioInfo") -> None:
+def _check_one_filter(presets: "Sequence[Preset]", info: "AudioInfo", source: str) -> None:
     """RequestError unless all presets ask for one filter at the rate of the file."""
     from streamhost.measure.sameness import different
 
     for preset in presets:
         if preset.rate != info.rate:
             raise RequestError(
-                f"{preset.source.name}: this preset has a rate of {preset.rate:g} Hz, and {info.path} has "
+                f"{preset.source.name}: this preset has a rate of {preset.rate:g} Hz, and {source} has "
                 f"{info.rate} Hz. Rates are not converted: give a file of that rate, or a preset for this one."
             )
     if others := different([preset.filter for preset in presets]):
@@ -132,7 +133,7 @@ def _compare_all(
 def _compare_one(
     preset: "Preset", realization: "Realization", info: "AudioInfo", place: "Destination | None", *, force: bool
 ) -> Compared:
-    from streamhost.commands.compare_files import DifferenceFile, OutputFile, make_folder
+    from streamhost.commands.compare_files import DifferenceFile, OutputFile
     from streamhost.files import read_blocks
     from streamhost.measure import Measurement, limit_band
 
@@ -140,7 +141,6 @@ def _compare_one(
     output = difference = None
     with ExitStack() as stack:
         if place is not None:
-            make_folder(place.folder)
             output = stack.enter_context(OutputFile(place.output, realization, info, force=force))
             difference = stack.enter_context(DifferenceFile(place.difference, info, force=force))
         for x in read_blocks(info.path, measurement.block):

@@ -1,21 +1,27 @@
 """The files of a comparison: their names, and what is written into them."""
 
-from collections.abc import Sequence
+import re
+from collections.abc import Iterator, Sequence
+from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
 from types import TracebackType
 from typing import Self
 
+import click
 import numpy as np
 from numpy.typing import NDArray
 
+from streamhost.commands.common import check_place
 from streamhost.errors import MachineError, RequestError
 from streamhost.files import AudioInfo, AudioWriter, same_file
 from streamhost.host.rendering import default_subtype
+from streamhost.measure.levels import has_run_away
 from streamhost.presets import Preset
 from streamhost.realization import Realization
 
-LARGEST = float(np.finfo(np.float32).max)
+LONGEST_VARIED = 80
+"""Characters in a file name that say what was varied; the number in front tells files apart in any case."""
 
 
 @dataclass(frozen=True)
@@ -30,7 +36,7 @@ class Destination:
 def destinations(
     folder: str | None, presets: Sequence[Preset], info: AudioInfo, *, force: bool
 ) -> list[Destination] | list[None]:
-    """The files of each preset: its number in the comparison, and its name. No folder, no files.
+    """The files of each preset: its number in the comparison, its name and what was varied. No folder, no files.
 
     RequestError where the folder cannot be one or holds one of the files, unless `force`.
     """
@@ -44,7 +50,7 @@ def destinations(
     digits = len(str(len(presets)))
     found = []
     for number, preset in enumerate(presets, 1):
-        name = f"{number:0{digits}}-{preset.path.stem if preset.path else 'preset'}"
+        name = f"{number:0{digits}}-{preset.path.stem if preset.path else 'preset'}{_varied(preset)}"
         found.append(Destination(place, place / f"{name}.wav", place / f"{name}-difference.wav"))
     for destination in found:
         check_new(destination.output, info, force=force)
@@ -52,8 +58,45 @@ def destinations(
     return found
 
 
-def make_folder(folder: Path) -> None:
-    """The folder, unless it is there. MachineError where it cannot be made."""
+def _varied(preset: Preset) -> str:
+    """What was varied, each value behind a hyphen, in characters that any disk takes."""
+    values = [re.sub(r"[^A-Za-z0-9.+_-]+", "-", value).strip("-.") for value in preset.source.varied]
+    return "".join(f"-{value}" for value in values if value)[:LONGEST_VARIED].rstrip("-.")
+
+
+@contextmanager
+def output_folder(places: Sequence[Destination | None]) -> Iterator[None]:
+    """The folder for a run's files, made where it is not there. When the run is broken off, a folder that was made and is
+    empty goes; of files that were written it is said that they stay."""
+    outputs = [place.output for place in places if place is not None]
+    if not outputs:
+        yield
+        return
+    folder = outputs[0].parent
+    new, before = not folder.exists(), [_identity(output) for output in outputs]
+    _make_folder(folder)
+    try:
+        yield
+    except BaseException:
+        if new and not any(folder.iterdir()):
+            folder.rmdir()
+        elif any(_identity(output) not in (None, was) for output, was in zip(outputs, before, strict=True)):
+            click.echo(f"{folder}: the files of the realizations that were done stay there.", err=True)
+        raise
+
+
+def _identity(path: Path) -> int | None:
+    return path.stat().st_ino if path.exists() else None
+
+
+def check_figures(name: str | None, info: AudioInfo, *, force: bool) -> None:
+    """RequestError or MachineError where figures cannot be written into the file of that name."""
+    if name is not None and name != "-":
+        check_new(Path(name), info, force=force)
+        check_place(Path(name))
+
+
+def _make_folder(folder: Path) -> None:
     try:
         folder.mkdir(exist_ok=True)
     except OSError as problem:
@@ -100,7 +143,7 @@ class DifferenceFile:
 
     def write(self, block: NDArray[np.float64]) -> None:
         """Append a block (frames, channels)."""
-        if self.kept and not (np.abs(block) <= LARGEST).all():
+        if self.kept and has_run_away(block):
             self.kept = False
             reason = RequestError("the difference is beyond what a file holds")
             self._writer.__exit__(RequestError, reason, None)

@@ -5,10 +5,14 @@ from collections.abc import Iterator, Sequence
 from streamhost.commands.common import GAP, MINUS, Cell, Column, ledger, printable
 from streamhost.commands.compare import Compared
 from streamhost.files import AudioInfo
-from streamhost.formats import Float
+from streamhost.formats import Float, Format
+from streamhost.measure import Measured
 from streamhost.measure.limits import PEAK_DBFS, SECONDS, SEED, Verdict
+from streamhost.presets import Preset
 
 LONGEST_TITLE = 56
+LEAST_TITLE = 8
+MOST_DECIMALS, ALL_DECIMALS = 2, 17
 
 NOISE = (
     Column("lane"), Column("form · decomposition · format"), Column("noise", "dBFS", 1), Column("95 %", "± dB", 2),
@@ -42,11 +46,16 @@ def text(compared: Sequence[Compared], info: AudioInfo) -> str:
 def _noise_row(one: Compared) -> list[Cell]:
     noise, prediction = one.measured.noise, one.measured.prediction
     white = {True: "holds", False: "fails", None: None}[one.measured.white.holds]
-    title = one.preset.title
-    if len(title) > LONGEST_TITLE:
-        title = title[: LONGEST_TITLE - 1] + "…"
     predicted = prediction.dbfs if prediction is not None else None
-    return [title, one.label, noise.dbfs, noise.interval_db, predicted, white, noise.a_dbfs, noise.full_dbfs]
+    return [_title(one.preset), one.label, noise.dbfs, noise.interval_db, predicted, white, noise.a_dbfs, noise.full_dbfs]
+
+
+def _title(preset: Preset) -> str:
+    """Shortened in the preset's own part: what was varied tells rows apart."""
+    own = preset.own_title
+    varied = preset.title[len(own) :]
+    room = max(LEAST_TITLE, LONGEST_TITLE - len(varied))
+    return (own if len(own) <= room else own[: room - 1] + "…") + varied
 
 
 def _rest_row(one: Compared) -> list[Cell]:
@@ -67,6 +76,11 @@ def _verdict(compared: Sequence[Compared]) -> Iterator[str]:
     others = [str(number) for number, one in enumerate(compared, 1) if not one.verdicts]
     rest = f"; {', '.join(others)} {'states' if len(others) == 1 else 'state'} none" if others else ""
     yield f"{met} of {len(asked)} with limits {'meets' if met == 1 else 'meet'} every limit{rest}."
+    yield from misses(compared)
+
+
+def misses(compared: Sequence[Compared]) -> Iterator[str]:
+    """A sentence for each realization that does not meet its limits."""
     for number, one in enumerate(compared, 1):
         if one.misses:
             yield f"{number} misses " + "; ".join(_miss(verdict) for verdict in one.misses) + "."
@@ -76,7 +90,15 @@ def _miss(verdict: Verdict) -> str:
     allowed = f"at most {_signed(verdict.allowed)} {verdict.unit}"
     if verdict.found is None:
         return f"{verdict.key}, {allowed}: no figure, since {verdict.reason}"
-    return f"{verdict.key}: {_signed(round(verdict.found, 3))}, {allowed}"
+    return f"{verdict.key}: {_beside(verdict.found, verdict.allowed)}, {allowed}"
+
+
+def _beside(found: float, allowed: float) -> str:
+    """A figure that is too large, with one decimal more than its limit has, at most two, unless that hides the miss."""
+    decimals = min(MOST_DECIMALS, len(f"{allowed:f}".rstrip("0").partition(".")[2]) + 1)
+    while round(found, decimals) <= allowed and decimals < ALL_DECIMALS:
+        decimals += 1
+    return f"{found:.{decimals}f}".replace("-", MINUS)
 
 
 def _signed(number: float) -> str:
@@ -89,18 +111,24 @@ def _remarks(compared: Sequence[Compared]) -> Iterator[str]:
         measured = one.measured
         if measured.unstable:
             yield f"{number} is unstable {_as_what(one)}: {_poles(measured.unstable)} on or outside the unit circle."
-        if measured.noise.reason:
-            yield f"{number} has no noise figure: {measured.noise.reason}."
-        elif measured.noise.excluded:
-            yield f"{number}: {100 * measured.noise.excluded:.2f} % of the frames do not count: an overflow was near."
-        if measured.white.reason and measured.white.holds is False:
-            yield f"{number}: the white model does not hold here: {measured.white.reason}."
-        elif measured.white.reason and not isinstance(one.realization.format, Float):
-            yield f"{number}: whether the white model holds is not known: {measured.white.reason}."
+        yield from (f"{number}{remark}." for remark in _noise_remarks(measured, one.realization.format))
         if isinstance(one.realization.format, Float) and measured.prediction is not None:
             yield f"{number}: in floating point the predicted noise is an estimate."
         for hazard in one.realization.built.hazards:
             yield f"{number}, hazard: {hazard}"
+
+
+def _noise_remarks(measured: Measured, format: Format) -> Iterator[str]:
+    noise, white, floating = measured.noise, measured.white, isinstance(format, Float)
+    if noise.reason:
+        yield f" has no noise figure{'' if floating else ' and no verdict on the white model'}: {noise.reason}"
+        return
+    if noise.excluded:
+        yield f": {100 * noise.excluded:.2f} % of the frames do not count: an overflow was near"
+    if white.holds is False:
+        yield f": the white model does not hold here: {white.reason}"
+    elif white.reason and not floating:
+        yield f": whether the white model holds is not known: {white.reason}"
 
 
 def _as_what(one: Compared) -> str:
@@ -147,10 +175,10 @@ def seed_of(compared: Sequence[Compared]) -> int | None:
     return SEED if any(one.verdicts for one in compared) else None
 
 
-def document(compared: Sequence[Compared], info: AudioInfo) -> dict[str, object]:
-    """The figures under keys that are spelt with their unit; those not given are None."""
+def document(compared: Sequence[Compared], info: AudioInfo, source: str) -> dict[str, object]:
+    """The figures under keys that are spelt with their unit; those not given are None. `source` is the input as asked for."""
     return {
-        "rate": info.rate, "input": str(info.path), "seed": seed_of(compared),
+        "rate": info.rate, "input": source, "seed": seed_of(compared),
         "realizations": [_figures(one) for one in compared],
     }
 

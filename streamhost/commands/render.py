@@ -32,16 +32,18 @@ SUBTYPES = ("pcm16", "pcm24", "pcm32", "float")
 def render(preset: str, source: str, destination: str, subtype: Any, force: bool) -> None:
     """The audio file IN through one realization into a new file OUT.
 
-    PRESET is a file or the name of a shipped one. OUT ends in .wav, .rf64 or .flac and gets the rate and the channels
-    of IN. Samples beyond full scale are clipped, which is counted.
+    PRESET is a file or the name of a shipped one, and so is IN. OUT ends in .wav, .rf64 or .flac and gets the rate and
+    the channels of IN. Samples beyond full scale are clipped, which is counted.
     """
     from streamhost.cache import notice
     from streamhost.files import probe
     from streamhost.host.rendering import render_file
+    from streamhost.presets.realizing import realize_preset
+    from streamhost.shipped import resolve
 
     (stated,) = presets_named([preset])
-    info = probe(source)
-    realization = realized(stated)
+    info = probe(resolve(source, "sample"))
+    realization = realize_preset(stated)
     with Progress("render", math.ceil(info.seconds / 60)) as progress:
         rendered = render_file(
             realization,
@@ -59,18 +61,9 @@ def render(preset: str, source: str, destination: str, subtype: Any, force: bool
 
 def realized(preset: "Preset") -> "Realization":
     """What a preset states, ready to run."""
-    from streamhost.realization import realize
+    from streamhost.presets.realizing import realize_preset
 
-    return realize(
-        preset.filter,
-        form=preset.form,
-        decomposition=preset.decomposition,
-        pairing=preset.pairing,
-        ordering=preset.ordering,
-        scaling=preset.scaling,
-        format=preset.format,
-        allow_unstable=preset.allow_unstable,
-    )
+    return realize_preset(preset)
 
 
 def _minute_by_minute(progress: Progress, info: "AudioInfo") -> Callable[[int], None]:

@@ -1,7 +1,7 @@
 """One realization on one signal: everything that a comparison tells of it."""
 
 from dataclasses import dataclass
-from math import inf, isfinite, isnan
+from math import inf, isnan
 
 import numpy as np
 from numpy.typing import NDArray
@@ -10,7 +10,7 @@ from streamhost.diagram.diagram import Counts
 from streamhost.diagram.norms import settling_frames
 from streamhost.formats import Fixed
 from streamhost.measure.bands import Band
-from streamhost.measure.levels import peak_dbfs
+from streamhost.measure.levels import has_run_away, peak_dbfs
 from streamhost.measure.noise import Noise, NoiseSum, settling_of_run
 from streamhost.measure.predicted import Prediction
 from streamhost.measure.response import Deviation, response_deviation
@@ -35,7 +35,7 @@ class Measured:
 
     `ideal`: the arithmetic of the ideal run. `peak_dbfs`: of the output. `dc_lsb`: the noise's mean in steps of the
     output's word, None in floating point. `difference_gain_db`: what brings the peak of the difference near -12 dBFS,
-    in whole dB; None where there is no difference.
+    in whole dB; None where there is no difference, or one that runs away.
     """
 
     deviation: Deviation
@@ -75,7 +75,7 @@ class Measurement:
         self._noise = NoiseSum(realization.filter.rate, frames, channels, settling)
         self._watch = watch(realization.program, frames, settling_of_run(settling, frames), self.block)
         self._peak = self._difference_peak = 0.0
-        self._finite = True
+        self._ran_away = False
         self._first: FloatArray | None = None
 
     def step(self, x: FloatArray) -> Block:
@@ -87,7 +87,7 @@ class Measurement:
         self._watch.add(x, block.trace)
         self._peak = max(self._peak, _largest(block.output))
         self._difference_peak = max(self._difference_peak, _largest(block.difference))
-        self._finite = self._finite and bool(np.isfinite(block.difference).all())
+        self._ran_away = self._ran_away or has_run_away(block.difference)
         return block
 
     def result(self) -> Measured:
@@ -99,16 +99,24 @@ class Measurement:
             deviation=response_deviation(realization, self._band),
             unstable=realization.unstable,
             noise=noise,
-            prediction=self._watch.prediction(realization.filter.rate) if self._finite else None,
-            white=self._watch.verdict(realization.filter.rate),
+            prediction=None if self._ran_away else self._watch.prediction(realization.filter.rate),
+            white=self._white(noise),
             dc_lsb=_in_steps(noise.mean, realization) if fixed else None,
             peak_dbfs=peak_dbfs(self._peak),
-            difference_gain_db=_listening_gain(self._difference_peak) if self._finite else None,
+            difference_gain_db=None if self._ran_away else _listening_gain(self._difference_peak),
             tally=self._run.tally(),
             counts=realization.program.drawn.counts(),
             ns_per_frame=ns_per_frame(realization, self._first),
             ideal=self._run.ideal.label,
         )
+
+    def _white(self, noise: Noise) -> Whiteness:
+        """The verdict, where there is a noise for the model to be one of."""
+        if self._realization.unstable:
+            return Whiteness(None, "with its coefficients rounded the filter is not stable")
+        if noise.dbfs is None:
+            return Whiteness(None, "there is no noise figure")
+        return self._watch.verdict(self._realization.filter.rate)
 
 
 def measure(realization: Realization, x: FloatArray, band: Band) -> Measured:
@@ -133,6 +141,6 @@ def _in_steps(mean: float | None, realization: Realization) -> float | None:
 
 def _listening_gain(peak: float) -> int | None:
     """Whole dB, at most 150, that bring a peak to -12 dBFS or just below; negative where it is louder."""
-    if not (isfinite(peak) and peak > 0.0):
+    if peak == 0.0:
         return None
     return min(MOST_RAISED_DB, int(np.floor(LISTENING_DBFS - peak_dbfs(peak))))

@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 from streamhost.measure.bands import Band, audio_band, bin_shares
 from streamhost.measure.counting import Counting, stretches
 from streamhost.measure.interval import degrees_of_freedom, half_width_db
-from streamhost.measure.levels import power_dbfs
+from streamhost.measure.levels import has_run_away, power_dbfs
 from streamhost.measure.moments import Moments
 from streamhost.measure.weighting import a_weighting
 from streamhost.measure.welch import Spectrum, SpectrumSum, mean_spectrum, segment_lengths
@@ -59,12 +59,12 @@ class NoiseSum:
         self._moments = [Moments() for _ in range(channels)]
         self._lengths = segment_lengths(rate, frames - wait, wait)
         self._spectra = [[SpectrumSum(rate, length) for length in self._lengths] for _ in range(channels)]
-        self._finite = True
+        self._ran_away = False
 
     def add(self, difference: NDArray[np.float64], marks: NDArray[np.uint8]) -> None:
         """The next block: realized minus ideal, and where something overflowed, each (frames, channels)."""
-        self._finite = self._finite and bool(np.isfinite(difference).all())
-        if not self._finite:
+        self._ran_away = self._ran_away or has_run_away(difference)
+        if self._ran_away:
             return
         for channel, counting in enumerate(self._counting):
             counts = counting.take(marks[:, channel])
@@ -96,8 +96,8 @@ class NoiseSum:
         return self._in_band(band, full, mean, excluded)
 
     def _why_none(self, excluded: float) -> str:
-        if not self._finite:
-            return "the output or the ideal is no longer finite"
+        if self._ran_away:
+            return "the output or the ideal runs away, beyond what a file holds"
         if not self._settles:
             return "with its coefficients rounded the filter does not settle, and what it puts out is not only noise"
         if excluded > MOST_EXCLUDED:

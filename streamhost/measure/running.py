@@ -53,7 +53,7 @@ class Run:
         clean = np.ascontiguousarray(quantized_input(self.program, x))
         ideal = np.empty((frames, (2 if self.ideal.double else 1) * self.channels))
         self._ideal_kernel.call(self._ideal_memory, clean, ideal, marks=no_marks(), trace=no_trace())
-        with np.errstate(invalid="ignore"):  # an unstable one may run away to infinity
+        with np.errstate(over="ignore", invalid="ignore"):  # an unstable one may run away to infinity
             difference = output - ideal[:, : self.channels]
             if self.ideal.double:
                 difference -= ideal[:, self.channels :]

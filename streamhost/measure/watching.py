@@ -7,6 +7,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from streamhost.formats import Fixed
+from streamhost.measure.naming import rounding_name
 from streamhost.measure.predicted import Prediction, predicted_noise, source_shares
 from streamhost.measure.residues import ResidueSum, octave_edges
 from streamhost.measure.whiteness import Expected, Whiteness, judged
@@ -109,13 +110,14 @@ def _expected(program: Program, node: int, source: Source) -> Expected:
     quantizer = arithmetic.quantizer
     step = 2.0**-quantizer.word.fraction
     lowest = 0.0 if quantizer.rounding == "floor" else -0.5
-    return Expected(source.label, -source.mean / step, source.variance / step**2, lowest, quantizer.dither)
+    return Expected(rounding_name(program, node), -source.mean / step, source.variance / step**2, lowest, quantizer.dither)
 
 
 def _toward_zero(program: Program, sources: tuple[Source, ...]) -> str:
-    """A source that rounds toward zero, if there is one: half of such an error is the sign of what is rounded."""
+    """The name of a rounding toward zero, if there is one: half of such an error is the sign of what is rounded."""
     for source in sources:
-        arithmetic = program.arithmetic[source.places[0][0]]
+        node = source.places[0][0]
+        arithmetic = program.arithmetic[node]
         if isinstance(arithmetic, RoundArithmetic) and arithmetic.quantizer.rounding == "toward-zero":
-            return source.label
+            return rounding_name(program, node)
     return ""

@@ -153,6 +153,6 @@ class _Judge:
             return ""
         lag, earlier, later = beyond[0]
         if earlier == later:
-            frames = f"{lag} frame{'s' * (lag > 1)}"
+            frames = "1 frame" if lag == 1 else f"{lag} frames"
             return f"what {self.expected[later].label} drops is correlated with what it dropped {frames} before"
         return f"what {self.expected[earlier].label} and {self.expected[later].label} drop is correlated"

@@ -12,7 +12,7 @@ from streamhost.presets.lines import Lines
 
 @dataclass(frozen=True)
 class Source:
-    """What a preset was read from: the name for messages, the raw table, the line of each key, what was varied."""
+    """What a preset was read from: its name as the user gave it, the raw table, the line of each key, what was varied."""
 
     name: str
     table: Mapping[str, Any]
@@ -41,3 +41,8 @@ class Preset:
     limits: Mapping[str, object]
     allow_unstable: bool
     source: Source = field(repr=False, compare=False)
+
+    @property
+    def own_title(self) -> str:
+        """The title without what was varied."""
+        return self.title.removesuffix("".join(f", {value}" for value in self.source.varied))

@@ -9,7 +9,7 @@ from typing import Any
 
 from streamhost.errors import PresetError
 from streamhost.presets.lines import split_at_commas
-from streamhost.presets.mistakes import value_text
+from streamhost.presets.mistakes import one_line, value_text
 from streamhost.presets.preset import Preset
 from streamhost.presets.reading import read_preset
 
@@ -17,6 +17,8 @@ MOST_VARIANTS = 1000
 EXAMPLE = "structure.form=direct-1,transposed-2"
 
 Variation = tuple[str, tuple[str, ...]]
+Choice = tuple[str, str, str]
+"""A key, the text of its value, and how a title shows it."""
 
 
 def vary(presets: Iterable[Preset], variations: Sequence[str]) -> list[Preset]:
@@ -32,8 +34,8 @@ def vary(presets: Iterable[Preset], variations: Sequence[str]) -> list[Preset]:
         if keys.count(key) > 1:
             raise PresetError([f"--vary {key} is given twice: join its values by commas, for instance {EXAMPLE}."])
     presets = list(presets)
-    combinations = list(product(*(values for _, values in read))) if _count(presets, read) else []
-    return [_varied(preset, list(zip(keys, values, strict=True))) for preset in presets for values in combinations]
+    combinations = list(product(*(_choices(*variation) for variation in read))) if _count(presets, read) else []
+    return [_varied(preset, chosen) for preset in presets for chosen in combinations]
 
 
 def _variation(text: str) -> Variation:
@@ -53,20 +55,25 @@ def _count(presets: Sequence[Preset], variations: Sequence[Variation]) -> int:
     return count
 
 
-def _varied(preset: Preset, chosen: Sequence[tuple[str, str]]) -> Preset:
+def _choices(key: str, texts: Sequence[str]) -> list[Choice]:
+    """The values of one key; those that look alike when shown shortened are numbered."""
+    values = [_value(text) for text in texts]
+    shown = [one_line(value) if isinstance(value, str) else f"{key.rpartition('.')[2]} {value_text(value)}" for value in values]
+    numbered = [f"{one} ({number})" if shown.count(one) > 1 else one for number, one in enumerate(shown, 1)]
+    return list(zip([key] * len(texts), texts, numbered, strict=True))
+
+
+def _varied(preset: Preset, chosen: Sequence[Choice]) -> Preset:
     if not chosen:
         return preset
     table = copy.deepcopy(dict(preset.source.table))
-    shown = []
-    for key, text in chosen:
-        value = _value(text)
-        _put(table, key, value, preset.source.name)
-        shown.append(value if isinstance(value, str) else f"{key.rpartition('.')[2]} {value_text(value)}")
-    source = replace(preset.source, table=table, varied=(*preset.source.varied, *shown))
+    for key, text, _ in chosen:
+        _put(table, key, _value(text), preset.source.name)
+    source = replace(preset.source, table=table, varied=(*preset.source.varied, *(shown for _, _, shown in chosen)))
     try:
         return read_preset(source, preset.path)
     except PresetError as error:
-        asked = " ".join(f"--vary {key}={text}" for key, text in chosen)
+        asked = " ".join(f"--vary {key}={text}" for key, text, _ in chosen)
         raise PresetError(f"{problem} (Asked for by {asked})" for problem in error.problems) from None
 
 

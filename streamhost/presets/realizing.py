@@ -1,0 +1,77 @@
+"""From presets to what runs; a refusal names file, line and key, as those of reading do."""
+
+import re
+from collections.abc import Iterable, Mapping
+
+from streamhost.errors import FilterError, FormatError, PresetError, StructureError
+from streamhost.presets.lines import Path
+from streamhost.presets.mistakes import Mistakes, value_text
+from streamhost.presets.preset import Preset
+from streamhost.realization import Realization, realize
+
+# Where a place of the format is not stated, one of these decides it.
+DECIDING = ("arithmetic", "signal")
+
+
+def realize_preset(preset: Preset) -> Realization:
+    """What a preset states, ready to run.
+
+    Raises PresetError where filter, structure and format do not go together: unstable as asked, a choice that cannot
+    carry this filter, a coefficient that does not fit, an accumulator that is too short.
+    """
+    mistakes = Mistakes(preset.source.name, preset.source.lines)
+    try:
+        return realize(
+            preset.filter, form=preset.form, decomposition=preset.decomposition, pairing=preset.pairing,
+            ordering=preset.ordering, scaling=preset.scaling, format=preset.format, allow_unstable=preset.allow_unstable,
+        )
+    except FilterError as error:
+        _add(mistakes, preset, ("filter",), str(error))
+    except FormatError as error:
+        _add(mistakes, preset, _format_path(preset, error), str(error))
+    except StructureError as error:
+        _add(mistakes, preset, _structure_path(error), str(error))
+    raise PresetError(mistakes.texts())
+
+
+def realize_presets(presets: Iterable[Preset]) -> list[Realization]:
+    """All of them; raises PresetError with what is refused in any of them together."""
+    realizations: list[Realization] = []
+    problems: list[str] = []
+    for preset in presets:
+        try:
+            realizations.append(realize_preset(preset))
+        except PresetError as error:
+            problems += error.problems
+    if problems:
+        raise PresetError(dict.fromkeys(problems))
+    return realizations
+
+
+def _add(mistakes: Mistakes, preset: Preset, path: Path, text: str) -> None:
+    """The refusal behind 'key = value', where the key is stated, and with the values that were varied."""
+    table = preset.source.table.get(str(path[0]))
+    if len(path) > 1 and isinstance(table, Mapping) and path[1] in table:
+        key, value = path[1], value_text(table[str(path[1])])
+        said = f"{key} {value} "
+        text = f"{key} = {value} {text.removeprefix(said)}" if text.startswith(said) else f"{key} = {value}: {text}"
+    varied = f" (Varied: {', '.join(preset.source.varied)})" if preset.source.varied else ""
+    mistakes.add(path, text + varied)
+
+
+def _format_path(preset: Preset, error: FormatError) -> Path:
+    """The key that the refusal is about, or the one that decides it, or the whole table."""
+    if error.problems:
+        return ("format", *error.problems[0][0].split("."))
+    about = re.search("accumulator|coefficient", str(error))
+    if about is None:
+        return ("format",)
+    key = {"coefficient": "coefficients"}.get(about[0], about[0])
+    stated = preset.source.table.get("format", {})
+    return ("format", next((each for each in (key, *DECIDING) if each in stated), key))
+
+
+def _structure_path(error: StructureError) -> Path:
+    """The choice that the refusal names first; a cascade is named without its key."""
+    named = re.search(r'(form|decomposition|pairing|ordering|scaling) "', str(error))
+    return ("structure", named[1] if named else "decomposition")
