@@ -184,7 +184,7 @@ def realize(
     Raises FilterError for a filter that is unstable as asked (unless allowed), StructureError, FormatError.
     """
     if not isinstance(filter, Filter):
-        raise FilterError(f"realize takes a Filter, not {type(filter).__name__}. streamhost.design and Filter.from_... make one.")
+        raise FilterError(f"realize takes a Filter, not {type(filter).__name__}. streamhost.design makes one.")
     if not isinstance(format, Fixed | Float | str):
         raise FormatError(f"format = {format!r} is no Fixed, no Float and no name of an arithmetic.")
     if (poles := filter.unstable_poles()) and not allow_unstable:
