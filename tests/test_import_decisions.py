@@ -153,6 +153,11 @@ def test_what_vanishes_in_the_division_by_a0_is_refused(content, refusal):
     )
 
 
+def test_half_of_the_smallest_number_vanishes_and_more_does_not(refusal, imported):
+    assert "smaller than float64 holds" in refusal("b 1.0 0x1p-1074\na 2\n")
+    assert imported("b 1.0 0x1p-1073\na 3\n").filter.factors[0].b[1] == 2.0**-1074
+
+
 def test_what_overflows_in_the_division_by_a0_is_refused(refusal):
     assert "larger than float64 holds" in refusal("b 1e300\na 1e-300\n")
 

@@ -67,6 +67,11 @@ def test_zeros_and_poles(zeros, poles, imported):
     assert found.notes == ()
 
 
+def test_as_many_as_a_preset_holds(imported):
+    assert len(imported(archive(b=np.ones(20_000))).filter.factors[0].b) == 20_000
+    assert imported(archive(z=np.zeros(0), p=np.full(1000, 0.5), k=1.0)).filter.order == 1000
+
+
 @pytest.mark.parametrize("option", ["columns", "feedback", "word"])
 def test_zeros_and_poles_need_nothing_stated(option, refusal):
     content = archive(z=np.zeros(0), p=np.array([0.5]), k=1.0)

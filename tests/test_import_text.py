@@ -159,6 +159,10 @@ def test_what_is_wrong_in_a_text_is_told_with_its_place(content, expected, refus
     assert refusal(content) == expected
 
 
+def test_as_many_numbers_as_a_preset_holds(imported):
+    assert len(imported("b" + " 1.5" * 20_000).filter.factors[0].b) == 20_000
+
+
 def test_a_file_that_is_not_there(tmp_path):
     with pytest.raises(RequestError, match=r"none: there is no such file\.$"):
         import_filter(tmp_path / "none", rate=RATE)
