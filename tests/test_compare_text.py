@@ -31,7 +31,7 @@ def test_what_runs_away_slowly_is_told(tmp_path, capsys):
         writer.write(white(RATE, 1, 5, -20.0))
     assert main(["compare", str(path), "--input", str(noise), "--output", str(tmp_path / "out")]) == 0
     captured = capsys.readouterr()
-    assert "1 has no noise figure: the output or the ideal runs away, beyond what a file holds." in captured.out
+    assert "1 has no noise figure: the output or the ideal runs away" in captured.out
     assert "no difference written: it ran away" in captured.out
     assert "Warning" not in captured.err
 

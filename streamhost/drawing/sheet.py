@@ -3,18 +3,30 @@
 import re
 from collections.abc import Collection, Mapping
 from dataclasses import dataclass, field
+from functools import cached_property
 
 from streamhost.diagram import Delay, Diagram, Gain, Input, Node, Output, Residue, Round, Shift, Sum, Taps
 from streamhost.diagram.hints import Part, Place, Point
 from streamhost.drawing import text
 from streamhost.drawing.symbols import (
-    COLUMN, MARK, MOST_ON_CIRCLE, RADIUS, SIDES, TERMINAL, TRIANGLE, Cell, Symbol, box, pill,
+    COLUMN,
+    MARK,
+    MOST_ON_CIRCLE,
+    RADIUS,
+    SIDES,
+    TERMINAL,
+    TRIANGLE,
+    Cell,
+    Symbol,
+    box,
+    pill,
 )
+from streamhost.drawing.text import Label
 
-ROOM_FOR_MARKS = 1.6
+ROOM_FOR_MARKS = 1.4
 """How much taller the rows become where symbols that face up or down carry a mark."""
 
-Nothing: Place = Place((0.0, 0.0))
+NOWHERE = Place((0.0, 0.0))
 
 
 @dataclass(frozen=True)
@@ -34,7 +46,7 @@ class Sheet:
     wires: tuple[Wire, ...]
     trunks: Mapping[int, tuple[Cell, ...]]
 
-    @property
+    @cached_property
     def sinks(self) -> dict[int, list[int]]:
         """The wires of each net, by its source."""
         found: dict[int, list[int]] = {}
@@ -55,7 +67,7 @@ class Pen:
     ends: dict[int, int] = field(default_factory=dict)
 
     def draw(self, index: int) -> None:
-        node, place = self.diagram.nodes[index], self.places.get(index, Nothing)
+        node, place = self.diagram.nodes[index], self.places.get(index, NOWHERE)
         marked = index in self.marked and not isinstance(node, Round)
         if isinstance(node, Sum):
             self.draw_sum(index, node, place, marked)
@@ -91,12 +103,13 @@ class Pen:
 
     def sum_wires(self, index: int, node: Sum) -> list[Wire]:
         found: list[Wire] = []
-        terms = iter(node.terms)
-        first = self.ends[index] - len(self.places.get(index, Nothing).parts or (None,)) + 1
+        terms = list(reversed(node.terms))
+        first = self.ends[index] - len(self.places.get(index, NOWHERE).parts or (None,)) + 1
         for adder in range(first, self.ends[index] + 1):
             chained = adder > first
             found += [Wire(adder - 1, adder)] if chained else []
-            for term, _ in zip(terms, range(self.symbols[adder].inputs - chained)):
+            for _ in range(self.symbols[adder].inputs - chained):
+                term = terms.pop()
                 found.append(Wire(self.ends[term.source], adder, term.sign))
         return found
 
@@ -107,8 +120,8 @@ class Looks:
 
     kind: str
     half: tuple[float, float]
-    text: text.Label = ()
-    name: text.Label = ()
+    text: Label = ()
+    name: Label = ()
     inputs: int = 1
 
     def symbol(self, node: int, at: Cell, face: str, marked: bool, part: int = 0) -> Symbol:
@@ -138,13 +151,14 @@ def looks_of(diagram: Diagram, node: Node, small: bool) -> Looks:
     raise AssertionError(f"no looks for a {node.kind}")
 
 
-def boxed(kind: str, label: text.Label) -> Looks:
+def boxed(kind: str, label: Label) -> Looks:
     return Looks(kind, box(label), text=label)
 
 
 def sheet_of(diagram: Diagram, marked: Collection[int] = ()) -> Sheet:
     """The drawing's symbols and wires; at their places if the diagram's maker said them, else all at one."""
     places = diagram.hints.places_for(diagram.nodes)
+    marked = {index for index in marked if not is_rounded_next(diagram, index)}
     pen = Pen(diagram, places or {}, marked, stretch(places, marked))
     for index in range(len(diagram.nodes)):
         pen.draw(index)
@@ -153,6 +167,12 @@ def sheet_of(diagram: Diagram, marked: Collection[int] = ()) -> Sheet:
         source = pen.ends[trunk.source]
         trunks[source] = trunks.get(source, ()) + tuple(map(pen.cell, trunk.points))
     return Sheet(tuple(pen.symbols), tuple(pen.wires()), trunks)
+
+
+def is_rounded_next(diagram: Diagram, index: int) -> bool:
+    """Whether all that reads a node is drawn as a rounding, which shows it already."""
+    readers = diagram.readers[index]
+    return bool(readers) and all(isinstance(diagram.nodes[reader], Round) for reader in readers)
 
 
 def stretch(places: Mapping[int, Place] | None, marked: Collection[int]) -> float:

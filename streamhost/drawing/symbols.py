@@ -3,7 +3,7 @@
 Directions are numbers: 0 east, 1 south, 2 west, 3 north.
 """
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from math import ceil
 
 from streamhost.drawing.text import Label, width
@@ -30,7 +30,7 @@ CLEAR = 3.0
 """Least distance of a wire from a symbol that is not its own."""
 
 MOST_ON_CIRCLE = 3
-WITH_HEADS = {"sum", "pill", "delay", "output", "round", "mark", "residue", "taps"}
+WITH_HEADS = frozenset({"sum", "pill", "delay", "output", "round", "residue", "taps"})
 
 
 @dataclass(frozen=True)
@@ -59,9 +59,6 @@ class Symbol:
     def reach(self, direction: int) -> float:
         """From the centre to the edge, in px."""
         return self.half[direction % 2]
-
-    def moved(self, at: Cell) -> "Symbol":
-        return replace(self, at=at)
 
     @property
     def out_reach(self) -> float:

@@ -21,7 +21,7 @@ ASCII = (
 OTHERS = {MINUS: 838, DOTS: 1000}
 WIDEST = 1000
 
-COEFFICIENT = re.compile(r"(-?)([A-Za-z]+)_?(\d*)(?:_(\d+|[a-z]))?")
+COEFFICIENT = re.compile(r"(-?)([A-Za-z]+)_?(\d*)(?:_(\d+|[A-Za-z]))?")
 
 
 @dataclass(frozen=True)
@@ -78,6 +78,15 @@ def lowered(subscript: str) -> Label:
     """A subscript: a letter for a number in italics, all else upright."""
     return tuple(Run(piece, piece.isalpha() and len(piece) == 1, -1)
                  for piece in re.findall(r"[A-Za-z]+|[^A-Za-z]+", subscript))
+
+
+def sentence(words: str) -> Label:
+    """A sentence in which x_i is x with i lowered."""
+    runs: list[Run] = []
+    for piece in re.split(r"\b([a-z]_[\w+]+)", words):
+        name, _, below = piece.partition("_")
+        runs += [Run(name, italic=True), *lowered(below)] if below else [Run(piece)] if piece else []
+    return tuple(runs)
 
 
 def signal(name: str) -> Label:

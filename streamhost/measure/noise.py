@@ -97,7 +97,7 @@ class NoiseSum:
 
     def _why_none(self, excluded: float) -> str:
         if self._ran_away:
-            return "the output or the ideal runs away, beyond what a file holds"
+            return "the output or the ideal runs away: it is no longer finite, or beyond what a file holds"
         if not self._settles:
             return "with its coefficients rounded the filter does not settle, and what it puts out is not only noise"
         if excluded > MOST_EXCLUDED:

@@ -18,7 +18,8 @@ LONG = 64
 class Draft:
     """A section being drawn: its polynomials, its index, and what its labels end with where there are several.
 
-    `origin` is where its first column and row are on the page; places are said from there.
+    `origin` is where its first column and row are on the page; places are said from there. `numbers` are written for
+    the numbers of the coefficients in a section that stands for a longer one.
     """
 
     builder: Builder
@@ -26,6 +27,7 @@ class Draft:
     index: int = 0
     suffix: str = ""
     origin: Point = (0.0, 0.0)
+    numbers: tuple[str, ...] = ()
 
     def line(self, name: str, length: int, source: Ref | None = None, *, column: float) -> tuple[Ref, ...]:
         """`length` delays in a row, the first driven by `source`, or later where there is none; drawn downwards."""
@@ -42,7 +44,7 @@ class Draft:
 
     def b(self, k: int, source: Ref, *, at: Point) -> Ref:
         """The product b_k source."""
-        label = f"b{k}{self.suffix}"
+        label = self._named("b", k)
         return self._placed(self.builder.gain(source, label, self.section.b[k], section=self.index, part="b"), at)
 
     @property
@@ -57,7 +59,7 @@ class Draft:
 
     def a(self, k: int, source: Ref, *, at: Point) -> Signed:
         """The product a_k source, to be subtracted."""
-        label = f"a{k}{self.suffix}"
+        label = self._named("a", k)
         product = self.builder.gain(source, label, self.section.a[k], section=self.index, part="a", feedback=True)
         return minus(self._placed(product, at, "W"))
 
@@ -81,6 +83,9 @@ class Draft:
             return terms[0]
         total = self.builder.sum(*terms, label=f"{name}{self.suffix}")
         return self.builder.place(total, parts[-1].at, parts[-1].face, parts=parts if len(parts) > 1 else ())
+
+    def _named(self, letter: str, k: int) -> str:
+        return f"{letter}{self.numbers[k] if self.numbers else k}{self.suffix}"
 
     def _placed(self, ref: Ref, at: Point, face: str = "E") -> Ref:
         return self.builder.place(ref, self._on_page(at), face)

@@ -12,8 +12,14 @@ A_ROW = 2
 MOST_DRAWN = 8
 """Sections beyond which one that stands for all is drawn."""
 
+FRONT = 0.75
+"""Columns from the input to the gain in front, and from there to the first section."""
+
+MOST_ROWS = 16
+"""Rows that fit the height of a page; in a longer section one row stands for all between the first and the last."""
+
 LEAD = 0.875
-GAP = 0.875
+GAP = 1.0
 GUTTER = 1.5
 
 
@@ -26,8 +32,8 @@ def draw(division: Division, form: Form) -> Diagram:
     signal = builder.place(builder.input(), (0.0, 0.0))
     left = LEAD
     if division.front is not None:
-        signal = builder.place(builder.gain(signal, "g", division.front, section=0, part="b"), (LEAD, 0.0))
-        left += LEAD
+        signal = builder.place(builder.gain(signal, "g", division.front, section=0, part="b"), (FRONT, 0.0))
+        left = 2 * FRONT
     several = len(division.sections) > 1
     tiles = Tiles(builder, form, left, max(map(delays_down, division.sections)))
     for index, section in enumerate(division.sections):
@@ -36,7 +42,7 @@ def draw(division: Division, form: Form) -> Diagram:
         draft = Draft(builder, section, index, f"_{index + 1}" if several else "", tiles.origin(index))
         signal = form.build_section(draft, signal)
     tiles.place_output(builder.output(signal), len(division.sections) - 1)
-    return builder.build(general=general_section(division.sections, form))
+    return builder.build(general=general_of(division.sections, form))
 
 
 class Tiles:
@@ -58,7 +64,7 @@ class Tiles:
     def register(self, signal: Ref, index: int) -> Ref:
         """The register before a section, at the end of the section before it; the wire to a new row runs in the gutter."""
         column, row = self.right(index - 1)
-        between = self.builder.place(self.builder.round(signal, f"between_{index}"), (column + 0.375, row), small=True)
+        between = self.builder.place(self.builder.round(signal, f"between_{index}"), (column + GAP / 2, row), small=True)
         left, below = self.origin(index)
         if below > row:
             gutter, out, back = below - LEAD, column + 0.875, left - 0.5
@@ -75,10 +81,16 @@ def delays_down(section: Polynomials) -> int:
     return max(len(section.a), len(section.b)) - 1
 
 
-def general_section(sections: Sections, form: Form) -> General | None:
-    """One section with the index i, where there are too many to draw."""
-    if len(sections) <= MOST_DRAWN:
-        return None
+def general_of(sections: Sections, form: Form) -> General | None:
+    """What is drawn where there are too many sections, or one is too long."""
+    if len(sections) > MOST_DRAWN:
+        return general_section(sections, form)
+    longest = max(map(delays_down, sections))
+    return general_row(sections[0], form) if longest * form.pitch > MOST_ROWS else None
+
+
+def general_section(sections: Sections, form: Form) -> General:
+    """One section with the index i."""
     builder = Builder()
     fullest = max(sections, key=lambda section: len(section.a) + len(section.b))
     x = builder.place(builder.input("x_i"), (0.0, 0.0))
@@ -86,3 +98,14 @@ def general_section(sections: Sections, form: Form) -> General | None:
     builder.place(builder.output(y, "y_i"), (LEAD + form.width + LEAD, 0.0))
     return General(builder.build(), f"Section i of {len(sections)} in series, each rounded before the next: "
                                     f"x_1 = x, x_i+1 = y_i, y = y_{len(sections)}.")
+
+
+def general_row(section: Polynomials, form: Form) -> General:
+    """One section with a row k that stands for all between the first and the last."""
+    builder = Builder()
+    last = delays_down(section)
+    short = Polynomials(section.b[:3], section.a[:3])
+    x = builder.place(builder.input(), (0.0, 0.0))
+    y = form.build_section(Draft(builder, short, 0, "", (LEAD, 0.0), ("0", "_k", "_N")), x)
+    builder.place(builder.output(y), (LEAD + form.width + LEAD, 0.0))
+    return General(builder.build(), f"The row of k stands for all rows k = 1 to {last - 1}, one delay apart; N = {last}.")

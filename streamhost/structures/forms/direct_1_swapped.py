@@ -45,15 +45,15 @@ def build_section(draft: Draft, x: Ref) -> Ref:
     b, a = draft.section.b, draft.section.a
     ws = draft.line("w", len(a) - 1, column=1.75)
     # Only a recursion makes a w that is not yet there; without one the copy's line hangs on x.
-    vs = draft.line("v", len(b) - 1, None if ws else x, column=2.625)
+    vs = draft.line("v", len(b) - 1, None if ws else x, column=2.5)
     fed_back = [draft.a(k, ws[k - 1], at=(0.875, k)) for k in reversed(range(1, len(a)))]
     w = draft.climb("w", [*fed_back, x], column=0, rows=range(len(a) - 1, -1, -1))
     if ws:
         ws[0].takes(w)
     if ws and vs:
         vs[0].takes(w)
-    products = [draft.b(k, (w, *vs)[k], at=(3.5, k)) for k in reversed(range(len(b)))]
-    return draft.climb("y", products, column=4.375, rows=range(len(b) - 1, -1, -1))
+    products = [draft.b(k, (w, *vs)[k], at=(3.375, k)) for k in reversed(range(len(b)))]
+    return draft.climb("y", products, column=4.25, rows=range(len(b) - 1, -1, -1))
 
 
 FORM = Form(
@@ -62,5 +62,5 @@ FORM = Form(
     begins_with="recursion",
     build_section=build_section,
     docs=__doc__,
-    width=4.375,
+    width=4.25,
 )
