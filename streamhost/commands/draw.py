@@ -25,13 +25,13 @@ SVG = ".svg"
 @force_option
 def draw(preset: str, output: str | None, rounded: bool, variations: Sequence[str], force: bool) -> None:
     """The block diagram of PRESET: as plain text, or with -o as SVG with the values of the coefficients."""
-    from streamhost.commands.render import realized
+    from streamhost.presets.realizing import realize_preset
 
     check_output(output)
     presets = presets_named([preset], variations)
     if len(presets) > 1:
         raise RequestError(f"--vary makes {len(presets)} realizations of {preset}, and one is drawn. Give each key one value.")
-    realization = realized(presets[0])
+    realization = realize_preset(presets[0])
     marks = rounded_nodes(realization) if rounded else frozenset()
     diagram = drawn_diagram(realization)
     if output is None:

@@ -12,7 +12,6 @@ from streamhost.commands.common import MINUS, Progress, force_option, presets_na
 if TYPE_CHECKING:
     from streamhost.files import AudioInfo
     from streamhost.host.rendering import Rendered
-    from streamhost.presets import Preset
     from streamhost.realization import Realization
 
 SUBTYPES = ("pcm16", "pcm24", "pcm32", "float")
@@ -57,13 +56,6 @@ def render(preset: str, source: str, destination: str, subtype: Any, force: bool
     if problem := notice():
         click.echo(problem, err=True)
     click.echo("\n".join(summary(rendered, realization)))
-
-
-def realized(preset: "Preset") -> "Realization":
-    """What a preset states, ready to run."""
-    from streamhost.presets.realizing import realize_preset
-
-    return realize_preset(preset)
 
 
 def _minute_by_minute(progress: Progress, info: "AudioInfo") -> Callable[[int], None]:
