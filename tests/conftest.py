@@ -1,6 +1,8 @@
 """What every test shares: a kernel cache of the tests' own, and laws that are tried on the same examples every time."""
 
 import os
+import signal
+import threading
 from pathlib import Path
 
 from hypothesis import settings
@@ -15,3 +17,7 @@ os.environ.setdefault("STREAMHOST_CACHE", str(ROOT / ".pytest_cache" / "streamho
 settings.register_profile("fixed", deadline=None, derandomize=True, database=None)
 settings.register_profile("explore", deadline=None, max_examples=2000, print_blob=True)
 settings.load_profile("fixed")
+
+# A run in the background of a script starts with Ctrl-C ignored, and so would every process that the tests interrupt.
+if threading.current_thread() is threading.main_thread():
+    signal.signal(signal.SIGINT, signal.default_int_handler)
