@@ -222,14 +222,3 @@ class _Finder:
 def trailing_zeros(code: int) -> float:
     """Low bits of a coefficient that are 0; infinitely many for 0."""
     return inf if code == 0 else float((code & -code).bit_length() - 1)
-
-
-def predicted_mean(program: Program, channel: int = 0, output: int = 0) -> float:
-    """The mean that roundings with a mean leave at an output, in units of full scale."""
-    sources = noise_sources(program, channel)
-    nodes = sorted({node for source in sources for node, _ in source.places if source.mean})
-    if not nodes:
-        return 0.0
-    gains = response_to_output(program.diagram, nodes, np.zeros(1), channel, output=output)[0].real
-    gain = dict(zip(nodes, gains, strict=True))
-    return float(sum(source.mean * gain[node] for source in sources if source.mean for node, _ in source.places))

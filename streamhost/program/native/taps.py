@@ -3,6 +3,7 @@
 from typing import TYPE_CHECKING
 
 from streamhost.diagram.nodes import Taps
+from streamhost.formats import Quantizer
 from streamhost.program.native.text import Value, overflowed_text, rounded_text
 from streamhost.program.program import TapsArithmetic
 
@@ -108,12 +109,9 @@ class TapsPrinter:
         self.print_product(j, k, value, at, halved)
 
     def quantized(
-        self, name: str, value: Value, at: int, quantizer: object, ordinal: int | None, j: str, k: int
+        self, name: str, value: Value, at: int, quantizer: Quantizer, ordinal: int | None, j: str, k: int
     ) -> tuple[Value, int]:
         """An operand after a quantizer; its dither key moves on with the tap."""
-        from streamhost.formats import Quantizer
-
-        assert isinstance(quantizer, Quantizer), "a quantizer"
         self.text(f"b{name} = {value.text}")
         source = Value(f"b{name}", value.bound, is_wide=value.is_wide)
         drop = at - quantizer.word.fraction
