@@ -6,11 +6,12 @@ from random import Random
 
 import pytest
 from drawing_reader import crossings, faults_of, page_of
+from form_filters import DIRECT
 
 from streamhost.diagram import Diagram, Round, Sum
 from streamhost.drawing import layout_of, plain, svg
 from streamhost.filters import Filter
-from streamhost.structures import build, form, forms
+from streamhost.structures import build, form
 from streamhost.structures.series import MOST_DRAWN
 
 ORDERS = range(1, 13)
@@ -50,13 +51,13 @@ def check_named(diagram: Diagram, rounded: set[int]) -> None:
 
 
 @pytest.mark.parametrize("order", ORDERS)
-@pytest.mark.parametrize("name", forms())
+@pytest.mark.parametrize("name", DIRECT)
 def test_a_whole_form_is_drawn_as_it_is(name: str, order: int) -> None:
     check_named(whole(name, order, order), set())
 
 
 @pytest.mark.parametrize("orders", [(0, 0), (0, 1), (1, 0), (0, 3), (3, 0), (5, 2), (2, 5), (2, 1), (1, 2)], ids=str)
-@pytest.mark.parametrize("name", forms())
+@pytest.mark.parametrize("name", DIRECT)
 def test_orders_that_differ(name: str, orders: tuple[int, int]) -> None:
     diagram = whole(name, *orders)
     check_named(diagram, set())
@@ -65,7 +66,7 @@ def test_orders_that_differ(name: str, orders: tuple[int, int]) -> None:
 
 @pytest.mark.parametrize("odd", [False, True], ids=["even", "odd"])
 @pytest.mark.parametrize("sections", [2, 3, 5, MOST_DRAWN])
-@pytest.mark.parametrize("name", forms())
+@pytest.mark.parametrize("name", DIRECT)
 def test_a_cascade_wraps_on_the_page(name: str, sections: int, odd: bool) -> None:
     diagram = cascade(name, sections, odd=odd)
     check_named(diagram, set())
@@ -73,13 +74,13 @@ def test_a_cascade_wraps_on_the_page(name: str, sections: int, odd: bool) -> Non
         check_named(diagram, sums(diagram))
 
 
-@pytest.mark.parametrize("name", forms())
+@pytest.mark.parametrize("name", DIRECT)
 def test_a_gain_in_front_has_its_place(name: str) -> None:
     diagram = cascade(name, 2, scaling="l2")
     check_named(diagram, set())
 
 
-@pytest.mark.parametrize("name", forms())
+@pytest.mark.parametrize("name", DIRECT)
 def test_a_long_cascade_is_one_section_with_all_values(name: str) -> None:
     diagram = cascade(name, MOST_DRAWN + 1)
     general = diagram.hints.general
@@ -92,7 +93,7 @@ def test_a_long_cascade_is_one_section_with_all_values(name: str) -> None:
 
 
 @pytest.mark.parametrize("orders", [(40, 40), (100, 0), (2, 30)], ids=str)
-@pytest.mark.parametrize("name", forms())
+@pytest.mark.parametrize("name", DIRECT)
 def test_a_long_section_is_one_row_with_all_values(name: str, orders: tuple[int, int]) -> None:
     diagram = whole(name, *orders)
     general = diagram.hints.general
@@ -104,7 +105,7 @@ def test_a_long_section_is_one_row_with_all_values(name: str, orders: tuple[int,
     assert all(f">{value}<" in text for value in values)
 
 
-@pytest.mark.parametrize("name", forms())
+@pytest.mark.parametrize("name", DIRECT)
 def test_marks_stand_where_asked_and_not_before_a_drawn_rounding(name: str) -> None:
     diagram = cascade(name, 2)
     marked = {int(mark.split(".")[0]) for mark in page_of(svg(diagram, rounded=sums(diagram))).marks}
@@ -114,7 +115,7 @@ def test_marks_stand_where_asked_and_not_before_a_drawn_rounding(name: str) -> N
 
 
 def test_every_form_says_how_wide_it_is() -> None:
-    for name in forms():
+    for name in DIRECT:
         places = whole(name, 2, 2).hints.places
         assert places is not None
         columns = [place.at[0] for place in places.values()]
@@ -157,7 +158,7 @@ def test_plain_text_of_a_biquad() -> None:
     ]
 
 
-@pytest.mark.parametrize("name", forms())
+@pytest.mark.parametrize("name", DIRECT)
 def test_plain_text_is_ascii_and_shows_every_symbol(name: str) -> None:
     diagram = cascade(name, 2)
     drawing = plain(diagram).rsplit("\n\n", 1)[0]

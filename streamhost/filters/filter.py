@@ -142,11 +142,16 @@ class Filter:
         Trailing zeros are left out. The rounding can move poles that lie close together far, even out of the
         unit circle; `unstable_poles` of a filter made from these lists tells.
         """
+        numerator, denominator = self.ratio()
+        return rounded(numerator), rounded(denominator)
+
+    def ratio(self) -> tuple[Polynomial, Polynomial]:
+        """(b, a) of the product of all factors in ascending powers of z^-1, exact; a[0] is 1, trailing zeros left out."""
         numerator, denominator = ONE, ONE
         for factor in self.factors:
             b, a = _expanded(factor)
             numerator, denominator = product(numerator, b), product(denominator, a)
-        return rounded(stripped(numerator)), rounded(stripped(denominator))
+        return stripped(numerator), stripped(denominator)
 
     def zeros_poles(self) -> ZerosPoles:
         """Zeros, poles and gain of the product of all factors; what cancels is kept.

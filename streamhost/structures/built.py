@@ -9,6 +9,7 @@ from streamhost.structures import cascade, whole
 from streamhost.structures.choices import check_all
 from streamhost.structures.division import Division, Sections
 from streamhost.structures.form import Form
+from streamhost.structures.forms import FORMS
 from streamhost.structures.forms import form as form_of
 from streamhost.structures.hazards import hazards_of
 from streamhost.structures.series import draw
@@ -41,15 +42,30 @@ def build(
 
     A choice of None is not stated: see `cascade.divide` for what is then done. With `whole` there is one section, and
     pairing and ordering make no difference. A filter given as codes is drawn as the cascade it is.
-    StructureError where a name is unknown or the filter cannot be divided like that.
+    StructureError where a name is unknown, the filter cannot be divided like that, or the form cannot carry a section.
     """
     drawn_as = form_of(form)
     check_all(decomposition, pairing, ordering, scaling)
     division = _divided(filter, drawn_as, decomposition, pairing, ordering, scaling)
+    _check_carried(division, drawn_as)
     return Built(
         draw(division, drawn_as), decomposition, form, division.pairing, division.ordering, division.scaling,
-        division.sections, division.front, hazards_of(filter, division.sections),
+        division.sections, division.front, (*hazards_of(filter, division.sections), *_hazards(division, drawn_as)),
     )
+
+
+def _check_carried(division: Division, form: Form) -> None:
+    ratios = [division.ratio(index) for index in range(len(division.sections))]
+    for number, ratio in enumerate(ratios, 1):
+        if reason := form.carries(ratio):
+            which = "the filter" if division.undivided or len(ratios) == 1 else f"section {number} of {len(ratios)}"
+            able = [name for name, other in FORMS.items() if not any(map(other.carries, ratios))]
+            raise StructureError(f'form "{form.name}" cannot carry {which}: {reason}. Forms that can: {", ".join(able)}.')
+
+
+def _hazards(division: Division, form: Form) -> tuple[str, ...]:
+    found = [sentence for index in range(len(division.sections)) for sentence in form.hazards(division.ratio(index))]
+    return tuple(dict.fromkeys(found))
 
 
 def _divided(

@@ -4,19 +4,49 @@ from collections.abc import Iterable
 from dataclasses import dataclass
 
 from streamhost.filters import Polynomials
+from streamhost.filters.exact import Polynomial, exactly
 
 Sections = tuple[Polynomials, ...]
 
 
 @dataclass(frozen=True)
+class Ratio:
+    """B / A of a section in exact numbers, ascending powers of z^-1, a[0] = 1, without trailing zeros."""
+
+    b: Polynomial
+    a: Polynomial
+
+    @property
+    def order(self) -> int:
+        return max(len(self.a), len(self.b)) - 1
+
+    @property
+    def is_recursive(self) -> bool:
+        return len(self.a) > 1
+
+
+def ratio_of(section: Polynomials) -> Ratio:
+    """The exact ratio of rounded polynomials."""
+    return Ratio(exactly(section.b), exactly(section.a))
+
+
+@dataclass(frozen=True)
 class Division:
-    """Sections in the order in which they are drawn, a gain in front of the first (None: none), and what was chosen."""
+    """Sections in the order in which they are drawn, a gain in front of the first (None: none), and what was chosen.
+
+    `undivided`: the filter itself in exact numbers, where it is the one section as it stands.
+    """
 
     sections: Sections
     front: float | None
     pairing: str
     ordering: str
     scaling: str
+    undivided: Ratio | None = None
+
+    def ratio(self, index: int) -> Ratio:
+        """A section in exact numbers: of an undivided filter before its coefficients were rounded."""
+        return self.undivided or ratio_of(self.sections[index])
 
 
 def trimmed(section: Polynomials) -> Polynomials:

@@ -1,12 +1,13 @@
 """What a form is, and the pen that every form draws its sections with."""
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Literal
 
 from streamhost.diagram.builder import Builder, Ref, Signed, minus
 from streamhost.diagram.hints import Part, Point
 from streamhost.filters import Polynomials
+from streamhost.structures.division import Ratio, ratio_of
 
 Half = Literal["numerator", "recursion"]
 
@@ -19,7 +20,8 @@ class Draft:
     """A section being drawn: its polynomials, its index, and what its labels end with where there are several.
 
     `origin` is where its first column and row are on the page; places are said from there. `numbers` are written for
-    the numbers of the coefficients in a section that stands for a longer one.
+    the numbers of the coefficients in a section that stands for a longer one. `ratio` is the section in exact numbers,
+    for forms whose coefficients are computed from it. `offered` collects further outputs by name.
     """
 
     builder: Builder
@@ -28,6 +30,29 @@ class Draft:
     suffix: str = ""
     origin: Point = (0.0, 0.0)
     numbers: tuple[str, ...] = ()
+    exact: Ratio | None = None
+    offered: dict[str, Ref] = field(default_factory=dict)
+
+    @property
+    def ratio(self) -> Ratio:
+        return self.exact or ratio_of(self.section)
+
+    def offer(self, name: str, ref: Ref) -> None:
+        """A further output of the form, which those who ask for all outputs get."""
+        self.offered[name] = ref
+
+    def delay(self, name: str, source: Ref | None = None, *, at: Point, face: str = "E", n: int = 1) -> Ref:
+        """A delay of n frames, driven now or later."""
+        return self._placed(self.builder.delay(f"{name}{self.suffix}", source, n=n), at, face)
+
+    def gain(self, name: str, value: float, source: Ref, *, at: Point, face: str = "E", part: str = "") -> Ref:
+        """The product of a coefficient of the form's own."""
+        label = f"{name}{self.suffix}"
+        return self._placed(self.builder.gain(source, label, value, section=self.index, part=part), at, face)
+
+    def shift(self, name: str, k: int, source: Ref, *, at: Point, face: str = "E") -> Ref:
+        """2^k of the structure."""
+        return self._placed(self.builder.shift(source, k, f"{name}{self.suffix}"), at, face)
 
     def line(self, name: str, length: int, source: Ref | None = None, *, column: float) -> tuple[Ref, ...]:
         """`length` delays in a row, the first driven by `source`, or later where there is none; drawn downwards."""
@@ -105,14 +130,32 @@ def adders(rows: Sequence[int]) -> list[tuple[int, int]]:
     return found
 
 
+def delays_down(section: Polynomials) -> int:
+    """How many delays a section of the direct forms has below each other."""
+    return max(len(section.a), len(section.b)) - 1
+
+
+@dataclass(frozen=True)
+class Size:
+    """What a drawn section takes: columns, rows, and the row at which its output leaves on the right."""
+
+    columns: float
+    rows: float
+    exit: float = 0.0
+
+
 @dataclass(frozen=True)
 class Form:
     """One way to draw a section, or a whole filter, of any order.
 
     `build_section` takes a draft and the section's input and returns the section's output; the order in which it
     creates nodes is the order in which ready nodes are evaluated. `begins_with` says which half the signal meets
-    first, which is what scaling must know. `docs` explains the form to a user. Drawn, a section is `width` columns
-    wide and has `pitch` rows for each delay.
+    first, which is what scaling must know: "numerator" where the point to scale is the section's output. `docs` explains
+    the form to a user.
+
+    `carries` says in words why a section cannot be drawn in this form, "" where it can. `hazards` are sentences about a
+    section that is drawn and is dangerous. Drawn, a section is `width` columns wide and has `pitch` rows for each delay,
+    its output leaving at the top right, unless `size` says otherwise.
     """
 
     name: str
@@ -120,5 +163,12 @@ class Form:
     begins_with: Half
     build_section: Callable[[Draft, Ref], Ref]
     docs: str
-    width: float
+    width: float = 0.0
     pitch: float = 1.0
+    carries: Callable[[Ratio], str] = lambda ratio: ""
+    hazards: Callable[[Ratio], tuple[str, ...]] = lambda ratio: ()
+    size: Callable[[Polynomials], Size] | None = None
+
+    def size_of(self, section: Polynomials) -> Size:
+        """What the section takes on the page."""
+        return self.size(section) if self.size else Size(self.width, self.pitch * delays_down(section))

@@ -1,10 +1,12 @@
 """Sections in series, as a diagram."""
 
+from collections.abc import Sequence
+
 from streamhost.diagram import Builder, Diagram, Ref
 from streamhost.diagram.hints import General
 from streamhost.filters import Polynomials
 from streamhost.structures.division import Division, Sections
-from streamhost.structures.form import Draft, Form
+from streamhost.structures.form import Draft, Form, Size, delays_down
 
 A_ROW = 2
 """Sections drawn side by side: two fit the width of a page in every form."""
@@ -35,11 +37,12 @@ def draw(division: Division, form: Form) -> Diagram:
         signal = builder.place(builder.gain(signal, "g", division.front, section=0, part="b"), (FRONT, 0.0))
         left = 2 * FRONT
     several = len(division.sections) > 1
-    tiles = Tiles(builder, form, left, max(map(delays_down, division.sections)))
+    tiles = Tiles(builder, [form.size_of(section) for section in division.sections], left)
     for index, section in enumerate(division.sections):
         if index > 0:
             signal = tiles.register(signal, index)
-        draft = Draft(builder, section, index, f"_{index + 1}" if several else "", tiles.origin(index))
+        suffix = f"_{index + 1}" if several else ""
+        draft = Draft(builder, section, index, suffix, tiles.origin(index), exact=division.ratio(index))
         signal = form.build_section(draft, signal)
     tiles.place_output(builder.output(signal), len(division.sections) - 1)
     return builder.build(general=general_of(division.sections, form))
@@ -48,9 +51,10 @@ def draw(division: Division, form: Form) -> Diagram:
 class Tiles:
     """Where the sections of a series are drawn: side by side, row under row."""
 
-    def __init__(self, builder: Builder, form: Form, left: float, delays: int) -> None:
-        self.builder, self.width, self.left = builder, form.width, left
-        self.height = form.pitch * delays + GUTTER
+    def __init__(self, builder: Builder, sizes: Sequence[Size], left: float) -> None:
+        self.builder, self.sizes, self.left = builder, sizes, left
+        self.width = max(size.columns for size in sizes)
+        self.height = max(size.rows for size in sizes) + GUTTER
 
     def origin(self, index: int) -> tuple[float, float]:
         """The first column and row of a section."""
@@ -59,7 +63,7 @@ class Tiles:
     def right(self, index: int) -> tuple[float, float]:
         """Where the signal leaves a section."""
         column, row = self.origin(index)
-        return column + self.width, row
+        return column + self.sizes[index].columns, row + self.sizes[index].exit
 
     def register(self, signal: Ref, index: int) -> Ref:
         """The register before a section, at the end of the section before it; the wire to a new row runs in the gutter."""
@@ -76,17 +80,12 @@ class Tiles:
         self.builder.place(output, (column + LEAD, row))
 
 
-def delays_down(section: Polynomials) -> int:
-    """How many delays a section has below each other."""
-    return max(len(section.a), len(section.b)) - 1
-
-
 def general_of(sections: Sections, form: Form) -> General | None:
     """What is drawn where there are too many sections, or one is too long."""
     if len(sections) > MOST_DRAWN:
         return general_section(sections, form)
     longest = max(map(delays_down, sections))
-    return general_row(sections[0], form) if longest * form.pitch > MOST_ROWS else None
+    return general_row(sections[0], form) if form.size is None and longest * form.pitch > MOST_ROWS else None
 
 
 def general_section(sections: Sections, form: Form) -> General:
@@ -95,7 +94,8 @@ def general_section(sections: Sections, form: Form) -> General:
     fullest = max(sections, key=lambda section: len(section.a) + len(section.b))
     x = builder.place(builder.input("x_i"), (0.0, 0.0))
     y = form.build_section(Draft(builder, fullest, 0, "_i", (LEAD, 0.0)), x)
-    builder.place(builder.output(y, "y_i"), (LEAD + form.width + LEAD, 0.0))
+    size = form.size_of(fullest)
+    builder.place(builder.output(y, "y_i"), (LEAD + size.columns + LEAD, size.exit))
     return General(builder.build(), f"Section i of {len(sections)} in series, each rounded before the next: "
                                     f"x_1 = x, x_i+1 = y_i, y = y_{len(sections)}.")
 

@@ -1,13 +1,15 @@
 """The filter undivided: all factors multiplied exactly, each coefficient rounded once."""
 
 from streamhost.filters import Filter, Polynomials
-from streamhost.structures.division import Division, trimmed
+from streamhost.filters.exact import rounded
+from streamhost.structures.division import Division, Ratio, trimmed
 from streamhost.structures.form import Form
 from streamhost.structures.scaling import rescaled
 
 
 def divide(filter: Filter, form: Form, scaling: str | None) -> Division:
     """One section. One section is in every pairing and every order, so only the scaling makes a difference."""
-    section = trimmed(Polynomials(*filter.whole()))
+    ratio = Ratio(*filter.ratio())
+    section = trimmed(Polynomials(rounded(ratio.b), rounded(ratio.a)))
     sections, front = rescaled((section,), scaling, form.begins_with)
-    return Division(sections, front, "given", "given", scaling or "none")
+    return Division(sections, front, "given", "given", scaling or "none", ratio if front is None else None)

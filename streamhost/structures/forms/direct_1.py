@@ -29,6 +29,9 @@ Fails: poles near z = 1. The rounding passes through 1 / A, which is large there
 longer state or error feedback helps. It needs the most memory. Drawn whole at a high order, the slightest change of a
 coefficient moves the poles far: divide such a filter into a cascade.
 
+Arithmetic: a long accumulator that may wrap (16x16+40, 24x24+56); below some 200 Hz a state of twice the length
+(state and operand, as in 48x24+56). In floating point as good as any.
+
 Carries: any numerator and denominator of any length, as a section or whole. Trailing zeros are left out.
 A line of more than 64 taps without recursion is one tapped-line node, added in the same order.
 """

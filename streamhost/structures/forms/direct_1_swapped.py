@@ -31,6 +31,8 @@ Fails: as direct-2. The node w is the input through 1 / A, which can be larger t
 thousands at low frequencies: scale it (scaling l2) or give it more integer bits. More memory than direct-2 for the
 same arithmetic.
 
+Arithmetic: floating point, or words with integer bits for what the recursion adds: its gain is met before the zeros.
+
 Carries: any numerator and denominator of any length, as a section or whole. Without recursion w is x itself.
 A line of more than 64 taps without recursion is one tapped-line node, added in the same order.
 """

@@ -29,6 +29,8 @@ low frequencies: scale it (scaling l2) or give it more integer bits, or it overf
 under other coefficients, so a change of coefficients is heard. Drawn whole at a high order, the slightest change of a
 coefficient moves the poles far.
 
+Arithmetic: floating point, or words with integer bits for what the recursion adds: its gain is met before the zeros.
+
 Carries: any numerator and denominator of any length, as a section or whole. Without recursion w is x itself.
 A line of more than 64 taps without recursion is one tapped-line node, added in the same order.
 """

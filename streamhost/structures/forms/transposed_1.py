@@ -32,6 +32,8 @@ waits for the other.
 Fails: v is the input through 1 / A, as w is in direct-2, and clips where it is multiplied: scale it (scaling l2) or
 give the signal more integer bits. The most roundings and the most memory of the five.
 
+Arithmetic: floating point. In fixed point every stored sum is rounded, and the pre-sum v needs a longer operand.
+
 Carries: any numerator and denominator of any length, as a section or whole. Without recursion v is x itself.
 """
 

@@ -28,6 +28,8 @@ much larger than input and output; small terms are added to each other before th
 Fails: in fixed point every stored sum is rounded, and the rounding of each passes through 1 / A. Drawn whole at a high
 order, the slightest change of a coefficient moves the poles far.
 
+Arithmetic: float32 and float64. In fixed point a long state (Q1.31 and more) behind a long accumulator.
+
 Carries: any numerator and denominator of any length, as a section or whole. Trailing zeros are left out.
 """
 

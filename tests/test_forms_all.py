@@ -1,0 +1,100 @@
+"""What holds for every form over the filters that it carries, whatever it draws."""
+
+import re
+
+import numpy as np
+import pytest
+from drawing_reader import faults_of, page_of
+from form_filters import RATE, built, carried, filters
+from native_runs import busy, run_counting, run_native
+from scipy import signal
+
+from streamhost import Filter, Fixed
+from streamhost.diagram.norms import norms_to_output, powers_from_input
+from streamhost.drawing import layout_of, svg
+from streamhost.errors import StructureError
+from streamhost.filters import Polynomials
+from streamhost.formats import named_format
+from streamhost.program.run import lower, run_definition
+from streamhost.structures import form, forms
+
+DECOMPOSITIONS = ("cascade", "whole")
+CASES = [(name, how, which) for name in forms() for how in DECOMPOSITIONS for which in carried(name, how)]
+FEW = [cases[place] for name in forms() for cases in [[case for case in CASES if case[0] == name]] for place in (0, -1)]
+HEADINGS = ("Source:", "Counts:", "Good at:", "Fails:", "Carries:", "Arithmetic:")
+EPSILON = 2.0**-52
+LEAST_SCALE = 0.8  # subscripts of 5.6 pt; smaller ones are hard to read in print (common practice)
+FRAMES = 400
+
+
+def by_scipy(filter: Filter, x: np.ndarray) -> np.ndarray:
+    """scipy's filters, one for each factor as it was given."""
+    for factor in filter.factors:
+        if isinstance(factor, Polynomials):
+            x = signal.lfilter(factor.b, factor.a, x)
+        else:
+            at_origin = [0.0] * (len(factor.zeros) + factor.delay - len(factor.poles))
+            x = signal.sosfilt(signal.zpk2sos(factor.zeros, [*factor.poles, *at_origin], factor.gain), x)
+    return x
+
+
+def rounding_bound(name: str, how: str, which: str) -> float:
+    """The most that one rounding of each node, and of each coefficient, of a signal of at most 1 makes at the output.
+
+    A node's value is taken as six times what white noise gives it. Doubled for scipy's own, of the same kind.
+    """
+    diagram = built(name, how, which).diagram
+    values = 6.0 * np.sqrt(powers_from_input(diagram))
+    to_output = norms_to_output(diagram, range(len(diagram.nodes))).l1
+    return 2.0 * 2.0 * EPSILON * float(np.sum(values * to_output))
+
+
+@pytest.mark.parametrize(("name", "how", "which"), CASES)
+def test_in_float64_it_is_scipys_filter(name: str, how: str, which: str) -> None:
+    x = np.random.default_rng(1).uniform(-1, 1, FRAMES)
+    # The definition: kernels have their own test below, and compiling one for each case would take minutes.
+    y = run_definition(lower(built(name, how, which).diagram, named_format("float64")), x[:, np.newaxis])[:, 0, 0]
+    np.testing.assert_allclose(y, by_scipy(filters()[which], x), rtol=0, atol=rounding_bound(name, how, which))
+
+
+@pytest.mark.parametrize(("name", "how", "which"), FEW)
+def test_kernels_are_the_definition(name: str, how: str, which: str) -> None:
+    diagram, x = built(name, how, which).diagram, busy(FRAMES // 2, 1, 5)
+    for format in (Fixed("Q1.15", coefficients={"bits": 20}, allow_vanishing=True), named_format("float32")):
+        program = lower(diagram, format)
+        expected = run_counting(program, x)[0] if isinstance(format, Fixed) else run_definition(program, x)
+        np.testing.assert_array_equal(run_native(program, x).y, expected)
+
+
+@pytest.mark.parametrize(("name", "how", "which"), CASES)
+def test_the_drawing_is_the_diagram(name: str, how: str, which: str) -> None:
+    diagram = built(name, how, which).diagram
+    places = diagram.hints.places_for(diagram.nodes)
+    assert places is not None, "every node of a form has a place"
+    text = svg(diagram)
+    assert faults_of(text, diagram) == []
+    assert [label.symbol.id for label in layout_of(diagram).labels if label.hit] == []
+    assert page_of(text).scale >= LEAST_SCALE
+
+
+@pytest.mark.parametrize("name", forms())
+def test_it_carries_something_and_says_what(name: str) -> None:
+    assert carried(name, "cascade") or carried(name, "whole")
+    docs = form(name).docs
+    assert docs.startswith(f"{name}: ")
+    assert [heading for heading in HEADINGS if not re.search(rf"^{heading}", docs, re.MULTILINE)] == []
+
+
+@pytest.mark.parametrize("name", [name for name in forms() if set(carried(name, "whole")) < set(filters())])
+def test_what_it_cannot_carry_is_refused_with_the_forms_that_can(name: str) -> None:
+    for which in filters().keys() - set(carried(name, "whole")):
+        with pytest.raises(StructureError, match=f'form "{name}" cannot carry the filter: .+ Forms that can: ') as refused:
+            built(name, "whole", which)
+        able = str(refused.value).partition("Forms that can: ")[2].rstrip(".").split(", ")
+        assert name not in able
+        assert {"direct-1", "direct-2"} <= set(able)
+        assert all(which in carried(other, "whole") for other in able)
+
+
+def test_filters_are_at_one_rate() -> None:
+    assert {filter.rate for filter in filters().values()} == {RATE}
