@@ -1,5 +1,6 @@
 """A realization: filter + decomposition + form + format, with its state. The thing that runs."""
 
+from collections import deque
 from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cached_property
@@ -15,6 +16,7 @@ from streamhost.errors import FilterError, FormatError, RequestError
 from streamhost.filters import Filter, Polynomials
 from streamhost.filters.stability import unstable_poles
 from streamhost.formats import Fixed, Float, Format, named_format, parse_word
+from streamhost.program.carrying import Carried, carry, is_run
 from streamhost.program.program import Program
 from streamhost.program.run import lower
 from streamhost.structures import Built, build
@@ -23,6 +25,9 @@ if TYPE_CHECKING:
     from streamhost.program.native.kernel import Kernel, Memory
 
 MOST_REAL_BITS = 53
+MOST_HISTORY = 1 << 16
+"""Frames of past input that are kept for a realization that takes over and holds past input."""
+
 Scalar = TypeVar("Scalar", bound=np.generic)
 
 
@@ -49,6 +54,7 @@ class Realization:
         self.program: Program = lower(built.diagram, format)
         self._memory: Memory | None = None
         self._kernels: dict[bool, Kernel] = {}
+        self._recent: deque[NDArray[np.generic]] = deque()
 
     def __repr__(self) -> str:
         return f"<Realization {self.form} · {self.decomposition} · {self.format.label}, {self.diagram.counts()}>"
@@ -109,6 +115,42 @@ class Realization:
     def reset(self) -> None:
         """Zero state, as after construction."""
         self._memory = None
+        self._recent.clear()
+
+    def carry_from(self, other: "Realization") -> Carried:
+        """Take over from another realization: the state whose output, without input, is nearest to the other's.
+
+        Any two of one rate and with an output in common, whatever their filters, forms and formats; this one's own state
+        is lost. States that hold past input are set from it, residues start at 0. See `diagram/carrying.py`.
+        Raises RequestError where the rates differ, no output is common, or coefficients are of another number of channels.
+        """
+        if self.filter.rate != other.filter.rate:
+            raise RequestError(f"A state at {other.filter.rate:g} Hz cannot be carried to {self.filter.rate:g} Hz.")
+        self.reset()
+        if other._memory is None:
+            return Carried("copied", 0.0, 0)
+        self._memory = self.memory(other._memory.channels)
+        past = other._past()
+        if is_run(self.program):
+            self._run(past[-self.program.state_words :], codes=False)
+            carried = Carried("run", None, 0)
+        else:
+            carried = carry(other.program, other._memory, self.program, self._memory, self.filter.rate, past)
+        self._recent = deque([past])
+        return carried
+
+    def _past(self) -> NDArray[np.float64]:
+        """The input of the last frames, (frames, channels), oldest first, 1.0 = full scale."""
+        step = 2.0**-self.format.input.word.fraction if isinstance(self.format, Fixed) else 1.0
+        blocks = [block.astype(np.float64) * (step if block.dtype == np.int64 else 1.0) for block in self._recent]
+        assert self._memory is not None, "only what has run has a past"
+        past: NDArray[np.float64] = np.vstack([np.zeros((0, self._memory.channels)), *blocks])
+        return np.where(np.isnan(past), 0.0, past)
+
+    def _remember(self, block: NDArray[np.generic]) -> None:
+        self._recent.append(block[-MOST_HISTORY:].copy())
+        while sum(map(len, self._recent)) - len(self._recent[0]) >= MOST_HISTORY:
+            self._recent.popleft()
 
     def tally(self) -> Tally:
         """What happened since reset."""
@@ -145,6 +187,7 @@ class Realization:
         y = np.empty((frames, len(self.outputs) * channels), block.dtype)
         marks = np.zeros(block.shape, np.uint8)
         self._kernel(codes).call(self._memory, np.ascontiguousarray(block), y, marks=marks, trace=no_trace())
+        self._remember(block)
         if len(self.outputs) > 1:
             return y.reshape(frames, len(self.outputs), channels)
         return y[:, 0] if x.ndim == 1 else y

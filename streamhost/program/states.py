@@ -1,0 +1,58 @@
+"""The working memory of a kernel as real states, newest first as the linear analysis counts them, and back."""
+
+from collections.abc import Iterator
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+
+from streamhost.program.program import Program
+
+if TYPE_CHECKING:
+    from streamhost.program.native.kernel import Memory
+
+FloatArray = NDArray[np.float64]
+
+
+def read_states(program: Program, memory: "Memory") -> FloatArray:
+    """(states, channels) in real values, 1.0 = full scale."""
+    values = np.zeros((program.state_words, memory.channels))
+    for source, state, place in _places(program, memory.frame):
+        step = 2.0 ** -program.numbers[source].fraction if program.numbers else 1.0
+        values[state] = memory.state[place] * step
+    return values
+
+
+def write_states(program: Program, memory: "Memory", values: FloatArray) -> int:
+    """Put real states (states, channels) into the memory: half-even, saturating. Returns how many did not fit."""
+    clipped = 0
+    for source, state, place in _places(program, memory.frame):
+        if not program.numbers:
+            memory.state[place] = values[state].astype(program.types[source])
+            continue
+        number = program.numbers[source]
+        for channel, value in enumerate(values[state]):
+            code = _code(float(value), number.fraction)
+            held = min(max(code, -number.bound), number.bound - 1)
+            clipped += held != code
+            memory.state[place, channel] = held
+    return clipped
+
+
+def _code(value: float, fraction: int) -> int:
+    """Half-even, in integers of any size."""
+    numerator, denominator = value.as_integer_ratio()
+    shifted = numerator << fraction if fraction >= 0 else numerator
+    whole, rest = divmod(shifted, denominator if fraction >= 0 else denominator << -fraction)
+    twice = 2 * rest - (denominator if fraction >= 0 else denominator << -fraction)
+    return whole + (twice > 0 or (twice == 0 and whole % 2 == 1))
+
+
+def _places(program: Program, frame: int) -> Iterator[tuple[int, int, int]]:
+    """(what is stored, state, row of the memory): a line is a ring that was written last in the frame before."""
+    state = 0
+    for node, offset in program.state_offsets.items():
+        stores, (source,) = program.nodes[node].stores, program.nodes[node].reads
+        for k in range(stores):
+            yield source, state + k, offset + (frame - 1 - k) % stores
+        state += stores
