@@ -3,11 +3,12 @@
 from collections.abc import Mapping
 
 from streamhost.errors import FilterError, nearest
-from streamhost.filters import classic, cookbook, curves, entry, fir, simple
+from streamhost.filters import classic, cookbook, crossovers, curves, entry, fir, simple
 from streamhost.filters.filter import Filter
 from streamhost.filters.kind import Kind
 
-KINDS: Mapping[str, Kind] = {kind.name: kind for family in (cookbook, classic, simple, fir, curves) for kind in family.KINDS}
+FAMILIES = (cookbook, classic, crossovers, simple, fir, curves)
+KINDS: Mapping[str, Kind] = {kind.name: kind for family in FAMILIES for kind in family.KINDS}
 
 
 def design(kind: str, *, rate: object, **parameters: object) -> Filter:

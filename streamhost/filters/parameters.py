@@ -137,6 +137,19 @@ class Edges:
 
 
 @dataclass(frozen=True)
+class Pair:
+    """Two frequencies that rise."""
+
+    def allowed(self, rate: float | None) -> str:
+        half = "" if rate is None else f" ({rate / 2:g})"
+        return f"a list of two numbers that rise, above 0 and below half the rate{half}"
+
+    def taken(self, value: object, rate: float | None) -> tuple[float, float] | None:
+        edges = Edges().taken(value, rate)
+        return edges if isinstance(edges, tuple) else None
+
+
+@dataclass(frozen=True)
 class Parameter:
     """One parameter of a kind: required unless it has a default or is one of several alternatives."""
 
