@@ -44,12 +44,13 @@ class Tally:
 class Realization:
     """A filter in a structure and a format. State is kept from call to call; `reset` clears it.
 
-    `diagram` is the block diagram as drawn, with the coefficients before rounding; `program` the same with every
-    rounding explicit and the coefficients as stored.
+    `filters` is what was asked for: one filter, or one for each channel. `diagram` is the block diagram as drawn, with the
+    coefficients before rounding; `program` the same with every rounding explicit and the coefficients as stored.
     """
 
-    def __init__(self, filter: Filter, built: Built, format: Format) -> None:
-        self.filter, self.built, self.format = filter, built, format
+    def __init__(self, filter: Filter | Sequence[Filter], built: Built, format: Format) -> None:
+        self.filters = (filter,) if isinstance(filter, Filter) else tuple(filter)
+        self.built, self.format = built, format
         self.diagram: Diagram = built.diagram
         self.program: Program = lower(built.diagram, format)
         self._memory: Memory | None = None
@@ -58,6 +59,16 @@ class Realization:
 
     def __repr__(self) -> str:
         return f"<Realization {self.form} · {self.decomposition} · {self.format.label}, {self.diagram.counts()}>"
+
+    @property
+    def filter(self) -> Filter:
+        """What was asked for, of the first channel where channels differ."""
+        return self.filters[0]
+
+    @property
+    def rate(self) -> float:
+        """In hertz."""
+        return self.filter.rate
 
     @property
     def form(self) -> str:
@@ -210,7 +221,7 @@ def tally(program: Program, meters: NDArray[np.int64] | None) -> Tally:
 
 
 def realize(
-    filter: Filter,
+    filter: Filter | Sequence[Filter],
     *,
     form: str = "transposed-2",
     decomposition: str = "cascade",
@@ -220,32 +231,47 @@ def realize(
     format: Format | str = "float64",
     allow_unstable: bool = False,
 ) -> Realization:
-    """A filter realized: divided, drawn, and put into an arithmetic.
+    """A filter realized: divided, drawn, and put into an arithmetic. Of a sequence, each is the filter of a channel.
 
     `format` is a Fixed, a Float or the name of a shipped arithmetic. Choices left at None take the defaults: pairing
     nearest, ordering outward, scaling none; a filter given as sections keeps them.
     Raises FilterError for a filter that is unstable as asked (unless allowed), StructureError, FormatError.
     """
-    if not isinstance(filter, Filter):
-        raise FilterError(f"realize takes a Filter, not {type(filter).__name__}. streamhost.design makes one.")
+    filters = (filter,) if isinstance(filter, Filter) else _of_channels(filter)
     if not isinstance(format, Fixed | Float | str):
         raise FormatError(f"format = {format!r} is no Fixed, no Float and no name of an arithmetic.")
-    if (poles := filter.unstable_poles()) and not allow_unstable:
+    if (poles := max(each.unstable_poles() for each in filters)) and not allow_unstable:
         lie = "lies" if poles == 1 else "lie"
         raise FilterError(
             f"The filter as asked is unstable: {poles} of its poles {lie} on or outside the unit circle. State "
             f"allow_unstable = true to run it all the same."
         )
     arithmetic = named_format(format) if isinstance(format, str) else format
-    built = build(filter, form=form, decomposition=decomposition, pairing=pairing, ordering=ordering, scaling=scaling)
-    return Realization(filter, built, _with_codes(filter, arithmetic))
+    built = build(filters, form=form, decomposition=decomposition, pairing=pairing, ordering=ordering, scaling=scaling)
+    return Realization(filters, built, _with_codes(filters, arithmetic))
 
 
-def _with_codes(filter: Filter, format: Format) -> Format:
-    """The format with the word of a filter given as codes at its `coefficients` place."""
-    if filter.codes is None or not isinstance(format, Fixed):
+def _of_channels(given: object) -> tuple[Filter, ...]:
+    """The filters of channels that can run through one diagram."""
+    filters = tuple(given) if isinstance(given, Sequence) else ()
+    if not filters or not all(isinstance(each, Filter) for each in filters):
+        raise FilterError(f"realize takes a Filter, or a sequence with one for each channel, not {type(given).__name__}. "
+                          "streamhost.design makes one.")
+    for what, found in (("rates", {each.rate for each in filters}), ("outputs", {each.outputs for each in filters})):
+        if len(found) > 1:
+            raise FilterError(f"The filters of the channels have different {what}; all channels have the same.")
+    return filters
+
+
+def _with_codes(filters: Sequence[Filter], format: Format) -> Format:
+    """The format with the word of filters given as codes at its `coefficients` place."""
+    given = sorted({"" if each.codes is None else each.codes.word for each in filters})
+    if given == [""] or not isinstance(format, Fixed):
         return format
-    word = parse_word(filter.codes.word, "word", least_integer=-999)
+    if len(given) > 1:
+        raise FilterError("The filter of one channel is given as codes, and that of another is not, or as codes of another "
+                          "word. All channels have coefficients of one word.")
+    word = parse_word(given[0], "word", least_integer=-999)
     if format.coefficients_stated and format.coefficients.word != word:
         raise FormatError(
             f"The filter is given as codes of {word}, which they keep: leave `coefficients` out of the format."

@@ -155,6 +155,12 @@ class Builder:
         """The wire out of a node runs straight from point to point before it branches."""
         self._trunks.append(Trunk(self._own(source), points))
 
+    def trunk_end(self, source: Ref) -> Point:
+        """The last point of the wire out of a node that was said."""
+        points = [point for trunk in self._trunks if trunk.source == self._own(source) for point in trunk.points]
+        assert points, "a wire whose way was said"
+        return points[-1]
+
     def build(self, *, check: bool = True, general: General | None = None) -> Diagram:
         """The diagram; `general` stands for it in drawings. DiagramError where a rule of signal-flow graphs is broken."""
         from streamhost.diagram.legality import check_diagram

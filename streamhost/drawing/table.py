@@ -8,7 +8,7 @@ from math import ceil
 from streamhost.diagram import Diagram
 from streamhost.drawing.text import MINUS, Label, Run, coefficient
 
-NAME = re.compile(r"(-?[A-Za-z]+)(\d*)(?:_(?:\d+|[a-z]))?")
+NAME = re.compile(r"(-?[A-Za-z]+)(\d*)(?:_([a-z][a-z0-9]*))?(?:_(\d+))?")
 DECIMALS = 6
 MOST_COLUMNS = 7
 SMALLEST = 1e-4
@@ -25,7 +25,10 @@ class Table:
 
 @dataclass(frozen=True)
 class Entry:
-    """One coefficient: its name without the section, the section, the channel it is for (None: all), its value."""
+    """One coefficient: its name without the section, the section, the channel it is for (None: all), its value.
+
+    `row` is what the section is called: its number, and, where it leads to one of several outputs, that output's name.
+    """
 
     label: str
     letters: str
@@ -33,6 +36,7 @@ class Entry:
     section: int | None
     channel: int | None
     value: float
+    row: str = ""
 
 
 Key = Callable[[Entry], str]
@@ -47,9 +51,9 @@ def value_table(diagram: Diagram) -> Table | None:
     names = {entry.letters + entry.number for entry in entries}
     if None not in sections and len(names) <= MOST_COLUMNS:
         what = "section" if len(sections) > 1 else ""
-        table = grid(entries, what, lambda e: str((e.section or 0) + 1), lambda e: e.letters + e.number)
+        table = grid(entries, what, lambda e: e.row, lambda e: e.letters + e.number, lambda e: e.section or 0)
     elif sections == {0}:
-        table = grid(entries, "k", lambda e: e.number, lambda e: e.letters)
+        table = grid(entries, "k", lambda e: e.number, lambda e: e.letters, lambda e: int(e.number or 0))
     else:
         table = None
     return in_blocks(table or listed(entries))
@@ -68,25 +72,37 @@ def in_blocks(table: Table) -> Table:
 
 def entries_of(diagram: Diagram) -> list[Entry]:
     differ = bool((diagram.values != diagram.values[:, :1]).any())
+    names = output_rows(diagram)
     found: list[Entry] = []
     for slot, values in zip(diagram.slots, diagram.values.tolist(), strict=True):
         parts = NAME.fullmatch(slot.label)
         letters, number = (parts[1], parts[2]) if parts else (slot.label, "")
+        row = names.get(slot.section, str((slot.section or 0) + 1))
         for channel, value in enumerate(values if differ else values[:1]):
-            found.append(Entry(slot.label, letters, number, slot.section, channel if differ else None, value))
+            found.append(Entry(slot.label, letters, number, slot.section, channel if differ else None, value, row))
     return found
 
 
-def grid(entries: Sequence[Entry], what: str, row: Key, column: Key) -> Table | None:
-    """Rows and columns by two keys; None where two coefficients would share a cell."""
+def output_rows(diagram: Diagram) -> dict[int | None, str]:
+    """What the sections are called that lead to one of several outputs: by its name, and their number there."""
+    named = [(slot.section, NAME.fullmatch(slot.label)) for slot in diagram.slots]
+    rows = [(section, f"{parts[3]} {parts[4] or ''}".rstrip()) for section, parts in named if parts and parts[3]]
+    # the gain in front of a section has its name and not its number
+    return dict(sorted(rows, key=lambda row: len(row[1])))
+
+
+def grid(entries: Sequence[Entry], what: str, row: Key, column: Key, rank: Callable[[Entry], int]) -> Table | None:
+    """Rows and columns by two keys, rows in the order of `rank`; None where two coefficients would share a cell."""
     cells: dict[tuple[str, int | None, str], float] = {}
+    ranks: dict[str, int] = {}
     for entry in entries:
+        ranks.setdefault(row(entry), rank(entry))
         place = (row(entry), entry.channel, column(entry))
         if place in cells:
             return None
         cells[place] = entry.value
     columns = list(dict.fromkeys(column for _, _, column in sorted(cells, key=lambda place: by_letter(place[2]))))
-    rows = sorted({(row, channel) for row, channel, _ in cells}, key=lambda key: (int(key[0] or 0), key[1] or 0))
+    rows = sorted({(row, channel) for row, channel, _ in cells}, key=lambda key: (ranks[key[0]], key[1] or 0))
     scales = {name: is_small([value for (_, _, c), value in cells.items() if c == name]) for name in columns}
     lines = [(*head(row if what else "", channel), *(number(cells.get((row, channel, name)), scales[name]) for name in columns))
              for row, channel in rows]

@@ -22,6 +22,7 @@ OTHERS = {MINUS: 838, DOTS: 1000}
 WIDEST = 1000
 
 COEFFICIENT = re.compile(r"(-?)([A-Za-z]+)_?(\d*)(?:_(\d+|[A-Za-z]))?")
+TO_AN_OUTPUT = re.compile(r"(-?)([A-Za-z]|[A-Za-z]+(?=\d))(?:_?(\d+|[kN]))?_([a-z][a-z0-9]+)(?:_(\d+))?")
 
 
 @dataclass(frozen=True)
@@ -62,8 +63,11 @@ def plain(label: Label) -> str:
 
 
 def coefficient(name: str) -> Label:
-    """A coefficient's name: "b0" is b with 0 lowered, "b0_1" the same of section 1; what is no such name is kept as it is."""
-    found = COEFFICIENT.fullmatch(name)
+    """A coefficient's name: "b0" is b with 0 lowered, "b0_1" the same of section 1, "b0_low_1" of section 1 to the output low.
+
+    What is no such name is kept as it is.
+    """
+    found = COEFFICIENT.fullmatch(name) or TO_AN_OUTPUT.fullmatch(name)
     if found is None:
         return (Run(name),)
     sign, letters, *numbers = found.groups()

@@ -49,6 +49,18 @@ class Division:
         return self.undivided or ratio_of(self.sections[index])
 
 
+@dataclass(frozen=True)
+class Part:
+    """Sections in series: those to the output `name`, or, without a name, those that all outputs have in common."""
+
+    name: str
+    division: Division
+
+
+Parts = tuple[Part, ...]
+"""Of a filter: the common sections, if there are some, then those to each output; of one output all are common."""
+
+
 def trimmed(section: Polynomials) -> Polynomials:
     """Without the trailing zeros of numerator and denominator; one coefficient of each always stays."""
     return Polynomials(_trimmed(section.b), _trimmed(section.a))
