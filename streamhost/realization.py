@@ -255,7 +255,7 @@ def _of_channels(given: object) -> tuple[Filter, ...]:
     """The filters of channels that can run through one diagram."""
     filters = tuple(given) if isinstance(given, Sequence) else ()
     if not filters or not all(isinstance(each, Filter) for each in filters):
-        raise FilterError(f"realize takes a Filter, or a sequence with one for each channel, not {type(given).__name__}. "
+        raise FilterError(f"realize takes a Filter, not {type(given).__name__}, or a sequence with one for each channel. "
                           "streamhost.design makes one.")
     for what, found in (("rates", {each.rate for each in filters}), ("outputs", {each.outputs for each in filters})):
         if len(found) > 1:
