@@ -83,6 +83,11 @@ class Realization:
         """Names of the outputs."""
         return tuple(self.diagram.nodes[index].label for index in self.diagram.outputs)
 
+    @property
+    def unstable_as_asked(self) -> bool:
+        """Whether a filter as asked has a pole on or outside the unit circle, before any rounding."""
+        return any(filter.unstable_poles() for filter in self.filters)
+
     @cached_property
     def unstable(self) -> int:
         """Poles of the diagram with its coefficients as stored that lie on or outside the unit circle, decided exactly."""

@@ -8,6 +8,7 @@ from streamhost.errors import PresetError
 from streamhost.filters import Filter, design
 from streamhost.formats import FLOATS, Fixed, Float
 from streamhost.presets import Preset, load_preset, parse_preset
+from streamhost.presets.bands import Band
 
 HEAD = "rate = 48000\n"
 PEAK = '[[filter]]\nkind = "peak"\nfrequency = 1000\ngain_db = 6.0\nq = 0.707\n'
@@ -59,7 +60,7 @@ def test_everything_that_a_preset_can_state():
     preset = parse_preset(WHOLE, Path("folder/mine.toml"))
     assert preset == Preset(
         title="Peak in double-length state", path=Path("folder/mine.toml"), rate=48000.0,
-        filter=design("peak", rate=48000, frequency=1000, gain_db=6, q=0.707),
+        designs={48000.0: (Band(design("peak", rate=48000, frequency=1000, gain_db=6, q=0.707)),)},
         form="direct-1", decomposition="whole", pairing="given", ordering="inward", scaling="l2",
         format=Fixed("Q1.15", coefficients="Q2.30", state={"word": "Q1.31", "rounding": "floor"}, operand="Q1.31"),
         limits={"noise_dbfs": -92.0, "response_deviation_db": 0.1, "band_hz": (20.0, 20000.0)},
@@ -245,8 +246,6 @@ FILTERS = {
         "mine.toml:3: equation, line 2, column 5: y[n+1] lies in the future, which a filter does not know; a time is n, "
         "n-1, n-2 and so on.",
     "equation = 1\n": "mine.toml:3: equation = 1 is not allowed: equation is a text in quotes.",
-    'kind = "high-pass"\nfrequency = 28\nchannels = [1]\n':
-        "mine.toml:5: channels is not offered yet: a filter is the same on all channels.",
 }
 
 
@@ -282,7 +281,7 @@ HEADS = {
         "mine.toml:1: rate = a whole number of 1200 bits is not allowed: rate is a number of hertz.",
     "rate = 48000\nformat = 1\n[[filter]]\nb = [1]\n": "mine.toml:2: format = 1 is not allowed: format is a table.",
     "rate = 48000\ninclude = \"other.toml\"\n[[filter]]\nb = [1]\n":
-        "mine.toml:2: include is no key of the head of a preset, which takes rate, filter, title, allow_unstable, "
+        "mine.toml:2: include is no key of the head of a preset, which takes rate, rates, filter, title, allow_unstable, "
         "structure, format or limits.",
     'title = "a\\u001b[31mb"\nrate = 48000\n[[filter]]\nb = [1]\n':
         'mine.toml:1: title = "a\\u001b[31mb" is not allowed: a title is one line of printable text.',
@@ -295,12 +294,6 @@ HEADS = {
 @pytest.mark.parametrize(("text", "expected"), HEADS.items(), ids=range(len(HEADS)))
 def test_heads_that_cannot_be(text, expected):
     assert problem(text) == expected
-
-
-def test_several_rates_are_refused_politely():
-    assert problems("rates = [44100, 48000]\n" + PEAK)[1] == (
-        "mine.toml:1: rates is not offered yet: state rate, one number, and vary it from the command line."
-    )
 
 
 FORMATS = {

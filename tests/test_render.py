@@ -1,34 +1,29 @@
 """`streamhost render`: the realization's output is written to the bit, or nothing is and one is told why."""
 
+import errno
 import os
 import signal
 import subprocess
 import sys
 import time
 import tracemalloc
-from dataclasses import replace
 from pathlib import Path
-from random import Random
 from types import SimpleNamespace
 
 import numpy as np
 import pytest
 import soundfile
 from audio_files import wav_bytes, wav_codes, write
-from random_diagrams import random_diagram
 from test_files_whole import file_size_limit
 
 import streamhost as sh
 from streamhost.commands.main import main
 from streamhost.commands.render import _minute_by_minute, summary
-from streamhost.errors import RequestError
-from streamhost.files import probe, read_all
-from streamhost.host.rendering import Rendered, default_subtype, render_file
+from streamhost.files import atomic, probe, read_all
+from streamhost.host.rendering import Rendered, Written, default_subtype, render_file
 from streamhost.presets import load_preset
 from streamhost.presets.realizing import realize_preset
-from streamhost.realization import Realization
 from streamhost.shipped import presets_dir, samples_dir
-from streamhost.structures import build
 
 PRESET = """
 rate = 48000
@@ -225,7 +220,8 @@ def test_hazards_of_the_structure_are_said() -> None:
     filter = sh.design("butterworth", rate=48000, response="low-pass", order=8, frequency=100.0)
     realization = sh.realize(filter, form="direct-1", decomposition="whole")
     lane = SimpleNamespace(peak_dbfs=-3.25)
-    rendered = Rendered(Path("a\x1b.wav"), "WAV", "pcm24", 48000, 1, 1, 0, lane, realization.tally())  # type: ignore[arg-type]
+    file = Written(Path("a\x1b.wav"), "", 0)
+    rendered = Rendered((file,), "WAV", "pcm24", 48000, 1, 1, lane, realization.tally())  # type: ignore[arg-type]
     lines = summary(rendered, realization)
     assert lines[0] == "a\N{REPLACEMENT CHARACTER}.wav: 1 frame (0.00 s), 1 channel, 48000 Hz, WAV pcm24"
     assert lines[1].startswith("peak \N{MINUS SIGN}3.25 dBFS")
@@ -266,7 +262,7 @@ def test_a_file_of_another_rate_is_refused_naming_both(tmp_path: Path, capsys: p
     Path(stated).write_text(Path(stated).read_text().replace("48000", "44100"))
     given = source(tmp_path)
     said = refused([stated, given, str(tmp_path / "out.wav")], capsys)
-    assert f"{given} has a rate of 48000 Hz, and {stated} is a filter for 44100 Hz" in said
+    assert f"{stated}: this preset has a rate of 44100 Hz, and {given} has 48000 Hz" in said
     assert not (tmp_path / "out.wav").exists()
 
 
@@ -338,14 +334,54 @@ def test_an_output_that_runs_away_is_refused(tmp_path: Path, capsys: pytest.Capt
     assert sorted(file.name for file in tmp_path.iterdir()) == ["in.wav", "preset.toml"]
 
 
-def test_a_realization_of_several_outputs_is_refused(tmp_path: Path) -> None:
-    filter = sh.Filter.from_coefficients([1.0], [1.0], rate=48000)
-    diagram = next(d for d in (random_diagram(Random(seed), 10) for seed in range(50)) if len(d.outputs) > 1)
-    built = build(filter, form="direct-1")
-    realization = Realization(filter, replace(built, diagram=diagram), sh.Float())
-    info = probe(source(tmp_path, 100))
-    with pytest.raises(RequestError, match=rf"crossover has {len(diagram.outputs)} outputs \(.*takes one"):
-        render_file(realization, info, tmp_path / "out.wav", name="crossover")
+CROSSOVER = 'kind = "linkwitz-riley"\norder = 4\nfrequency = 1000'
+
+
+def test_several_outputs_have_a_file_each(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    stated, given = preset(tmp_path, FIXED, CROSSOVER), source(tmp_path)
+    assert main(["render", stated, given, str(tmp_path / "out.wav")]) == 0
+    said = capsys.readouterr().out.splitlines()
+    wanted = expected(stated, given)
+    for output, name in enumerate(("low", "high")):
+        path = tmp_path / f"out-{name}.wav"
+        assert said[output].startswith(f"{path}: 20000 frames (0.42 s), 2 channels, 48000 Hz, WAV pcm16")
+        assert np.array_equal(read_all(path)[0], wanted[:, output])
+    assert said[2].startswith("peak")
+    assert not (tmp_path / "out.wav").exists()
+
+
+def test_of_several_outputs_all_are_written_or_none(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    stated, given = preset(tmp_path, FIXED, CROSSOVER), source(tmp_path)
+    (tmp_path / "out-high.wav").write_text("mine")
+    said = refused([stated, given, str(tmp_path / "out.wav")], capsys)
+    assert f"{tmp_path / 'out-high.wav'}: this file exists" in said
+    assert sorted(path.name for path in tmp_path.iterdir()) == ["in.wav", "out-high.wav", "preset.toml"]
+    assert (tmp_path / "out-high.wav").read_text() == "mine"
+
+
+def test_a_file_that_cannot_appear_takes_those_before_it_along(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    """The files appear one after the other at the end: here the disk fails at the second."""
+    stated, given = preset(tmp_path, FIXED, CROSSOVER), source(tmp_path)
+    place, appeared = atomic._place_new, []
+
+    def fails_at_the_second(partial: Path, target: Path) -> None:
+        if appeared:
+            raise OSError(errno.ENOSPC, os.strerror(errno.ENOSPC))
+        place(partial, target)
+        appeared.append(target)
+
+    monkeypatch.setattr(atomic, "_place_new", fails_at_the_second)
+    assert main(["render", stated, given, str(tmp_path / "out.wav")]) == 3
+    assert len(appeared) == 1
+    assert sorted(path.name for path in tmp_path.iterdir()) == ["in.wav", "preset.toml"]
+
+
+def test_an_output_may_not_be_the_input(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    stated, given = preset(tmp_path, FIXED, CROSSOVER), source(tmp_path, name="in-low.wav")
+    said = refused([stated, given, str(tmp_path / "in.wav"), "--force"], capsys)
+    assert f"{given}: input and output are the same file" in said
 
 
 def test_a_disk_without_room_is_the_machines_failure(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:

@@ -18,6 +18,7 @@ import click
 from streamhost.errors import PresetError, RequestError
 
 if TYPE_CHECKING:
+    from streamhost.files import AudioInfo
     from streamhost.presets import Preset
 
 MINUS = "\N{MINUS SIGN}"
@@ -52,6 +53,16 @@ def presets_named(names: Sequence[str], variations: Sequence[str] = ()) -> "list
     if problems:
         raise PresetError(problems)
     return vary(presets, variations)
+
+
+def at_rate(preset: "Preset", info: "AudioInfo", source: str) -> "Preset":
+    """The preset at the rate of a file, `source` as asked for. RequestError where it is not stated for that rate."""
+    if info.rate not in preset.rates:
+        raise RequestError(
+            f"{preset.source.name}: this preset has {preset.rates_text}, and {source} has {info.rate} Hz. Rates are not "
+            "converted: give a file of that rate, or a preset for this one."
+        )
+    return preset.at(info.rate)
 
 
 def write_json(destination: str, document: object, *, force: bool = False) -> None:

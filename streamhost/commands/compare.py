@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 
 import click
 
-from streamhost.commands.common import Progress, force_option, json_option, presets_named, vary_option, write_json
+from streamhost.commands.common import Progress, at_rate, force_option, json_option, presets_named, vary_option, write_json
 from streamhost.errors import RequestError
 
 if TYPE_CHECKING:
@@ -21,14 +21,16 @@ if TYPE_CHECKING:
 
 @dataclass(frozen=True)
 class Compared:
-    """One realization of the comparison: what was asked, what was found, and the files that were written."""
+    """One realization of the comparison: what was asked, what was found, and the files that were written.
+
+    `files`: of each output its audio and its difference, None where that was not written; empty without a folder.
+    """
 
     preset: "Preset"
     realization: "Realization"
     measured: "Measured"
     verdicts: "tuple[Verdict, ...]"
-    output: Path | None
-    difference: Path | None
+    files: tuple[tuple[Path, Path | None], ...]
 
     @property
     def label(self) -> str:
@@ -59,20 +61,21 @@ def compare(
 
     Every PRESET is a preset file or the name of a shipped one; all ask for the same filter. The difference is the
     realization's output minus that of its ideal: unrounded arithmetic with the same stored coefficients on the same
-    quantized input. Exit status 1 says that a limit of a preset is not met. When the run is broken off, the files of
-    the realizations that were done stay.
+    quantized input. Of a filter with several outputs each has a line and files of its own. Exit status 1 says that a
+    limit of a preset is not met. When the run is broken off, the files of the realizations that were done stay.
     """
     from streamhost.cache import notice
     from streamhost.commands.compare_files import check_figures, destinations, output_folder
     from streamhost.commands.compare_text import document, misses, text
     from streamhost.files import probe
+    from streamhost.presets.realizing import realize_presets
     from streamhost.shipped import resolve
 
     info = probe(resolve(source, "sample"))
-    stated = presets_named(presets, variations)
-    realizations = _realized(stated)
-    _check_one_filter(stated, info, source)
-    places = destinations(folder, stated, info, force=force)
+    stated = [at_rate(preset, info, source) for preset in presets_named(presets, variations)]
+    realizations = realize_presets(stated, info.channels)
+    _check_one_filter(stated, realizations)
+    places = destinations(folder, stated, realizations[0].outputs, info, force=force)
     with output_folder(places):
         check_figures(json_file, info, force=force)
         compared = _compare_all(stated, realizations, info, places, force=force)
@@ -87,30 +90,11 @@ def compare(
     return int(any(one.misses for one in compared))
 
 
-def _realized(presets: "Sequence[Preset]") -> "list[Realization]":
-    from streamhost.presets.realizing import realize_presets
-
-    realizations = realize_presets(presets)
-    for preset, realization in zip(presets, realizations, strict=True):
-        if len(realization.outputs) > 1:
-            raise RequestError(
-                f"{preset.source.name}: this realization has {len(realization.outputs)} outputs "
-                f"({', '.join(realization.outputs)}), and those with one output can be compared so far."
-            )
-    return realizations
-
-
-def _check_one_filter(presets: "Sequence[Preset]", info: "AudioInfo", source: str) -> None:
-    """RequestError unless all presets ask for one filter at the rate of the file."""
+def _check_one_filter(presets: "Sequence[Preset]", realizations: "Sequence[Realization]") -> None:
+    """RequestError unless all presets ask for one filter."""
     from streamhost.measure.sameness import different
 
-    for preset in presets:
-        if preset.rate != info.rate:
-            raise RequestError(
-                f"{preset.source.name}: this preset has a rate of {preset.rate:g} Hz, and {source} has "
-                f"{info.rate} Hz. Rates are not converted: give a file of that rate, or a preset for this one."
-            )
-    if others := different([preset.filter for preset in presets]):
+    if others := different([realization.filters for realization in realizations]):
         named = ", ".join(f"{presets[place].source.name} ({presets[place].title})" for place in others)
         raise RequestError(
             f"{named}: not the filter that {presets[0].source.name} ({presets[0].title}) asks for. "
@@ -138,21 +122,21 @@ def _compare_one(
     from streamhost.measure import Measurement, limit_band
 
     measurement = Measurement(realization, info.frames, info.channels, limit_band(preset.limits, preset.rate))
-    output = difference = None
+    outputs: list[OutputFile] = []
+    differences: list[DifferenceFile] = []
     with ExitStack() as stack:
-        if place is not None:
-            output = stack.enter_context(OutputFile(place.output, realization, info, force=force))
-            difference = stack.enter_context(DifferenceFile(place.difference, info, force=force))
+        for destination in place.files if place is not None else ():
+            outputs.append(stack.enter_context(OutputFile(destination.output, realization, info, force=force)))
+            differences.append(stack.enter_context(DifferenceFile(destination.difference, info, force=force)))
         for x in read_blocks(info.path, measurement.block):
             block = measurement.step(x)
-            if output is not None and difference is not None:
-                output.write(block.output)
-                difference.write(block.difference)
+            for k, (output, difference) in enumerate(zip(outputs, differences, strict=True)):
+                output.write(block.output[:, k])
+                difference.write(block.difference[:, k])
     verdicts = _verdicts(preset.limits, realization)
-    return Compared(
-        preset, realization, measurement.result(), verdicts, place.output if place is not None else None,
-        place.difference if place is not None and difference is not None and difference.kept else None,
-    )
+    files = [(destination.output, destination.difference if difference.kept else None)
+             for destination, difference in zip(place.files if place is not None else (), differences, strict=True)]
+    return Compared(preset, realization, measurement.result(), verdicts, tuple(files))
 
 
 def _verdicts(limits: Mapping[str, object], realization: "Realization") -> "tuple[Verdict, ...]":
@@ -160,5 +144,5 @@ def _verdicts(limits: Mapping[str, object], realization: "Realization") -> "tupl
 
     if not limits.keys() - {"band_hz"}:
         return ()
-    rate = realization.filter.rate
-    return verdicts(limits, measure(realization, limit_signal(rate), limit_band(limits, rate)))
+    rate = realization.rate
+    return verdicts(limits, measure(realization, limit_signal(rate, realization.diagram.channels), limit_band(limits, rate)))

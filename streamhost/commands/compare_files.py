@@ -15,6 +15,7 @@ from numpy.typing import NDArray
 from streamhost.commands.common import check_place
 from streamhost.errors import MachineError, RequestError
 from streamhost.files import AudioInfo, AudioWriter, same_file
+from streamhost.files.atomic import identity
 from streamhost.host.rendering import default_subtype
 from streamhost.measure.levels import has_run_away
 from streamhost.presets import Preset
@@ -25,18 +26,26 @@ LONGEST_VARIED = 80
 
 
 @dataclass(frozen=True)
-class Destination:
-    """Where the output and the difference of one realization go."""
+class Pair:
+    """Where an output and its difference go."""
 
-    folder: Path
     output: Path
     difference: Path
 
 
+@dataclass(frozen=True)
+class Destination:
+    """Where the files of one realization go, a pair for each output."""
+
+    folder: Path
+    files: tuple[Pair, ...]
+
+
 def destinations(
-    folder: str | None, presets: Sequence[Preset], info: AudioInfo, *, force: bool
+    folder: str | None, presets: Sequence[Preset], outputs: Sequence[str], info: AudioInfo, *, force: bool
 ) -> list[Destination] | list[None]:
-    """The files of each preset: its number in the comparison, its name and what was varied. No folder, no files.
+    """The files of each preset: its number in the comparison, its name, what was varied, and the name of the output where
+    there are several. No folder, no files.
 
     RequestError where the folder cannot be one or holds one of the files, unless `force`.
     """
@@ -51,10 +60,12 @@ def destinations(
     found = []
     for number, preset in enumerate(presets, 1):
         name = f"{number:0{digits}}-{preset.path.stem if preset.path else 'preset'}{_varied(preset)}"
-        found.append(Destination(place, place / f"{name}.wav", place / f"{name}-difference.wav"))
-    for destination in found:
-        check_new(destination.output, info, force=force)
-        check_new(destination.difference, info, force=force)
+        names = [f"{name}-{output}" for output in outputs] if len(outputs) > 1 else [name]
+        files = tuple(Pair(place / f"{each}.wav", place / f"{each}-difference.wav") for each in names)
+        found.append(Destination(place, files))
+    for pair in (pair for destination in found for pair in destination.files):
+        check_new(pair.output, info, force=force)
+        check_new(pair.difference, info, force=force)
     return found
 
 
@@ -68,25 +79,21 @@ def _varied(preset: Preset) -> str:
 def output_folder(places: Sequence[Destination | None]) -> Iterator[None]:
     """The folder for a run's files, made where it is not there. When the run is broken off, a folder that was made and is
     empty goes; of files that were written it is said that they stay."""
-    outputs = [place.output for place in places if place is not None]
+    outputs = [pair.output for place in places if place is not None for pair in place.files]
     if not outputs:
         yield
         return
     folder = outputs[0].parent
-    new, before = not folder.exists(), [_identity(output) for output in outputs]
+    new, before = not folder.exists(), [identity(output) for output in outputs]
     _make_folder(folder)
     try:
         yield
     except BaseException:
         if new and not any(folder.iterdir()):
             folder.rmdir()
-        elif any(_identity(output) not in (None, was) for output, was in zip(outputs, before, strict=True)):
+        elif any(identity(output) not in (None, was) for output, was in zip(outputs, before, strict=True)):
             click.echo(f"{folder}: the files of the realizations that were done stay there.", err=True)
         raise
-
-
-def _identity(path: Path) -> int | None:
-    return path.stat().st_ino if path.exists() else None
 
 
 def check_figures(name: str | None, info: AudioInfo, *, force: bool) -> None:

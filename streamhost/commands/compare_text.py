@@ -1,12 +1,13 @@
 """What a comparison says: two ledgers and sentences for a reader, the same figures for a program."""
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Callable, Iterator, Sequence
+from pathlib import Path
 
 from streamhost.commands.common import GAP, MINUS, Cell, Column, ledger, printable
 from streamhost.commands.compare import Compared
 from streamhost.files import AudioInfo
 from streamhost.formats import Float, Format
-from streamhost.measure import Measured
+from streamhost.measure import Figures
 from streamhost.measure.limits import PEAK_DBFS, SECONDS, SEED, Verdict
 from streamhost.presets import Preset
 
@@ -33,9 +34,10 @@ METHOD = (
 def text(compared: Sequence[Compared], info: AudioInfo) -> str:
     """The whole report for a terminal."""
     paragraphs = [
-        ledger(NOISE, [_noise_row(one) for one in compared]),
-        ledger(REST, [_rest_row(one) for one in compared]),
+        _ledger(NOISE, compared, _noise_row),
+        _ledger(REST, compared, _rest_row),
         "\n".join(_verdict(compared)),
+        "\n".join(_sums(compared)),
         "\n".join(_remarks(compared)),
         "\n".join(_listening(compared)),
         "\n".join((_conditions(compared, info), *METHOD)),
@@ -43,11 +45,35 @@ def text(compared: Sequence[Compared], info: AudioInfo) -> str:
     return "\n\n".join(paragraph for paragraph in paragraphs if paragraph)
 
 
-def _noise_row(one: Compared) -> list[Cell]:
-    noise, prediction = one.measured.noise, one.measured.prediction
-    white = {True: "holds", False: "fails", None: None}[one.measured.white.holds]
+def _ledger(columns: Sequence[Column], compared: Sequence[Compared], row: Callable[[Compared, Figures], list[Cell]]) -> str:
+    """A row for each realization, or, of several outputs, for each of them, led by the number and the output's name."""
+    if all(len(one.measured.outputs) == 1 for one in compared):
+        return ledger(columns, [row(one, figures) for _, one, figures in _lines(compared)])
+    named = [[name, *row(one, figures)] for name, one, figures in _lines(compared)]
+    return ledger([Column(""), *columns], named, numbered=False)
+
+
+def _lines(compared: Sequence[Compared]) -> Iterator[tuple[str, Compared, Figures]]:
+    """What each line of a table is called: the number of the realization, and the name of one of several outputs."""
+    for number, one in enumerate(compared, 1):
+        several = len(one.measured.outputs) > 1
+        for figures in one.measured.outputs:
+            yield f"{number} {figures.name}" if several else str(number), one, figures
+
+
+def _once(one: Compared, figures: Figures, cells: list[Cell]) -> list[Cell]:
+    """What holds for a realization as a whole stands in its first line only."""
+    return cells if figures is one.measured.outputs[0] else [""] * len(cells)
+
+
+def _noise_row(one: Compared, figures: Figures) -> list[Cell]:
+    noise, prediction = figures.noise, figures.prediction
+    white = {True: "holds", False: "fails", None: None}[figures.white.holds]
     predicted = prediction.dbfs if prediction is not None else None
-    return [_title(one.preset), one.label, noise.dbfs, noise.interval_db, predicted, white, noise.a_dbfs, noise.full_dbfs]
+    return [
+        *_once(one, figures, [_title(one.preset), one.label]),
+        noise.dbfs, noise.interval_db, predicted, white, noise.a_dbfs, noise.full_dbfs,
+    ]
 
 
 def _title(preset: Preset) -> str:
@@ -58,13 +84,15 @@ def _title(preset: Preset) -> str:
     return (own if len(own) <= room else own[: room - 1] + "…") + varied
 
 
-def _rest_row(one: Compared) -> list[Cell]:
+def _rest_row(one: Compared, figures: Figures) -> list[Cell]:
     measured = one.measured
     tally, counts = measured.tally, measured.counts
     return [
-        measured.deviation.db, measured.deviation.hz, measured.unstable, tally.saturations, tally.wraps,
-        tally.accumulator_overflows, measured.peak_dbfs, measured.dc_lsb, counts.multiplications, counts.additions,
-        counts.delays, measured.ns_per_frame, measured.difference_gain_db,
+        figures.deviation.db, figures.deviation.hz,
+        *_once(one, figures, [measured.unstable, tally.saturations, tally.wraps, tally.accumulator_overflows]),
+        figures.peak_dbfs, figures.dc_lsb,
+        *_once(one, figures, [counts.multiplications, counts.additions, counts.delays, measured.ns_per_frame]),
+        figures.difference_gain_db,
     ]
 
 
@@ -88,9 +116,10 @@ def misses(compared: Sequence[Compared]) -> Iterator[str]:
 
 def _miss(verdict: Verdict) -> str:
     allowed = f"at most {_signed(verdict.allowed)} {verdict.unit}"
+    key = f"{verdict.key} of {verdict.output}" if verdict.output else verdict.key
     if verdict.found is None:
-        return f"{verdict.key}, {allowed}: no figure, since {verdict.reason}"
-    return f"{verdict.key}: {_beside(verdict.found, verdict.allowed)}, {allowed}"
+        return f"{key}, {allowed}: no figure, since {verdict.reason}"
+    return f"{key}: {_beside(verdict.found, verdict.allowed)}, {allowed}"
 
 
 def _beside(found: float, allowed: float) -> str:
@@ -105,21 +134,36 @@ def _signed(number: float) -> str:
     return f"{number:g}".replace("-", MINUS)
 
 
+def _sums(compared: Sequence[Compared]) -> Iterator[str]:
+    """How far the outputs together are from what they add up to as asked."""
+    for number, one in enumerate(compared, 1):
+        if (deviation := one.measured.sum_deviation) is not None:
+            *others, last = (figures.name for figures in one.measured.outputs)
+            names = f"{', '.join(others)} and {last}"
+            if deviation.db is None:
+                yield f"{number}: no figure for the sum of {names}: {deviation.reason}."
+            else:
+                moved = f"by {deviation.db:.3f} dB, at {deviation.hz:g} Hz"
+                yield f"{number}: coefficient rounding moves the sum of {names} {moved}."
+
+
 def _remarks(compared: Sequence[Compared]) -> Iterator[str]:
     """Why figures are missing, what they are worth, and what is dangerous."""
+    lines = list(_lines(compared))
     for number, one in enumerate(compared, 1):
         measured = one.measured
         if measured.unstable:
             yield f"{number} is unstable {_as_what(one)}: {_poles(measured.unstable)} on or outside the unit circle."
-        yield from (f"{number}{remark}." for remark in _noise_remarks(measured, one.realization.format))
-        if isinstance(one.realization.format, Float) and measured.prediction is not None:
+        own = [(name, figures) for name, other, figures in lines if other is one]
+        yield from (f"{name}{remark}." for name, figures in own for remark in _noise_remarks(figures, one.realization.format))
+        if isinstance(one.realization.format, Float) and any(figures.prediction is not None for _, figures in own):
             yield f"{number}: in floating point the predicted noise is an estimate."
         for hazard in one.realization.built.hazards:
             yield f"{number}, hazard: {hazard}"
 
 
-def _noise_remarks(measured: Measured, format: Format) -> Iterator[str]:
-    noise, white, floating = measured.noise, measured.white, isinstance(format, Float)
+def _noise_remarks(figures: Figures, format: Format) -> Iterator[str]:
+    noise, white, floating = figures.noise, figures.white, isinstance(format, Float)
     if noise.reason:
         yield f" has no noise figure{'' if floating else ' and no verdict on the white model'}: {noise.reason}"
         return
@@ -132,7 +176,7 @@ def _noise_remarks(measured: Measured, format: Format) -> Iterator[str]:
 
 
 def _as_what(one: Compared) -> str:
-    return "as asked" if one.realization.filter.unstable_poles() else "with its coefficients rounded"
+    return "as asked" if one.realization.unstable_as_asked else "with its coefficients rounded"
 
 
 def _poles(count: int) -> str:
@@ -140,18 +184,18 @@ def _poles(count: int) -> str:
 
 
 def _listening(compared: Sequence[Compared]) -> Iterator[str]:
-    for number, one in enumerate(compared, 1):
-        if one.output is not None:
-            yield printable(f"{number}{GAP}{one.output}{GAP}{_difference(one)}")
+    files = [pair for one in compared for pair in one.files or [None] * len(one.measured.outputs)]
+    for (name, _, figures), pair in zip(_lines(compared), files, strict=True):
+        if pair is not None:
+            yield printable(f"{name}{GAP}{pair[0]}{GAP}{_difference(pair[1], figures.difference_gain_db)}")
 
 
-def _difference(one: Compared) -> str:
-    gain = one.measured.difference_gain_db
-    if one.difference is None:
+def _difference(path: Path | None, gain: int | None) -> str:
+    if path is None:
         return "no difference written: it ran away"
     if gain is None:
-        return f"{one.difference}{GAP}is silent"
-    return f"{one.difference}{GAP}" + (f"raise by {gain} dB" if gain >= 0 else f"loud: lower by {-gain} dB")
+        return f"{path}{GAP}is silent"
+    return f"{path}{GAP}" + (f"raise by {gain} dB" if gain >= 0 else f"loud: lower by {-gain} dB")
 
 
 def _conditions(compared: Sequence[Compared], info: AudioInfo) -> str:
@@ -184,25 +228,18 @@ def document(compared: Sequence[Compared], info: AudioInfo, source: str) -> dict
 
 
 def _figures(one: Compared) -> dict[str, object]:
+    """Of one output all figures side by side; of several a list of those of each."""
     measured, realization = one.measured, one.realization
-    noise, tally, counts = measured.noise, measured.tally, measured.counts
-    return {
+    tally, counts = measured.tally, measured.counts
+    outputs = [{**_figures_of(figures), **files} for figures, files in zip(measured.outputs, _files(one), strict=True)]
+    found: dict[str, object] = {
         "preset": one.preset.source.name,
         "title": one.preset.title,
         "decomposition": realization.decomposition,
         "form": realization.form,
         "format": realization.format.label,
-        "response_deviation_db": measured.deviation.db,
-        "response_deviation_hz": measured.deviation.hz,
+        **(outputs[0] if len(outputs) == 1 else {}),
         "unstable": measured.unstable,
-        "noise_dbfs": noise.dbfs,
-        "noise_interval_db": noise.interval_db,
-        "noise_full_dbfs": noise.full_dbfs,
-        "noise_a_dbfs": noise.a_dbfs,
-        "noise_predicted_dbfs": measured.prediction.dbfs if measured.prediction is not None else None,
-        "white_model_holds": measured.white.holds,
-        "dc_lsb": measured.dc_lsb,
-        "peak_dbfs": measured.peak_dbfs,
         "saturations": tally.saturations,
         "wraps": tally.wraps,
         "accumulator_overflows": tally.accumulator_overflows,
@@ -210,7 +247,33 @@ def _figures(one: Compared) -> dict[str, object]:
         "additions": counts.additions,
         "delays": counts.delays,
         "ns_per_frame": measured.ns_per_frame,
-        "output": str(one.output) if one.output is not None else None,
-        "difference": str(one.difference) if one.difference is not None else None,
-        "difference_gain_db": measured.difference_gain_db,
     }
+    if measured.sum_deviation is not None:
+        found["sum_response_deviation_db"] = measured.sum_deviation.db
+        found["sum_response_deviation_hz"] = measured.sum_deviation.hz
+        found["outputs"] = [{"name": each.name, **own} for each, own in zip(measured.outputs, outputs, strict=True)]
+    return found
+
+
+def _figures_of(figures: Figures) -> dict[str, object]:
+    noise = figures.noise
+    return {
+        "response_deviation_db": figures.deviation.db,
+        "response_deviation_hz": figures.deviation.hz,
+        "noise_dbfs": noise.dbfs,
+        "noise_interval_db": noise.interval_db,
+        "noise_full_dbfs": noise.full_dbfs,
+        "noise_a_dbfs": noise.a_dbfs,
+        "noise_predicted_dbfs": figures.prediction.dbfs if figures.prediction is not None else None,
+        "white_model_holds": figures.white.holds,
+        "dc_lsb": figures.dc_lsb,
+        "peak_dbfs": figures.peak_dbfs,
+        "difference_gain_db": figures.difference_gain_db,
+    }
+
+
+def _files(one: Compared) -> list[dict[str, object]]:
+    if not one.files:
+        return [{"output": None, "difference": None}] * len(one.measured.outputs)
+    return [{"output": str(output), "difference": str(difference) if difference is not None else None}
+            for output, difference in one.files]

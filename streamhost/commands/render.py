@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Any
 
 import click
 
-from streamhost.commands.common import MINUS, Progress, force_option, presets_named, printable
+from streamhost.commands.common import MINUS, Progress, at_rate, force_option, presets_named, printable
 
 if TYPE_CHECKING:
     from streamhost.files import AudioInfo
@@ -32,7 +32,8 @@ def render(preset: str, source: str, destination: str, subtype: Any, force: bool
     """The audio file IN through one realization into a new file OUT.
 
     PRESET is a file or the name of a shipped one, and so is IN. OUT ends in .wav, .rf64 or .flac and gets the rate and
-    the channels of IN. Samples beyond full scale are clipped, which is counted.
+    the channels of IN; of a filter with several outputs each has a file, OUT with the output's name behind a hyphen.
+    Samples beyond full scale are clipped, which is counted.
     """
     from streamhost.cache import notice
     from streamhost.files import probe
@@ -42,7 +43,7 @@ def render(preset: str, source: str, destination: str, subtype: Any, force: bool
 
     (stated,) = presets_named([preset])
     info = probe(resolve(source, "sample"))
-    realization = realize_preset(stated)
+    realization = realize_preset(at_rate(stated, info, source), info.channels)
     with Progress("render", math.ceil(info.seconds / 60)) as progress:
         rendered = render_file(
             realization,
@@ -74,18 +75,22 @@ def _minute_by_minute(progress: Progress, info: "AudioInfo") -> Callable[[int], 
 def summary(rendered: "Rendered", realization: "Realization") -> list[str]:
     """Lines that say what was written and what happened on the way."""
     seconds = rendered.frames / rendered.rate
+    clipped = sum(file.clipped for file in rendered.files)
     lines = [
-        printable(
-            f"{rendered.path}: {_count(rendered.frames, 'frame')} ({seconds:.2f} s), "
-            f"{_count(rendered.channels, 'channel')}, {rendered.rate} Hz, {rendered.container} {rendered.subtype}"
+        *(
+            printable(
+                f"{file.path}: {_count(rendered.frames, 'frame')} ({seconds:.2f} s), "
+                f"{_count(rendered.channels, 'channel')}, {rendered.rate} Hz, {rendered.container} {rendered.subtype}"
+            )
+            for file in rendered.files
         ),
-        f"peak {_decibels(rendered.meters.peak_dbfs)}, {_count(rendered.clipped, 'sample')} clipped, no NaN",
+        f"peak {_decibels(rendered.meters.peak_dbfs)}, {_count(clipped, 'sample')} clipped, no NaN",
     ]
     counted = _events(rendered)
     if counted:
         lines.append(", ".join(counted))
     if realization.unstable:
-        why = "as asked" if realization.filter.unstable_poles() else "once the coefficients are rounded"
+        why = "as asked" if realization.unstable_as_asked else "once the coefficients are rounded"
         lie = "lies" if realization.unstable == 1 else "lie"
         lines.append(f"unstable: {_count(realization.unstable, 'pole')} {lie} on or outside the unit circle {why}")
     return lines + [f"hazard: {sentence}" for sentence in realization.built.hazards]

@@ -2,7 +2,7 @@
 
 import errno
 import os
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
 from io import FileIO
 from pathlib import Path
@@ -58,6 +58,24 @@ def atomic_file(
     except BaseException:
         partial.unlink(missing_ok=True)
         raise
+
+
+@contextmanager
+def all_or_none(paths: Sequence[Path]) -> Iterator[None]:
+    """Files that belong together: where the block ends by an exception, those that had appeared by then go again."""
+    before = [identity(path) for path in paths]
+    try:
+        yield
+    except BaseException:
+        for path, was in zip(paths, before, strict=True):
+            if identity(path) not in (None, was):
+                path.unlink()
+        raise
+
+
+def identity(path: Path) -> int | None:
+    """What tells a file from another that takes its name; None where there is none."""
+    return path.stat().st_ino if path.exists() else None
 
 
 def write_bytes_atomic(path: str | Path, data: bytes, *, overwrite: bool = False) -> None:

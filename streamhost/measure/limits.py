@@ -16,13 +16,17 @@ PEAK_DBFS = -20.0
 
 @dataclass(frozen=True)
 class Verdict:
-    """One limit: its key, what was found (None: no figure, for that reason), what is allowed at most, and its unit."""
+    """One limit: its key, what was found (None: no figure, for that reason), what is allowed at most, and its unit.
+
+    `output`: of which of several.
+    """
 
     key: str
     found: float | None
     allowed: float
     unit: str
     reason: str = ""
+    output: str = ""
 
     @property
     def meets(self) -> bool:
@@ -37,20 +41,25 @@ def limit_band(limits: Mapping[str, object], rate: float) -> Band:
     return audio_band(rate) or (0.0, rate / 2.0)
 
 
-def limit_signal(rate: float) -> NDArray[np.float64]:
-    """White noise, uniform, peak -20 dBFS, 10 s, one channel, seed 1: busy, and with headroom as a programme has it."""
+def limit_signal(rate: float, channels: int = 1) -> NDArray[np.float64]:
+    """White noise, uniform, peak -20 dBFS, 10 s, seed 1: busy, and with headroom as a programme has it.
+
+    One channel is enough, unless channels have coefficients of their own.
+    """
     from streamhost.signals import white
 
-    return white(round(SECONDS * rate), 1, SEED, PEAK_DBFS)
+    return white(round(SECONDS * rate), channels, SEED, PEAK_DBFS)
 
 
 def verdicts(limits: Mapping[str, object], measured: Measured) -> tuple[Verdict, ...]:
-    """Each stated limit against what was measured on `limit_signal` over `limit_band`."""
+    """Each stated limit against what was measured on `limit_signal` over `limit_band`, at each output."""
     found = []
     noise, deviation = limits.get("noise_dbfs"), limits.get("response_deviation_db")
-    if isinstance(noise, float | int):
-        found.append(Verdict("noise_dbfs", measured.noise.dbfs, float(noise), "dBFS", measured.noise.reason))
-    if isinstance(deviation, float | int):
-        reason = measured.deviation.reason
-        found.append(Verdict("response_deviation_db", measured.deviation.db, float(deviation), "dB", reason))
+    for figures in measured.outputs:
+        name = figures.name if len(measured.outputs) > 1 else ""
+        if isinstance(noise, float | int):
+            found.append(Verdict("noise_dbfs", figures.noise.dbfs, float(noise), "dBFS", figures.noise.reason, name))
+        if isinstance(deviation, float | int):
+            reason = figures.deviation.reason
+            found.append(Verdict("response_deviation_db", figures.deviation.db, float(deviation), "dB", reason, name))
     return tuple(found)

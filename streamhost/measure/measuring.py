@@ -30,26 +30,67 @@ MOST_RAISED_DB = 150
 
 
 @dataclass(frozen=True)
-class Measured:
-    """What was found. Levels in dBFS; a figure that cannot be given is None, with the reason beside it.
+class Figures:
+    """What was found at one output. Levels in dBFS; a figure that cannot be given is None, with the reason beside it.
 
-    `ideal`: the arithmetic of the ideal run. `peak_dbfs`: of the output. `dc_lsb`: the noise's mean in steps of the
-    output's word, None in floating point. `difference_gain_db`: what brings the peak of the difference near -12 dBFS,
-    in whole dB; None where there is no difference, or one that runs away.
+    `peak_dbfs`: of the output. `dc_lsb`: the noise's mean in steps of the output's word, None in floating point.
+    `difference_gain_db`: what brings the peak of the difference near -12 dBFS, in whole dB; None where there is no
+    difference, or one that runs away.
     """
 
+    name: str
     deviation: Deviation
-    unstable: int
     noise: Noise
     prediction: Prediction | None
     white: Whiteness
     dc_lsb: float | None
     peak_dbfs: float
     difference_gain_db: int | None
+
+
+@dataclass(frozen=True)
+class Measured:
+    """What was found of a realization, and at each of its outputs; the properties are those of the first.
+
+    `ideal`: the arithmetic of the ideal run. `sum_deviation`: how far the sum of several outputs is from the sum as asked;
+    None of one.
+    """
+
+    outputs: tuple[Figures, ...]
+    sum_deviation: Deviation | None
+    unstable: int
     tally: Tally
     counts: Counts
     ns_per_frame: float
     ideal: str
+
+    @property
+    def deviation(self) -> Deviation:
+        return self.outputs[0].deviation
+
+    @property
+    def noise(self) -> Noise:
+        return self.outputs[0].noise
+
+    @property
+    def prediction(self) -> Prediction | None:
+        return self.outputs[0].prediction
+
+    @property
+    def white(self) -> Whiteness:
+        return self.outputs[0].white
+
+    @property
+    def dc_lsb(self) -> float | None:
+        return self.outputs[0].dc_lsb
+
+    @property
+    def peak_dbfs(self) -> float:
+        return self.outputs[0].peak_dbfs
+
+    @property
+    def difference_gain_db(self) -> int | None:
+        return self.outputs[0].difference_gain_db
 
 
 def block_length(frames: int, settling: float) -> int:
@@ -64,18 +105,17 @@ def block_length(frames: int, settling: float) -> int:
 class Measurement:
     """Takes a signal of a known length block after block, then gives the result. Memory does not grow with the length.
 
-    Blocks are of `block` frames, but for the last. Raises RequestError for a realization with several outputs.
+    Blocks are of `block` frames, but for the last. An overflow anywhere disturbs all outputs.
     """
 
     def __init__(self, realization: Realization, frames: int, channels: int, band: Band) -> None:
         self._realization, self._band = realization, band
         self._run = Run(realization, channels)
-        settling = settling_frames(realization.program.diagram)
+        diagram = realization.program.diagram
+        settling = max(settling_frames(diagram, channel) for channel in range(diagram.channels))
         self.block = block_length(frames, settling)
-        self._noise = NoiseSum(realization.filter.rate, frames, channels, settling)
+        self._sums = [_OutputSum(realization, frames, channels, settling) for _ in realization.outputs]
         self._watch = watch(realization.program, frames, settling_of_run(settling, frames), self.block)
-        self._peak = self._difference_peak = 0.0
-        self._ran_away = False
         self._first: FloatArray | None = None
 
     def step(self, x: FloatArray) -> Block:
@@ -83,44 +123,65 @@ class Measurement:
         if self._first is None:
             self._first = x.copy()
         block = self._run.step(x)
-        self._noise.add(block.difference, block.marks)
         self._watch.add(x, block.trace)
-        self._peak = max(self._peak, _largest(block.output))
-        self._difference_peak = max(self._difference_peak, _largest(block.difference))
-        self._ran_away = self._ran_away or has_run_away(block.difference)
+        for output, found in enumerate(self._sums):
+            found.add(block.output[:, output], block.difference[:, output], block.marks)
         return block
 
     def result(self) -> Measured:
         """Everything that was found, after the last block."""
         assert self._first is not None, "a signal has at least one frame"
-        realization, noise = self._realization, self._noise.result()
-        fixed = isinstance(realization.format, Fixed)
+        realization, several = self._realization, range(len(self._sums))
         return Measured(
-            deviation=response_deviation(realization, self._band),
+            outputs=tuple(self._figures(output, name) for output, name in enumerate(realization.outputs)),
+            sum_deviation=response_deviation(realization, self._band, several) if len(several) > 1 else None,
             unstable=realization.unstable,
-            noise=noise,
-            prediction=None if self._ran_away else self._watch.prediction(realization.filter.rate),
-            white=self._white(noise),
-            dc_lsb=_in_steps(noise.mean, realization) if fixed else None,
-            peak_dbfs=peak_dbfs(self._peak),
-            difference_gain_db=None if self._ran_away else _listening_gain(self._difference_peak),
             tally=self._run.tally(),
             counts=realization.program.drawn.counts(),
             ns_per_frame=ns_per_frame(realization, self._first),
             ideal=self._run.ideal.label,
         )
 
-    def _white(self, noise: Noise) -> Whiteness:
+    def _figures(self, output: int, name: str) -> Figures:
+        realization, found = self._realization, self._sums[output]
+        noise = found.noise.result()
+        return Figures(
+            name=name,
+            deviation=response_deviation(realization, self._band, (output,)),
+            noise=noise,
+            prediction=None if found.ran_away else self._watch.prediction(realization.rate, output),
+            white=self._white(noise, output),
+            dc_lsb=_in_steps(noise.mean, realization) if isinstance(realization.format, Fixed) else None,
+            peak_dbfs=peak_dbfs(found.peak),
+            difference_gain_db=None if found.ran_away else _listening_gain(found.difference_peak),
+        )
+
+    def _white(self, noise: Noise, output: int) -> Whiteness:
         """The verdict, where there is a noise for the model to be one of."""
         if self._realization.unstable:
             return Whiteness(None, "with its coefficients rounded the filter is not stable")
         if noise.dbfs is None:
             return Whiteness(None, "there is no noise figure")
-        return self._watch.verdict(self._realization.filter.rate)
+        return self._watch.verdict(self._realization.rate, output)
+
+
+class _OutputSum:
+    """What is summed up of one output."""
+
+    def __init__(self, realization: Realization, frames: int, channels: int, settling: float) -> None:
+        self.noise = NoiseSum(realization.rate, frames, channels, settling)
+        self.peak = self.difference_peak = 0.0
+        self.ran_away = False
+
+    def add(self, output: FloatArray, difference: FloatArray, marks: NDArray[np.uint8]) -> None:
+        self.noise.add(difference, marks)
+        self.peak = max(self.peak, _largest(output))
+        self.difference_peak = max(self.difference_peak, _largest(difference))
+        self.ran_away = self.ran_away or has_run_away(difference)
 
 
 def measure(realization: Realization, x: FloatArray, band: Band) -> Measured:
-    """A whole signal (frames, channels) through a realization. Raises RequestError as `Measurement` does."""
+    """A whole signal (frames, channels) through a realization."""
     frames, channels = x.shape
     measurement = Measurement(realization, frames, channels, band)
     for start in range(0, len(x), measurement.block):

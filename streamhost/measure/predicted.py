@@ -32,14 +32,15 @@ class Prediction:
     a_dbfs: float | None
 
 
-def predicted_noise(program: Program, rate: float, rms: FloatArray | None = None) -> Prediction:
-    """The noise of a program's roundings under the white model, the mean power over its channels.
+def predicted_noise(program: Program, rate: float, rms: FloatArray | None = None, *, output: int = 0) -> Prediction:
+    """The noise of a program's roundings at an output under the white model, the mean power over its channels.
 
-    A floating-point program's is an estimate that needs the `rms` of every node, (nodes,).
+    A floating-point program's is an estimate that needs the `rms` of every node, (nodes,), or (channels, nodes) where
+    channels have coefficients of their own.
     """
     channels = range(program.diagram.channels)
-    densities = [_density(program, channel, rms) for channel in channels]
-    poles = {complex(pole) for channel in channels for pole in to_output(program.diagram, [], channel).poles}
+    densities = [_density(program, channel, output, rms) for channel in channels]
+    poles = {complex(pole) for channel in channels for pole in to_output(program.diagram, [], channel, output=output).poles}
 
     def level(low: float, high: float, weight: Density | None = None) -> float:
         edges = breakpoints(poles, low, high)
@@ -55,28 +56,29 @@ def predicted_noise(program: Program, rate: float, rms: FloatArray | None = None
     return Prediction(level(low, high), full, level(low, high, lambda w: a_weighting(w * in_hertz)))
 
 
-def _density(program: Program, channel: int, rms: FloatArray | None) -> Density:
+def _density(program: Program, channel: int, output: int, rms: FloatArray | None) -> Density:
     if isinstance(program.format, Float):
         assert rms is not None, "what floats round depends on the signal"
-        return lambda w: float_spectrum(program, rms, w, channel)
-    return lambda w: noise_spectrum(program, w, channel)
+        own = np.atleast_2d(rms)
+        return lambda w: float_spectrum(program, own[min(channel, len(own) - 1)], w, channel, output)
+    return lambda w: noise_spectrum(program, w, channel, output)
 
 
-def source_shares(program: Program, rate: float, edges: FloatArray) -> FloatArray:
-    """What each source puts into each band of the predicted noise, as a share of all of it, (bands, sources).
+def source_shares(program: Program, rate: float, edges: FloatArray, channel: int = 0, output: int = 0) -> FloatArray:
+    """What each source puts into each band of the predicted noise at an output, as a share of all of it, (bands, sources).
 
     edges: of the bands, in radians a frame; only what lies in the audio band counts, where the rate has one. Sources
-    that do not die out count alike, and then nothing else does.
+    that do not die out count alike, and then nothing else does. All shares are 0 where no source reaches the output.
     """
     band = audio_band(rate) or (0.0, rate / 2.0)
     low, high = (2.0 * np.pi * edge / rate for edge in band)
-    poles = {complex(pole) for pole in to_output(program.diagram, [], 0).poles}
+    poles = {complex(pole) for pole in to_output(program.diagram, [], channel, output=output).poles}
     inside = np.clip(edges, low, high)
-    power = np.array([integrals(lambda w: source_spectra(program, w), breakpoints(poles, *pair)) if pair[1] > pair[0]
-                      else np.zeros(len(noise_sources(program))) for pair in pairwise(inside)])
+    power = np.array([integrals(lambda w: source_spectra(program, w, channel, output), breakpoints(poles, *pair))
+                      if pair[1] > pair[0] else np.zeros(len(noise_sources(program, channel))) for pair in pairwise(inside)])
     if not np.isfinite(power).all():
         power = np.where(np.isfinite(power), 0.0, 1.0)
-    return np.asarray(power / power.sum(), dtype=np.float64)
+    return np.asarray(power / (power.sum() or 1.0), dtype=np.float64)
 
 
 def _weighted(density: Density, weight: Density | None) -> Density:

@@ -3,6 +3,7 @@
 Residues are before minus after, in steps of the register that the rounding makes, as a traced kernel writes them.
 """
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from itertools import pairwise
 
@@ -40,6 +41,13 @@ class Residues:
     octave_degrees: FloatArray
     drift: FloatArray
     drift_degrees: int
+
+    def only(self, kept: Sequence[int]) -> "Residues":
+        """Those of some of the roundings."""
+        return Residues(
+            self.frames, self.mean[kept], self.variance[kept], self.histogram[kept], self.correlation[:, kept][:, :, kept],
+            self.to_input[:, kept], self.octaves[:, kept], self.octave_degrees, self.drift[kept], self.drift_degrees,
+        )
 
 
 class ResidueSum:

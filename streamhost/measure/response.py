@@ -1,5 +1,6 @@
 """How far rounding the coefficients moved the response from the one that was asked for."""
 
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from math import inf, pi
 
@@ -33,23 +34,49 @@ class Deviation:
     reason: str = ""
 
 
-def response_deviation(realization: Realization, band: Band) -> Deviation:
+def response_deviation(realization: Realization, band: Band, outputs: Sequence[int] = (0,)) -> Deviation:
     """Of the coefficients as stored, from the state space; judged where |H asked| is within 40 dB of its maximum.
 
-    Seen on a grid of 16 points an interval, intervals being octaves and, around each pole, steps that double from half
-    its distance from the circle; the largest deviation of each channel is then zoomed in on.
+    H leads to an output, or, of several, to their sum. Seen on a grid of 16 points an interval, intervals being octaves
+    and, around each pole, steps that double from half its distance from the circle; the largest deviation of each channel
+    is then zoomed in on. Of channels the one that deviates most.
     """
     channels = range(realization.program.diagram.channels)
-    found = [_of_channel(realization, band, channel) for channel in channels]
+    found = [_of_channel(_Responses(realization, channel, tuple(outputs)), band) for channel in channels]
     return max(found, key=lambda deviation: inf if deviation.db is None else deviation.db)
 
 
-def _of_channel(realization: Realization, band: Band, channel: int) -> Deviation:
-    rate, diagram = realization.filter.rate, realization.program.diagram
-    poles = from_input(diagram, channel, nodes=diagram.outputs).poles
+@dataclass(frozen=True)
+class _Responses:
+    """To the sum of some outputs of one channel."""
+
+    realization: Realization
+    channel: int
+    outputs: tuple[int, ...]
+
+    def magnitudes(self, hertz: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """|H asked| and |H rounded|; the latter infinite where the rounded filter does not settle."""
+        filters, diagram = self.realization.filters, self.realization.program.diagram
+        asked = filters[min(self.channel, len(filters) - 1)].response(hertz)
+        if asked.ndim > hertz.ndim:
+            asked = asked[list(self.outputs)].sum(axis=0)
+        w = 2.0 * pi * hertz / self.realization.rate
+        with np.errstate(invalid="ignore"):
+            rounded = sum(response_to_output(diagram, [diagram.inputs[0]], w, self.channel, output=output)[:, 0]
+                          for output in self.outputs)
+        return np.abs(asked), np.abs(np.asarray(rounded))
+
+    @property
+    def poles(self) -> Iterable[complex]:
+        diagram = self.realization.program.diagram
+        return from_input(diagram, self.channel, nodes=[diagram.outputs[output] for output in self.outputs]).poles
+
+
+def _of_channel(responses: _Responses, band: Band) -> Deviation:
+    rate = responses.realization.rate
     low, high = (2.0 * pi * edge / rate for edge in band)
-    hertz = np.clip(refined(breakpoints(poles, low, high), PARTS) * rate / (2.0 * pi), *band)
-    asked, rounded = _magnitudes(realization, hertz, channel)
+    hertz = np.clip(refined(breakpoints(responses.poles, low, high), PARTS) * rate / (2.0 * pi), *band)
+    asked, rounded = responses.magnitudes(hertz)
     if not np.isfinite(rounded).all():
         return Deviation(None, None, None, "with its coefficients rounded the filter is not stable and has no response")
     top = float(asked.max())
@@ -58,17 +85,8 @@ def _of_channel(realization: Realization, band: Band, channel: int) -> Deviation
     judged = asked >= top * 10.0 ** (-JUDGED_DB / 20.0)
     leak = rounded[~judged].max(initial=0.0) / top
     db = np.where(judged, _deviation_db(asked, rounded), -1.0)
-    worst = int(db.argmax())
-    at, most = _zoomed(realization, hertz, worst, top, channel)
+    at, most = _zoomed(responses, hertz, int(db.argmax()), top)
     return Deviation(most, float(f"{at:.{DIGITS}g}"), None if judged.all() else decibels(leak**2))
-
-
-def _magnitudes(realization: Realization, hertz: FloatArray, channel: int) -> tuple[FloatArray, FloatArray]:
-    """|H asked| and |H rounded|; the latter infinite where the rounded filter does not settle."""
-    diagram = realization.program.diagram
-    w = 2.0 * pi * hertz / realization.filter.rate
-    rounded = response_to_output(diagram, [diagram.inputs[0]], w, channel)[:, 0]
-    return np.abs(realization.filter.response(hertz)), np.abs(rounded)
 
 
 def _deviation_db(asked: FloatArray, rounded: FloatArray) -> FloatArray:
@@ -76,13 +94,13 @@ def _deviation_db(asked: FloatArray, rounded: FloatArray) -> FloatArray:
         return np.asarray(np.abs(20.0 * np.log10(rounded) - 20.0 * np.log10(asked)), dtype=np.float64)
 
 
-def _zoomed(realization: Realization, hertz: FloatArray, worst: int, top: float, channel: int) -> tuple[float, float]:
+def _zoomed(responses: _Responses, hertz: FloatArray, worst: int, top: float) -> tuple[float, float]:
     """The frequency and the size of the largest deviation near a point of the grid."""
     low, high = hertz[max(worst - 1, 0)], hertz[min(worst + 1, len(hertz) - 1)]
     at, most = float(hertz[worst]), -inf
     for _ in range(ZOOMS):
         points = np.unique(np.append(np.linspace(low, high, 2 * PARTS + 1), at))
-        asked, rounded = _magnitudes(realization, points, channel)
+        asked, rounded = responses.magnitudes(points)
         judged = asked >= top * 10.0 ** (-JUDGED_DB / 20.0)
         db = np.where(judged, _deviation_db(asked, rounded), -1.0)
         place = int(db.argmax())

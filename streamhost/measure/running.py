@@ -5,7 +5,6 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from streamhost.errors import RequestError
 from streamhost.program.ideal import ideal_of, quantized_input
 from streamhost.program.native.kernel import Memory, Variant, compile_kernel, no_marks, no_trace, trace_width
 from streamhost.realization import Realization, Tally, tally
@@ -15,10 +14,10 @@ FloatArray = NDArray[np.float64]
 
 @dataclass(frozen=True, eq=False)
 class Block:
-    """What came of one block. Arrays are (frames, channels); the next block does not overwrite them.
+    """What came of one block. The next block does not overwrite its arrays.
 
-    difference: output minus ideal. marks: 1 where something overflowed. trace: what a traced kernel wrote of every
-    frame and channel, (frames, channels, columns).
+    output, and difference, which is output minus ideal: (frames, outputs, channels). marks: 1 where something overflowed,
+    (frames, channels). trace: what a traced kernel wrote of every frame and channel, (frames, channels, columns).
     """
 
     output: FloatArray
@@ -31,12 +30,7 @@ class Run:
     """A realization from zero state, beside the ideal run of its stored coefficients on the quantized input."""
 
     def __init__(self, realization: Realization, channels: int) -> None:
-        if len(realization.outputs) > 1:
-            raise RequestError(
-                f"This realization has {len(realization.outputs)} outputs ({', '.join(realization.outputs)}), and only "
-                "those with one can be measured so far."
-            )
-        self.program, self.channels = realization.program, channels
+        self.program, self.outputs, self.channels = realization.program, len(realization.outputs), channels
         self._memory = realization.memory(channels)
         self._kernel = compile_kernel(self.program, Variant(metered=True, traced=True))
         self.ideal = ideal_of(self.program)
@@ -47,16 +41,16 @@ class Run:
     def step(self, x: FloatArray) -> Block:
         """Run the next block (frames, channels), 1.0 = full scale."""
         frames = len(x)
-        output, marks = np.empty(x.shape), np.zeros(x.shape, np.uint8)
+        output, marks = np.empty((frames, self.outputs, self.channels)), np.zeros(x.shape, np.uint8)
         trace = np.empty((frames, self.channels, max(1, trace_width(self.program))))
         self._kernel.call(self._memory, np.ascontiguousarray(x), output, marks=marks, trace=trace)
         clean = np.ascontiguousarray(quantized_input(self.program, x))
-        ideal = np.empty((frames, (2 if self.ideal.double else 1) * self.channels))
+        ideal = np.empty((frames, (2 if self.ideal.double else 1) * self.outputs, self.channels))
         self._ideal_kernel.call(self._ideal_memory, clean, ideal, marks=no_marks(), trace=no_trace())
         with np.errstate(over="ignore", invalid="ignore"):  # an unstable one may run away to infinity
-            difference = output - ideal[:, : self.channels]
+            difference = output - ideal[:, : self.outputs]
             if self.ideal.double:
-                difference -= ideal[:, self.channels :]
+                difference -= ideal[:, self.outputs :]
         return Block(output, difference, marks, trace)
 
     def tally(self) -> Tally:

@@ -21,40 +21,73 @@ WATCHED_BLOCKS = 32
 
 
 class FixedWatch:
-    """The residues of a fixed-point program in a run of `frames`, of which the first `wait` do not count."""
+    """The residues of a fixed-point program in a run of `frames`, of which the first `wait` do not count.
+
+    Channels with coefficients of their own drop other values than the rest, and are judged apart.
+    """
 
     def __init__(self, program: Program, frames: int, wait: int, block: int) -> None:
         self._program = program
-        self._sources = noise_sources(program)
-        self._columns, self._expected = _watched(program, self._sources)
-        self._sum = ResidueSum(np.array([rounding.lowest for rounding in self._expected]))
+        self._columns = [_ColumnWatch(program, column) for column in range(program.diagram.channels)]
         self._frame, self._chosen = 0, _chosen_blocks(frames, wait, block)
-        self._seen = False
 
     def add(self, x: FloatArray, trace: FloatArray) -> None:
         """The next block: the input (frames, channels) and the trace (frames, channels, columns)."""
-        if self._frame in self._chosen and self._expected:
+        if self._frame in self._chosen:
             for channel in range(x.shape[1]):
-                self._sum.add(x[:, channel], trace[:, channel, self._columns])
-            self._seen = True
+                self._columns[min(channel, len(self._columns) - 1)].add(x[:, channel], trace[:, channel])
         self._frame += len(x)
 
-    def verdict(self, rate: float) -> Whiteness:
-        """Whether the white model holds at that rate, each rounding judged by its part in the noise."""
-        sources = len(self._sources)
-        if not sources:
-            return Whiteness(None, "nothing is rounded")
-        if blind := _toward_zero(self._program, self._sources):
-            return Whiteness(False, f"rounding toward zero follows the sign of the signal ({blind})")
-        if len(self._expected) < sources:
-            inside = sources - len(self._expected)
-            return Whiteness(None, f"{inside} of {sources} errors arise inside sums, where none is written down")
-        shares = source_shares(self._program, rate, np.pi * octave_edges(2))
-        expected = tuple(replace(rounding, shares=tuple(shares[:, k])) for k, rounding in enumerate(self._expected))
-        return judged(expected, self._sum.result() if self._seen else None)
+    def verdict(self, rate: float, output: int = 0) -> Whiteness:
+        """Whether the white model holds at that rate at an output, each rounding judged by its part in the noise there.
 
-    def prediction(self, rate: float) -> Prediction:
-        return predicted_noise(self._program, rate)
+        Where channels are judged apart it holds if it does in all in which something is rounded.
+        """
+        found = [(number, column.verdict(rate, output)) for number, column in enumerate(self._columns, 1)]
+        judged = [(number, verdict) for number, verdict in found if verdict is not None]
+        worst = next((pair for kind in (False, None) for pair in judged if pair[1].holds is kind), None)
+        if worst is None:
+            return judged[0][1] if judged else Whiteness(None, "nothing is rounded")
+        number, verdict = worst
+        where = f" in channel {number}" if len(self._columns) > 1 else ""
+        return replace(verdict, reason=f"{verdict.reason}{where}")
+
+    def prediction(self, rate: float, output: int = 0) -> Prediction:
+        return predicted_noise(self._program, rate, output=output)
+
+
+class _ColumnWatch:
+    """The residues of the channels that have the coefficients of one column."""
+
+    def __init__(self, program: Program, column: int) -> None:
+        self._program, self._column = program, column
+        self._sources = noise_sources(program, column)
+        self._columns, self._expected = _watched(program, self._sources)
+        self._sum = ResidueSum(np.array([rounding.lowest for rounding in self._expected]))
+        self._seen = False
+
+    def add(self, x: FloatArray, trace: FloatArray) -> None:
+        """A block of one channel: the input (frames,) and the trace (frames, columns)."""
+        if self._expected:
+            self._sum.add(x, trace[:, self._columns])
+            self._seen = True
+
+    def verdict(self, rate: float, output: int) -> Whiteness | None:
+        """None where nothing is rounded on the way to the output."""
+        shares = source_shares(self._program, rate, np.pi * octave_edges(2), self._column, output)
+        reaching = [k for k in range(len(self._sources)) if shares[:, k].any()]
+        if not reaching:
+            return None
+        sources = tuple(self._sources[k] for k in reaching)
+        if blind := _toward_zero(self._program, sources):
+            return Whiteness(False, f"rounding toward zero follows the sign of the signal ({blind})")
+        columns, expected = _watched(self._program, sources)
+        if len(expected) < len(sources):
+            inside = len(sources) - len(expected)
+            return Whiteness(None, f"{inside} of {len(sources)} errors arise inside sums, where none is written down")
+        kept = [self._columns.index(column) for column in columns]
+        weighed = tuple(replace(each, shares=tuple(shares[:, k])) for k, each in zip(reaching, expected, strict=True))
+        return judged(weighed, self._sum.result().only(kept) if self._seen else None)
 
 
 class FloatWatch:
@@ -62,23 +95,27 @@ class FloatWatch:
 
     def __init__(self, program: Program, wait: int) -> None:
         self._program, self._wait = program, wait
-        self._frame = self._samples = 0
-        self._squares = np.zeros(len(program.nodes))
+        self._frame = 0
+        self._samples = np.zeros(program.diagram.channels)
+        self._squares = np.zeros((program.diagram.channels, len(program.nodes)))
 
     def add(self, x: FloatArray, trace: FloatArray) -> None:
         """The next block: the input (frames, channels) and the trace (frames, channels, nodes)."""
         settled = trace[max(0, self._wait - self._frame) :]
-        with np.errstate(over="ignore", invalid="ignore"):  # an unstable one may run away to infinity
-            self._squares += np.einsum("fcn,fcn->n", settled, settled)
-        self._samples += settled.shape[0] * settled.shape[1]
+        for channel in range(settled.shape[1]):
+            column = min(channel, len(self._samples) - 1)
+            with np.errstate(over="ignore", invalid="ignore"):  # an unstable one may run away to infinity
+                self._squares[column] += np.einsum("fn,fn->n", settled[:, channel], settled[:, channel])
+            self._samples[column] += len(settled)
         self._frame += len(x)
 
-    def verdict(self, rate: float) -> Whiteness:
+    def verdict(self, rate: float, output: int = 0) -> Whiteness:
         return Whiteness(None, "what floating point rounds grows and shrinks with the signal: there is no such model")
 
-    def prediction(self, rate: float) -> Prediction:
+    def prediction(self, rate: float, output: int = 0) -> Prediction:
         """An estimate."""
-        return predicted_noise(self._program, rate, np.sqrt(self._squares / max(1, self._samples)))
+        power = self._squares / np.maximum(self._samples, 1.0)[:, np.newaxis]
+        return predicted_noise(self._program, rate, np.sqrt(power), output=output)
 
 
 def watch(program: Program, frames: int, wait: int, block: int) -> FixedWatch | FloatWatch:

@@ -1,16 +1,17 @@
-"""One [[filter]] table: the ways in which a preset may state a filter, and its cascade."""
+"""The [[filter]] tables: the ways in which a preset may state a filter, and for which rates and channels."""
 
 import re
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from typing import Any
 
 from streamhost.errors import FilterError, nearest
 from streamhost.filters import Filter, kinds
 from streamhost.filters.designs import KINDS, design
+from streamhost.presets.bands import Band, Bands, filter_of, highest_channel
 from streamhost.presets.lines import Path
 from streamhost.presets.mistakes import Mistakes, listed, one_line
 from streamhost.presets.tables import (
-    LATER,
+    Channels,
     CodesTable,
     CoefficientsTable,
     EquationTable,
@@ -24,19 +25,59 @@ from streamhost.presets.tables import (
 Table = Mapping[str, Any]
 
 
-def read_filters(mistakes: Mistakes, tables: list[dict[str, Any]], rate: float | None) -> Filter | None:
-    """The cascade of all [[filter]] tables, or None after a mistake. `rate` is None where it is itself a mistake."""
+def read_filters(mistakes: Mistakes, tables: list[dict[str, Any]], rates: Sequence[float]) -> dict[float, Bands] | None:
+    """All [[filter]] tables designed at each rate, or None after a mistake. No rates: they are themselves a mistake.
+
+    What is wrong at some of several rates only is told with the rate.
+    """
     if not tables:
         mistakes.add(("filter",), "filter = [] states no filter: at least one table [[filter]] is needed.")
-    filters = [_read_filter(mistakes, table, ("filter", index), rate) for index, table in enumerate(tables)]
-    good = [each for each in filters if each is not None]
-    if not good or len(good) < len(filters) or rate is None:
-        return None
+    before = len(mistakes.found)
+    if len(rates) > 1:
+        _check_kinds(mistakes, tables, len(rates))
+    designs, found = {}, {}
+    for rate in rates or (None,):
+        own = Mistakes(mistakes.name, mistakes.lines)
+        designs[rate or 0.0] = _read_bands(own, tables, rate)
+        found[rate] = own.found
+    everywhere = [each for each in next(iter(found.values())) if all(each in others for others in found.values())]
+    mistakes.found += everywhere
+    for rate, own_found in found.items():
+        mistakes.found += [(line, f"{text} (At {rate:g} Hz.)") for line, text in own_found if (line, text) not in everywhere]
+    good = rates and tables and len(mistakes.found) == before
+    return designs if good else None
+
+
+def _check_kinds(mistakes: Mistakes, tables: list[dict[str, Any]], rates: int) -> None:
+    """Of several rates every filter is designed at each, which a kind can and numbers cannot."""
+    for index, table in enumerate(tables):
+        way = next((way for way, (keys, _) in WAYS.items() if way != "kind" and any(key in table for key in keys)), None)
+        if way is not None and "kind" not in table:
+            mistakes.add(("filter", index), f"this [[filter]] is stated by {way}, which belong to one rate, and the preset has "
+                                            f"{rates} rates: state a kind, which is designed at each, or one rate.")
+
+
+def _read_bands(mistakes: Mistakes, tables: list[dict[str, Any]], rate: float | None) -> Bands:
+    bands = [_read_band(mistakes, table, ("filter", index), rate) for index, table in enumerate(tables)]
+    good = tuple(band for band in bands if band is not None)
+    if rate is None or not good or len(good) < len(bands) or mistakes.found:
+        return good
     try:
-        return Filter.cascade(good) if len(good) > 1 else good[0]
+        outputs = {filter_of(good, channel).outputs for channel in range(1, max(1, highest_channel(good)) + 1)}
+        if len(outputs) > 1:
+            raise FilterError("the filters of the channels have different outputs; all channels have the same.")
     except FilterError as error:
         mistakes.add(("filter",), str(error))
-        return None
+    return good
+
+
+def _read_band(mistakes: Mistakes, table: Table, path: Path, rate: float | None) -> Band | None:
+    channels = read_value(mistakes, table["channels"], (*path, "channels"), Channels) if "channels" in table else ()
+    if channels is not None and len(set(channels)) < len(channels):
+        mistakes.value((*path, "channels"), channels, "is not allowed: a channel is named once.")
+    own = {key: value for key, value in table.items() if key != "channels"}
+    filter = _read_filter(mistakes, own, path, rate)
+    return Band(filter, tuple(channels)) if filter is not None and channels is not None else None
 
 
 def _read_filter(mistakes: Mistakes, table: Table, path: Path, rate: float | None) -> Filter | None:
@@ -50,9 +91,7 @@ def _read_filter(mistakes: Mistakes, table: Table, path: Path, rate: float | Non
     mistakes.add(path, f"this [[filter]] states no filter: by {listed(WAYS)}.")
     every = {key for keys, _ in WAYS.values() for key in keys}
     for key in table:
-        if key in LATER:
-            mistakes.add((*path, key), f"{key} {LATER[key]}")
-        elif hint := nearest(key, every):
+        if hint := nearest(key, every):
             mistakes.add((*path, key), f"{one_line(key)} is not known.{hint}")
     return None
 
@@ -76,9 +115,7 @@ def _parameters_good(mistakes: Mistakes, kind: str, given: Table, path: Path, ra
     parameters = {parameter.name: parameter for parameter in spec.parameters}
     before = len(mistakes.found)
     for key, value in given.items():
-        if key in LATER:
-            mistakes.add((*path, key), f"{key} {LATER[key]}")
-        elif key not in parameters:
+        if key not in parameters:
             mistakes.add((*path, key), f'{one_line(key)} is no parameter of "{kind}", which takes {listed(parameters)}.'
                                        f"{nearest(key, parameters)}")
         elif parameters[key].range.taken(value, rate) is None:

@@ -71,17 +71,18 @@ def read_preset(source: Source, path: Path | None) -> Preset:
     """The preset that a raw table states; raises PresetError with all its mistakes."""
     mistakes = Mistakes(source.name, source.lines)
     head = read_table(mistakes, source.table, (), PresetTable)
-    rate = _rate(mistakes, head.get("rate"))
-    wanted = read_filters(mistakes, head["filter"], rate) if "filter" in head else None
+    rates = _rates(mistakes, source.table, head)
+    designs = read_filters(mistakes, head["filter"], rates) if "filter" in head else None
     structure = _structure(mistakes, head.get("structure", {}))
     arithmetic = read_format(mistakes, head.get("format", {}))
-    limits = _limits(mistakes, head.get("limits", {}), rate)
+    limits = _limits(mistakes, head.get("limits", {}), min(rates, default=None))
     title = _title(mistakes, head.get("title"), path)
     mistakes.raise_any()
-    assert rate is not None and wanted is not None and arithmetic is not None
+    assert designs is not None and arithmetic is not None
     return Preset(
-        title=", ".join([title, *source.varied]), path=path, rate=rate, filter=wanted, **structure, format=arithmetic,
-        limits=MappingProxyType(limits), allow_unstable=head.get("allow_unstable", False), source=source,
+        title=", ".join([title, *source.varied]), path=path, rate=rates[0], designs=MappingProxyType(designs),
+        **structure, format=arithmetic, limits=MappingProxyType(limits), source=source,
+        allow_unstable=head.get("allow_unstable", False),
     )
 
 
@@ -133,11 +134,21 @@ def _syntax(message: str, name: str, text: str) -> str:
     return f"{name}:{text.rstrip().count(chr(10)) + 1}: this is no TOML: at the end, {said}."
 
 
-def _rate(mistakes: Mistakes, rate: float | None) -> float | None:
+def _rates(mistakes: Mistakes, table: Mapping[str, Any], head: Mapping[str, Any]) -> tuple[float, ...]:
+    """The rates that a preset is stated for, in its order; none after a mistake."""
+    before = len(mistakes.found)
+    rate, rates = head.get("rate"), head.get("rates")
+    if "rate" in table and "rates" in table:
+        mistakes.add(("rates",), "rates stands beside rate: state one of them.")
+    if "rate" not in table and "rates" not in table:
+        mistakes.add((), "rate is missing: a number of hertz.")
     if rate is not None and rate <= 0:
         mistakes.value(("rate",), rate, "is not allowed: a sample rate is a number of hertz above 0.")
-        return None
-    return rate
+    if rates is not None and (min(rates) <= 0 or len(set(rates)) < len(rates)):
+        mistakes.value(("rates",), rates, "is not allowed: sample rates are numbers of hertz above 0, each stated once.")
+    if len(mistakes.found) > before:
+        return ()
+    return (rate,) if rate is not None else tuple(rates or ())
 
 
 def _title(mistakes: Mistakes, title: str | None, path: Path | None) -> str:

@@ -13,16 +13,18 @@ from streamhost.realization import Realization, realize
 DECIDING = ("arithmetic", "signal")
 
 
-def realize_preset(preset: Preset) -> Realization:
-    """What a preset states, ready to run.
+def realize_preset(preset: Preset, channels: int | None = None) -> Realization:
+    """What a preset states at its rate, ready to run on so many channels; unless said, on as many as it tells apart.
 
     Raises PresetError where filter, structure and format do not go together: unstable as asked, a choice that cannot
     carry this filter, a coefficient that does not fit, an accumulator that is too short.
     """
     mistakes = Mistakes(preset.source.name, preset.source.lines)
+    count = preset.channels if channels is None else channels
+    _check_channels(mistakes, preset, count)
     try:
         return realize(
-            preset.filter, form=preset.form, decomposition=preset.decomposition, pairing=preset.pairing,
+            preset.filters(count), form=preset.form, decomposition=preset.decomposition, pairing=preset.pairing,
             ordering=preset.ordering, scaling=preset.scaling, format=preset.format, allow_unstable=preset.allow_unstable,
         )
     except FilterError as error:
@@ -34,18 +36,28 @@ def realize_preset(preset: Preset) -> Realization:
     raise PresetError(mistakes.texts())
 
 
-def realize_presets(presets: Iterable[Preset]) -> list[Realization]:
-    """All of them; raises PresetError with what is refused in any of them together."""
+def realize_presets(presets: Iterable[Preset], channels: int | None = None) -> list[Realization]:
+    """All of them on so many channels; raises PresetError with what is refused in any of them together."""
     realizations: list[Realization] = []
     problems: list[str] = []
     for preset in presets:
         try:
-            realizations.append(realize_preset(preset))
+            realizations.append(realize_preset(preset, channels))
         except PresetError as error:
             problems += error.problems
     if problems:
         raise PresetError(dict.fromkeys(problems))
     return realizations
+
+
+def _check_channels(mistakes: Mistakes, preset: Preset, channels: int) -> None:
+    """PresetError where a filter is for a channel that is not there."""
+    for index, band in enumerate(preset.designs[preset.rate]):
+        if beyond := [channel for channel in band.channels if channel > channels]:
+            there = "1 channel" if channels == 1 else f"{channels} channels"
+            mistakes.value(("filter", index, "channels"), list(band.channels),
+                           f"names channel {beyond[0]}, and there {'is' if channels == 1 else 'are'} {there}.")
+    mistakes.raise_any()
 
 
 def _add(mistakes: Mistakes, preset: Preset, path: Path, text: str) -> None:

@@ -12,14 +12,18 @@ import msgspec
 from streamhost.presets.lines import Path
 from streamhost.presets.mistakes import Mistakes
 
-LATER = {
-    "rates": "is not offered yet: state rate, one number, and vary it from the command line.",
-    "channels": "is not offered yet: a filter is the same on all channels.",
-}
+MOST_CHANNELS = 64
 
 Text = Annotated[str, msgspec.Meta(description="a text in quotes")]
 Number = Annotated[float, msgspec.Meta(description="a number")]
 Rate = Annotated[float, msgspec.Meta(description="a number of hertz")]
+Rates = Annotated[
+    list[float], msgspec.Meta(min_length=1, description="a list of numbers of hertz, for instance [44100, 48000, 96000]")
+]
+Channels = Annotated[
+    list[Annotated[int, msgspec.Meta(ge=1, le=MOST_CHANNELS)]],
+    msgspec.Meta(min_length=1, description=f"a list of channels, whole numbers from 1 to {MOST_CHANNELS}, for instance [1]"),
+]
 Whole = Annotated[int, msgspec.Meta(description="a whole number")]
 Truth = Annotated[bool, msgspec.Meta(description="true or false")]
 Numbers = Annotated[list[float], msgspec.Meta(description="a list of numbers, for instance [1.0, -0.5]")]
@@ -51,7 +55,8 @@ Widening = Annotated[str, msgspec.Meta(description='"float64", over float32')]
 class PresetTable(msgspec.Struct, kw_only=True):
     """The head of a preset."""
 
-    rate: Rate
+    rate: Rate | None = None
+    rates: Rates | None = None
     filter: Tables
     title: Text | None = None
     allow_unstable: Truth = False
@@ -155,9 +160,7 @@ def read_table(
     """The fields of `table` that are as declared; all others are mistakes. What is left out is left out."""
     known = {field.name: field for field in msgspec.structs.fields(struct)}
     for key in table:
-        if key in LATER:
-            mistakes.add((*path, key), f"{key} {LATER[key]}")
-        elif key not in known:
+        if key not in known:
             mistakes.unknown((*path, key), known)
     for key, field in known.items():
         if field.required and key not in table:

@@ -14,6 +14,9 @@ from streamhost.presets.preset import Preset
 from streamhost.presets.reading import read_preset
 
 MOST_VARIANTS = 1000
+ONE_OF = {"rate": "rates", "rates": "rate"}
+"""Keys of the head of which one stands in the place of the other."""
+
 EXAMPLE = "structure.form=direct-1,transposed-2"
 
 Variation = tuple[str, tuple[str, ...]]
@@ -90,6 +93,8 @@ def _put(table: dict[str, Any], key: str, value: object, name: str) -> None:
         which = f" It has {count} filters: say which, for instance filter.1.{last}." if way == ["filter"] else ""
         raise PresetError([f"--vary {key}: {name} has no table of that name.{which}"])
     inside[last] = value
+    if inside is table and last in ONE_OF:
+        inside.pop(ONE_OF[last], None)
 
 
 def _member(inside: Any, part: str) -> Any:

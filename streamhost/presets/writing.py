@@ -3,6 +3,7 @@
 from collections.abc import Iterable, Sequence
 from typing import TypeGuard
 
+from streamhost.errors import FilterError
 from streamhost.filters import Codes, Filter, Polynomials, ZerosPoles
 from streamhost.presets.mistakes import one_line
 
@@ -16,8 +17,12 @@ def preset_text(filter: Filter, *, comments: Iterable[str] = ()) -> str:
 
     `comments` stand at its head, a line each. Numbers have as many digits as float64 needs, so that the text reads back
     as the same filter. It does for whatever the class methods of `Filter` make, unless a division by a0 made a last
-    coefficient vanish in float64: such a 0 is not kept.
+    coefficient vanish in float64: such a 0 is not kept. Raises FilterError for a filter with several outputs.
     """
+    if filter.branches:
+        raise FilterError(
+            f"the filter has the outputs {', '.join(filter.outputs)}, and a preset states such a filter by its kind only."
+        )
     head = [*(f"# {one_comment(comment)}" for comment in comments), f"rate = {_number(filter.rate)}"]
     return "\n".join(["\n".join(head), *(f"\n[[filter]]\n{table}" for table in _tables(filter))]) + "\n"
 

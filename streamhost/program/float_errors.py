@@ -32,10 +32,12 @@ def float_errors(program: Program, rms: FloatArray) -> dict[int, float]:
     return found
 
 
-def float_spectrum(program: Program, rms: FloatArray, frequencies: FloatArray, channel: int = 0) -> FloatArray:
-    """Estimated power density of the noise at the first output, as `noise_spectrum` has it."""
+def float_spectrum(
+    program: Program, rms: FloatArray, frequencies: FloatArray, channel: int = 0, output: int = 0
+) -> FloatArray:
+    """Estimated power density of the noise at an output, as `noise_spectrum` has it."""
     errors = float_errors(program, rms)
     if not errors:
         return np.zeros(len(frequencies))
-    power = np.abs(response_to_output(program.diagram, list(errors), frequencies, channel)) ** 2
+    power = np.abs(response_to_output(program.diagram, list(errors), frequencies, channel, output=output)) ** 2
     return np.asarray(power @ np.array(list(errors.values())), dtype=np.float64)

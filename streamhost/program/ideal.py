@@ -29,6 +29,7 @@ class Ideal:
 def ideal_of(program: Program) -> Ideal:
     """The ideal to judge a program by: in float64 where that lies 20 dB below what is judged, else in double-double.
 
+    That is asked at every output of every channel where something is rounded.
     The rounding of both is estimated for a white signal at full scale; where either cannot be (a pole on or outside the
     circle), a fixed word of up to 32 bits is judged by float64 and anything finer by double-double.
     """
@@ -36,16 +37,21 @@ def ideal_of(program: Program) -> Ideal:
     grid = np.linspace(0.0, np.pi, 4097)
     if isinstance(program.format, Float):
         return Ideal(plain, program.format.type == "float64")
-    own, judged = _noise_at_full_scale(plain, grid), float(np.mean(noise_spectrum(program, grid)))
-    if not (np.isfinite(own) and np.isfinite(judged)):
+    places = [(channel, output) for channel in range(program.diagram.channels)
+              for output in range(len(program.diagram.outputs))]
+    own = np.array([_noise_at_full_scale(plain, grid, *place) for place in places])
+    judged = np.array([float(np.mean(noise_spectrum(program, grid, *place))) for place in places])
+    if not (np.isfinite(own).all() and np.isfinite(judged).all()):
         widest = max(quantizer.word.bits for quantizer in program.quantizers)
         return Ideal(plain, widest > 32)
-    return Ideal(plain, own > judged * 10 ** (-MARGIN_DB / 10))
+    noisy = (judged > 0.0) if judged.any() else np.ones(len(places), np.bool_)
+    return Ideal(plain, bool((own > judged * 10 ** (-MARGIN_DB / 10))[noisy].any()))
 
 
-def _noise_at_full_scale(program: Program, grid: FloatArray) -> float:
-    """Estimated noise power of a floating-point program for white noise at full scale."""
-    return float(np.mean(float_spectrum(program, np.sqrt(powers_from_input(program.diagram)), grid)))
+def _noise_at_full_scale(program: Program, grid: FloatArray, channel: int, output: int) -> float:
+    """Estimated noise power of a floating-point program at an output for white noise at full scale."""
+    rms = np.sqrt(powers_from_input(program.diagram, channel))
+    return float(np.mean(float_spectrum(program, rms, grid, channel, output)))
 
 
 def ideal_program(program: Program) -> Program:
