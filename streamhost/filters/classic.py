@@ -102,12 +102,13 @@ def _around(start: float, steps: int) -> list[float]:
     return candidates
 
 
-def _cleaned(root: complex) -> complex:
+def cleaned(root: complex) -> complex:
+    """The root without a real part that is rounding only."""
     return complex(0.0 if abs(root.real) < NOISE else root.real, root.imag)
 
 
 def _filter(rate: float, z: Iterable[complex], p: Iterable[complex], k: float) -> Filter:
-    zeros, poles, gain = [_cleaned(zero) for zero in z], [_cleaned(pole) for pole in p], float(k)
+    zeros, poles, gain = [cleaned(zero) for zero in z], [cleaned(pole) for pole in p], float(k)
     parts = [part for root in zeros + poles for part in (root.real, root.imag)]
     if not all(map(isfinite, parts)) or not isfinite(gain) or gain == 0:
         raise FilterError(

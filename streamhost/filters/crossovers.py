@@ -9,6 +9,7 @@ two would else cancel at the crossover, which is where the order divided by 2 is
 from dataclasses import replace
 
 from streamhost.errors import FilterError
+from streamhost.filters.classic import cleaned
 from streamhost.filters.exact import from_roots, rounded, value
 from streamhost.filters.factors import ZerosPoles
 from streamhost.filters.filter import Filter
@@ -68,7 +69,7 @@ def _halves(rate: float, order: int, frequency: float) -> tuple[ZerosPoles, Zero
     from scipy import signal
 
     found = signal.butter(order, frequency, "lowpass", output="zpk", fs=rate)[1]
-    made = Filter.from_zeros_poles([-1.0] * order, found.tolist(), 1.0, rate=rate).factors[0]
+    made = Filter.from_zeros_poles([-1.0] * order, list(map(cleaned, found.tolist())), 1.0, rate=rate).factors[0]
     assert isinstance(made, ZerosPoles), "made of zeros and poles"
     denominator = from_roots(made.poles)
     at_zero, at_half = (float(value(denominator, point)) / 2**order for point in (denominator[0], -denominator[0]))
