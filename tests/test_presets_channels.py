@@ -118,9 +118,11 @@ def test_all_channels_have_the_same_outputs():
 
 
 def test_nothing_follows_a_crossover():
-    assert problems(HEAD + filter_table(text=CROSSOVER.format(frequency=1000)) + filter_table()) == [
+    (told,) = problems(HEAD + filter_table(text=CROSSOVER.format(frequency=1000)) + filter_table())
+    assert told == (
         "preset:2: a filter with the outputs low, high stands before the end of a cascade; nothing may follow a filter with "
-        "several outputs. Put it last."]
+        "several outputs. Put it last."
+    )
 
 
 # Rates
@@ -191,7 +193,9 @@ WAYS = {
 
 @pytest.mark.parametrize("way", WAYS)
 def test_numbers_belong_to_one_rate(way):
-    assert problems(RATES + filter_table(text=way)) == [
+    (told,) = problems(RATES + filter_table(text=way))
+    assert told == (
         f"preset:2: this [[filter]] is stated by {WAYS[way]}: numbers belong to one rate, and the preset has 3 rates. State a "
-        "kind, which is designed at each, or one rate."]
+        "kind, which is designed at each, or one rate."
+    )
     assert parse_preset("rates = [48000]\n" + filter_table(text=way)).rates == (48000.0,)

@@ -53,8 +53,8 @@ def _check_kinds(mistakes: Mistakes, tables: list[dict[str, Any]], rates: int) -
     for index, table in enumerate(tables):
         way = next((way for way, (keys, _) in WAYS.items() if way != "kind" and any(key in table for key in keys)), None)
         if way is not None and "kind" not in table:
-            mistakes.add(("filter", index), f"this [[filter]] is stated by {way}: numbers belong to one rate, and the preset has "
-                                            f"{rates} rates. State a kind, which is designed at each, or one rate.")
+            mistakes.add(("filter", index), f"this [[filter]] is stated by {way}: numbers belong to one rate, and the preset "
+                                            f"has {rates} rates. State a kind, which is designed at each, or one rate.")
 
 
 def _read_bands(mistakes: Mistakes, tables: list[dict[str, Any]], rate: float | None) -> Bands:
