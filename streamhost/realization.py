@@ -24,7 +24,7 @@ from streamhost.structures import Built, build
 if TYPE_CHECKING:
     from streamhost.program.native.kernel import Kernel, Memory
 
-MOST_REAL_BITS = 53
+MOST_SAMPLE_BITS = 53
 MOST_HISTORY = 1 << 16
 """Frames of past input that are kept for a realization that takes over and holds past input."""
 
@@ -93,17 +93,27 @@ class Realization:
         """Poles of the diagram with its coefficients as stored that lie on or outside the unit circle, decided exactly."""
         return max(_unstable_in(self.program.diagram, channel) for channel in range(self.program.diagram.channels))
 
+    def check_samples(self, name: str = "this realization") -> None:
+        """RequestError where the input's or the output's word is longer than a sample in float64; `name` is its subject."""
+        if not isinstance(self.format, Fixed):
+            return
+        words = {"input": self.format.input.word, "output": self.format.output.word}
+        long = [f"{place} = {word}, {word.bits} bits" for place, word in words.items() if word.bits > MOST_SAMPLE_BITS]
+        if long:
+            raise RequestError(
+                f"{name} has {' and '.join(long)}: samples are float64, which holds {MOST_SAMPLE_BITS} bits, and longer "
+                'words come in and go out as codes only (process_codes). State a shorter one, for instance "Q1.31", for '
+                "what comes in and what goes out; signal, state and operand stay as long as they are."
+            )
+
     def process(self, x: ArrayLike) -> NDArray[np.float64]:
         """Filter a block of samples, 1.0 = full scale.
 
         x: (frames,) or (frames, channels), of as many channels as the blocks before it. Returns the same shape; with
-        several outputs (frames, outputs, channels). Raises RequestError for another shape or number of channels.
+        several outputs (frames, outputs, channels). Raises RequestError for another shape or number of channels, and
+        where input or output has a word of more than 53 bits.
         """
-        if (
-            isinstance(self.format, Fixed)
-            and max(self.format.input.word.bits, self.format.output.word.bits) > MOST_REAL_BITS
-        ):
-            raise RequestError(f"Samples of {self.format.input.word} do not fit a float64. Use process_codes.")
+        self.check_samples()
         samples = np.asarray(x)
         if samples.dtype.kind not in "fiub":
             raise RequestError(f"process takes real numbers, not {samples.dtype}.")
@@ -173,9 +183,14 @@ class Realization:
         return tally(self.program, self._memory.meters if self._memory is not None else None)
 
     def source(self, *, codes: bool = False, metered: bool = True) -> str:
-        """The readable source of the kernel that `process` runs, or of the one for codes, or without meters."""
+        """The readable source of the kernel that `process` runs, or of the one for codes, or without meters.
+
+        Raises RequestError as `process` does.
+        """
         from streamhost.program.native.kernel import Variant, kernel_source
 
+        if not codes:
+            self.check_samples()
         return kernel_source(self.program, Variant(codes=codes, metered=metered))
 
     def memory(self, channels: int) -> "Memory":

@@ -80,19 +80,23 @@ class CountingDefinition(FixedDefinition):
         return result
 
 
-def run_counting(program: Program, x: NDArray[np.float64]) -> tuple[NDArray[np.float64], Counter[str], list[FixedDefinition]]:
-    """The definition on a real signal, what corners it took, and the evaluators of the channels."""
+def run_counting(program: Program, codes: NDArray[np.int64]) -> tuple[NDArray[np.int64], Counter[str], list[FixedDefinition]]:
+    """The definition on codes (frames, channels), what corners it took, and the evaluators of the channels."""
     corners: Counter[str] = Counter()
     columns, evaluators = [], []
-    for channel in range(x.shape[1]):
+    for channel in range(codes.shape[1]):
         evaluator = CountingDefinition(program, channel)
-        quantizer = program.format.input  # type: ignore[union-attr]
-        codes = evaluator.run([input_code(float(v), quantizer) for v in x[:, channel]])
-        fraction = program.format.output.word.fraction  # type: ignore[union-attr]
-        columns.append([[code / 2.0**fraction for code in frame] for frame in codes])
+        columns.append(evaluator.run([int(code) for code in codes[:, channel]]))
         corners += evaluator.corners
         evaluators.append(evaluator)
-    return np.moveaxis(np.array(columns), 0, 2), corners, evaluators
+    return np.moveaxis(np.array(columns, np.int64), 0, 2), corners, evaluators
+
+
+def codes_of(program: Program, x: NDArray[np.float64]) -> NDArray[np.int64]:
+    """The codes of a real signal; the low bits that a float64 has no room for are filled at random."""
+    quantizer = program.format.input  # type: ignore[union-attr]
+    codes = np.array([[input_code(float(v), quantizer) for v in row] for row in x], np.int64).reshape(x.shape)
+    return codes ^ np.random.default_rng(0).integers(0, 1 << max(0, quantizer.word.bits - 53), codes.shape)
 
 
 def busy(frames: int, channels: int, seed: int) -> NDArray[np.float64]:

@@ -8,8 +8,9 @@ from collections.abc import Callable, Iterable, Sequence
 from typing import Any
 
 import numpy as np
-from oracle_fixed import Counts, FixedArithmetic, Format, Refused, Section, Stored, Value, stored
+from oracle_fixed import Counts, FixedArithmetic, Section, Stored, Value, stored
 from oracle_float import FloatArithmetic
+from oracle_words import Format, Refused
 
 __all__ = ["FORMS", "Counts", "Format", "Refused", "run_fixed", "run_float"]
 

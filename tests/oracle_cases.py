@@ -7,7 +7,8 @@ from typing import Any
 
 import numpy as np
 from oracle import FORMS
-from oracle_fixed import Format, Section
+from oracle_fixed import Section
+from oracle_words import Format
 
 import streamhost as sh
 from streamhost.errors import StructureError
@@ -104,7 +105,7 @@ def denominator(rng: Random, order: int, *, marginal: bool) -> list[float]:
 
 
 def word(rng: Random, least: int = 4) -> str:
-    bits = rng.choice([8, 12, 16, 16, 24, 32, rng.randint(least, 32)])
+    bits = rng.choice([8, 12, 16, 16, 24, 32, 48, 64, rng.randint(least, 64)])
     integer = min(rng.choice([1, 1, 1, 2, 3, rng.randint(1, max(1, bits // 2))]), bits - 1)
     return f"Q{integer}.{bits - integer}"
 
@@ -127,12 +128,12 @@ def accumulator(rng: Random) -> Any:
     if pick < 0.4:
         return "full"
     if pick < 0.5:
-        return rng.choice([32, 40, 48, 56, 64])
+        return rng.choice([32, 40, 48, 56, 64, 64])
     overflow = rng.choice(OVERFLOWS)
     if pick < 0.75:
         bits = rng.choice([24, 32, 40, 56, 64, rng.randint(8, 64)])
-        return {"bits": bits, "drop": rng.choice([0, -1, 2, 8, 16]), "overflow": overflow}
-    fraction = rng.randint(4, 46)
+        return {"bits": bits, "drop": rng.choice([0, -1, 2, 8, 16, 32, 63]), "overflow": overflow}
+    fraction = rng.randint(4, 62)
     return {"word": f"Q{rng.randint(1, 64 - fraction)}.{fraction}", "overflow": overflow}
 
 
@@ -141,7 +142,7 @@ def product(rng: Random) -> dict[str, Any]:
     if pick < 0.15:
         return {"rounding_place": "product"}
     if pick < 0.4:
-        bits = rng.choice(["exact", rng.randint(2, 40), rng.randint(10, 30)])
+        bits = rng.choice(["exact", rng.randint(2, 90), rng.randint(10, 30)])
         return {"product": {"bits": bits, "rounding": rng.choice(ROUNDINGS)}}
     return {"product": rng.randint(4, 30)} if pick < 0.5 else {}
 
@@ -152,7 +153,7 @@ def coefficients(rng: Random) -> Any:
         return None
     if pick < 0.3:
         return word(rng, 8)
-    stated = {"bits": rng.choice([8, 12, 16, 24, 32]), "rounding": rng.choice(ROUNDINGS)}
+    stated = {"bits": rng.choice([8, 12, 16, 24, 32, 48, 64]), "rounding": rng.choice(ROUNDINGS)}
     return stated | ({"point": rng.choice(POINTS)} if rng.random() < 0.7 else {})
 
 

@@ -1,134 +1,17 @@
-"""Fixed point for the second evaluator, on Python integers: numbers, places, coefficients, sums and registers.
+"""Fixed point for the second evaluator: coefficients as stored, sums and registers.
 
-Written from the specification of the arithmetic; shares no code with the package. A format is stated as the keywords
-of `Fixed`, whose defaults are worked out here once more.
+Written from the specification of the arithmetic; shares no code with the package.
 """
 
-import re
 from collections.abc import Sequence
 from dataclasses import dataclass, field, replace
 from fractions import Fraction
 from math import frexp
 from typing import Any
 
+from oracle_words import Format, Place, Refused, carried, draws, fits, put_in, rounded, shifted, word
+
 Section = tuple[Sequence[float], Sequence[float]]
-MASK = 2**64 - 1
-
-
-class Refused(Exception):  # noqa: N818
-    """The specification refuses this format for this filter."""
-
-
-# --- one number
-
-
-def rounded(code: int, drop: int, how: str) -> int:
-    """`code` without its last `drop` bits, rounded as named; shifted left where there are none to drop."""
-    if drop <= 0:
-        return code << -drop
-    floor, rest, half = code >> drop, code & ((1 << drop) - 1), 1 << (drop - 1)
-    up = {
-        "half-up": rest >= half,
-        "half-even": rest > half or (rest == half and floor % 2 == 1),
-        "half-away": rest > half or (rest == half and code > 0),
-        "floor": False,
-        "toward-zero": rest > 0 and code < 0,
-    }
-    return floor + up[how]
-
-
-def put_in(code: int, bits: int, overflow: str) -> int:
-    low, high = -(1 << (bits - 1)), (1 << (bits - 1)) - 1
-    if overflow == "saturate":
-        return min(max(code, low), high)
-    return (code - low) % (1 << bits) + low
-
-
-def fits(code: int, bits: int) -> bool:
-    return put_in(code, bits, "saturate") == code
-
-
-def mix(z: int) -> int:
-    z = (z ^ (z >> 30)) * 0xBF58476D1CE4E5B9 & MASK
-    z = (z ^ (z >> 27)) * 0x94D049BB133111EB & MASK
-    return z ^ (z >> 31)
-
-
-def draws(seed: int, ordinal: int, channel: int, frame: int) -> tuple[int, int]:
-    """The two 64-bit words of one dithered rounding."""
-    step = 0x9E3779B97F4A7C15
-    key = mix(seed + step & MASK)
-    key = mix(key + step * (ordinal + 1) & MASK)
-    key = mix(key + step * (channel + 1) & MASK)
-    first, second = (mix(key + step * (2 * frame + j + 1) & MASK) for j in (0, 1))
-    return first, second
-
-
-# --- a format, from the keywords
-
-
-@dataclass(frozen=True)
-class Place:
-    integer: int
-    fraction: int
-    rounding: str = "half-up"
-    overflow: str = "saturate"
-    dither: bool = False
-
-    @property
-    def bits(self) -> int:
-        return self.integer + self.fraction
-
-
-def word(text: str) -> tuple[int, int]:
-    integer, fraction = re.fullmatch(r"Q(-?\d+)\.(\d+)", text).groups()  # type: ignore[union-attr]
-    return int(integer), int(fraction)
-
-
-def place(given: Any, default: Place) -> Place:
-    """What is stated at a place, the rest from its default."""
-    table = {"word": given} if isinstance(given, str) else dict(given or {})
-    if "word" in table:
-        integer, fraction = word(table.pop("word"))
-        default = replace(default, integer=integer, fraction=fraction)
-    if "dither" in table:
-        table["dither"] = table["dither"] == "tpdf"
-    return replace(default, **table)
-
-
-class Format:
-    """The eight places of a fixed-point format, resolved from its keywords."""
-
-    def __init__(
-        self, signal: Any = "Q1.15", *, input: Any = None, coefficients: Any = None, operand: Any = None,
-        product: Any = None, accumulator: Any = "full", state: Any = None, output: Any = None,
-        rounding: str = "half-up", rounding_place: str = "sum", overflow: str = "saturate",
-        feedback: str = "subtracted", pre_sum: str = "exact", dither: str | None = None, dither_seed: int = 0,
-        allow_vanishing: bool = False, allow_clamping: bool = False,
-    ) -> None:
-        short = Place(1, 15, rounding, overflow, dither == "tpdf")
-        self.signal = place(signal, short)
-        at_signal = replace(short, integer=self.signal.integer, fraction=self.signal.fraction)
-        self.input = place(input, replace(at_signal, rounding="half-even", overflow="saturate", dither=False))
-        self.operand = place(operand, self.signal)
-        self.state, self.output = place(state, at_signal), place(output, at_signal)
-        self.coefficients = {"word": coefficients} if isinstance(coefficients, str) else dict(coefficients or {})
-        self.coefficients.setdefault("bits", self.signal.bits)
-        self.product_fraction, self.product_rounding = self._product(product, rounding_place, rounding)
-        if not isinstance(accumulator, dict):
-            accumulator = {"bits" if isinstance(accumulator, int) else "word": accumulator}
-        self.accumulator = {key: value for key, value in accumulator.items() if value != "full"}
-        self.negated = feedback == "negated"
-        self.pre_sum, self.seed = pre_sum, dither_seed
-        self.vanishing, self.clamping = allow_vanishing, allow_clamping
-
-    def _product(self, product: Any, rounding_place: str, rounding: str) -> tuple[int | None, str]:
-        if rounding_place == "product":
-            return self.signal.fraction, rounding
-        table = product if isinstance(product, dict) else {"bits": "exact" if product is None else product}
-        bits = table.get("bits", "exact")
-        return None if bits == "exact" else bits, table.get("rounding", "floor")
-
 
 # --- coefficients
 
@@ -179,7 +62,10 @@ def one_group(values: Sequence[float], format: Format) -> list[Coefficient]:
             raise Refused(f"coefficient {value} does not fit")
         if code == 0 and value != 0 and not format.vanishing:
             raise Refused(f"coefficient {value} becomes 0")
-        found.append(Coefficient(put_in(code, bits, "saturate"), fraction))
+        kept = put_in(code, bits, "saturate")
+        if kept != code and int(float(kept)) != kept:
+            raise Refused(f"coefficient {value} would be clamped to what no float64 is")
+        found.append(Coefficient(kept, fraction))
     return found
 
 
@@ -210,12 +96,22 @@ def stored(sections: Sequence[Section], front: float | None, format: Format) -> 
 
 @dataclass(eq=False)
 class Value:
-    """A code in a word. `seen` keeps what places have made of it in this frame."""
+    """A code in a word. `seen` keeps what places have made of it in this frame.
+
+    `bound` and `own`: the largest magnitude and the fraction bits at which a machine holds it, which a longer word does
+    not change; those of the word unless said.
+    """
 
     code: int
     integer: int
     fraction: int
+    bound: int = -1
+    own: int = -1
     seen: dict[Place, "Value"] = field(default_factory=dict)
+
+    def __post_init__(self) -> None:
+        if self.bound < 0:
+            self.bound, self.own = 1 << (self.integer + self.fraction - 1), self.fraction
 
 
 @dataclass
@@ -252,20 +148,35 @@ class FixedArithmetic:
         return code
 
     def store(self, value: Value) -> Value:
-        return Value(value.code, value.integer, value.fraction)
+        return replace(value, seen={})
 
     def zero_state(self) -> Value:
         return Value(0, self.format.state.integer, self.format.state.fraction)
 
     def zero_like(self, value: Value) -> Value:
-        return Value(0, value.integer, value.fraction)
+        return replace(value, code=0, seen={})
 
     def quantized(self, value: Value, at: Place) -> Value:
         if (value.integer, value.fraction) == (at.integer, at.fraction):
             return value
         if at not in value.seen:
-            value.seen[at] = Value(self._quantized(value, at), at.integer, at.fraction)
+            held = value.integer <= at.integer and value.fraction <= at.fraction
+            self._check_room(value, at, held=held)
+            as_it_was = (value.bound, value.own) if held else ()
+            value.seen[at] = Value(self._quantized(value, at), at.integer, at.fraction, *as_it_was)
         return value.seen[at]
+
+    def _check_room(self, value: Value, at: Place, *, held: bool) -> None:
+        """A register is one word of 64 bits; on the way into it a code may gain bits, or a dither, within two."""
+        if held:
+            return
+        if at.bits > 64:
+            raise Refused(f"a register of {at.bits} bits")
+        drop = value.own - at.fraction
+        if drop <= 0:
+            carried(value.bound << -drop)
+        elif at.dither:
+            carried(value.bound + (1 << drop))
 
     def _quantized(self, value: Value, at: Place) -> int:
         drop, code = value.fraction - at.fraction, value.code
@@ -300,9 +211,10 @@ class FixedArithmetic:
         terms = [Product(False, None, term) if isinstance(term, Value) else term for term in terms]
         fraction, bits = self._accumulator(terms)
         overflow = self.format.accumulator.get("overflow", "wrap")
-        running = exact = 0
+        running = exact = bound = 0
         for term in terms:
             code = self._term(term, fraction)
+            bound += self._bound(term, fraction)
             sign = -1 if term.negative else 1
             exact += sign * code
             if bits is None:
@@ -314,7 +226,8 @@ class FixedArithmetic:
         # where a term or a part of the sum was clipped and the whole would have fitted.
         if running != exact:
             self.counts.accumulator_overflows += 1
-        return Value(running, 10**6, fraction)
+        bound = carried(bound)
+        return Value(running, 10**6, fraction, bound if bits is None else min(bound, 1 << (bits - 1)), fraction)
 
     def _accumulator(self, terms: Sequence[Product]) -> tuple[int, int | None]:
         """Fraction bits of the accumulator and its length; None for as long as it takes."""
@@ -340,8 +253,21 @@ class FixedArithmetic:
         code = rounded(term.coefficient.code * term.value.code, exact - kept, self.format.product_rounding)
         return rounded(code, kept - fraction, "floor") << term.shift
 
+    def _bound(self, term: Product, fraction: int) -> int:
+        """The largest magnitude that a term brings: product, rounding and both shifts within two words."""
+        at, bound, kept = term.value.own, term.value.bound, term.value.own
+        if term.coefficient is not None:
+            at += term.coefficient.fraction
+            bound = carried(bound * abs(term.coefficient.code))
+            kept = min(f for f in (self.format.product_fraction, fraction, at) if f is not None)
+        bound = carried((bound if kept == at else shifted(bound, kept - at)) << term.shift)
+        return carried(shifted(bound, fraction - kept))
+
     def register(self, total: Value, *, delayed: bool) -> Value:
-        return self.quantized(total, self.format.state if delayed else self.format.signal)
+        at = self.format.state if delayed else self.format.signal
+        if total.integer <= at.integer and total.fraction <= at.fraction:
+            return total  # between sections: what a word holds already stays as it is
+        return self.quantized(total, at)
 
     def pre_sum(self, first: Value, second: Value) -> Any:
         """The sum of two stored values that only gains read, and how they read it."""
@@ -349,10 +275,12 @@ class FixedArithmetic:
             return self.register(self.sum([first, second]), delayed=False)
         fraction = max(first.fraction, second.fraction)
         code = sum(v.code << (fraction - v.fraction) for v in (first, second))
+        own = max(first.own, second.own)
+        bound = sum(v.bound << (own - v.own) for v in (first, second))
         longest = max(first.integer, second.integer)
         if self.format.pre_sum == "half":
-            half = Value(code, longest, fraction + 1)
+            half = Value(code, longest, fraction + 1, bound, own + 1)
             return self.quantized(half, self.format.signal), self.format.operand, 1
         # Two values of m and n integer bits always need max(m, n) + 1.
         wide = replace(self.format.operand, integer=self.format.operand.integer + 1)
-        return Value(code, longest + 1, fraction), wide, 0
+        return Value(code, longest + 1, fraction, bound, own), wide, 0

@@ -23,8 +23,9 @@ def random_float(rng: Random) -> Float:
     return Float(kind, accumulator=wide, fused=rng.random() < 0.4, flush_subnormals=rng.random() < 0.3)
 
 
-def random_word(rng: Random, most: int = 32) -> str:
-    bits = rng.choice([4, 8, 12, 16, 16, 24, 32, rng.randint(2, most)])
+def random_word(rng: Random) -> str:
+    """One in three longer than 32 bits."""
+    bits = rng.choice([4, 8, 12, 16, 16, 24, 32, 48, 64, rng.randint(2, 64)])
     integer = rng.choice([1, 1, 1, 2, 3, rng.randint(1, max(1, bits // 2))])
     return f"Q{min(integer, bits - 1)}.{bits - min(integer, bits - 1)}"
 
@@ -46,8 +47,9 @@ def random_accumulator(rng: Random) -> object:
     if pick < 0.35:
         return "full"
     if pick < 0.7:
-        return {"bits": rng.choice([16, 24, 32, 40, 56, 64]), "drop": rng.choice([0, 0, -1, 4, 8, 16]), "overflow": overflow}
-    fraction = rng.randint(4, 46)
+        drop = rng.choice([0, 0, -1, 4, 8, 16, 40, 64])
+        return {"bits": rng.choice([16, 24, 32, 40, 56, 64]), "drop": drop, "overflow": overflow}
+    fraction = rng.randint(4, 62)
     return {"word": f"Q{rng.randint(2, 64 - fraction)}.{fraction}", "overflow": overflow}
 
 
@@ -61,8 +63,8 @@ def random_fixed(rng: Random) -> Fixed:
     if rng.random() < 0.2:
         keys["rounding_place"] = "product"
     elif rng.random() < 0.4:
-        keys["product"] = {"bits": rng.randint(2, 40), "rounding": rng.choice(ROUNDINGS)}
-    keys["coefficients"] = {"bits": rng.choice([8, 12, 16, 24, 32]), "rounding": rng.choice(ROUNDINGS),
+        keys["product"] = {"bits": rng.randint(2, 90), "rounding": rng.choice(ROUNDINGS)}
+    keys["coefficients"] = {"bits": rng.choice([8, 12, 16, 24, 32, 48, 64]), "rounding": rng.choice(ROUNDINGS),
                             "point": rng.choice(["section", "polynomial", "realization", "coefficient"])}
     keys["feedback"] = rng.choice(["subtracted", "negated"])
     keys["pre_sum"] = rng.choice(["exact", "exact", "half", "signal"])

@@ -148,7 +148,7 @@ form = "direct1"
 decompositon = "whole"
 [format]
 arithmetic = "16x16"
-signal = "Q20.20"
+signal = "Q40.40"
 state.word = "Q1.99"
 state.rounding = "up"
 fused = true
@@ -298,9 +298,9 @@ def test_heads_that_cannot_be(text, expected):
 
 FORMATS = {
     'arithmetic = "float23"':
-        '8: arithmetic = "float23" is not known: 16x16+40, 16x16-32, 32x16-high, 32x32-high, 24x24+56, 32x32+64, '
-        'float32, float32-fused or float64. Did you mean "float32"?',
-    'signal = "Q20.20"': '8: signal = "Q20.20" has 40 bits. A word here has from 2 to 32 bits.',
+        '8: arithmetic = "float23" is not known: 16x16+40, 16x16-32, 32x16-high, 32x32-high, 24x24+56, 48x24+56, '
+        '32x32+64, float32, float32-fused or float64. Did you mean "float32"?',
+    'signal = "Q40.40"': '8: signal = "Q40.40" has 80 bits. A word here has from 2 to 64 bits.',
     'signal = "Q0.16"': '8: signal = "Q0.16" has no sign bit: m is at least 1, for instance "Q1.16".',
     "signal = 16":
         '8: signal = 16 is not allowed: signal is a word, for instance "Q1.15", or a table '

@@ -8,7 +8,7 @@ import numpy as np
 import oracle
 import pytest
 from oracle_cases import Case, codes, fixed_case, fixed_keys, float_case, samples, structure
-from oracle_fixed import draws
+from oracle_words import draws
 
 import streamhost as sh
 from streamhost.errors import FormatError
@@ -122,6 +122,8 @@ SHIPPED: dict[str, dict[str, Any]] = {
     "32x16-high": {"signal": "Q1.31", "coefficients": {"bits": 16}, "accumulator": {"bits": 32, "drop": 16}},
     "32x32-high": {"signal": "Q1.31", "coefficients": {"bits": 32}, "accumulator": {"bits": 32, "drop": 32}},
     "24x24+56": {"signal": "Q1.23", "coefficients": {"bits": 24}, "accumulator": 56},
+    "48x24+56": {"signal": "Q1.23", "coefficients": {"bits": 24}, "state": "Q1.47", "operand": "Q1.47",
+                 "accumulator": "Q9.47"},
     "32x32+64": {"signal": "Q1.31", "coefficients": {"bits": 32}, "accumulator": 64},
 }
 

@@ -74,6 +74,8 @@ def compare(
     info = probe(resolve(source, "sample"))
     stated = [at_rate(preset, info, source) for preset in presets_named(presets, variations)]
     realizations = realize_presets(stated, info.channels)
+    for preset, realization in zip(stated, realizations, strict=True):
+        realization.check_samples(preset.source.name)
     _check_one_filter(stated, realizations)
     places = destinations(folder, stated, realizations[0].outputs, info, force=force)
     with output_folder(places):

@@ -24,8 +24,8 @@ SUBTYPES = ("pcm16", "pcm24", "pcm32", "float")
 @click.option(
     "--subtype",
     type=click.Choice(SUBTYPES),
-    help="Samples of OUT. Unless said: PCM of the shortest of 16, 24, 32 bits that holds the output word's fraction "
-    "exactly; 24 bits after floating point.",
+    help="Samples of OUT. Unless said: PCM of the shortest of 16, 24, 32 bits that holds the output word's fraction, "
+    "32 bits for what is longer; 24 bits after floating point.",
 )
 @force_option
 def render(preset: str, source: str, destination: str, subtype: Any, force: bool) -> None:

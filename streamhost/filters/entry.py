@@ -101,13 +101,22 @@ def codes(values: object, word_text: str) -> tuple[tuple[int, ...], ...]:
                 "or every row is five with a0 left out."
             )
         for j, code in enumerate(row):
-            if not -limit <= code < limit and not (j == 3 and columns == 6):
-                raise FilterError(
-                    f"codes[{i}][{j}] is {code}, which is no code of {word_text}: {-limit} to {limit - 1} are allowed."
-                )
+            if not (j == 3 and columns == 6):
+                _check_code(code, limit, f"codes[{i}][{j}]", word_text)
         if columns == 6:
             _check_one(row[3], one, limit, f"codes[{i}][3]", word_text)
     return tuple((*row[:3], one, *row[-2:]) for row in rows)
+
+
+def _check_code(code: int, limit: int, what: str, word_text: str) -> None:
+    if not -limit <= code < limit:
+        raise FilterError(f"{what} is {code}, which is no code of {word_text}: {-limit} to {limit - 1} are allowed.")
+    if int(float(code)) != code:
+        bits = (abs(code) // (code & -code)).bit_length()
+        raise FilterError(
+            f"{what} is {code}, which takes {bits} bits without the zeros behind; coefficients are float64, which "
+            "holds 53. Give codes of a shorter word."
+        )
 
 
 def _check_one(code: int, one: int, limit: int, what: str, word_text: str) -> None:

@@ -1,4 +1,4 @@
-"""Arithmetics named by their property: signal length x coefficient length + accumulator length.
+"""Arithmetics named by their property: length of what is multiplied x coefficient length + accumulator length.
 
 Registers round half-up and saturate, accumulators wrap unless said. Keys are those of a preset's [format]; what a
 user states beside `arithmetic` overrides them.
@@ -14,5 +14,7 @@ ARITHMETICS: Mapping[str, Mapping[str, object]] = {
     "32x16-high": {"signal": "Q1.31", "coefficients": {"bits": 16}, "accumulator": {"bits": 32, "drop": 16}},
     "32x32-high": {"signal": "Q1.31", "coefficients": {"bits": 32}, "accumulator": {"bits": 32, "drop": 32}},
     "24x24+56": {"signal": "Q1.23", "coefficients": {"bits": 24}, "accumulator": 56},
+    "48x24+56": {"signal": "Q1.23", "coefficients": {"bits": 24}, "state": "Q1.47", "operand": "Q1.47",
+                 "accumulator": "Q9.47"},
     "32x32+64": {"signal": "Q1.31", "coefficients": {"bits": 32}, "accumulator": 64},
 }

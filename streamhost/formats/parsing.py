@@ -42,9 +42,9 @@ class Collector:
         if not isinstance(value, bool):
             self.add(key, f"= {value!r} is neither true nor false.")
 
-    def word(self, key: str, value: object, *, least_integer: int = 1, most_bits: int = MAX_WORD_BITS) -> Word | None:
+    def word(self, key: str, value: object, *, least_integer: int = 1) -> Word | None:
         try:
-            return parse_word(value, key, least_integer=least_integer, most_bits=most_bits)
+            return parse_word(value, key, least_integer=least_integer)
         except FormatError as error:
             self.add(key, str(error).removeprefix(f"{key} "))
             return None
@@ -136,14 +136,14 @@ def parse_accumulator(collect: Collector, given: object) -> AccumulatorRule:
     if "overflow" in table and collect.choice(f"{key}.overflow", table["overflow"], OVERFLOWS):
         rule = replace(rule, overflow=str(table["overflow"]))
     if "bits" in table:
-        if collect.whole(key, table["bits"], 8, 64):
+        if collect.whole(key, table["bits"], 8, MAX_WORD_BITS):
             rule = replace(rule, bits=int(str(table["bits"])))
-        if "drop" in table and collect.whole(f"{key}.drop", table["drop"], -64, 64):
+        if "drop" in table and collect.whole(f"{key}.drop", table["drop"], -MAX_WORD_BITS, 2 * MAX_WORD_BITS):
             rule = replace(rule, drop=int(str(table["drop"])))
     elif "drop" in table:
         collect.add(f"{key}.drop", "goes with bits: { bits = 32, drop = 16 }.")
     if "word" in table and table["word"] != "full":
         if "bits" in table:
             collect.add(key, "states both a word and bits: leave one out.")
-        rule = replace(rule, word=collect.word(key, table["word"], most_bits=64))
+        rule = replace(rule, word=collect.word(key, table["word"]))
     return rule

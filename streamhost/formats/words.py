@@ -11,8 +11,7 @@ from streamhost.errors import FormatError
 
 ROUNDINGS = ("half-up", "half-even", "half-away", "floor", "toward-zero")
 OVERFLOWS = ("saturate", "wrap")
-MAX_WORD_BITS = 32
-MAX_MARK_BITS = 64
+MAX_WORD_BITS = 64
 
 _Q = re.compile(r"Q(-?\d{1,3})\.(\d{1,3})")
 
@@ -50,7 +49,7 @@ class Word:
         return other.fraction <= self.fraction and other.integer <= self.integer
 
 
-def parse_word(text: object, place: str = "word", *, least_integer: int = 1, most_bits: int = MAX_WORD_BITS) -> Word:
+def parse_word(text: object, place: str = "word", *, least_integer: int = 1) -> Word:
     """A word from its name, for instance "Q1.15".
 
     Raises FormatError that names the place, the text and what is allowed.
@@ -66,8 +65,8 @@ def parse_word(text: object, place: str = "word", *, least_integer: int = 1, mos
         raise FormatError(
             f'{place} = "{word}" has no sign bit: m is at least {least_integer}, for instance "Q1.{word.fraction}".'
         )
-    if not 2 <= word.bits <= most_bits:
-        raise FormatError(f'{place} = "{word}" has {word.bits} bits. A word here has from 2 to {most_bits} bits.')
+    if not 2 <= word.bits <= MAX_WORD_BITS:
+        raise FormatError(f'{place} = "{word}" has {word.bits} bits. A word here has from 2 to {MAX_WORD_BITS} bits.')
     return word
 
 

@@ -13,10 +13,12 @@ class Lane:
     """A realization with state, meters and output of its own; the realization's own state is not touched.
 
     `channels` >= 1. A `metered` lane counts what its roundings do (`tally`) and marks where one overflowed; its output
-    is the same. Raises RequestError where the realization has coefficients for another number of channels.
+    is the same. Raises RequestError where the realization has coefficients for another number of channels, or words at
+    its doors that samples do not hold.
     """
 
     def __init__(self, realization: Realization, channels: int, *, metered: bool = False) -> None:
+        realization.check_samples()
         self.realization, self.channels, self.metered = realization, channels, metered
         self.memory = realization.memory(channels)
         self.kernel = compile_kernel(realization.program, Variant(metered=metered))

@@ -45,7 +45,7 @@ class Rendered:
 
 
 def default_subtype(format: Format) -> Subtype:
-    """PCM of the shortest of 16, 24, 32 bits that holds the output word's fraction exactly; 24 bits for floats."""
+    """PCM of the shortest of 16, 24, 32 bits that holds the output word's fraction, 32 for what is longer; 24 for floats."""
     if not isinstance(format, Fixed):
         return "pcm24"
     fraction = format.output.word.fraction
@@ -67,8 +67,9 @@ def render_file(
     Several outputs have a file each, all of them or none: OUT.wav becomes OUT-low.wav, OUT-high.wav.
     `name` is what messages call the realization. `subtype` None takes `default_subtype`. `report(done)` hears before
     each block how many frames are done. Memory does not grow with the file's length; when anything goes wrong, Ctrl-C
-    too, no output is left. Raises RequestError where the rates differ, or output and input are one
-    file; AudioFileError and MachineError as reading and writing do, and where the output is no longer finite.
+    too, no output is left. Raises RequestError where the rates differ, the realization has words that samples do not hold,
+    or output and input are one file; AudioFileError and MachineError as reading and writing do, and where the output is no
+    longer finite.
     """
     paths = output_paths(destination, realization.outputs)
     _check(realization, source, paths, name)
@@ -122,6 +123,7 @@ def _check(realization: Realization, source: AudioInfo, paths: Sequence[Path], n
             f"{source.path} has a rate of {source.rate} Hz, and {name} is a filter for {rate:g} Hz. Rates are not "
             "converted: give a file of that rate, or a filter for this one."
         )
+    realization.check_samples(name)
     for path in paths:
         if same_file(source.path, path):
             raise RequestError(f"{path}: input and output are the same file. Choose another name for the output.")

@@ -105,7 +105,8 @@ def block_length(frames: int, settling: float) -> int:
 class Measurement:
     """Takes a signal of a known length block after block, then gives the result. Memory does not grow with the length.
 
-    Blocks are of `block` frames, but for the last. An overflow anywhere disturbs all outputs.
+    Blocks are of `block` frames, but for the last. An overflow anywhere disturbs all outputs. Raises RequestError for words
+    at the doors that samples do not hold.
     """
 
     def __init__(self, realization: Realization, frames: int, channels: int, band: Band) -> None:

@@ -30,6 +30,7 @@ class Run:
     """A realization from zero state, beside the ideal run of its stored coefficients on the quantized input."""
 
     def __init__(self, realization: Realization, channels: int) -> None:
+        realization.check_samples()
         self.program, self.outputs, self.channels = realization.program, len(realization.outputs), channels
         self._memory = realization.memory(channels)
         self._kernel = compile_kernel(self.program, Variant(metered=True, traced=True))

@@ -97,6 +97,12 @@ def _check_fit(
             f"{word.low * step:.10g} to {word.high * step:.10g}. Give the coefficients more integer bits, "
             f"scale the filter, or allow it with allow_clamping = true."
         )
+    for code in kept:
+        if int(float(code)) != code:
+            raise FormatError(
+                f"The coefficient {slot.label} would be clamped to {code}, the largest code of {word}, which is no float64, "
+                f"and what is computed from coefficients would not be of this one. Give them one integer bit more."
+            )
     return len(clamped)
 
 

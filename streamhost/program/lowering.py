@@ -7,8 +7,8 @@ pass over the result changes no bit. The rules are those of DEVELOPERS.md, "Wher
 from dataclasses import replace
 
 from streamhost.diagram.diagram import Diagram
-from streamhost.diagram.nodes import Delay, Gain, Input, Node, Output, Residue, Round, Sum, Term
-from streamhost.formats import Fixed, Quantizer, Word
+from streamhost.diagram.nodes import Delay, Gain, Input, Node, Output, Round, Sum, Term
+from streamhost.formats import Fixed, Quantizer
 from streamhost.program.coefficients import store
 from streamhost.program.numbers import annotate
 from streamhost.program.prepare import halve_pre_sums, separate_products, unfold_lines, with_sources
@@ -99,8 +99,7 @@ class RoundingPass:
         quantizer = self.widths.quantizer(index)
         source = self.diagram.nodes[node.source]
         makes_mark = isinstance(source, Sum) and source.grow is not None
-        asked = any(isinstance(self.diagram.nodes[reader], Residue) for reader in self.diagram.readers[index])
-        if asked and not makes_mark:
+        if self.widths.residue_asked(index) and not makes_mark:
             return self.round(index, self.value[node.source], quantizer)
         return self.quantized(index, node.source, quantizer)
 
@@ -120,26 +119,10 @@ class RoundingPass:
     def quantized(self, reader: int, source: int, quantizer: Quantizer) -> int:
         """Where a value stands after a quantizer: where it stood, if its word already holds it."""
         place = self.value[source]
-        word = self.stored_word(source)
+        word = self.widths.stored_word(source)
         if word is not None and quantizer.word.holds(word):
             return place
         return self.round(reader, place, quantizer)
-
-    def stored_word(self, source: int) -> Word | None:
-        """The word of a value that stands in one; None for what is still in an accumulator, a pre-sum or a residue."""
-        node = self.diagram.nodes[source]
-        if self.roles.residual[source]:
-            return None
-        if self.roles.pre_sum[source]:
-            assert isinstance(node, Sum), "only a sum is a pre-sum"
-            words = [
-                (self.widths.word(base), shift) for base, shift in (self.widths.base(t.source) for t in node.terms)
-            ]
-            integer = max(word.integer + shift for word, shift in words) + self.widths.pre_sum_growth(source)
-            return Word(integer, self.widths.seen(source))
-        if self.roles.register[source] or isinstance(node, Input | Delay | Round):
-            return self.widths.word(source)
-        return None
 
     def round(self, index: int, place: int, quantizer: Quantizer) -> int:
         """A rounding of a value; the same value into the same word by the same rule is one rounding."""

@@ -4,8 +4,8 @@ from dataclasses import replace
 from itertools import count
 
 from streamhost.diagram.nodes import Delay, Gain, Input, Output, Residue, Round, Shift, Sum, Taps, Term
-from streamhost.errors import FormatError
 from streamhost.formats import Fixed, Quantizer, Word
+from streamhost.program.limits import carried, carrier_bits, kept
 from streamhost.program.program import (
     Accumulator,
     Arithmetic,
@@ -15,9 +15,15 @@ from streamhost.program.program import (
     SumArithmetic,
     TapsArithmetic,
     TermArithmetic,
-    carrier_bits,
 )
 from streamhost.program.widths import Widths, growth
+
+SHORTER = "Shorten operand and coefficients by {excess} together."
+SHORTER_SUM = "Shorten operand and coefficients by {excess} together, or state an accumulator of fewer fraction bits."
+MARK = "Shorten the signal, or mark the sum with a smaller grow."
+PRE_SUM = 'A sum of stored values is multiplied whole: shorten the operand, or state pre_sum = "half" or "signal".'
+STORED_RESIDUE = "Let products keep fewer fraction bits: what a register drops is what the accumulator has more than it."
+UNDITHERED = "Shorten operand and coefficients by {excess} together, or leave the dither out."
 
 
 def annotate(program: Program, widths: Widths, origins: tuple[int, ...]) -> Program:
@@ -39,7 +45,6 @@ class Annotation:
         self.format, self.stored = program.format, program.stored
         self.nodes = program.nodes
         self.numbers: dict[int, Number] = {}
-        self.exact: dict[int, int] = {}
         self.arithmetic: dict[int, Arithmetic] = {}
         self.ordinals = count(1)
 
@@ -68,21 +73,36 @@ class Annotation:
     def visit_gain(self, index: int, node: Gain) -> None:
         source = self.numbers[node.source]
         fraction = source.fraction + self.stored.words[node.coefficient].fraction
-        self.numbers[index] = Number(fraction, self.largest_code(node.coefficient) * source.bound)
+        bound = self.largest_code(node.coefficient) * source.bound
+        self.numbers[index] = number(fraction, carried(bound, f'The product "{node.label}"', SHORTER))
 
     def largest_code(self, slot: int) -> int:
         return max(abs(code) for code in self.stored.codes[slot])
 
     def visit_shift(self, index: int, node: Shift) -> None:
         source, left = self.numbers[node.source], max(0, node.k)
-        self.numbers[index] = Number(source.fraction + max(0, -node.k), source.bound << left)
-        self.exact[index] = self.exact.get(node.source, source.bound) << left
+        fraction = source.fraction + max(0, -node.k)
+        exact = carried(source.exact << left, f'The value behind the shift "{node.label}"', SHORTER)
+        self.numbers[index] = number(fraction, source.bound << left, exact) if left else replace(source, fraction=fraction)
 
     def visit_round(self, index: int, node: Round) -> None:
         assert node.quantizer is not None, "a program states every quantizer"
-        drop = self.numbers[node.source].fraction - node.quantizer.word.fraction
+        source = self.numbers[node.source]
+        drop = source.fraction - node.quantizer.word.fraction
+        read = self.nodes[node.source]
+        marked = isinstance(read, Sum) and read.grow is not None
+        kept(node.quantizer.word, f'"{read.label}"', MARK if marked else PRE_SUM)
+        self.check_rounding(node.label, source.bound, drop, node.quantizer)
         self.arithmetic[index] = RoundArithmetic(node.quantizer, drop, self.ordinal(drop))
         self.numbers[index] = word_number(node.quantizer.word)
+
+    @staticmethod
+    def check_rounding(label: str, bound: int, drop: int, quantizer: Quantizer) -> None:
+        """A code that gains bits, and one that is dithered, are carried too."""
+        if drop <= 0:
+            carried(bound << -drop, f'What "{label}" puts into {quantizer.word}', SHORTER)
+        elif quantizer.dither:
+            carried(bound + (1 << drop), f'What "{label}" rounds, with its dither,', UNDITHERED)
 
     def ordinal(self, drop: int) -> int | None:
         return next(self.ordinals) if drop > 0 else None
@@ -92,7 +112,7 @@ class Annotation:
         while isinstance(node := self.nodes[index], Delay):
             index = node.source
         if isinstance(node, Residue):
-            return self.residue_number(node)
+            return self.kept_residue(node)
         if isinstance(node, Input):
             return word_number(self.format.input.word)
         assert isinstance(node, Round) and node.quantizer is not None, "a delay stores what stands in a word"
@@ -101,10 +121,19 @@ class Annotation:
     def residue_number(self, node: Residue) -> Number:
         register = self.nodes[node.source]
         if not isinstance(register, Round) or register.quantizer is None:
-            return Number(self.fraction(node.source), 0)
+            return number(self.fraction(node.source), 0)
         fraction = self.fraction(register.source)
-        drop = max(0, fraction - register.quantizer.word.fraction)
-        return Number(fraction, 1 << drop + 2 * register.quantizer.dither)
+        bits = max(0, fraction - register.quantizer.word.fraction) + register.quantizer.dither
+        # The magnitude stays below 2^bits: 63 bits and a sign still are one word.
+        bound = carried(1 << bits, f'The residue "{node.label}"', SHORTER)
+        return replace(number(fraction, bound), carrier=carrier_bits(bound - 1))
+
+    def kept_residue(self, node: Residue) -> Number:
+        """The number of a residue that a delay stores."""
+        found = self.residue_number(node)
+        integer = found.bound.bit_length() - found.fraction
+        kept(Word(integer, found.fraction), f'The residue "{node.label}"', STORED_RESIDUE)
+        return found
 
     def fraction(self, index: int) -> int:
         """Fraction bits of any value that a register or a residue reads, found without visiting it."""
@@ -126,20 +155,20 @@ class Annotation:
         fraction = self.widths.raw(self.origins[index])
         terms, total = [], 0
         for term in node.terms:
-            arithmetic, bound = self.term(term, fraction)
+            arithmetic, bound = self.term(term, fraction, node.label)
             terms.append(arithmetic)
             total += bound
         accumulator = self.accumulator(index, fraction, total, exact=node.exact)
         self.arithmetic[index] = SumArithmetic(tuple(terms), accumulator, self.counted(index, accumulator))
 
-    def term(self, term: Term, fraction: int) -> tuple[TermArithmetic, int]:
-        """A term as it enters the accumulator, and the largest magnitude that it brings."""
+    def term(self, term: Term, fraction: int, label: str) -> tuple[TermArithmetic, int]:
+        """A term as it enters the accumulator of the sum `label`, and the largest magnitude that it brings."""
         source, shift = term.source, 0
         while isinstance(node := self.nodes[source], Shift):
             shift += node.k
             source = node.source
-        number, rounding, keep = self.numbers[source], "floor", None
-        bound, at = self.exact.get(source, number.bound), number.fraction
+        rounding, keep = "floor", None
+        bound, at = self.numbers[source].exact, self.numbers[source].fraction
         if isinstance(node, Gain):
             keep = min(at, fraction - max(0, -shift))
             if not self.widths.roles.residual[self.origins[source]] and not self.is_residual(node):
@@ -149,24 +178,24 @@ class Annotation:
             bound = aligned(bound, keep - at)
             at = keep
         at += max(0, -shift)
-        return TermArithmetic(term.sign, source, shift, keep, rounding), aligned(bound << max(0, shift), fraction - at)
+        what = f'A term of the sum "{label}", at {fraction} fraction bits,'
+        bound = carried(bound << max(0, shift), what, SHORTER_SUM)
+        bound = carried(aligned(bound, fraction - at), what, SHORTER_SUM)
+        return TermArithmetic(term.sign, source, shift, keep, rounding), bound
 
     def is_residual(self, gain: Gain) -> bool:
         return self.widths.roles.residual[self.origins[gain.source]]
 
     def accumulator(self, index: int, fraction: int, total: int, *, exact: bool) -> Accumulator:
         """Where a sum of that largest magnitude is made; fills in the sum's number."""
-        if total >= 1 << 127:
-            label = self.nodes[index].label
-            raise FormatError(
-                f'The sum "{label}" may need {total.bit_length() + 1} bits, and at most 128 can be carried. Use '
-                f"shorter words, or let products keep fewer bits."
-            )
+        carried(total, f'The exact sum "{self.nodes[index].label}"', SHORTER_SUM)
         word = None if exact else self.word_of_accumulator(fraction)
-        bound = total if word is None else min(total, -word.low)
-        self.numbers[index] = Number(fraction, bound)
-        self.exact[index] = total
-        return Accumulator(fraction, word, self.format.accumulator.overflow, carrier_bits(total))
+        carrier = carrier_bits(total)
+        self.numbers[index] = (
+            Number(fraction, total, total, carrier) if word is None
+            else Number(fraction, min(total, -word.low), total, carrier_bits(0))
+        )
+        return Accumulator(fraction, word, self.format.accumulator.overflow, carrier)
 
     def word_of_accumulator(self, fraction: int) -> Word | None:
         rule = self.format.accumulator
@@ -189,28 +218,20 @@ class Annotation:
 
     def visit_taps(self, index: int, node: Taps) -> None:
         source = self.numbers[node.source]
+        if node.stores and isinstance(read := self.nodes[node.source], Residue):
+            self.kept_residue(read)
         word = Word(source.bound.bit_length() - source.fraction, source.fraction)
         pre, halved, operand, middle = self.operands(index, node, word)
         fraction = self.widths.raw(self.origins[index])
-        read = [
-            pre_operand(
-                i == len(node.coefficients) - 1 and node.fold == "even" and node.length % 2 == 1,
-                pre,
-                operand,
-                middle,
-                word,
-                node.fold,
-                halved,
-            )
-            for i in range(len(node.coefficients))
-        ]
         keeps, ordinals, total = [], [], 0
-        for slot, (into, pre_drop, operand_drop) in zip(node.coefficients, read, strict=True):
+        for i, slot in enumerate(node.coefficients):
+            is_middle = i == len(node.coefficients) - 1 and node.fold == "even" and node.length % 2 == 1
+            into, pre_drop, operand_drop = pre_operand(is_middle, pre, operand, middle, word, node.fold, halved)
+            self.check_tap(node, source.bound, (pre, pre_drop), (middle if is_middle else operand, operand_drop), is_middle)
             product = into.fraction + self.stored.words[slot].fraction
             limit = self.format.product.fraction
             keep = min(product, fraction) if limit is None else min(product, fraction, limit)
-            bound = aligned(self.largest_code(slot) * -into.low, keep - product)
-            total += aligned(bound << halved, fraction - keep)
+            total += self.tap_bound(node.label, self.largest_code(slot) * -into.low, keep - product, halved, fraction - keep)
             keeps.append(keep)
             ordinals.append((self.ordinal(pre_drop), self.ordinal(operand_drop)))
         accumulator = self.accumulator(index, fraction, total, exact=False)
@@ -225,6 +246,26 @@ class Annotation:
             middle,
             tuple(ordinals),
         )
+
+    def check_tap(
+        self, node: Taps, bound: int, pre: tuple[Quantizer | None, int], operand: tuple[Quantizer | None, int],
+        is_middle: bool,
+    ) -> None:
+        """FormatError where a pair's register or an operand, each with the bits that it drops, cannot be carried."""
+        paired = node.fold is not None and not is_middle
+        bound <<= paired
+        for quantizer, drop in (pre, operand) if paired else (operand,):
+            if quantizer is not None:
+                kept(quantizer.word, f'What "{node.label}" multiplies', PRE_SUM)
+                self.check_rounding(node.label, bound, drop, quantizer)
+                bound = -quantizer.word.low
+
+    @staticmethod
+    def tap_bound(label: str, product: int, rounded: int, halved: int, left: int) -> int:
+        """What a product of that magnitude brings into the sum: rounded, doubled where its pair was halved, aligned."""
+        what = f'A product of "{label}"'
+        doubled = aligned(carried(product, what, SHORTER), rounded) << halved
+        return carried(aligned(carried(doubled, what, SHORTER), left), what, SHORTER)
 
     def operands(
         self, index: int, node: Taps, word: Word
@@ -265,8 +306,13 @@ def pre_operand(
     return into, pre_drop, pair.fraction - into.fraction
 
 
+def number(fraction: int, bound: int, exact: int | None = None) -> Number:
+    """A value of either sign that stands in no word."""
+    return Number(fraction, bound, bound if exact is None else exact, carrier_bits(bound))
+
+
 def word_number(word: Word) -> Number:
-    return Number(word.fraction, -word.low)
+    return Number(word.fraction, -word.low, -word.low, carrier_bits(0))
 
 
 def aligned(bound: int, left: int) -> int:

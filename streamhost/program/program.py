@@ -14,19 +14,16 @@ from streamhost.program.coefficients import Stored
 
 @dataclass(frozen=True)
 class Number:
-    """What kind of number a node's value is: a code with `fraction` fraction bits, of magnitude at most `bound`."""
+    """What kind of number a node's value is: a code with `fraction` fraction bits, of magnitude at most `bound`.
+
+    `exact`: the same had no accumulator overflowed. `carrier`: bits of the machine integer that holds the value, 64 or
+    two such words; what stands in a word of 64 bits is as low as -2^63 and stays in one.
+    """
 
     fraction: int
     bound: int
-
-    @property
-    def carrier(self) -> int:
-        """Bits of the machine integer that holds it: 64, or two such words."""
-        return carrier_bits(self.bound)
-
-
-def carrier_bits(bound: int) -> int:
-    return 64 if bound < 1 << 63 else 128
+    exact: int
+    carrier: int
 
 
 @dataclass(frozen=True)

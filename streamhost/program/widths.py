@@ -29,6 +29,7 @@ class Widths:
         self.diagram, self.roles, self.format = diagram, roles, format
         self.coefficient_words = coefficient_words
         self._known: dict[tuple[str, int], int] = {}
+        self._words: dict[int, Word] = {}
 
     def quantizer(self, index: int) -> Quantizer:
         """The quantizer of a register or a `round`."""
@@ -68,11 +69,37 @@ class Widths:
         return tuple(found)
 
     def word(self, index: int) -> Word:
-        """The word of a stored value: an input, a register, a round, or a delay of one."""
+        """The word of a stored value: an input, a register, a round, or a delay of one.
+
+        A round of what its word holds already leaves it in its own.
+        """
         index = self.drivers[index]
-        if isinstance(self.diagram.nodes[index], Input):
+        node = self.diagram.nodes[index]
+        if isinstance(node, Input):
             return self.format.input.word
-        return self.quantizer(index).word
+        if index not in self._words:
+            word = self._words[index] = self.quantizer(index).word
+            before = self.stored_word(node.source) if isinstance(node, Round) and not self.residue_asked(index) else None
+            self._words[index] = before if before is not None and word.holds(before) else word
+        return self._words[index]
+
+    def residue_asked(self, index: int) -> bool:
+        """Whether anything reads what a register drops."""
+        return any(isinstance(self.diagram.nodes[reader], Residue) for reader in self.diagram.readers[index])
+
+    def stored_word(self, index: int) -> Word | None:
+        """The word of a value that stands in one or needs one; None for what is still in an accumulator, and a residue."""
+        node = self.diagram.nodes[index]
+        if self.roles.residual[index]:
+            return None
+        if self.roles.pre_sum[index]:
+            assert isinstance(node, Sum), "only a sum is a pre-sum"
+            words = [(self.word(base), shift) for base, shift in (self.base(t.source) for t in node.terms)]
+            integer = max(word.integer + shift for word, shift in words) + self.pre_sum_growth(index)
+            return Word(integer, max(word.fraction + max(0, -shift) for word, shift in words))
+        if self.roles.register[index] or isinstance(node, Input | Delay | Round):
+            return self.word(index)
+        return None
 
     def operand(self, source: int) -> Operand:
         """What a multiplier that reads `source` sees."""

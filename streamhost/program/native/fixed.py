@@ -80,7 +80,7 @@ class FixedPrinter:
         elif isinstance(node, Delay):
             self.print_delay(index, node)
         elif isinstance(node, Gain):
-            coefficient = Value(f"k{node.coefficient}", self.largest(node.coefficient))
+            coefficient = Value(f"k{node.coefficient}", self.largest(node.coefficient), is_wide=False)
             self.assign(index, coefficient.times(self.values[node.source]))
         elif isinstance(node, Shift):
             self.values[index] = self.values[node.source].left(max(0, node.k))
@@ -97,9 +97,14 @@ class FixedPrinter:
             self.print_round(index, node, arithmetic)
         elif isinstance(node, Residue):
             rest = f"r{node.source}" if self.has_residue(node.source) else "np.int64(0)"
-            self.values[index] = Value(rest, self.program.numbers[index].bound)
+            self.values[index] = self.value_of(rest, index)
         elif isinstance(node, Output):
             self.print_output(index, node)
+
+    def value_of(self, text: str, index: int) -> Value:
+        """An expression that holds a node's value, in as many words as that takes."""
+        number = self.program.numbers[index]
+        return Value(text, number.bound, is_wide=number.carrier > 64)
 
     def largest(self, slot: int) -> int:
         """The largest magnitude of a coefficient's word: kernels serve every value that fits it and its bound."""
@@ -113,25 +118,24 @@ class FixedPrinter:
             self.text(f"v{index} = x[n, c]")
         else:
             input_text(self.text, f"v{index}", self.format.input, metered=self.variant.metered)
-        self.values[index] = Value(f"v{index}", -self.format.input.word.low)
+        self.values[index] = self.value_of(f"v{index}", index)
 
     def print_output(self, index: int, node: Output) -> None:
         value, at = self.values[node.source], self.program.numbers[node.source].fraction
         place = self.program.diagram.outputs.index(index)
         target = f"y[n, {place} * channels + c]" if place else "y[n, c]"
         if self.variant.codes:
-            self.text(f"{target} = {value.left(self.format.output.word.fraction - at).text}")
+            left = self.format.output.word.fraction - at
+            self.text(f"{target} = {f'({value.text} << {left})' if left else value.text}")
         else:
+            assert self.format.output.word.bits <= 53, "longer words go out as codes"
             self.text(f"{target} = np.float64({value.text}) * {float(2.0**-at)!r}")
 
     # memory
 
     def print_delay(self, index: int, node: Delay) -> None:
-        bound = self.program.numbers[index].bound
-        if node.n == 1:
-            self.assign(index, Value(f"s{index}", bound))
-        else:
-            self.assign(index, Value(f"S[{self.program.state_offsets[index]} + p{index}, c]", bound))
+        place = f"s{index}" if node.n == 1 else f"S[{self.program.state_offsets[index]} + p{index}, c]"
+        self.assign(index, self.value_of(place, index))
 
     def store(self) -> None:
         single, rings = lines(self.program)
@@ -242,18 +246,26 @@ class FixedPrinter:
             isinstance(self.nodes[r], Residue) for r in self.program.diagram.readers[index]
         )
         if asked and arithmetic.drop > 0:
-            assert arithmetic.drop < 62, "a residue of more than 62 bits"
-            before, after = self.modular(source), self.modular(code)
-            self.text(f"r{index} = {before.text} - ({after.text} << {arithmetic.drop})")
-        if self.variant.traced and index in self.traced:
-            self.text(f"R[n, c, {self.traced[index]}] = np.float64(r{index}) * {2.0**-arithmetic.drop!r}")
+            self.print_residue(index, source, code, arithmetic)
         self.overflow(index, code, arithmetic.quantizer, self.meters[index])
+
+    def print_residue(self, index: int, source: Value, code: Value, arithmetic: RoundArithmetic) -> None:
+        """r{index}: what a rounding drops. A trace holds its leading 62 bits, which is all of most."""
+        drop, bits = arithmetic.drop, arithmetic.drop + arithmetic.quantizer.dither
+        if bits < 64:
+            before, after = self.modular(source), self.modular(code)
+        else:
+            before, after = source.wide(), code.wide()
+        self.text(f"r{index} = {before.text} - ({after.text} << {drop})")
+        if self.variant.traced and index in self.traced:
+            rest, cut = (f"r{index}", 0) if bits < 64 else (f"narrow(r{index} >> {bits - 62})", bits - 62)
+            self.text(f"R[n, c, {self.traced[index]}] = np.float64({rest}) * {2.0**(cut - drop)!r}")
 
     def rounded(self, name: str, source: Value, quantizer: Quantizer, drop: int, ordinal: int | None) -> Value:
         """A variable with the rounded code, dithered where the quantizer says so."""
         if quantizer.dither and ordinal is not None:
             self.print_dither(name, str(ordinal - 1), drop)
-            source = source.plus(1, Value(f"d{name}", 1 << drop))
+            source = source.plus(1, Value(f"d{name}", 1 << drop, is_wide=drop > 63))
             self.text(f"x{name} = {source.text}")
             source = Value(f"x{name}", source.bound, is_wide=source.is_wide)
         code = rounded_text(source, drop, quantizer.rounding)
@@ -262,18 +274,23 @@ class FixedPrinter:
 
     def print_dither(self, name: str, place: str, drop: int) -> None:
         """d{name}: the triangular dither of a rounding that drops so many bits; `place` is its row of keys."""
-        assert drop < 64, "dither of 64 dropped bits or more"
-        first, second = (
-            f"np.int64(dither_word(K[{place}, c], {step}) >> np.uint64({64 - drop}))"
-            for step in ("t", "t + np.uint64(1)")
-        )
-        self.text(f"d{name} = {first} - {second}")
+        first, second = (f"dither_word(K[{place}, c], {step})" for step in ("t", "t + np.uint64(1)"))
+        if drop < 64:
+            first, second = (f"np.int64({word} >> np.uint64({64 - drop}))" for word in (first, second))
+            self.text(f"d{name} = {first} - {second}")
+            return
+        # The difference of two words of 64 bits has 65: that of their halves, doubled, and that of their last bits.
+        self.text(f"i{name} = {first}")
+        self.text(f"j{name} = {second}")
+        halves = " - ".join(f"np.int64({each}{name} >> np.uint64(1))" for each in "ij")
+        bits = " - ".join(f"np.int64({each}{name} & np.uint64(1))" for each in "ij")
+        self.text(f"d{name} = ((wide({halves}) << 1) + wide({bits})) << {drop - 64}")
 
     def overflow(self, index: int, code: Value, quantizer: Quantizer, meter: int, name: str | None = None) -> Value:
         """The code brought into its word, counted where it did not fit."""
         target = name or f"v{index}"
         self.text(f"{target} = {overflowed_text(code, quantizer.word, quantizer.overflow)}")
-        value = Value(target, -quantizer.word.low)
+        value = Value(target, -quantizer.word.low, is_wide=False)
         if self.variant.metered:
             differs = f"differs({code.text}, wide({target}))" if code.is_wide else f"np.int64({code.text} != {target})"
             self.count(meter, differs)

@@ -26,11 +26,9 @@ class TapsPrinter:
         assert program.stored is not None, "a fixed-point program"
         self.words = [program.stored.words[slot] for slot in node.coefficients]
         self.at = program.numbers[node.source].fraction
-        self.bound = program.numbers[node.source].bound
         self.largest = max(printer.largest(slot) for slot in node.coefficients)
         accumulator = arithmetic.accumulator
         self.shadow = printer.variant.metered and accumulator.word is not None
-        self.total_bound = (1 << (accumulator.carrier - 1)) - 1 if accumulator.word is None else -accumulator.word.low
 
     def print(self) -> None:
         i, word = self.index, self.arithmetic.accumulator.word
@@ -41,14 +39,13 @@ class TapsPrinter:
         self.printer.in_loop = True
         self.print_line()
         self.printer.in_loop = False
-        total = Value(f"a{i}", self.total_bound, is_wide=self.total_wide)
+        number = self.printer.program.numbers[i]
+        total = Value(f"a{i}", number.bound, is_wide=self.total_wide)
         if word is not None and self.arithmetic.accumulator.overflow == "wrap":
             total = Value(overflowed_text(Value(f"a{i}", 0), word, "wrap"), -word.low, is_wide=False)
         self.printer.assign(i, total)
         if self.shadow:
-            self.printer.exact[i] = Value(
-                f"e{i}", 1 << 120 if self.exact_wide else self.total_bound, is_wide=self.exact_wide
-            )
+            self.printer.exact[i] = Value(f"e{i}", number.exact, is_wide=self.exact_wide)
             if self.arithmetic.counted:
                 self.printer.count_overflow(i)
 
@@ -93,14 +90,15 @@ class TapsPrinter:
     def print_tap(self, j: str, k: int, *, is_middle: bool) -> None:
         i = self.index
         self.text(f"f{i} = {self.entry(self.opposite(j) if self.node.last_first else j)}")
-        value, at, halved = Value(f"f{i}", self.bound), self.at, 0
+        value, at, halved = self.printer.value_of(f"f{i}", self.node.source), self.at, 0
         ordinals = self.arithmetic.ordinals[k]
         if self.node.fold is None or is_middle:
             operand = self.arithmetic.middle if is_middle else self.arithmetic.operand
         else:
             operand, halved = self.arithmetic.operand, self.arithmetic.halved
             self.text(f"g{i} = {self.entry(self.opposite(j))}")
-            value = value.plus(1 if self.node.fold == "even" else -1, Value(f"g{i}", self.bound))
+            other = self.printer.value_of(f"g{i}", self.node.source)
+            value = value.plus(1 if self.node.fold == "even" else -1, other)
             at += halved
             if self.arithmetic.pre is not None:
                 value, at = self.quantized(f"{i}p", value, at, self.arithmetic.pre, ordinals[0], j, k)
@@ -119,7 +117,7 @@ class TapsPrinter:
             step = self.ordinal_step()
             place = str(ordinal - 1) if j.isdigit() else f"{ordinal - 1} + {j} * {step}"
             self.printer.print_dither(name, place, drop)
-            source = source.plus(1, Value(f"d{name}", 1 << min(drop, 64)))
+            source = source.plus(1, Value(f"d{name}", 1 << drop, is_wide=drop > 63))
             self.text(f"x{name} = {source.text}")
             source = Value(f"x{name}", source.bound, is_wide=source.is_wide)
         code = rounded_text(source, drop, quantizer.rounding)
@@ -135,16 +133,16 @@ class TapsPrinter:
     def print_product(self, j: str, k: int, value: Value, at: int, halved: int) -> None:
         i, accumulator = self.index, self.arithmetic.accumulator
         first = self.node.coefficients[0]
-        coefficient = Value(f"C[{first} + {j}, c]", self.largest)
+        coefficient = Value(f"C[{first} + {j}, c]", self.largest, is_wide=False)
         product = coefficient.times(value)
         at += self.words[k].fraction
         keep = min(self.arithmetic.keeps[k], at)
         if keep < at:
-            self.text(f"h{i} = {product.text}")
+            self.text(f"h{i}p = {product.text}")
             product = rounded_text(
-                Value(f"h{i}", product.bound, is_wide=product.is_wide), at - keep, self.arithmetic.rounding
+                Value(f"h{i}p", product.bound, is_wide=product.is_wide), at - keep, self.arithmetic.rounding
             )
-        term = product.left(halved).floored(keep - accumulator.fraction)
+        term = product.left(halved).floored(keep - accumulator.fraction).as_short_as_it_fits()
         if self.shadow:
             self.text(f"l{i} = {term.as_wide_as(self.exact_wide or term.is_wide).text}")
             term = Value(f"l{i}", term.bound, is_wide=self.exact_wide or term.is_wide)
