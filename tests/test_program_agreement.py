@@ -46,6 +46,13 @@ FORMATS: dict[str, Format] = {
     "float32 sums float64": Float("float32", accumulator="float64", flush_subnormals=True),
 }
 
+LONG_FORMATS: dict[str, Format] = {
+    "48x24+56": Fixed(arithmetic="48x24+56"),
+    "double length": Fixed("Q1.31", coefficients="Q2.30", state="Q1.63", operand="Q1.63", rounding="half-even"),
+    "codes of 64 bits": Fixed("Q1.63", coefficients="Q3.61", accumulator={"bits": 64, "drop": 64, "overflow": "saturate"},
+                              dither="tpdf", dither_seed=2),
+}
+
 
 def agree(program: Program, x: np.ndarray, *, plain: bool = True) -> Counter[str]:
     """Plain and metered kernel and definition agree, meters included; the corners that were taken."""
@@ -87,6 +94,15 @@ def test_kernels_agree_with_the_definition(form: str, name: str) -> None:
     agree(realization.program, busy(240, 2, seed=5), plain=form in ("direct-1", "transposed-1"))
 
 
+@pytest.mark.parametrize(("form", "name"), [
+    *(("direct-1", name) for name in LONG_FORMATS), ("transposed-2", "48x24+56"), ("transposed-1", "double length"),
+    ("direct-2", "codes of 64 bits"),
+])
+def test_kernels_of_long_words_agree_with_the_definition(form: str, name: str) -> None:
+    realization = sh.realize(filter_of_two_sections(), form=form, format=LONG_FORMATS[name])
+    agree(realization.program, busy(240, 2, seed=7), plain=form == "direct-1")
+
+
 @pytest.mark.parametrize("form", FORMS)
 def test_kernels_agree_with_the_definition_for_whole_filters(form: str) -> None:
     for format in (Fixed("Q1.23", coefficients={"bits": 24}), Float("float32")):
@@ -121,7 +137,8 @@ def test_kernels_of_random_diagrams_agree_with_the_definition(seed: int) -> None
 
 @pytest.mark.parametrize("fold", [None, "last first", "even", "odd"])
 @pytest.mark.parametrize("name", ["Q1.15 half-up saturate", "dithered", "halved pre-sums", "two-word sums", "float32",
-                                  "saturating accumulator", "short accumulator", "float32 fused", "float32 sums float64"])
+                                  "saturating accumulator", "short accumulator", "float32 fused", "float32 sums float64",
+                                  "codes of 64 bits"])
 def test_kernels_of_tapped_lines_agree_with_the_definition(fold: str | None, name: str) -> None:
     rng = Random(3)
     half = [rng.randint(-8000, 8000) / 16384 for _ in range(4)]
@@ -133,7 +150,7 @@ def test_kernels_of_tapped_lines_agree_with_the_definition(fold: str | None, nam
     line = b.taps(x, "h", half + middle + mirrored, fold=symmetry, last_first=fold == "last first", section=0)
     b.output(b.sum(line, b.gain(b.delay("d", x, n=5), "g", 0.5, section=0), label="y"))
     b.output(b.taps(x, "one", [0.75], section=0), "single")
-    agree(lower(b.build(), FORMATS[name]), busy(120, 2, seed=1))
+    agree(lower(b.build(), (FORMATS | LONG_FORMATS)[name]), busy(120, 2, seed=1))
 
 
 PARTS = st.lists(st.sampled_from([0, 1, 2, 3, 5, 7, 13, 31]), min_size=1, max_size=12)

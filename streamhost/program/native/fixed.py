@@ -165,12 +165,12 @@ class FixedPrinter:
         if accumulator.overflow == "saturate":
             self.print_saturating_sum(index, arithmetic)
         elif shadow and not any(t.source in self.exact for t in arithmetic.terms):
-            self.assign(index, Value(overflowed_text(self.exact[index], word, "wrap"), -word.low, is_wide=False))
+            self.assign(index, self.value_of(overflowed_text(self.exact[index], word, "wrap"), index))
         else:
             terms = [(t.sign, self.modular(self.term(t, accumulator.fraction, self.values))) for t in arithmetic.terms]
             total = Value(f"w{index}", 0)
             self.text(f"w{index} = {joined(terms)}")
-            self.assign(index, Value(overflowed_text(total, word, "wrap"), -word.low, is_wide=False))
+            self.assign(index, self.value_of(overflowed_text(total, word, "wrap"), index))
         if shadow and arithmetic.counted:
             self.count_overflow(index)
 
@@ -222,7 +222,7 @@ class FixedPrinter:
             running = Value(f"w{index}_{k}", running.bound, is_wide=running.is_wide)
             self.text(f"a{index}_{k} = {overflowed_text(running, word, 'saturate')}")
             total = Value(f"a{index}_{k}", -word.low, is_wide=False)
-        self.assign(index, total)
+        self.assign(index, self.value_of(total.text, index))
 
     def term(self, term: TermArithmetic, fraction: int, values: dict[int, Value]) -> Value:
         """A term in the accumulator's fraction; `values` may hold shadows, else the node's own value is read."""

@@ -42,7 +42,7 @@ class TapsPrinter:
         number = self.printer.program.numbers[i]
         total = Value(f"a{i}", number.bound, is_wide=self.total_wide)
         if word is not None and self.arithmetic.accumulator.overflow == "wrap":
-            total = Value(overflowed_text(Value(f"a{i}", 0), word, "wrap"), -word.low, is_wide=False)
+            total = self.printer.value_of(overflowed_text(Value(f"a{i}", 0), word, "wrap"), i)
         self.printer.assign(i, total)
         if self.shadow:
             self.printer.exact[i] = Value(f"e{i}", number.exact, is_wide=self.exact_wide)
