@@ -148,10 +148,13 @@ class Realization:
 
         Any two of one rate and with an output in common, whatever their filters, forms and formats; this one's own state
         is lost. States that hold past input are set from it, residues start at 0. See `diagram/carrying.py`.
-        Raises RequestError where the rates differ, no output is common, or coefficients are of another number of channels.
+        Raises RequestError where the rates differ, no output is common, or coefficients are of another number of channels,
+        and as `process` does where the state comes of running over past input.
         """
         if self.filter.rate != other.filter.rate:
             raise RequestError(f"A state at {other.filter.rate:g} Hz cannot be carried to {self.filter.rate:g} Hz.")
+        if is_run(self.program):
+            self.check_samples()
         self.reset()
         if other._memory is None:
             return Carried("copied", 0.0, 0)

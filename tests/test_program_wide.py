@@ -204,6 +204,23 @@ def test_a_coefficient_that_no_float64_holds_is_refused() -> None:
         sh.Filter.from_codes([[2**62 + 1, 0, 0, 0, 0]], "Q2.62", rate=48000)
 
 
+# --- carrying
+
+
+def test_a_state_goes_on_in_registers_of_64_bits() -> None:
+    """Half a step of the output apart, and 0.12 for half a step of the two past inputs: max |b1 h[n] + b2 h[n-1]| + |b2 h[n]|
+    with h that of 1/A is 0.237, from its recursion."""
+    filter = sh.Filter.from_coefficients([0.02, 0.04, 0.02], [1.0, -1.8, 0.85], rate=48000)
+    before = sh.realize(filter, form="direct-2", format="float64")
+    after = sh.realize(filter, form="direct-1", format=Fixed("Q1.31", state="Q1.63", operand="Q1.63", coefficients="Q2.62",
+                                                       accumulator={"bits": 64, "drop": 62}))
+    before.process(np.random.default_rng(2).uniform(-0.5, 0.5, 500))
+    assert after.carry_from(before).clipped == 0
+    tail = before.process(np.zeros(100))
+    assert np.abs(tail[:20]).max() > 0.01
+    np.testing.assert_allclose(after.process(np.zeros(100)), tail, rtol=0, atol=0.63 * 2.0**-31)
+
+
 # --- doors
 
 
