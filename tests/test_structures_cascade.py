@@ -382,9 +382,9 @@ def test_the_rounded_whole_denominator_does_not(bits: int, radius: float) -> Non
         ({"decomposition": "cascades"}, 'no decomposition \'cascades\'. Did you mean "cascade"'),
         ({"pairing": "neares"}, 'no pairing \'neares\'. Did you mean "nearest".*Allowed are nearest, given'),
         ({"ordering": "upward"}, 'no ordering \'upward\'. Did you mean "outward"'),
-        ({"scaling": "L2"}, "no scaling 'L2'.*Allowed are none, l2"),
+        ({"scaling": "L2"}, "no scaling 'L2'.*Allowed are none, l1, l2"),
         ({"pairing": "given"}, 'of order 12, was not given as sections.*Allowed for it is "nearest"'),
-        ({"ordering": "given"}, 'Allowed with it are "outward" and "inward"'),
+        ({"ordering": "given"}, 'Allowed with it are "outward", "inward" and "quietest"'),
     ],
 )
 def test_wrong_choices_are_refused(choices: dict[str, str], message: str) -> None:

@@ -2,11 +2,14 @@
 
 from streamhost.errors import StructureError
 from streamhost.filters import Filter, Polynomials
-from streamhost.structures.division import Division, all_trimmed
+from streamhost.filters.exact import exactly
+from streamhost.filters.stability import is_stable
+from streamhost.structures.division import Division, Sections, all_trimmed
 from streamhost.structures.form import Form
 from streamhost.structures.ordering import arranged
 from streamhost.structures.pairing import nearest_pairs
-from streamhost.structures.scaling import by_norms, rescaled, spread
+from streamhost.structures.quietest import Order, quietest
+from streamhost.structures.scaling import Scaled, by_norms, has_norms, rescaled, spread, taken_out
 
 # Beyond this the roots of one polynomial take minutes.
 MOST_ORDER = 128
@@ -35,25 +38,48 @@ def _kept(filter: Filter, form: Form, ordering: str, scaling: str) -> Division:
             f'pairing "given" keeps the sections that a filter is given as, and this one, of order {filter.order}, was '
             'not given as sections of first and second order. Allowed for it is "nearest".'
         )
-    kept = arranged(all_trimmed(filter.sections()), ordering)
-    sections, front = rescaled(kept, scaling, form.begins_with)
-    return Division(sections, front, "given", ordering, scaling)
+    kept = all_trimmed(filter.sections())
+    if ordering == "quietest":
+        kept = arranged(kept, "outward")
+        kept = _rearranged(kept, _quietest(*(taken_out(kept) if has_norms(scaling) else (kept, 1.0)), scaling, form))
+    else:
+        kept = arranged(kept, ordering)
+    return _division(rescaled(kept, scaling, form.begins_with), "given", ordering, scaling)
 
 
 def _paired(filter: Filter, form: Form, ordering: str, scaling: str) -> Division:
     if ordering == "given":
         raise StructureError(
             'ordering "given" keeps the order that sections were given in, and pairing "nearest" makes new ones. '
-            'Allowed with it are "outward" and "inward".'
+            'Allowed with it are "outward", "inward" and "quietest".'
         )
     _check_order(filter)
     solved = filter.zeros_poles()
-    outward = tuple(reversed(nearest_pairs(solved)))
-    monic = all_trimmed(outward if ordering == "outward" else reversed(outward))
-    if scaling == "none":
-        return Division(spread(monic, solved.gain), None, "nearest", ordering, scaling)
-    sections, front = by_norms(monic, solved.gain, form.begins_with)
-    return Division(sections, front, "nearest", ordering, scaling)
+    inward = all_trimmed(nearest_pairs(solved))
+    monic = inward if ordering == "inward" else inward[::-1]
+    if ordering == "quietest":
+        weighed = (monic, solved.gain) if has_norms(scaling) else (spread(monic, solved.gain), 1.0)
+        monic = _rearranged(monic, _quietest(*weighed, scaling, form))
+    if has_norms(scaling):
+        return _division(by_norms(monic, solved.gain, scaling, form.begins_with), "nearest", ordering, scaling)
+    return _division(rescaled(spread(monic, solved.gain), scaling, form.begins_with), "nearest", ordering, scaling)
+
+
+def _quietest(outward: Sections, gain: float, scaling: str, form: Form) -> Order:
+    if not all(is_stable(exactly(section.a)) for section in outward):
+        raise StructureError(
+            'ordering "quietest" weighs the noise behind each section, and this filter has a section with a pole on or '
+            'outside the unit circle, behind which it grows for ever. Allowed for it are "outward" and "inward".'
+        )
+    return quietest(outward, gain, scaling, form.begins_with)
+
+
+def _rearranged(sections: Sections, order: Order) -> Sections:
+    return tuple(sections[place] for place in order)
+
+
+def _division(scaled: Scaled, pairing: str, ordering: str, scaling: str) -> Division:
+    return Division(scaled.sections, scaled.front, pairing, ordering, scaling, shifts=scaled.shifts)
 
 
 def _check_codes(word: str, pairing: str | None, ordering: str | None, scaling: str | None) -> None:

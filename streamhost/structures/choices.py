@@ -6,8 +6,8 @@ from streamhost.errors import StructureError, nearest
 
 DECOMPOSITIONS = ("whole", "cascade")
 PAIRINGS = ("nearest", "given")
-ORDERINGS = ("outward", "inward", "given")
-SCALINGS = ("none", "l2")
+ORDERINGS = ("outward", "inward", "given", "quietest")
+SCALINGS = ("none", "l1", "l2", "linf", "l1-shift", "l2-shift", "linf-shift")
 
 
 def decompositions() -> tuple[str, ...]:

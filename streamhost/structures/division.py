@@ -34,6 +34,8 @@ def ratio_of(section: Polynomials) -> Ratio:
 class Division:
     """Sections in the order in which they are drawn, a gain in front of the first (None: none), and what was chosen.
 
+    `shifts`: the powers of two before each section and behind the last, where the scaling is made of them; else empty.
+
     `undivided`: the filter itself in exact numbers, where it is the one section as it stands.
     """
 
@@ -43,6 +45,7 @@ class Division:
     ordering: str
     scaling: str
     undivided: Ratio | None = None
+    shifts: tuple[int, ...] = ()
 
     def ratio(self, index: int) -> Ratio:
         """A section in exact numbers: of an undivided filter before its coefficients were rounded."""

@@ -11,5 +11,6 @@ def divide(filter: Filter, form: Form, scaling: str | None) -> Division:
     """One section. One section is in every pairing and every order, so only the scaling makes a difference."""
     ratio = Ratio(*filter.ratio())
     section = trimmed(Polynomials(rounded(ratio.b), rounded(ratio.a)))
-    sections, front = rescaled((section,), scaling, form.begins_with)
-    return Division(sections, front, "given", "given", scaling or "none", ratio if front is None else None)
+    scaled = rescaled((section,), scaling or "none", form.begins_with)
+    undivided = ratio if scaled.front is None else None
+    return Division(scaled.sections, scaled.front, "given", "given", scaling or "none", undivided, scaled.shifts)
