@@ -51,6 +51,11 @@ def of_one_shape(channels: Sequence[Parts]) -> list[Parts]:
 
 
 def _alike(divisions: Sequence[Division]) -> list[Division]:
+    if any(division.shifts for division in divisions):
+        raise StructureError(
+            f'scaling "{divisions[0].scaling}" makes powers of two that belong to the graph, and channels whose filters '
+            "differ run through one graph. Allowed for them are the scalings that change coefficients."
+        )
     count = max(len(division.sections) for division in divisions)
     filled = [(*division.sections, *[WIRE] * (count - len(division.sections))) for division in divisions]
     lengths = [(max(len(s.b) for s in place), max(len(s.a) for s in place)) for place in zip(*filled, strict=True)]

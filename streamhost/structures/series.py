@@ -10,8 +10,8 @@ from streamhost.filters import Polynomials
 from streamhost.structures.division import Division, Part, Parts
 from streamhost.structures.form import Draft, Form, delays_down
 
-A_ROW = 2
-"""Sections drawn side by side: two fit the width of a page in every form."""
+MOST_COLUMNS = 11.75
+"""Columns that fit the width of a page: up to these, two sections are drawn side by side."""
 
 MOST_DRAWN = 8
 """Sections beyond which one that stands for all is drawn."""
@@ -24,6 +24,9 @@ MOST_ROWS = 16
 
 LEAD = 0.875
 GAP = 1.0
+WIDER = 0.75
+"""Columns that a power of two takes before a section."""
+
 GUTTER = 1.5
 
 
@@ -74,13 +77,18 @@ def lead_down(builder: Builder, signal: Ref, above: float, line: "Tiles") -> Non
 
 def tiles_of(builder: Builder, parts: Parts, form: Form) -> "list[Tiles]":
     """A place on the page for each part, one below the other."""
-    left = 2 * FRONT if any(part.division.front is not None for part in parts) else LEAD
+    left = 2 * FRONT if any(begins_with_symbol(part.division) for part in parts) else LEAD
     found: list[Tiles] = []
     top, first = 0.0, 0
     for part in parts:
         found.append(Tiles(builder, part, form, left + (ROOM if len(parts) > 1 else 0.0), top, first))
         top, first = found[-1].bottom, first + len(part.division.sections)
     return found
+
+
+def begins_with_symbol(division: Division) -> bool:
+    """Whether something stands before the first section: a gain in front or a power of two."""
+    return division.front is not None or any(division.shifts[:1])
 
 
 class Tiles:
@@ -96,17 +104,19 @@ class Tiles:
         self.sizes = [form.size_of(section) for section in part.division.sections]
         self.width = max(size.columns for size in self.sizes)
         self.height = max(size.rows for size in self.sizes) + GUTTER
+        self.gap = GAP + (WIDER if part.division.shifts else 0.0)
+        self.a_row = 2 if left + 2 * self.width + self.gap + LEAD <= MOST_COLUMNS else 1
         self.ending = f"_{part.name}" if part.name else ""
 
     @property
     def begin(self) -> float:
         """The column of the first symbol."""
-        return self.left - (FRONT if self.part.division.front is not None else 0.0)
+        return self.left - (FRONT if begins_with_symbol(self.part.division) else 0.0)
 
     @property
     def bottom(self) -> float:
         """The row at which the next part begins."""
-        return self.top + ceil(len(self.sizes) / A_ROW) * self.height
+        return self.top + ceil(len(self.sizes) / self.a_row) * self.height
 
     def draw(self, signal: Ref) -> Ref:
         """The sections behind a signal; what comes out of the last."""
@@ -115,17 +125,27 @@ class Tiles:
             gain = self.builder.gain(signal, f"g{self.ending}", division.front, section=self.first, part="b")
             signal = self.builder.place(gain, (self.begin, self.top))
         for index, section in enumerate(division.sections):
+            signal = self.scaled(signal, index)
             if index > 0:
                 signal = self.register(signal, index)
             suffix = f"{self.ending}_{index + 1}" if len(division.sections) > 1 else self.ending
             draft = Draft(self.builder, section, self.first + index, suffix, self.origin(index), self.numbers,
                           division.ratio(index))
             signal = self.form.build_section(draft, signal)
-        return signal
+        return self.scaled(signal, len(division.sections))
+
+    def scaled(self, signal: Ref, index: int) -> Ref:
+        """The power of two before a section, at the end of the section before it, or behind the last."""
+        shifts = self.part.division.shifts
+        if not shifts or shifts[index] == 0:
+            return signal
+        shift = self.builder.shift(signal, shifts[index], f"scale{self.ending}_{index + 1}")
+        column, row = self.right(index - 1) if index else (self.begin - WIDER, self.top)
+        return self.builder.place(shift, (column + WIDER, row))
 
     def origin(self, index: int) -> tuple[float, float]:
         """The first column and row of a section."""
-        return self.left + index % A_ROW * (self.width + GAP), self.top + index // A_ROW * self.height
+        return self.left + index % self.a_row * (self.width + self.gap), self.top + index // self.a_row * self.height
 
     def right(self, index: int) -> tuple[float, float]:
         """Where the signal leaves a section."""
@@ -138,7 +158,7 @@ class Tiles:
         column, row = self.right(index - 1)
         left, below = self.origin(index)
         if below > row:
-            gutter, out, back = below - LEAD, column + 0.875, left - 0.5
+            gutter, out, back = below - LEAD, column + self.gap - 0.125, left - 0.5
             self.builder.trunk(between, (out, row), (out, gutter), (back, gutter), (back, below))
         return between
 
@@ -146,18 +166,18 @@ class Tiles:
         """The register behind the last section, and the wire from it to the bus and to the row where that begins."""
         between = self.mark(signal, len(self.sizes))
         column, row = self.right(len(self.sizes) - 1)
-        gutter, out = below - LEAD, column + 0.875
+        gutter, out = below - LEAD, column + self.gap - 0.125
         self.builder.trunk(between, (out, row), (out, gutter), (BUS, gutter), (BUS, below))
         return between
 
     def mark(self, signal: Ref, index: int) -> Ref:
         column, row = self.right(index - 1)
         between = self.builder.round(signal, f"between{self.ending}_{index}")
-        return self.builder.place(between, (column + GAP / 2, row), small=True)
+        return self.builder.place(between, (column + self.gap - GAP / 2, row), small=True)
 
     def place_output(self, output: Ref) -> None:
         column, row = self.right(len(self.sizes) - 1)
-        self.builder.place(output, (column + LEAD, row))
+        self.builder.place(output, (column + LEAD + (WIDER if any(self.part.division.shifts[-1:]) else 0.0), row))
 
 
 def general_of(parts: Parts, form: Form) -> General | None:
@@ -223,4 +243,4 @@ def is_long(division: Division) -> bool:
 def shortened(division: Division) -> Division:
     """Without the gain in front, and without what the general row stands for."""
     sections = tuple(Polynomials(section.b[:3], section.a[:3]) for section in division.sections)
-    return replace(division, sections=sections, front=None, undivided=None)
+    return replace(division, sections=sections, front=None, undivided=None, shifts=())
