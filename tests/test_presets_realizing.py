@@ -63,7 +63,7 @@ CODES = '[[filter]]\nsections = { codes = [[4096, 0, 0, 4096, -2048, 0]], word =
 
 @pytest.mark.parametrize(("filter", "structure", "said"), [
     (CODES, 'form = "direct-1"\ndecomposition = "whole"',
-     'preset:6: decomposition = "whole" multiplies the sections out, and this filter'),
+     'preset:6: decomposition = "whole" changes the sections, and this filter'),
     (CODES, 'ordering = "inward"', 'preset:5: ordering = "inward" changes the sections of a filter'),
     (BUTTERWORTH, 'scaling = "none"\npairing = "given"',
      'preset:9: pairing = "given" keeps the sections that a filter is given as'),
@@ -81,7 +81,7 @@ def test_codes_keep_their_word():
 def test_a_choice_that_is_not_stated_is_told_at_its_table():
     order = 200
     text = f"[[filter]]\nb = [1.0]\na = [1.0{', 0.0' * (order - 1)}, 0.5]\n"
-    assert refused(f"{text}[structure]\nform = \"direct-1\"\n").startswith("preset:5: a cascade needs the roots")
+    assert refused(f"{text}[structure]\nform = \"direct-1\"\n").startswith("preset:5: dividing a filter needs its roots")
 
 
 def test_what_was_varied_is_said():

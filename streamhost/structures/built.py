@@ -6,7 +6,7 @@ from dataclasses import dataclass
 from streamhost.diagram import Diagram
 from streamhost.errors import StructureError
 from streamhost.filters import Filter
-from streamhost.structures import cascade, whole
+from streamhost.structures import cascade, parallel, whole
 from streamhost.structures.channels import draw_channels
 from streamhost.structures.choices import check_all
 from streamhost.structures.division import Division, Part, Parts, Sections
@@ -110,7 +110,9 @@ def _divided(
         return cascade.divide(filter, form, pairing, ordering, scaling)
     if filter.codes is not None:
         raise StructureError(
-            f'decomposition "{decomposition}" multiplies the sections out, and this filter is given as codes of '
+            f'decomposition "{decomposition}" changes the sections, and this filter is given as codes of '
             f'{filter.codes.word}, which are kept as they are. Allowed for it is "cascade".'
         )
+    if decomposition == "parallel":
+        return parallel.divide(filter, pairing, ordering, scaling)
     return whole.divide(filter, form, scaling)

@@ -53,7 +53,7 @@ def _paired(filter: Filter, form: Form, ordering: str, scaling: str) -> Division
             'ordering "given" keeps the order that sections were given in, and pairing "nearest" makes new ones. '
             'Allowed with it are "outward", "inward" and "quietest".'
         )
-    _check_order(filter)
+    check_order(filter)
     solved = filter.zeros_poles()
     inward = all_trimmed(nearest_pairs(solved))
     monic = inward if ordering == "inward" else inward[::-1]
@@ -92,12 +92,13 @@ def _check_codes(word: str, pairing: str | None, ordering: str | None, scaling: 
             )
 
 
-def _check_order(filter: Filter) -> None:
+def check_order(filter: Filter) -> None:
+    """StructureError where the roots of a polynomial would take minutes to find."""
     for factor in filter.factors:
         if isinstance(factor, Polynomials) and max(len(factor.b), len(factor.a)) > MOST_ORDER + 1:
             order = max(len(factor.b), len(factor.a)) - 1
             raise StructureError(
-                f"a cascade needs the roots of the filter, which is given as polynomials of order {order}; up to "
+                f"dividing a filter needs its roots, and this one is given as polynomials of order {order}; up to "
                 f'{MOST_ORDER} can be solved. Draw it with decomposition "whole", or give it as sections or as zeros '
                 "and poles."
             )

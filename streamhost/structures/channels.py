@@ -19,6 +19,7 @@ from streamhost.structures.form import Form
 from streamhost.structures.series import draw
 
 WIRE = Polynomials((1.0,), (1.0,))
+NOTHING = Polynomials((0.0,), (1.0,))
 
 
 def draw_channels(channels: Sequence[Parts], form: Form) -> Diagram:
@@ -57,7 +58,9 @@ def _alike(divisions: Sequence[Division]) -> list[Division]:
             "differ run through one graph. Allowed for them are the scalings that change coefficients."
         )
     count = max(len(division.sections) for division in divisions)
-    filled = [(*division.sections, *[WIRE] * (count - len(division.sections))) for division in divisions]
+    beside = max(len(division.direct or ()) for division in divisions)
+    lacking = WIRE if not beside else NOTHING
+    filled = [(*division.sections, *[lacking] * (count - len(division.sections))) for division in divisions]
     lengths = [(max(len(s.b) for s in place), max(len(s.a) for s in place)) for place in zip(*filled, strict=True)]
     fronts = any(division.front is not None for division in divisions)
     return [
@@ -66,6 +69,7 @@ def _alike(divisions: Sequence[Division]) -> list[Division]:
             sections=tuple(Polynomials(_longer(s.b, b), _longer(s.a, a)) for s, (b, a) in zip(sections, lengths, strict=True)),
             front=1.0 if fronts and division.front is None else division.front,
             undivided=_longer_ratio(division.undivided, *lengths[0]),
+            direct=_longer(division.direct, beside) if division.direct is not None else None,
         )
         for division, sections in zip(divisions, filled, strict=True)
     ]

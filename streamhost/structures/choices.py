@@ -4,7 +4,7 @@ from collections.abc import Iterable
 
 from streamhost.errors import StructureError, nearest
 
-DECOMPOSITIONS = ("whole", "cascade")
+DECOMPOSITIONS = ("whole", "cascade", "parallel")
 PAIRINGS = ("nearest", "given")
 ORDERINGS = ("outward", "inward", "given", "quietest")
 SCALINGS = ("none", "l1", "l2", "linf", "l1-shift", "l2-shift", "linf-shift")

@@ -119,9 +119,9 @@ class Draft:
         return self.origin[0] + point[0], self.origin[1] + point[1]
 
 
-def adders(rows: Sequence[int]) -> list[tuple[int, int]]:
+def adders(rows: Sequence[float]) -> list[tuple[float, int]]:
     """(row, how many terms enter there) of each adder of a chain; a first term alone joins at the row after it."""
-    found: list[tuple[int, int]] = []
+    found: list[tuple[float, int]] = []
     for row in rows:
         if found and (found[-1][0] == row or (len(found) == 1 and found[0][1] == 1)):
             found[-1] = (row, found[-1][1] + 1)
