@@ -400,7 +400,7 @@ def test_a_long_polynomial_is_not_solved() -> None:
 
 
 def test_the_decompositions_are_these() -> None:
-    assert decompositions() == ("whole", "cascade")
+    assert decompositions() == ("whole", "cascade", "parallel")
 
 
 def test_an_undivided_high_order_near_the_circle_is_a_hazard_and_a_cascade_is_none() -> None:

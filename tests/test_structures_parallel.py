@@ -122,7 +122,7 @@ def test_choices_of_a_cascade_are_refused(choices: dict[str, str], said: str) ->
 
 
 def test_a_finite_response_and_codes_are_refused() -> None:
-    with pytest.raises(StructureError, match='this filter has no recursion. Allowed for it are "whole" and "cascade"'):
+    with pytest.raises(StructureError, match=r'this filter has no recursion. Allowed for it are "whole" and "cascade"'):
         parallel(Filter.from_coefficients([1, 2, 3], rate=RATE))
     codes = Filter.from_codes([[4096, 0, 0, 4096, -2048, 1024]], "Q4.12", rate=RATE)
     with pytest.raises(StructureError, match=r'"parallel" changes the sections, and this filter is given as codes'):
