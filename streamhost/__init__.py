@@ -16,7 +16,7 @@ if TYPE_CHECKING:
     from streamhost.formats import Fixed, Float
     from streamhost.presets import Preset, load_preset
     from streamhost.realization import Realization, realize
-    from streamhost.structures import decompositions, forms
+    from streamhost.structures import Draft, Form, Size, decompositions, forms, load_structures
 
 _HOMES = {
     "Builder": "diagram",
@@ -31,23 +31,31 @@ _HOMES = {
     "load_preset": "presets",
     "Realization": "realization",
     "realize": "realization",
+    "Draft": "structures",
+    "Form": "structures",
+    "Size": "structures",
     "decompositions": "structures",
     "forms": "structures",
+    "load_structures": "structures",
 }
 
 __all__ = [
     "Builder",
     "Diagram",
+    "Draft",
     "Filter",
     "Fixed",
     "Float",
+    "Form",
     "Preset",
     "Realization",
+    "Size",
     "decompositions",
     "design",
     "forms",
     "kinds",
     "load_preset",
+    "load_structures",
     "minus",
     "realize",
 ]

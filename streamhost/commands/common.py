@@ -38,6 +38,22 @@ vary_option = click.option(
 )
 
 
+def _take_up(ctx: click.Context, param: click.Parameter, files: Sequence[str]) -> None:
+    if ctx.resilient_parsing:
+        return
+    from streamhost.structures.own import installed, load_structures
+
+    installed()
+    for file in files:
+        load_structures(file)
+
+
+structures_option = click.option(
+    "--structures", metavar="FILE.py", multiple=True, expose_value=False, is_eager=True, callback=_take_up,
+    help="Run a Python file that declares structures of your own, and take them up as forms. May be repeated.",
+)
+
+
 def presets_named(names: Sequence[str], variations: Sequence[str] = ()) -> "list[Preset]":
     """The presets of these files or shipped names, varied; PresetError with the mistakes of all files together."""
     from streamhost.presets import load_preset, vary

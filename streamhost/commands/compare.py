@@ -8,7 +8,16 @@ from typing import TYPE_CHECKING
 
 import click
 
-from streamhost.commands.common import Progress, at_rate, force_option, json_option, presets_named, vary_option, write_json
+from streamhost.commands.common import (
+    Progress,
+    at_rate,
+    force_option,
+    json_option,
+    presets_named,
+    structures_option,
+    vary_option,
+    write_json,
+)
 from streamhost.errors import RequestError
 
 if TYPE_CHECKING:
@@ -52,6 +61,7 @@ def label(realization: "Realization") -> str:
 @click.option("--output", "folder", metavar="DIR", help="Write each output and each difference into this folder.")
 @vary_option
 @json_option
+@structures_option
 @force_option
 def compare(
     presets: Sequence[str], source: str, folder: str | None, variations: Sequence[str], json_file: str | None,

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 import click
 
-from streamhost.commands.common import force_option, presets_named, vary_option
+from streamhost.commands.common import force_option, presets_named, structures_option, vary_option
 from streamhost.errors import RequestError
 
 if TYPE_CHECKING:
@@ -22,6 +22,7 @@ SVG = ".svg"
 @click.option("-o", "--output", "output", metavar="FILE.svg", default=None, help="Write the drawing as SVG instead.")
 @click.option("--rounded", is_flag=True, help="Mark with Q where the program rounds.")
 @vary_option
+@structures_option
 @force_option
 def draw(preset: str, output: str | None, rounded: bool, variations: Sequence[str], force: bool) -> None:
     """The block diagram of PRESET: as plain text, or with -o as SVG with the values of the coefficients."""

@@ -2,16 +2,28 @@
 
 import click
 
-from streamhost.commands.common import GAP
+from streamhost.commands.common import GAP, structures_option
 
 
 @click.command()
 @click.argument("name", required=False)
+@structures_option
 def forms(name: str | None) -> None:
     """What can be chosen; with the NAME of a form, how it is drawn, what it costs, and what it is good and bad at."""
-    from streamhost.structures import form
+    click.echo(_explained(name) if name is not None else "\n\n".join(_everything()))
 
-    click.echo(form(name).docs.strip() if name is not None else "\n\n".join(_everything()))
+
+def _explained(name: str) -> str:
+    """What a form says of itself; a drawing of a second-order section where it says nothing."""
+    from streamhost.drawing import plain
+    from streamhost.filters import Filter
+    from streamhost.structures import build, form
+
+    found = form(name)
+    if found.docs.strip():
+        return found.docs.strip()
+    section = Filter.from_sections([[0.5, 0.25, 0.125, 1.0, -0.5, 0.25]], rate=48000)
+    return f"{name}: {found.summary}\n\n{plain(build(section, form=name, decomposition='whole').diagram)}"
 
 
 def _everything() -> list[str]:

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Any
 
 import click
 
-from streamhost.commands.common import MINUS, Progress, at_rate, force_option, presets_named, printable
+from streamhost.commands.common import MINUS, Progress, at_rate, force_option, presets_named, printable, structures_option
 
 if TYPE_CHECKING:
     from streamhost.files import AudioInfo
@@ -27,6 +27,7 @@ SUBTYPES = ("pcm16", "pcm24", "pcm32", "float")
     help="Samples of OUT. Unless said: PCM of the shortest of 16, 24, 32 bits that holds the output word's fraction, "
     "32 bits for what is longer; 24 bits after floating point.",
 )
+@structures_option
 @force_option
 def render(preset: str, source: str, destination: str, subtype: Any, force: bool) -> None:
     """The audio file IN through one realization into a new file OUT.

@@ -9,8 +9,11 @@ b.output(y)
 diagram = b.build()
 """
 
+import re
+import sys
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from types import FrameType
 
 import numpy as np
 from numpy.typing import ArrayLike
@@ -49,9 +52,14 @@ def minus(ref: Ref) -> Signed:
 
 
 class Builder:
-    """Collects nodes in the order in which they are created, which decides the evaluation order among ready ones."""
+    """Collects nodes in the order in which they are created, which decides the evaluation order among ready ones.
 
-    def __init__(self) -> None:
+    With a Python `file`, what is wrong with the diagram is told with the line of that file that made the node.
+    """
+
+    def __init__(self, file: str = "") -> None:
+        self._file = file
+        self._lines: dict[str, int] = {}
         self._nodes: list[Node] = []
         self._slots: list[Slot] = []
         self._values: list[np.ndarray[tuple[int], np.dtype[np.float64]]] = []
@@ -169,11 +177,26 @@ class Builder:
         hints = Hints(nodes, dict(self._places), tuple(self._trunks), general)
         diagram = Diagram(nodes, tuple(self._slots), self._table(), hints)
         if check:
-            check_diagram(diagram)
+            try:
+                check_diagram(diagram)
+            except DiagramError as error:
+                raise DiagramError(self._located(str(error))) from None
         return diagram
+
+    def _located(self, message: str) -> str:
+        """A refusal behind the line that made the first of the nodes it names."""
+        labels = [quoted or before for quoted, before in re.findall(r'"([^"]+)"|(\S+) ->', message)]
+        made_at = [self._lines[label] for label in labels if label in self._lines]
+        return f"{self._file}, line {made_at[0]}: {message}" if made_at else message
 
     def _add(self, node: Node) -> Ref:
         self._nodes.append(node)
+        if self._file:
+            frame: FrameType | None = sys._getframe(1)
+            while frame is not None and frame.f_code.co_filename != self._file:
+                frame = frame.f_back
+            if frame is not None:
+                self._lines[node.label] = frame.f_lineno
         return Ref(self, len(self._nodes) - 1)
 
     def _table(self) -> np.ndarray[tuple[int, int], np.dtype[np.float64]]:

@@ -2,9 +2,11 @@
 
 from streamhost.structures.built import Built, build
 from streamhost.structures.choices import DECOMPOSITIONS, ORDERINGS, PAIRINGS, SCALINGS, decompositions
-from streamhost.structures.form import Form
+from streamhost.structures.form import Draft, Form, Size
 from streamhost.structures.forms import form, forms
+from streamhost.structures.own import load_structures
 
 __all__ = [
-    "DECOMPOSITIONS", "ORDERINGS", "PAIRINGS", "SCALINGS", "Built", "Form", "build", "decompositions", "form", "forms",
+    "DECOMPOSITIONS", "ORDERINGS", "PAIRINGS", "SCALINGS", "Built", "Draft", "Form", "Size", "build", "decompositions", "form",
+    "forms", "load_structures",
 ]

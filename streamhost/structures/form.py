@@ -21,7 +21,8 @@ class Draft:
 
     `origin` is where its first column and row are on the page; places are said from there. `numbers` are written for
     the numbers of the coefficients in a section that stands for a longer one. `ratio` is the section in exact numbers,
-    for forms whose coefficients are computed from it. `offered` collects further outputs by name.
+    for forms whose coefficients are computed from it. `offered` collects further outputs by name. Nodes are drawn `at` a
+    column and a row of the section; where a form leaves places out, the drawing finds all of them.
     """
 
     builder: Builder
@@ -41,16 +42,18 @@ class Draft:
         """A further output of the form, which those who ask for all outputs get."""
         self.offered[name] = ref
 
-    def delay(self, name: str, source: Ref | None = None, *, at: Point, face: str = "E", n: int = 1) -> Ref:
+    def delay(self, name: str, source: Ref | None = None, *, at: Point | None = None, face: str = "E",
+              n: int = 1) -> Ref:
         """A delay of n frames, driven now or later."""
         return self._placed(self.builder.delay(f"{name}{self.suffix}", source, n=n), at, face)
 
-    def gain(self, name: str, value: float, source: Ref, *, at: Point, face: str = "E", part: str = "") -> Ref:
+    def gain(self, name: str, value: float, source: Ref, *, at: Point | None = None, face: str = "E",
+             part: str = "") -> Ref:
         """The product of a coefficient of the form's own."""
         label = f"{name}{self.suffix}"
         return self._placed(self.builder.gain(source, label, value, section=self.index, part=part), at, face)
 
-    def shift(self, name: str, k: int, source: Ref, *, at: Point, face: str = "E") -> Ref:
+    def shift(self, name: str, k: int, source: Ref, *, at: Point | None = None, face: str = "E") -> Ref:
         """2^k of the structure."""
         return self._placed(self.builder.shift(source, k, f"{name}{self.suffix}"), at, face)
 
@@ -67,7 +70,7 @@ class Draft:
         delays = [self.builder.delay(f"{name}{k}{self.suffix}") for k in range(1, length + 1)]
         return tuple(self._placed(delay, (column, (k + 0.5) * pitch), "N") for k, delay in enumerate(delays))
 
-    def b(self, k: int, source: Ref, *, at: Point) -> Ref:
+    def b(self, k: int, source: Ref, *, at: Point | None = None) -> Ref:
         """The product b_k source."""
         label = self._named("b", k)
         return self._placed(self.builder.gain(source, label, self.section.b[k], section=self.index, part="b"), at)
@@ -82,15 +85,15 @@ class Draft:
         taps = self.builder.taps(x, "b", self.section.b, last_first=True, section=self.index, part="b")
         return self._placed(taps, (1.5, 0.0))
 
-    def a(self, k: int, source: Ref, *, at: Point) -> Signed:
+    def a(self, k: int, source: Ref, *, at: Point | None = None) -> Signed:
         """The product a_k source, to be subtracted."""
         label = self._named("a", k)
         product = self.builder.gain(source, label, self.section.a[k], section=self.index, part="a", feedback=True)
         return minus(self._placed(product, at, "W"))
 
-    def add(self, name: str, terms: Sequence[Ref | Signed], *, at: Point, face: str = "E") -> Ref:
+    def add(self, name: str, terms: Sequence[Ref | Signed], *, at: Point | None = None, face: str = "E") -> Ref:
         """The sum of the terms in their order, drawn as one adder. One term alone is no sum, unless it is subtracted."""
-        return self._summed(name, terms, [Part(self._on_page(at), len(terms), face)])
+        return self._summed(name, terms, [Part(self._on_page(at), len(terms), face)] if at is not None else [])
 
     def climb(self, name: str, terms: Sequence[Ref | Signed], *, column: float, rows: Sequence[int]) -> Ref:
         """The same, drawn as a chain of adders upwards: each term enters at its row, the last leaves to the right."""
@@ -107,12 +110,16 @@ class Draft:
         if len(terms) == 1 and isinstance(terms[0], Ref):
             return terms[0]
         total = self.builder.sum(*terms, label=f"{name}{self.suffix}")
+        if not parts:
+            return total
         return self.builder.place(total, parts[-1].at, parts[-1].face, parts=parts if len(parts) > 1 else ())
 
     def _named(self, letter: str, k: int) -> str:
         return f"{letter}{self.numbers[k] if self.numbers else k}{self.suffix}"
 
-    def _placed(self, ref: Ref, at: Point, face: str = "E") -> Ref:
+    def _placed(self, ref: Ref, at: Point | None, face: str = "E") -> Ref:
+        if at is None:
+            return ref
         return self.builder.place(ref, self._on_page(at), face)
 
     def _on_page(self, point: Point) -> Point:
@@ -155,19 +162,20 @@ class Form:
 
     `carries` says in words why a section cannot be drawn in this form, "" where it can. `hazards` are sentences about a
     section that is drawn and is dangerous. Drawn, a section is `width` columns wide and has `pitch` rows for each delay,
-    its output leaving at the top right, unless `size` says otherwise.
+    its output leaving at the top right, unless `size` says otherwise. `origin` is the file of a user's own form.
     """
 
     name: str
     summary: str
     begins_with: Half
     build_section: Callable[[Draft, Ref], Ref]
-    docs: str
-    width: float = 0.0
+    docs: str = ""
+    width: float = 4.0
     pitch: float = 1.0
     carries: Callable[[Ratio], str] = lambda ratio: ""
     hazards: Callable[[Ratio], tuple[str, ...]] = lambda ratio: ()
     size: Callable[[Polynomials], Size] | None = None
+    origin: str = ""
 
     def size_of(self, section: Polynomials) -> Size:
         """What the section takes on the page."""

@@ -26,7 +26,7 @@ def draw(parts: Parts, form: Form) -> Diagram:
 
     Sections share no delays, and neither do outputs. A gain in front is drawn before the first section and belongs to it.
     """
-    builder = Builder()
+    builder = Builder(form.origin)
     signal = builder.place(builder.input(), (0.0, 0.0))
     tiles = tiles_of(builder, parts, form)
     draw_all(builder, tiles, signal)
@@ -88,7 +88,7 @@ def rows_of(parts: Parts, form: Form) -> float:
 
 def general_section(parts: Parts, form: Form) -> General:
     """One section with the index i."""
-    builder = Builder()
+    builder = Builder(form.origin)
     sections = [section for part in parts for section in part.division.sections]
     fullest = max(sections, key=lambda section: len(section.a) + len(section.b))
     x = builder.place(builder.input("x_i"), (0.0, 0.0))
@@ -113,7 +113,7 @@ def caption_of(parts: Parts) -> str:
 
 def general_row(parts: Parts, form: Form) -> General:
     """All that is drawn, with a row k in each long section that stands for all between the first and the last."""
-    builder = Builder()
+    builder = Builder(form.origin)
     short = tuple(Part(part.name, shortened(part.division)) for part in parts)
     signal = builder.place(builder.input(), (0.0, 0.0))
     tiles = tiles_of(builder, short, form)
