@@ -88,6 +88,11 @@ class Realization:
         """Whether a filter as asked has a pole on or outside the unit circle, before any rounding."""
         return any(filter.unstable_poles() for filter in self.filters)
 
+    @property
+    def hazards(self) -> tuple[str, ...]:
+        """What is certain to be dangerous about this structure in this format, in sentences."""
+        return (*self.built.hazards, *_narrow_operand(self.diagram, self.format))
+
     @cached_property
     def unstable(self) -> int:
         """Poles of the diagram with its coefficients as stored that lie on or outside the unit circle, decided exactly."""
@@ -284,6 +289,19 @@ def _of_channels(given: object) -> tuple[Filter, ...]:
         if len(found) > 1:
             raise FilterError(f"The filters of the channels have different {what}; all channels have the same.")
     return filters
+
+
+def _narrow_operand(diagram: Diagram, format: Format) -> tuple[str, ...]:
+    if not isinstance(format, Fixed) or not diagram.has_loop():
+        return ()
+    state, operand = format.state.word, format.operand.word
+    if state.fraction <= operand.fraction:
+        return ()
+    said = (
+        f"the state is kept as {state} and multiplied as {operand}: what the multipliers do not see of it is rounded "
+        f"anew in every frame, and the recursion is as loud as with a state of {operand.fraction} fraction bits."
+    )
+    return (said,)
 
 
 def _with_codes(filters: Sequence[Filter], format: Format) -> Format:

@@ -103,3 +103,15 @@ def test_codes_keep_their_word() -> None:
     assert realization.program.stored.codes == ((1899,), (3733,), (-3798,), (-7807,), (1899,))
     with pytest.raises(FormatError, match="leave `coefficients` out"):
         sh.realize(filter, form="direct-1", format=sh.Fixed("Q1.15", coefficients="Q3.13"))
+
+
+def test_a_wide_state_behind_a_narrow_operand_is_a_hazard():
+    filter = sh.design("low-pass", rate=48000, frequency=100, q=0.7)
+    narrow = sh.realize(filter, form="direct-1", format=sh.Fixed("Q1.15", coefficients="Q2.30", state="Q1.31"))
+    assert any("kept as Q1.31 and multiplied as Q1.15" in hazard for hazard in narrow.hazards)
+    wide = sh.realize(filter, form="direct-1", format=sh.Fixed("Q1.15", coefficients="Q2.30", state="Q1.31", operand="Q1.31"))
+    assert wide.hazards == ()
+    # Where nothing is fed back, nothing is rounded anew.
+    finite = sh.Filter.from_coefficients([0.5, 0.25], rate=48000)
+    assert sh.realize(finite, form="direct-1", format=sh.Fixed("Q1.15", state="Q1.31")).hazards == ()
+    assert sh.realize(filter, form="direct-1").hazards == ()

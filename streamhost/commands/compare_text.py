@@ -158,7 +158,7 @@ def _remarks(compared: Sequence[Compared]) -> Iterator[str]:
         yield from (f"{name}{remark}." for name, figures in own for remark in _noise_remarks(figures, one.realization.format))
         if isinstance(one.realization.format, Float) and any(figures.prediction is not None for _, figures in own):
             yield f"{number}: in floating point the predicted noise is an estimate."
-        for hazard in one.realization.built.hazards:
+        for hazard in one.realization.hazards:
             yield f"{number}, hazard: {hazard}"
 
 

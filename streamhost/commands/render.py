@@ -94,7 +94,7 @@ def summary(rendered: "Rendered", realization: "Realization") -> list[str]:
         why = "as asked" if realization.unstable_as_asked else "once the coefficients are rounded"
         lie = "lies" if realization.unstable == 1 else "lie"
         lines.append(f"unstable: {_count(realization.unstable, 'pole')} {lie} on or outside the unit circle {why}")
-    return lines + [f"hazard: {sentence}" for sentence in realization.built.hazards]
+    return lines + [f"hazard: {sentence}" for sentence in realization.hazards]
 
 
 def _events(rendered: "Rendered") -> list[str]:
