@@ -73,17 +73,8 @@ def render_file(
     """
     paths = output_paths(destination, realization.outputs)
     _check(realization, source, paths, name)
-    writers = [
-        AudioWriter(
-            path,
-            rate=source.rate,
-            channels=source.channels,
-            subtype=subtype or default_subtype(realization.format),
-            frames_expected=source.frames,
-            overwrite=overwrite,
-        )
-        for path in paths
-    ]
+    kind = subtype or default_subtype(realization.format)
+    writers = [_writer(path, source, kind, overwrite=overwrite) for path in paths]
     with all_or_none(paths), ExitStack() as stack:
         for writer in writers:
             stack.enter_context(writer)
@@ -107,6 +98,11 @@ def render_file(
         lane.meters,
         lane.tally(),
     )
+
+
+def _writer(path: Path, source: AudioInfo, subtype: Subtype, *, overwrite: bool) -> AudioWriter:
+    return AudioWriter(path, rate=source.rate, channels=source.channels, subtype=subtype, frames_expected=source.frames,
+                       overwrite=overwrite)
 
 
 def output_paths(destination: Path, outputs: Sequence[str]) -> tuple[Path, ...]:
