@@ -100,7 +100,7 @@ def test_kernels_agree_with_the_definition(form: str, name: str) -> None:
 ])
 def test_kernels_of_long_words_agree_with_the_definition(form: str, name: str) -> None:
     realization = sh.realize(filter_of_two_sections(), form=form, format=LONG_FORMATS[name])
-    agree(realization.program, busy(240, 2, seed=7), plain=form == "direct-1")
+    agree(realization.program, busy(240, 2, seed=7), plain=name == "48x24+56")
 
 
 @pytest.mark.parametrize("form", FORMS)
@@ -150,7 +150,8 @@ def test_kernels_of_tapped_lines_agree_with_the_definition(fold: str | None, nam
     line = b.taps(x, "h", half + middle + mirrored, fold=symmetry, last_first=fold == "last first", section=0)
     b.output(b.sum(line, b.gain(b.delay("d", x, n=5), "g", 0.5, section=0), label="y"))
     b.output(b.taps(x, "one", [0.75], section=0), "single")
-    agree(lower(b.build(), (FORMATS | LONG_FORMATS)[name]), busy(120, 2, seed=1))
+    program = lower(b.build(), (FORMATS | LONG_FORMATS)[name])
+    agree(program, busy(120, 2, seed=1), plain=name in FORMATS or fold == "odd")
 
 
 PARTS = st.lists(st.sampled_from([0, 1, 2, 3, 5, 7, 13, 31]), min_size=1, max_size=12)
