@@ -6,10 +6,11 @@ Nothing is taken from the program that drew: what touches what is found out from
 import re
 import xml.etree.ElementTree as ET
 from collections import Counter, defaultdict
-from dataclasses import dataclass, field
-from itertools import combinations
+from dataclasses import dataclass, field, replace
+from itertools import combinations, pairwise
 
-from streamhost.diagram import Diagram, Sum
+from streamhost.diagram import Diagram, Sum, Taps
+from streamhost.diagram.tapped import written_out
 
 SVG = "{http://www.w3.org/2000/svg}"
 NEAR = 0.02  # coordinates are written with two decimals
@@ -34,15 +35,13 @@ class Box:
     def distance(self, other: "Box") -> float:
         return max(self.left - other.right, other.left - self.right, self.top - other.bottom, other.top - self.bottom)
 
-    def holds(self, spot: Spot, grown: float = 0.0) -> bool:
-        return (self.left - grown < spot[0] < self.right + grown) and (self.top - grown < spot[1] < self.bottom + grown)
-
 
 @dataclass
 class Page:
     """All that stands in a drawing."""
 
     lines: list[Line] = field(default_factory=list)
+    heavy: list[Line] = field(default_factory=list)  # those of the lines that are said to be part of a loop
     dots: list[Spot] = field(default_factory=list)
     heads: list[tuple[Spot, Spot]] = field(default_factory=list)  # tip, direction
     boxes: list[Box] = field(default_factory=list)
@@ -52,12 +51,15 @@ class Page:
     scale: float = 0.0
 
 
-def page_of(svg: str) -> Page:
+def page_of(svg: str, detail: int | None = None) -> Page:
+    """The drawing, or one of the drawings below it that explain a symbol."""
     root = ET.fromstring(svg)
-    groups = {group.get("data-part"): list(group) for group in root.findall(f"{SVG}g")}
+    parent = root if detail is None else root.findall(f"{SVG}g[@data-part='detail']")[detail]
+    groups = {group.get("data-part"): list(group) for group in parent.findall(f"{SVG}g")}
     page = Page(width_mm=float(root.attrib["width"].removesuffix("mm")))
     page.scale = page.width_mm / float(root.attrib["viewBox"].split()[2]) / (25.4 / 96)
-    page.lines = [line for path in groups["wires"] for line in lines_in(path.attrib["d"])]
+    page.heavy = [line for path in groups["loops"] for line in lines_in(path.attrib["d"])]
+    page.lines = [line for path in groups["wires"] for line in lines_in(path.attrib["d"])] + page.heavy
     page.dots = [(float(dot.attrib["cx"]), float(dot.attrib["cy"])) for dot in groups["dots"]]
     page.heads = [head_in(path.attrib["d"]) for path in groups["heads"]]
     for element in groups["symbols"]:
@@ -146,9 +148,13 @@ def nets_of(page: Page) -> list[list[Line]]:
             i = parent[i]
         return i
 
-    for (i, one), (j, other) in combinations(enumerate(page.lines), 2):
-        corner = any(is_at(a, b) for a in one for b in other)
-        if corner or any(is_on(dot, one) and is_on(dot, other) for dot in page.dots):
+    joined = defaultdict(list)
+    for i, line in enumerate(page.lines):
+        for x, y in line:
+            joined[round(x, 1), round(y, 1)].append(i)
+    groups = [*joined.values(), *([i for i, line in enumerate(page.lines) if is_on(dot, line)] for dot in page.dots)]
+    for group in groups:
+        for i, j in pairwise(group):
             parent[root(i)] = root(j)
     nets = defaultdict(list)
     for i, line in enumerate(page.lines):
@@ -165,7 +171,7 @@ class Touch:
     sign: int = 1
 
 
-def touches(page: Page, net: list[Line]) -> list[Touch]:
+def touches(page: Page, net: list[Line], negative: set[Spot]) -> list[Touch]:
     found = []
     for line in net:
         for end, other in (line, line[::-1]):
@@ -173,7 +179,7 @@ def touches(page: Page, net: list[Line]) -> list[Touch]:
             way = ((end[0] - other[0]) / length, (end[1] - other[1]) / length)
             for tip, direction in page.heads:
                 if direction == way and is_at(tip, (end[0] + way[0] * UNDER_HEAD, end[1] + way[1] * UNDER_HEAD)):
-                    found += [Touch(box, "sink", sign_at(page, tip)) for box in page.boxes if is_edge(box, tip)]
+                    found += [Touch(box, "sink", -1 if tip in negative else 1) for box in page.boxes if is_edge(box, tip)]
             found += [Touch(box, role_of(box, end)) for box in page.boxes if is_edge(box, end)]
     return found
 
@@ -181,10 +187,11 @@ def touches(page: Page, net: list[Line]) -> list[Touch]:
 def is_edge(box: Box, spot: Spot) -> bool:
     if box.ports:
         return any(is_at(port, spot) for port in box.ports)
-    inside = box.left - NEAR <= spot[0] <= box.right + NEAR and box.top - NEAR <= spot[1] <= box.bottom + NEAR
+    if not (box.left - NEAR <= spot[0] <= box.right + NEAR and box.top - NEAR <= spot[1] <= box.bottom + NEAR):
+        return False
     level = min(abs(spot[0] - box.left), abs(spot[0] - box.right)) <= NEAR
     upright = min(abs(spot[1] - box.top), abs(spot[1] - box.bottom)) <= NEAR
-    return inside and (level or upright)
+    return level or upright
 
 
 def role_of(box: Box, end: Spot) -> str:
@@ -193,10 +200,9 @@ def role_of(box: Box, end: Spot) -> str:
     return "either" if box.kind == "mark" else "source"
 
 
-def sign_at(page: Page, tip: Spot) -> int:
-    """-1 if of all heads this one is nearest to some minus."""
-    nearest = [min(page.heads, key=lambda head: distance(head[0], minus))[0] for minus in page.minuses]
-    return -1 if any(is_at(tip, spot) for spot in nearest) else 1
+def negative_tips(page: Page) -> set[Spot]:
+    """The tips of the heads that are nearest to a minus."""
+    return {min((tip for tip, _ in page.heads), key=lambda tip: distance(tip, minus)) for minus in page.minuses}
 
 
 def distance(a: Spot, b: Spot) -> float:
@@ -208,7 +214,8 @@ Edges = Counter[tuple[str, str, int]]
 
 def edges_of(page: Page) -> Edges:
     """(source symbol, sink symbol, sign) of every wire that is seen."""
-    nets = [touches(page, net) for net in nets_of(page)]
+    negative = negative_tips(page)
+    nets = [touches(page, net, negative) for net in nets_of(page)]
     driven: dict[int, str] = {}
     while True:
         before = len(driven)
@@ -253,24 +260,23 @@ def faults_of_distance(page: Page) -> list[str]:
     faults = [f"{a.id} and {b.id} are {a.distance(b)} px apart" for a, b in combinations(page.boxes, 2) if a.distance(b) < 3]
     solid = [*page.boxes, *page.marks.values()]
     for line in page.lines:
-        inside = [spot for spot in walked(line) for box in page.boxes if box.holds(spot, -NEAR)]
-        faults += [f"the wire {line} runs through a symbol at {spot}" for spot in inside]
+        faults += [f"the wire {line} runs through {box.id}" for box in page.boxes if runs_through(line, box, NEAR)]
     nets = nets_of(page)
     for one, other in combinations(nets, 2):
         faults += [f"{a} and {b} touch" for a in one for b in other if run_together(a, b)]
     faults += [f"the mark of {name} meets {box.id}" for name, mark in page.marks.items() for box in solid
                if box is not mark and mark.distance(box) < 2]
     for name, mark in page.marks.items():
-        through = [line for line in page.lines if any(mark.holds(spot) for spot in walked(line))]
+        through = [line for line in page.lines if runs_through(line, mark)]
         if len(through) != 1:
             faults.append(f"{len(through)} wires run through the mark of {name}")
     return faults
 
 
-def walked(line: Line) -> list[Spot]:
-    (x0, y0), (x1, y1) = line
-    steps = max(1, int(abs(x1 - x0) + abs(y1 - y0)))
-    return [(x0 + (x1 - x0) * k / steps, y0 + (y1 - y0) * k / steps) for k in range(steps + 1)]
+def runs_through(line: Line, box: Box, edge: float = 0.0) -> bool:
+    """Whether some of a line lies inside a box, further in than its edge."""
+    (x0, x1), (y0, y1) = (sorted(ends) for ends in zip(*line, strict=True))
+    return x0 < box.right - edge and x1 > box.left + edge and y0 < box.bottom - edge and y1 > box.top + edge
 
 
 def run_together(a: Line, b: Line) -> bool:
@@ -301,10 +307,46 @@ def parts_of(diagram: Diagram) -> dict[int, list[int]]:
     return {index: [part.terms for part in place.parts] for index, place in places.items() if place.parts}
 
 
-def faults_of(svg: str, diagram: Diagram) -> list[str]:
+def edges_in_loops(edges: Edges) -> Edges:
+    """The wires that lead from a symbol on to where one comes back to it."""
+    after = defaultdict(set)
+    for source, sink, _ in edges:
+        after[source].add(sink)
+
+    def is_reached(start: str, goal: str) -> bool:
+        found, todo = {start}, [start]
+        while todo:
+            new = after[todo.pop()] - found
+            found |= new
+            todo += new
+        return goal in found
+
+    return Counter({edge: count for edge, count in edges.items() if is_reached(edge[1], edge[0])})
+
+
+def faults_of_loops(page: Page, seen: Edges) -> list[str]:
+    """The heavy lines are those of the loops and no others, judged from the wires that are seen."""
+    loops = edges_in_loops(seen)
+    heavy = edges_of(replace(page, lines=page.heavy)) if page.heavy else Counter()
+    return [f"in a loop and not heavy, or heavy and in none: {edge}" for edge in (loops - heavy) + (heavy - loops)]
+
+
+def faults_of(svg: str, diagram: Diagram, detail: int | None = None) -> list[str]:
     """All that is wrong with a drawing of a diagram."""
-    page = page_of(svg)
-    faults = faults_of_joints(page) + faults_of_distance(page)
+    page = page_of(svg, detail)
     seen, wanted = edges_of(page), expected_edges(diagram, parts_of(diagram))
+    faults = faults_of_joints(page) + faults_of_distance(page) + faults_of_loops(page, seen)
     faults += [f"drawn and not there: {edge}" for edge in seen - wanted]
     return faults + [f"not drawn: {edge}" for edge in wanted - seen]
+
+
+def faults_of_figure(svg: str, diagram: Diagram) -> list[str]:
+    """The same of a drawing and of the drawings of its tapped lines below it; a tapped line alone is the drawing."""
+    lines = [written_out(diagram, index, diagram.nodes[node.source].label, node.label)[0]
+             for index, node in enumerate(diagram.nodes) if isinstance(node, Taps)]
+    if len(lines) == 1 and len(diagram.nodes) == 3:
+        return faults_of(svg, lines[0])
+    faults = faults_of(svg, diagram)
+    for number, line in enumerate(lines):
+        faults += [f"line {number}: {fault}" for fault in faults_of(svg, line, number)]
+    return faults

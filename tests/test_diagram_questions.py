@@ -1,13 +1,18 @@
 """Whether a diagram has a loop, and whether its impulse response ends: two questions."""
 
+from itertools import islice
+
 import numpy as np
 import pytest
 from diagram_examples import direct_1, fir, running_sum
 from hypothesis import given
+from hypothesis import strategies as st
 from random_diagrams import COARSE, KINDS, diagrams
 
 from streamhost.diagram import Builder, Diagram, minus
+from streamhost.diagram.exact import impulse_responses
 from streamhost.diagram.norms import responses_from_input
+from streamhost.diagram.questions import response_frames
 
 WITHOUT_LOOPS = tuple(kind for kind in KINDS if kind != "loop")
 
@@ -30,6 +35,27 @@ def test_diagrams_without_loops_end_within_their_states(diagram: Diagram) -> Non
     assert diagram.response_ends()
     states = diagram.counts().delays
     assert not responses_from_input(diagram, frames=states + 20)[states + 1:].any()
+
+
+@given(diagrams(kinds=WITHOUT_LOOPS, step=COARSE) | st.builds(running_sum, st.integers(1, 40)))
+def test_a_response_that_ends_has_its_last_frame_where_it_is_said(diagram: Diagram) -> None:
+    frames = response_frames(diagram)
+    assert frames is not None
+    exact = list(islice(impulse_responses(diagram), diagram.counts().delays + 3))
+    assert not any(map(any, exact[frames:]))
+    assert frames == 0 or any(exact[frames - 1])
+
+
+def test_a_response_that_does_not_end_has_no_last_frame() -> None:
+    assert response_frames(direct_1([1.0], [1.0, -0.5])) is None
+
+
+def test_the_longest_of_all_channels_and_outputs_counts() -> None:
+    b = Builder()
+    x = b.input()
+    b.output(b.gain(x, "now", [1.0, 1.0]), "now")
+    b.output(b.gain(b.delay("d", x, 5), "late", [0.0, 1.0]), "late")
+    assert response_frames(b.build()) == 6
 
 
 def test_recursion_does_not_end() -> None:

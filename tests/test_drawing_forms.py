@@ -2,13 +2,15 @@
 
 import subprocess
 import sys
+from importlib import import_module
 from random import Random
 
 import pytest
 from drawing_reader import crossings, faults_of, page_of
 from form_filters import DIRECT
 
-from streamhost.diagram import Diagram, Round, Sum
+from streamhost.diagram import Diagram, Round, Sum, Taps
+from streamhost.diagram.tapped import MOST_TAPS
 from streamhost.drawing import layout_of, plain, svg
 from streamhost.filters import Filter
 from streamhost.structures import build, form
@@ -64,6 +66,24 @@ def test_orders_that_differ(name: str, orders: tuple[int, int]) -> None:
     check_named(diagram, sums(diagram))
 
 
+@pytest.mark.parametrize("taps", [9, 13, 16, 20, MOST_TAPS])
+@pytest.mark.parametrize("name", DIRECT)
+def test_a_line_without_recursion_wraps_on_the_page(name: str, taps: int) -> None:
+    diagram = whole(name, taps - 1, 0)
+    check_named(diagram, set())
+    check_named(diagram, sums(diagram))
+
+
+@pytest.mark.parametrize("name", DIRECT)
+def test_places_in_rows_change_no_node(name: str, monkeypatch: pytest.MonkeyPatch) -> None:
+    lying = whole(name, 19, 0)
+    monkeypatch.setattr(import_module("streamhost.structures.form"), "UPRIGHT", MOST_TAPS)
+    upright = whole(name, 19, 0)
+    assert lying.hints.places != upright.hints.places
+    assert lying.nodes == upright.nodes
+    assert lying.slots == upright.slots
+
+
 @pytest.mark.parametrize("odd", [False, True], ids=["even", "odd"])
 @pytest.mark.parametrize("sections", [2, 3, 5, MOST_DRAWN])
 @pytest.mark.parametrize("name", DIRECT)
@@ -85,9 +105,10 @@ def test_a_long_cascade_is_one_section_with_all_values(name: str) -> None:
     diagram = cascade(name, MOST_DRAWN + 1)
     general = diagram.hints.general
     assert general is not None
-    text = svg(diagram)
+    text = svg(diagram, rounded=sums(diagram))
     assert faults_of(text, general.diagram) == []
-    assert "Section i of 9 in series" in text
+    assert "of 9 in series" in text
+    assert {int(mark.split(".")[0]) for mark in page_of(text).marks} == sums(general.diagram)
     values = {f"{value:.6f}".replace("-", "\N{MINUS SIGN}") for value in diagram.values[:, 0]}
     assert all(f">{value}<" in text for value in values)
 
@@ -98,11 +119,23 @@ def test_a_long_section_is_one_row_with_all_values(name: str, orders: tuple[int,
     diagram = whole(name, *orders)
     general = diagram.hints.general
     assert general is not None
-    text = svg(diagram)
+    text = svg(diagram, rounded={index for index, node in enumerate(diagram.nodes) if isinstance(node, Sum | Taps)})
     assert faults_of(text, general.diagram) == []
-    assert f"N = {max(orders)}." in text
+    assert f"</tspan> = {max(orders)}.<" in text
+    assert {int(mark.split(".")[0]) for mark in page_of(text).marks} == sums(general.diagram)
     values = {f"{value:.6f}" for value in diagram.values[:, 0]}
     assert all(f">{value}<" in text for value in values)
+
+
+@pytest.mark.parametrize("name", DIRECT)
+def test_a_section_that_marks_make_too_high_is_one_row(name: str) -> None:
+    diagram = whole(name, 12, 12)
+    general = diagram.hints.general
+    assert general is not None
+    assert faults_of(svg(diagram), diagram) == []
+    text = svg(diagram, rounded=sums(diagram))
+    assert page_of(text).scale >= LEAST_SCALE
+    assert faults_of(text, general.diagram if name.startswith("transposed") else diagram) == []
 
 
 @pytest.mark.parametrize("name", DIRECT)
@@ -146,22 +179,28 @@ print(cascade("transposed-2", 3).svg(), random_diagram(Random(2), 12).svg())
 
 def test_plain_text_of_a_biquad() -> None:
     assert plain(whole("direct-2", 2, 2)).splitlines()[:9] == [
-        "x[n] -->(+)-----------*--[b0>--->(+)---> y[n]",
+        "x[n] -->(+)===========*--[b0>--->(+)---> y[n]",
         "         ^            v           ^",
         "         |         [z^-1]         |",
         "         | -          |           |",
-        "        (+)<---<a1]---*--[b1>--->(+)",
+        "        (+)<===<a1]===*--[b1>--->(+)",
         "         ^ -          v           ^",
         "         |         [z^-1]         |",
         "         |            |           |",
-        "         +-----<a2]---*--[b2>-----+",
+        "         +=====<a2]===*--[b2>-----+",
     ]
+
+
+def test_plain_text_of_a_line_whose_sum_runs_back() -> None:
+    drawing = plain(whole("direct-1", 8, 0)).splitlines()
+    assert drawing[0].startswith("x[n] -----------*->[z^-1]---*->")
+    assert drawing[4].startswith("y[n] <---------(+)<--------(+)<-")
 
 
 @pytest.mark.parametrize("name", DIRECT)
 def test_plain_text_is_ascii_and_shows_every_symbol(name: str) -> None:
     diagram = cascade(name, 2)
-    drawing = plain(diagram).rsplit("\n\n", 1)[0]
+    drawing = plain(diagram, values="none").rsplit("\n\n", 2)[0]
     assert drawing.isascii()
     assert drawing.count("z^-1") == sum(node.kind == "delay" for node in diagram.nodes)
     assert drawing.count("[Q]") == 1

@@ -4,7 +4,7 @@ from random import Random
 
 import diagram_examples as examples
 import pytest
-from drawing_reader import edges_of, expected_edges, faults_of, faults_of_joints, page_of
+from drawing_reader import edges_of, expected_edges, faults_of_figure, faults_of_joints, page_of
 from random_diagrams import random_diagram
 
 from streamhost.diagram import Builder, Diagram, minus
@@ -16,7 +16,7 @@ FEW, MANY = range(8), range(8, 200)
 
 def check_drawn(diagram: Diagram) -> None:
     text = svg(diagram)
-    assert faults_of(text, diagram) == []
+    assert faults_of_figure(text, diagram) == []
     assert [label.symbol.id for label in layout_of(diagram).labels if label.hit] == []
 
 

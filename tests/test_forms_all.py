@@ -4,7 +4,7 @@ import re
 
 import numpy as np
 import pytest
-from drawing_reader import faults_of, page_of
+from drawing_reader import faults_of_figure, page_of
 from form_filters import RATE, built, carried, filters
 from native_runs import busy, run_counting, run_native
 from scipy import signal
@@ -72,7 +72,7 @@ def test_the_drawing_is_the_diagram(name: str, how: str, which: str) -> None:
     places = diagram.hints.places_for(diagram.nodes)
     assert places is not None, "every node of a form has a place"
     text = svg(diagram)
-    assert faults_of(text, diagram) == []
+    assert faults_of_figure(text, diagram) == []
     assert [label.symbol.id for label in layout_of(diagram).labels if label.hit] == []
     assert page_of(text).scale >= LEAST_SCALE
 

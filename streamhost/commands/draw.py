@@ -21,11 +21,19 @@ SVG = ".svg"
 @click.argument("preset")
 @click.option("-o", "--output", "output", metavar="FILE.svg", default=None, help="Write the drawing as SVG instead.")
 @click.option("--rounded", is_flag=True, help="Mark with Q where the program rounds.")
+@click.option("--values", type=click.Choice(["table", "beside", "none"]), default="table", show_default=True,
+              help="Where the values of the coefficients stand; those beside the gains, in SVG only, need room there.")
+@click.option("--equation", "by_node", is_flag=True, help="Print one equation for each node, not one for each output.")
 @vary_option
 @structures_option
 @force_option
-def draw(preset: str, output: str | None, rounded: bool, variations: Sequence[str], force: bool) -> None:
-    """The block diagram of PRESET: as plain text, or with -o as SVG with the values of the coefficients."""
+def draw(
+    preset: str, output: str | None, rounded: bool, values: str, by_node: bool, variations: Sequence[str], force: bool
+) -> None:
+    """The block diagram of PRESET and its difference equation, of the coefficients before they are rounded.
+
+    As plain text, or with -o the diagram as SVG, which holds the equation where it fits on a line.
+    """
     from streamhost.presets.realizing import realize_preset
 
     check_output(output)
@@ -38,12 +46,16 @@ def draw(preset: str, output: str | None, rounded: bool, variations: Sequence[st
     if output is None:
         from streamhost.drawing import plain
 
-        click.echo(plain(diagram, rounded=marks))
+        click.echo(plain(diagram, rounded=marks, values=values))
+        click.echo()
+        click.echo(equations(diagram, by_node))
         return
     from streamhost.drawing import svg
     from streamhost.files import write_text_atomic
 
-    write_text_atomic(output, svg(diagram, rounded=marks), overwrite=force)
+    write_text_atomic(output, svg(diagram, rounded=marks, values=values), overwrite=force)
+    if by_node:
+        click.echo(equations(diagram, by_node))
 
 
 def check_output(output: str | None) -> None:
@@ -51,6 +63,19 @@ def check_output(output: str | None) -> None:
     if output is not None and PurePath(output).suffix.lower() != SVG:
         raise RequestError(f'The drawing is written as SVG, and "{output}" does not end in {SVG}. Other kinds of picture need '
                            f"a program that converts them; browsers and word processors take SVG as it is.")
+
+
+def equations(diagram: "Diagram", by_node: bool) -> str:
+    """One equation for each output or node; channels each have their own where their coefficients differ."""
+    from streamhost.diagram.equation import equation, node_equations
+
+    alike = bool((diagram.values == diagram.values[:, :1]).all())
+    blocks = []
+    for channel in range(1 if alike else diagram.channels):
+        text = node_equations(diagram, None, channel) if by_node else \
+            equation(diagram, None, channel, marked=len(diagram.outputs) > 1)
+        blocks.append(text if alike else f"# channel {channel + 1}\n{text}")
+    return "\n\n".join(blocks)
 
 
 def drawn_diagram(realization: "Realization") -> "Diagram":

@@ -159,6 +159,10 @@ class Builder:
         self._places[self._own(ref)] = Place(at, face, tuple(parts), small)
         return ref
 
+    def place_of(self, ref: Ref) -> Place | None:
+        """Where a node is drawn, if that was said."""
+        return self._places.get(self._own(ref))
+
     def trunk(self, source: Ref, *points: Point) -> None:
         """The wire out of a node runs straight from point to point before it branches."""
         self._trunks.append(Trunk(self._own(source), points))

@@ -95,13 +95,14 @@ class Diagram:
 
         return response_ends(self)
 
-    def svg(self, *, rounded: Collection[int] = ()) -> str:
+    def svg(self, *, rounded: Collection[int] = (), values: str = "table") -> str:
         """The block diagram as the text of an SVG file; `rounded`: the nodes that are marked as rounded.
 
+        `values`: those of the coefficients in a "table", "beside" the gains where they find room, or "none".
         DiagramError where the places that the diagram's maker gave leave no room for the wires.
         """
         # By name, since drawings are made of diagrams and not the other way round.
-        text: str = import_module("streamhost.drawing").svg(self, rounded=rounded)
+        text: str = import_module("streamhost.drawing").svg(self, rounded=rounded, values=values)
         return text
 
     def state_space(self, channel: int = 0) -> "StateSpace":

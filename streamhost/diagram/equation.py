@@ -30,8 +30,9 @@ Term = tuple[float, str, int]
 """A coefficient, a signal's name and its age."""
 
 
-def equation(diagram: Diagram, digits: int | None = None, channel: int = 0) -> str:
-    """y[n] = x terms by age, then y terms by age, wrapped; below each a comment that says whether it is recursive.
+def equation(diagram: Diagram, digits: int | None = None, channel: int = 0, *, width: int | None = WIDTH,
+             marked: bool = True) -> str:
+    """y[n] = x terms by age, then y terms by age, wrapped to a width; `marked`: below each whether it is recursive.
 
     One input is x and one output y; of several each has its label where all labels can be names, else x1, x2, y1, y2.
     Each coefficient is exact and then rounded once, but for loops too large for fractions, which a comment then says.
@@ -44,7 +45,8 @@ def equation(diagram: Diagram, digits: int | None = None, channel: int = 0) -> s
         now = [(c, x, age) for x, numerator in zip(inputs, numerators, strict=True) for age, c in enumerate(numerator)]
         past = [(-c, name, age) for age, c in enumerate(denominator) if age and c]
         terms = _texts([term for term in [*now, *past] if term[0]], digits)
-        lines = [_wrapped(f"{name}[n]", terms), _mark(name, bool(past), diagram.has_loop())]
+        lines = [_wrapped(f"{name}[n]", terms, width)]
+        lines += [_mark(name, bool(past), diagram.has_loop())] if marked else []
         blocks.append("\n".join(lines if exact else [*lines, IN_FLOAT64]))
     return "\n".join(blocks)
 
@@ -157,11 +159,11 @@ def _texts(terms: Sequence[Term], digits: int | None) -> list[str]:
     return texts
 
 
-def _wrapped(left: str, terms: Sequence[str]) -> str:
-    """left = terms, in lines of at most WIDTH unless one term is longer, what follows indented below the first term."""
+def _wrapped(left: str, terms: Sequence[str], width: int | None) -> str:
+    """left = terms, in lines of at most that width unless one term is longer, what follows indented below the first term."""
     lines, indent = [f"{left} ="], " " * (len(left) + 3)
     for term in terms or ["0"]:
-        if len(lines[-1]) + 1 + len(term) > WIDTH and lines[-1].strip() != f"{left} =":
+        if width is not None and len(lines[-1]) + 1 + len(term) > width and lines[-1].strip() != f"{left} =":
             lines.append(indent + term)
         else:
             lines[-1] += f" {term}"

@@ -17,11 +17,15 @@ Point = tuple[float, float]
 
 @dataclass(frozen=True)
 class Part:
-    """One adder of a sum that is drawn as a chain of adders: it takes the one before it and the next `terms` terms."""
+    """One adder of a sum that is drawn as a chain of adders: it takes the one before it and the next `terms` terms.
+
+    `way`: points that the wire to the next adder runs straight through, as those of a trunk.
+    """
 
     at: Point
     terms: int
     face: str = "E"
+    way: tuple[Point, ...] = ()
 
 
 @dataclass(frozen=True)
@@ -44,10 +48,14 @@ class Trunk:
 
 @dataclass(frozen=True)
 class General:
-    """One section that stands for all of a diagram too large for a page, and what is written under it."""
+    """One section that stands for all of a diagram, and what is written under it.
+
+    `always`: the diagram is too large for a page however it is drawn; else this is drawn only where it turns out so.
+    """
 
     diagram: "Diagram"
     caption: str
+    always: bool = True
 
 
 @dataclass(frozen=True)

@@ -1,60 +1,30 @@
-"""A diagram as a drawing: SVG in the manner of a textbook."""
+"""A diagram as a drawing: SVG in the manner of a textbook, and plain text."""
 
 from collections.abc import Collection
 
 from streamhost.diagram import Diagram
-from streamhost.drawing.layout import Layout, laid_out
-from streamhost.drawing.plain import LEGEND, plain_of
-from streamhost.drawing.ports import NoWayError
-from streamhost.drawing.sheet import Sheet, sheet_of
+from streamhost.drawing.figure import figure_of, layout_of, nature
+from streamhost.drawing.plain import plain_text
 from streamhost.drawing.svg import svg_of
-from streamhost.drawing.table import value_table
-from streamhost.errors import DiagramError
 
-__all__ = ["plain", "svg"]
-
-LOOSER = (1.0, 1.5, 2.25, 3.5)
-"""How much wider the gaps become each time that the wires found no room."""
+__all__ = ["layout_of", "nature", "plain", "svg"]
 
 
-def svg(diagram: Diagram, *, rounded: Collection[int] = (), values: bool = True) -> str:
+def svg(diagram: Diagram, *, rounded: Collection[int] = (), values: str = "table") -> str:
     """The block diagram as the text of an SVG file, black on white, at most 180 mm wide and 255 mm high.
 
-    `rounded`: the nodes whose value is rounded, which get an open square with Q. `values`: the table of coefficients.
-    A diagram too large for a page is drawn as one section that stands for all, with the values of all.
-    DiagramError where the places that its maker gave leave no room for the wires.
+    `rounded`: the nodes whose value is rounded, which get an open square with Q. `values`: those of the coefficients
+    in a "table" below, "beside" the gains, which becomes a table where they find no room, or "none".
+    A diagram too large for a page is drawn as one section that stands for all, with the values of all; a tapped line
+    that is not alone as a box, and written out below. Wires that are part of a loop are heavier.
+    DiagramError where the places that its maker gave leave no room for the wires, and for other `values`.
     """
-    general = diagram.hints.general
-    drawn = general.diagram if general is not None else diagram
-    table = value_table(diagram) if values else None
-    return svg_of(layout_of(drawn, rounded), table, "Block diagram", general.caption if general is not None else "")
+    return svg_of(figure_of(diagram, rounded, values, "the heavy lines"))
 
 
-def plain(diagram: Diagram, *, rounded: Collection[int] = ()) -> str:
-    """The block diagram in ASCII, for a terminal or a comment in source code; options and errors are those of `svg`."""
-    general = diagram.hints.general
-    drawing = plain_of(layout_of(general.diagram if general is not None else diagram, rounded))
-    return "\n\n".join([drawing, *([general.caption] if general is not None else []), LEGEND])
+def plain(diagram: Diagram, *, rounded: Collection[int] = (), values: str = "table") -> str:
+    """The block diagram in ASCII, for a terminal or a comment in source code; options and errors are those of `svg`.
 
-
-def layout_of(diagram: Diagram, rounded: Collection[int] = ()) -> Layout:
-    """The drawing before it is written down."""
-    sheet = sheet_of(diagram, rounded)
-    if diagram.hints.places_for(diagram.nodes) is None:
-        return without_places(sheet)
-    try:
-        return laid_out(sheet)
-    except NoWayError as error:
-        raise DiagramError(f"The places of this diagram's nodes leave {error}. Put them further apart.") from None
-
-
-def without_places(sheet: Sheet) -> Layout:
-    """A sheet that is placed here, looser until its wires find room."""
-    from streamhost.drawing.placer import placed
-
-    for looseness in LOOSER[:-1]:
-        try:
-            return laid_out(placed(sheet, looseness))
-        except NoWayError:
-            continue
-    return laid_out(placed(sheet, LOOSER[-1]))
+    Values are in a table, or none.
+    """
+    return plain_text(figure_of(diagram, rounded, "none" if values == "none" else "table", "the = wires"))

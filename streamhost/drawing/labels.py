@@ -1,4 +1,4 @@
-"""Where names stand: above a gain or beside it, at the first place where they touch nothing."""
+"""Where names and values stand: above a gain or beside it, at the first place where they touch nothing."""
 
 from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
@@ -9,10 +9,13 @@ from streamhost.drawing.ports import End
 from streamhost.drawing.router import Laid
 from streamhost.drawing.sheet import Sheet
 from streamhost.drawing.symbols import GRID, HEAD, MARK, MARK_GAP, STEP, Cell, Symbol
-from streamhost.drawing.text import SIZE, width
+from streamhost.drawing.text import SIZE, Label, width
 
 ASCENT, DESCENT = 0.76 * SIZE, 0.38 * SIZE
 """How far a line of text with a subscript reaches above and below its base line."""
+
+VALUE_SIZE = 9.0
+VALUE_ASCENT, VALUE_DESCENT = 0.76 * VALUE_SIZE, 0.24 * VALUE_SIZE
 
 OFF = 4.0
 SHIFTS = (0.0, 8.0, -8.0, 14.0, -14.0)
@@ -44,16 +47,21 @@ class Shape:
 
 @dataclass(frozen=True)
 class Labelled:
-    """The name of a symbol at its place; `hit`: it touches something all the same."""
+    """The name or the value of a symbol at its place; `hit`: it touches something all the same."""
 
     symbol: Symbol
     shape: Shape
     hit: bool
+    is_value: bool = False
+
+    @property
+    def text(self) -> Label:
+        return self.symbol.value if self.is_value else self.symbol.name
 
     @property
     def base(self) -> tuple[float, float]:
         """Where the text begins, on its base line."""
-        return self.shape.left, self.shape.top + ASCENT
+        return self.shape.left, self.shape.top + (VALUE_ASCENT if self.is_value else ASCENT)
 
 
 def candidates(symbol: Symbol) -> Iterator[Shape]:
@@ -77,6 +85,22 @@ def candidates(symbol: Symbol) -> Iterator[Shape]:
             yield Shape(side.left + dx, side.top + dy, side.right + dx, side.bottom + dy)
 
 
+def value_candidates(symbol: Symbol) -> Iterator[Shape]:
+    """Places of a gain's value: below a level one, else above; on the lower right of an upright one, else left."""
+    x, y = symbol.at[0] * GRID, symbol.at[1] * GRID
+    wide, high = width(symbol.value, VALUE_SIZE), VALUE_ASCENT + VALUE_DESCENT
+    across, down = symbol.half
+    if symbol.face % 2 == 0:
+        tops = (y + down + 2, y - down - 2 - high)
+        for shift in SHIFTS:
+            yield from (Shape(x - wide / 2 + shift, top, x + wide / 2 + shift, top + high) for top in tops)
+        return
+    right, left, low = x + across + OFF, x - across - OFF, y + (ASCENT + DESCENT) / 2 + 2
+    yield Shape(right, low, right + wide, low + high)
+    yield Shape(left - wide, y - high / 2, left, y + high / 2)
+    yield Shape(right - across, low, right - across + wide, low + high)
+
+
 def first_choice(symbol: Symbol) -> Shape:
     return next(candidates(symbol))
 
@@ -89,16 +113,16 @@ def cells_of(shape: Shape) -> list[Cell]:
 
 
 def place_labels(symbols: Sequence[Symbol], obstacles: Sequence[Shape]) -> list[Labelled]:
-    """Every name at its first free place, or where it covers least."""
+    """Every name, then every value, at its first free place, or where it covers least."""
     there = list(obstacles)
     labels: list[Labelled] = []
-    for symbol in symbols:
-        if not symbol.name:
-            continue
-        shapes = list(candidates(symbol))
+    wanted = [(symbol, False, candidates(symbol)) for symbol in symbols if symbol.name]
+    wanted += [(symbol, True, value_candidates(symbol)) for symbol in symbols if symbol.value]
+    for symbol, is_value, places in wanted:
+        shapes = list(places)
         free = next((shape for shape in shapes if not any(map(shape.meets, there))), None)
         shape = free or min(shapes, key=lambda shape: sum(map(shape.overlap, there)))
-        labels.append(Labelled(symbol, shape, free is None))
+        labels.append(Labelled(symbol, shape, free is None, is_value))
         there.append(shape)
     return labels
 

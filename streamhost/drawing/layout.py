@@ -27,6 +27,11 @@ class Layout:
     sinks: tuple[End, ...]
     labels: tuple[Labelled, ...]
 
+    @property
+    def is_clear(self) -> bool:
+        """Whether every name and every value has a place where it touches nothing."""
+        return not any(label.hit for label in self.labels)
+
 
 def laid_out(sheet: Sheet) -> Layout:
     """Wires and labels for symbols that have their places. NoWayError where there is no room for a wire."""

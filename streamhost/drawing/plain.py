@@ -1,4 +1,4 @@
-"""A layout as plain text: for a terminal, and for a comment in source code.
+"""A figure as plain text: for a terminal, and for a comment in source code.
 
     x[n] --*--[b0>-->(+)--> y[n]      (+) adds, a - beside an arrow head subtracts; [b0> multiplies; * branches; + turns.
 """
@@ -6,13 +6,18 @@
 from collections.abc import Sequence
 from dataclasses import dataclass, field
 
+from streamhost.drawing.figure import Figure
 from streamhost.drawing.layout import Layout
 from streamhost.drawing.ports import End
 from streamhost.drawing.strokes import Line, bones_of
 from streamhost.drawing.symbols import EAST, GRID, STEP, WEST, WITH_HEADS, Symbol
+from streamhost.drawing.table import Table
 from streamhost.drawing.text import plain
 
 HEADS = ">v<^"
+ONCE, LOOPED, UPRIGHT = "-", "=", "|"
+"""What wires are made of; level ones that are part of a loop are doubled."""
+
 DOWN, DOWN_WITH_MARKS = 2, 3
 """Lines from one row to the next."""
 
@@ -23,6 +28,24 @@ BARE = (1, 1)
 """What a bend, a dot or a crossing wants instead."""
 
 LEGEND = "(+) adds, a - beside an arrow head subtracts; [b0> and <a1] multiply; * branches, + turns, other wires only cross."
+
+
+def plain_text(figure: Figure) -> str:
+    """The figure without its equation, its parts one below another."""
+    parts = [plain_of(figure.layout)]
+    for detail in figure.details:
+        parts += [f"{plain(detail.title)}:", plain_of(detail.layout)]
+    parts += [*figure.notes, *([table_of(figure.table)] if figure.table is not None else []), LEGEND, figure.nature]
+    return "\n\n".join(parts)
+
+
+def table_of(table: Table) -> str:
+    """The values of the coefficients, each column set to the right."""
+    columns = [[plain(cell) for cell in column] for column in zip(table.heads, *table.rows, strict=True)]
+    widths = [max(map(len, column)) for column in columns]
+    lines = ["  ".join(cell.rjust(wide) for cell, wide in zip(row, widths, strict=True)).rstrip()
+             for row in zip(*columns, strict=True)]
+    return "\n".join(lines)
 
 
 @dataclass
@@ -37,15 +60,15 @@ class Paper:
         for offset, character in enumerate(text):
             self.characters[line, column + offset] = character
 
-    def rule(self, line: Line) -> None:
+    def rule(self, line: Line, stroke: str) -> None:
         """A wire between two places, without its ends."""
         x0, y0, x1, y1 = (round(value / GRID) for value in (line.x0, line.y0, line.x1, line.y1))
         if line.is_level:
             for column in range(self.columns[x0] + 1, self.columns[x1]):
-                self.characters.setdefault((self.lines[y0], column), "-")
+                self.characters.setdefault((self.lines[y0], column), stroke)
         else:
             for row in range(self.lines[y0] + 1, self.lines[y1]):
-                self.characters[row, self.columns[x0]] = "|"
+                self.characters[row, self.columns[x0]] = stroke
 
     def text(self) -> str:
         low = min(column for _, column in self.characters)
@@ -63,10 +86,13 @@ def written(row: dict[int, str]) -> str:
 def plain_of(layout: Layout) -> str:
     """The drawing as lines of ASCII."""
     bones = {source: bones_of(layout, source) for source in layout.nets}
-    lines = [line for net in bones.values() for line in net]
+    lines = [line for net in bones.values() for line in net.all]
     paper = Paper(rows_of(layout, lines), columns_of(layout, lines))
-    for line in sorted(lines, key=lambda line: not line.is_level):
-        paper.rule(line)
+    for net in bones.values():
+        for line in (line for line in net.all if line.is_level):
+            paper.rule(line, LOOPED if line in net.looped else ONCE)
+    for line in (line for line in lines if not line.is_level):
+        paper.rule(line, UPRIGHT)
     for source in bones:
         put_knots(paper, layout, source)
     for symbol in layout.sheet.symbols:
@@ -106,8 +132,13 @@ def sides_of(symbol: Symbol) -> tuple[int, int]:
     """Characters that a symbol wants to its left and right: its own and those of a wire."""
     wide = len(token(symbol))
     if symbol.kind in ("input", "output"):
-        return (wide, WIRE) if symbol.kind == "input" else (WIRE, wide)
+        return (wide, WIRE) if is_named_left(symbol) else (WIRE, wide)
     return wide // 2 + WIRE, wide - wide // 2 + WIRE + symbol.marked
+
+
+def is_named_left(symbol: Symbol) -> bool:
+    """Whether the name of an input or output stands left of its place: behind the input, in front of the output."""
+    return (symbol.kind == "input") == (symbol.face != WEST)
 
 
 def token(symbol: Symbol) -> str:
@@ -130,10 +161,8 @@ def put_symbol(paper: Paper, symbol: Symbol) -> None:
         ports = [y for y in paper.lines if abs(y - symbol.at[1]) < symbol.inputs]
         for row in range(paper.lines[min(ports)], paper.lines[max(ports)] + 1):
             paper.put(row, column, "|")
-    if symbol.kind == "input":
-        text += " "
-    if symbol.kind == "output":
-        text, left = f" {text}", left - 1
+    if symbol.kind in ("input", "output"):
+        text, left = (f"{text} ", left) if is_named_left(symbol) else (f" {text}", left - 1)
     paper.put(line, left, text)
     if symbol.marked:
         dx, dy = STEP[symbol.face]
@@ -141,9 +170,11 @@ def put_symbol(paper: Paper, symbol: Symbol) -> None:
 
 
 def left_of(paper: Paper, symbol: Symbol) -> int:
-    """The first column of a symbol's token: inputs end at their place, outputs begin there."""
+    """The first column of a symbol's token: names of inputs and outputs stand beside their place."""
     column, wide = paper.columns[symbol.at[0]], len(token(symbol))
-    return {"input": column - wide, "output": column + 1}.get(symbol.kind, column - wide // 2)
+    if symbol.kind in ("input", "output"):
+        return column - wide if is_named_left(symbol) else column + 1
+    return column - wide // 2
 
 
 def place_of(paper: Paper, symbol: Symbol) -> tuple[int, int]:
@@ -166,7 +197,7 @@ def put_head(paper: Paper, symbol: Symbol, end: End, sign: int) -> None:
     left = column if end.root != symbol.at else left_of(paper, symbol)
     wide = 1 if end.root != symbol.at else len(token(symbol))
     if symbol.kind == "output":
-        left -= 1
+        left, wide = (left, wide + 1) if is_named_left(symbol) else (left - 1, wide)
     column = left - 1 if dx > 0 else left + wide if dx < 0 else column
     paper.put(line - dy, column, HEADS[end.direction])
     if sign < 0:

@@ -123,7 +123,9 @@ class Router:
             tree[sink.cell] |= 1 << sink.direction
             ends[sink.cell] = sink
             cost += way.cost
-        return Laid(pruned(tree), cost)
+        stubs = {end.cell: 1 << end.direction for end in ends.values()}
+        stubs[net.source.cell] = stubs.get(net.source.cell, 0) | 1 << (net.source.direction ^ 2)
+        return Laid(pruned(tree, stubs), cost)
 
 
 def nearest_first(net: Net) -> list[End]:
@@ -146,8 +148,8 @@ def straight_cells(here: Cell, there: Cell) -> list[Cell]:
     return [(here[0] + dx * k // max(length, 1), here[1] + dy * k // max(length, 1)) for k in range(length + 1)]
 
 
-def pruned(tree: Arms) -> Arms:
-    """The tree without ends that lead nowhere: those of a trunk that nothing joined."""
+def pruned(tree: Arms, stubs: Arms) -> Arms:
+    """The tree without ends that lead nowhere, which are those of a trunk that nothing joined; arms into stubs stay."""
     arms = dict(tree)
     loose = [cell for cell, mask in arms.items() if mask.bit_count() == 1]
     while loose:
@@ -155,7 +157,7 @@ def pruned(tree: Arms) -> Arms:
         direction = arms.pop(cell).bit_length() - 1
         neighbour = cell[0] + STEP[direction][0], cell[1] + STEP[direction][1]
         if neighbour in arms:
-            arms[neighbour] &= ~(1 << (direction ^ 2))
+            arms[neighbour] &= ~(1 << (direction ^ 2)) | stubs.get(neighbour, 0)
             if arms[neighbour].bit_count() == 1:
                 loose.append(neighbour)
     return arms

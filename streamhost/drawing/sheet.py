@@ -1,12 +1,13 @@
 """What is drawn: symbols and the wires between them, made of a diagram's nodes."""
 
 import re
-from collections.abc import Collection, Mapping
+from collections.abc import Collection, Mapping, Sequence
 from dataclasses import dataclass, field
 from functools import cached_property
 
 from streamhost.diagram import Delay, Diagram, Gain, Input, Node, Output, Residue, Round, Shift, Sum, Taps
-from streamhost.diagram.hints import Part, Place, Point
+from streamhost.diagram.graph import loops
+from streamhost.diagram.hints import Part, Place, Point, Trunk
 from streamhost.drawing import text
 from streamhost.drawing.symbols import (
     COLUMN,
@@ -47,6 +48,16 @@ class Sheet:
     trunks: Mapping[int, tuple[Cell, ...]]
 
     @cached_property
+    def looped(self) -> frozenset[int]:
+        """The wires that are part of a loop."""
+        after: list[list[int]] = [[] for _ in self.symbols]
+        for wire in self.wires:
+            after[wire.source].append(wire.sink)
+        loop_of = {symbol: number for number, loop in enumerate(loops(after)) for symbol in loop}
+        return frozenset(index for index, wire in enumerate(self.wires)
+                         if wire.source in loop_of and loop_of[wire.source] == loop_of.get(wire.sink))
+
+    @cached_property
     def sinks(self) -> dict[int, list[int]]:
         """The wires of each net, by its source."""
         found: dict[int, list[int]] = {}
@@ -62,7 +73,8 @@ class Pen:
     diagram: Diagram
     places: Mapping[int, Place]
     marked: Collection[int]
-    stretch: float
+    stretch: tuple[float, float]
+    values: bool
     symbols: list[Symbol] = field(default_factory=list)
     ends: dict[int, int] = field(default_factory=dict)
 
@@ -72,7 +84,7 @@ class Pen:
         if isinstance(node, Sum):
             self.draw_sum(index, node, place, marked)
         else:
-            looks = looks_of(self.diagram, node, place.small)
+            looks = looks_of(self.diagram, node, place.small, self.values)
             self.put(looks.symbol(index, self.cell(place.at), place.face, marked))
         self.ends[index] = len(self.symbols) - 1
 
@@ -90,7 +102,7 @@ class Pen:
         self.symbols.append(symbol)
 
     def cell(self, point: Point) -> Cell:
-        return round(point[0] * COLUMN), round(point[1] * COLUMN * self.stretch)
+        return round(point[0] * COLUMN * self.stretch[0]), round(point[1] * COLUMN * self.stretch[1])
 
     def wires(self) -> list[Wire]:
         found: list[Wire] = []
@@ -99,6 +111,17 @@ class Pen:
                 found += self.sum_wires(index, node)
             else:
                 found += [Wire(self.ends[source], self.ends[index]) for source in node.reads]
+        return found
+
+    def trunks(self, said: Sequence[Trunk]) -> dict[int, tuple[Cell, ...]]:
+        found: dict[int, tuple[Cell, ...]] = {}
+        for trunk in said:
+            source = self.ends[trunk.source]
+            found[source] = found.get(source, ()) + tuple(map(self.cell, trunk.points))
+        for index, place in self.places.items():
+            first = self.ends[index] - len(place.parts) + 1
+            found.update((first + number, tuple(map(self.cell, part.way)))
+                         for number, part in enumerate(place.parts) if part.way)
         return found
 
     def sum_wires(self, index: int, node: Sum) -> list[Wire]:
@@ -122,21 +145,25 @@ class Looks:
     half: tuple[float, float]
     text: Label = ()
     name: Label = ()
+    value: Label = ()
     inputs: int = 1
 
     def symbol(self, node: int, at: Cell, face: str, marked: bool, part: int = 0) -> Symbol:
-        return Symbol(self.kind, node, part, at, SIDES.index(face), self.half, self.text, self.name, self.inputs, marked)
+        return Symbol(self.kind, node, part, at, SIDES.index(face), self.half, self.text, self.name, self.value, self.inputs,
+                      marked)
 
 
-def looks_of(diagram: Diagram, node: Node, small: bool) -> Looks:
-    """The looks of every node but a sum."""
+def looks_of(diagram: Diagram, node: Node, small: bool, values: bool) -> Looks:
+    """The looks of every node but a sum; `values`: a gain with its value (that of the first channel)."""
     match node:
         case Input():
             return Looks("input", (TERMINAL, TERMINAL), name=text.signal(node.label), inputs=0)
         case Output():
             return Looks("output", (TERMINAL, TERMINAL), name=text.signal(node.label))
         case Gain():
-            return Looks("gain", (TRIANGLE, TRIANGLE), name=text.coefficient(diagram.slots[node.coefficient].label))
+            value = text.short_number(float(diagram.values[node.coefficient, 0])) if values else ()
+            return Looks("gain", (TRIANGLE, TRIANGLE), name=text.coefficient(diagram.slots[node.coefficient].label),
+                         value=value)
         case Shift():
             return Looks("gain", (TRIANGLE, TRIANGLE), name=text.power_of_two(node.k))
         case Round():
@@ -144,29 +171,33 @@ def looks_of(diagram: Diagram, node: Node, small: bool) -> Looks:
         case Delay():
             return boxed("delay", text.delay(node.n))
         case Taps():
-            first = diagram.slots[node.coefficients[0]].label if node.coefficients else node.label
-            return boxed("taps", text.tap_names(re.sub(r"\d+$", "", first), node.length))
+            return boxed("taps", taps_text(diagram, node))
         case Residue():
             return boxed("residue", (text.Run("e", italic=True),))
     raise AssertionError(f"no looks for a {node.kind}")
+
+
+def taps_text(diagram: Diagram, node: Taps) -> Label:
+    """What stands in the box of a tapped line: its first and its last tap."""
+    first = diagram.slots[node.coefficients[0]].label if node.coefficients else node.label
+    return text.tap_names(re.sub(r"\d+$", "", first), node.length)
 
 
 def boxed(kind: str, label: Label) -> Looks:
     return Looks(kind, box(label), text=label)
 
 
-def sheet_of(diagram: Diagram, marked: Collection[int] = ()) -> Sheet:
-    """The drawing's symbols and wires; at their places if the diagram's maker said them, else all at one."""
+def sheet_of(diagram: Diagram, marked: Collection[int] = (), *, values: bool = False, wider: float = 1.0) -> Sheet:
+    """The drawing's symbols and wires; at their places if the diagram's maker said them, else all at one.
+
+    `values`: the gains have theirs beside them. `wider`: columns so much further apart.
+    """
     places = diagram.hints.places_for(diagram.nodes)
     marked = {index for index in marked if not is_rounded_next(diagram, index)}
-    pen = Pen(diagram, places or {}, marked, stretch(places, marked))
+    pen = Pen(diagram, places or {}, marked, (wider, stretch(places, marked)), values)
     for index in range(len(diagram.nodes)):
         pen.draw(index)
-    trunks: dict[int, tuple[Cell, ...]] = {}
-    for trunk in diagram.hints.trunks if places else ():
-        source = pen.ends[trunk.source]
-        trunks[source] = trunks.get(source, ()) + tuple(map(pen.cell, trunk.points))
-    return Sheet(tuple(pen.symbols), tuple(pen.wires()), trunks)
+    return Sheet(tuple(pen.symbols), tuple(pen.wires()), pen.trunks(diagram.hints.trunks if places else ()))
 
 
 def is_rounded_next(diagram: Diagram, index: int) -> bool:

@@ -1,4 +1,4 @@
-"""A layout as SVG text: groups of wires, dots, heads, symbols, signs and names, and the table of values under them.
+"""A figure as SVG text: groups of wires, dots, heads, symbols, signs and names; captions and the table under them.
 
 Text stays text. The stroke widths and fonts are attributes of groups, so that several drawings in one page do not meet.
 """
@@ -7,7 +7,8 @@ from collections.abc import Iterator, Sequence
 from xml.sax.saxutils import escape, quoteattr
 
 from streamhost.drawing import text
-from streamhost.drawing.labels import Shape, body, mark_shape, minus_shape
+from streamhost.drawing.figure import MM, PAGE, PAGE_HEIGHT, TABLE_ROW, Figure
+from streamhost.drawing.labels import VALUE_SIZE, Shape, body, mark_shape, minus_shape
 from streamhost.drawing.layout import Layout
 from streamhost.drawing.strokes import Head, Line, dots_of, heads_of, lines_of
 from streamhost.drawing.symbols import DOT, GRID, HEAD, RADIUS, STEP, TERMINAL, TRIANGLE, Symbol
@@ -15,36 +16,70 @@ from streamhost.drawing.table import Table
 
 FONT = "'STIX Two Text','Latin Modern Roman','Times New Roman','DejaVu Serif',serif"
 SANS = "'Helvetica','Arial','DejaVu Sans',sans-serif"
-MM = 25.4 / 96
-PAGE, PAGE_HEIGHT = 180.0, 255.0
-"""Width and height of a page's text in mm: a larger drawing is scaled down to them."""
-
 BORDER = 8.0
 PLUS = 5.0
-TABLE_SIZE, TABLE_ROW, TABLE_GAP, TABLE_OFF = 11.0, 16.0, 18.0, 26.0
+TABLE_SIZE, TABLE_GAP, TABLE_OFF = 11.0, 18.0, 26.0
+CAPTION_SIZE, CAPTION_ROW, CAPTION_OFF, DETAIL_OFF, DRAWING_OFF = 11.0, 17.0, 24.0, 40.0, 18.0
+VALUE_INK = "#444"
+LIGHT, HEAVY = 1.2, 2.2
+"""Widths of wires; heavy ones are part of a loop."""
+
 Q_SIZE = 9.0
 DROP, RISE = 0.26, 0.38
 """How far subscripts and superscripts are off the base line, in units of the size."""
 
 
-def svg_of(layout: Layout, table: Table | None, title: str, caption: str = "") -> str:
-    """The drawing as the text of an SVG file."""
-    box = bounds(layout)
-    below = box.bottom + TABLE_OFF
-    pieces = list(drawing(layout))
-    if caption:
-        words = text.sentence(caption)
-        written = label(words, box.left, below, size=TABLE_SIZE)
-        pieces += [f'<g data-part="caption" font-size="{num(TABLE_SIZE)}">', written, "</g>"]
-        box = Shape(box.left, box.top, max(box.right, box.left + text.width(words, TABLE_SIZE)), below + 4)
-        below += TABLE_OFF
-    if table is not None:
-        widths = column_widths(table)
-        wide = sum(widths) + TABLE_GAP * (len(widths) - 1)
-        left = max(box.left, (box.left + box.right - wide) / 2)
-        pieces += table_pieces(table, widths, left, below)
-        box = Shape(box.left, box.top, max(box.right, left + wide), below + TABLE_ROW * (len(table.rows) + 0.5))
-    return framed(box.grown(BORDER), pieces, title)
+def svg_of(figure: Figure) -> str:
+    """The figure as the text of an SVG file: its parts one below another, centred under the drawing."""
+    box = bounds(figure.layout)
+    pieces = list(drawing(figure.layout))
+    for detail in figure.details:
+        more, box = caption_below(box, detail.title, DETAIL_OFF)
+        pieces += more
+        more, box = drawing_below(box, detail.layout)
+        pieces += more
+    for number, words in enumerate(captions_of(figure, box)):
+        more, box = caption_below(box, words, CAPTION_ROW if number else CAPTION_OFF)
+        pieces += more
+    if figure.table is not None:
+        more, box = table_below(box, figure.table)
+        pieces += more
+    return framed(box.grown(BORDER), pieces, figure.title)
+
+
+def captions_of(figure: Figure, box: Shape) -> Iterator[text.Label]:
+    """The lines below the drawing; the equation if it fits a page, or is no wider than the drawing."""
+    yield from map(text.sentence, figure.notes)
+    if figure.equation:
+        words = text.equation(figure.equation)
+        if text.width(words, CAPTION_SIZE) <= max(box.right - box.left, PAGE / MM - 2 * BORDER):
+            yield words
+    yield text.sentence(figure.nature)
+
+
+def caption_below(box: Shape, words: text.Label, off: float) -> tuple[list[str], Shape]:
+    """A line of text below all there is, and the box that holds that too."""
+    middle, base, wide = (box.left + box.right) / 2, box.bottom + off, text.width(words, CAPTION_SIZE)
+    written = label(words, middle, base, "middle", CAPTION_SIZE)
+    shape = Shape(min(box.left, middle - wide / 2), box.top, max(box.right, middle + wide / 2), base + CAPTION_SIZE * DROP)
+    return [f'<g data-part="caption" font-size="{num(CAPTION_SIZE)}">', written, "</g>"], shape
+
+
+def drawing_below(box: Shape, layout: Layout) -> tuple[list[str], Shape]:
+    """The same of a drawing that explains a symbol."""
+    own = bounds(layout)
+    across = round((box.left + box.right - own.left - own.right) / 2)
+    down = round(box.bottom + DRAWING_OFF - own.top)
+    pieces = [f'<g data-part="detail" transform="translate({across} {down})">', *drawing(layout), "</g>"]
+    return pieces, Shape(min(box.left, own.left + across), box.top, max(box.right, own.right + across), own.bottom + down)
+
+
+def table_below(box: Shape, table: Table) -> tuple[list[str], Shape]:
+    widths = column_widths(table)
+    wide = sum(widths) + TABLE_GAP * (len(widths) - 1)
+    left, top = (box.left + box.right - wide) / 2, box.bottom + TABLE_OFF
+    shape = Shape(min(box.left, left), box.top, max(box.right, left + wide), top + TABLE_ROW * (len(table.rows) + 0.5))
+    return list(table_pieces(table, widths, left, top)), shape
 
 
 def framed(box: Shape, pieces: Sequence[str], title: str) -> str:
@@ -63,9 +98,10 @@ def framed(box: Shape, pieces: Sequence[str], title: str) -> str:
 
 def drawing(layout: Layout) -> Iterator[str]:
     symbols = layout.sheet.symbols
-    yield '<g data-part="wires" fill="none" stroke="#000" stroke-width="1.2" stroke-linecap="square">'
-    yield from (path(lines_of(layout, source)) for source in layout.nets)
-    yield '</g>\n<g data-part="dots">'
+    strokes = [lines_of(layout, source) for source in layout.nets]
+    yield from wires("wires", LIGHT, [net.once for net in strokes])
+    yield from wires("loops", HEAVY, [net.looped for net in strokes])
+    yield '<g data-part="dots">'
     for source in layout.nets:
         yield from (f'<circle cx="{num(x)}" cy="{num(y)}" r="{DOT}"/>' for x, y in dots_of(layout, source))
     yield '</g>\n<g data-part="heads">'
@@ -83,6 +119,12 @@ def drawing(layout: Layout) -> Iterator[str]:
             yield f'<path d="M{num(dash.left)} {num(dash.top)}H{num(dash.right)}"/>'
     yield f'</g>\n<g data-part="names" font-size="{num(text.SIZE)}">'
     yield from names(layout)
+    yield "</g>"
+
+
+def wires(part: str, width: float, nets: Sequence[Sequence[Line]]) -> Iterator[str]:
+    yield f'<g data-part="{part}" fill="none" stroke="#000" stroke-width="{width}" stroke-linecap="square">'
+    yield from (path(lines) for lines in nets if lines)
     yield "</g>"
 
 
@@ -139,7 +181,8 @@ def names(layout: Layout) -> Iterator[str]:
         centre = placed.symbol.at[0] * GRID
         anchor = "middle" if left < centre < placed.shape.right else "start" if left >= centre else "end"
         across = {"start": left, "end": placed.shape.right, "middle": (left + placed.shape.right) / 2}
-        yield label(placed.symbol.name, across[anchor], base, anchor)
+        size, ink = (VALUE_SIZE, VALUE_INK) if placed.is_value else (text.SIZE, "")
+        yield label(placed.text, across[anchor], base, anchor, size, ink)
 
 
 def letter_q(x: float, y: float) -> str:
@@ -147,7 +190,7 @@ def letter_q(x: float, y: float) -> str:
             f'font-size="{num(Q_SIZE)}" font-weight="bold">Q</text>')
 
 
-def label(runs: text.Label, x: float, y: float, anchor: str = "start", size: float = text.SIZE) -> str:
+def label(runs: text.Label, x: float, y: float, anchor: str = "start", size: float = text.SIZE, ink: str = "") -> str:
     pieces, height = [], 0.0
     for run in runs:
         wanted = {0: 0.0, -1: DROP, 1: -RISE}[run.level] * size
@@ -157,6 +200,7 @@ def label(runs: text.Label, x: float, y: float, anchor: str = "start", size: flo
         pieces.append(f"<tspan{style}>{escape(run.text)}</tspan>" if style else escape(run.text))
         height = wanted
     where = "" if anchor == "start" else f' text-anchor="{anchor}"'
+    where += f' font-size="{num(size)}" fill="{ink}"' if ink else ""
     return f'<text x="{num(x)}" y="{num(y)}"{where}>{"".join(pieces)}</text>'
 
 
@@ -180,15 +224,16 @@ def table_pieces(table: Table, widths: Sequence[float], left: float, top: float)
                 for head, right in zip(table.heads, rights, strict=True))
     for number, row in enumerate(table.rows):
         base = first + TABLE_ROW * (number + 2.1)
-        yield from (label(cell, right, base, "end", TABLE_SIZE) for cell, right in zip(row, rights, strict=True))
+        yield from (label(cell, right, base, "end", TABLE_SIZE) for cell, right in zip(row, rights, strict=True) if cell)
     yield "</g>"
 
 
 def bounds(layout: Layout) -> Shape:
     """The box around all that is drawn."""
     shapes = [body(symbol) for symbol in layout.sheet.symbols] + [placed.shape for placed in layout.labels]
+    shapes += [mark_shape(symbol) for symbol in layout.sheet.symbols if symbol.marked]
     for source in layout.nets:
-        shapes += [Shape(line.x0, line.y0, line.x1, line.y1) for line in lines_of(layout, source)]
+        shapes += [Shape(line.x0, line.y0, line.x1, line.y1) for line in lines_of(layout, source).all]
     left, top = min(shape.left for shape in shapes), min(shape.top for shape in shapes)
     return Shape(left, top, max(shape.right for shape in shapes), max(shape.bottom for shape in shapes))
 

@@ -37,8 +37,8 @@ WITH_HEADS = frozenset({"sum", "pill", "delay", "output", "round", "residue", "t
 class Symbol:
     """A drawn node, or one adder of a sum that is drawn as several.
 
-    `text` stands in the symbol, `name` beside it; `half` is half its width and height; `marked`: rounded, so that an
-    open square with Q stands on the wire that leaves it.
+    `text` stands in the symbol, `name` and `value` beside it; `half` is half its width and height; `marked`: rounded,
+    so that an open square with Q stands on the wire that leaves it.
     """
 
     kind: str
@@ -49,6 +49,7 @@ class Symbol:
     half: tuple[float, float] = (0.0, 0.0)
     text: Label = ()
     name: Label = ()
+    value: Label = ()
     inputs: int = 1
     marked: bool = False
 

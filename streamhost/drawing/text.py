@@ -10,6 +10,7 @@ SIZE = 13.0
 SMALL = 0.72
 MINUS = "\N{MINUS SIGN}"
 DOTS = "\N{HORIZONTAL ELLIPSIS}"
+SHORT = 8
 
 # Advance widths in thousandths of the size, characters 32 to 126, rounded up to the wider of upright and italic.
 ASCII = (
@@ -85,11 +86,23 @@ def lowered(subscript: str) -> Label:
 
 
 def sentence(words: str) -> Label:
-    """A sentence in which x_i is x with i lowered."""
+    """A sentence in which x_i is x with i lowered, and letters that stand for something are in italics."""
     runs: list[Run] = []
-    for piece in re.split(r"\b([a-z]_[\w+]+)", words):
+    for piece in re.split(r"\b([a-z]_[\w+]+|[ikNxy]\b)", words):
         name, _, below = piece.partition("_")
-        runs += [Run(name, italic=True), *lowered(below)] if below else [Run(piece)] if piece else []
+        runs += [Run(name, italic=len(name) == 1 and name.isalpha()), *lowered(below)] if piece else []
+    return tuple(runs)
+
+
+def equation(words: str) -> Label:
+    """A difference equation on one line, in which x[n-1] is x in italics, [n-1] with a real minus."""
+    runs: list[Run] = []
+    for piece in re.split(r"([A-Za-z]\w*\[n[^\]]*\])", words):
+        name, bracket, age = piece.partition("[n")
+        if bracket:
+            runs += [*coefficient(name), Run("["), Run("n", italic=True), Run(age.replace("-", MINUS))]
+        elif piece:
+            runs.append(Run(piece.replace("-", MINUS)))
     return tuple(runs)
 
 
@@ -105,6 +118,15 @@ def delay(frames: int) -> Label:
 
 def power_of_two(k: int) -> Label:
     return Run("2"), Run(str(k).replace("-", MINUS), level=1)
+
+
+def short_number(value: float) -> Label:
+    """A number in at most SHORT characters, with as many digits as fit; none where three do not."""
+    for digits in (5, 4, 3):
+        written = f"{value:.{digits}g}"
+        if len(written) <= SHORT:
+            return (Run(written.replace("-", MINUS)),)
+    return ()
 
 
 def tap_names(name: str, taps: int) -> Label:

@@ -1,11 +1,12 @@
 """What a form is, and the pen that every form draws its sections with."""
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import Literal
 
 from streamhost.diagram.builder import Builder, Ref, Signed, minus
 from streamhost.diagram.hints import Part, Point
+from streamhost.diagram.tapped import GAIN_DOWN, MOST_TAPS, SUM_DOWN, Rows, chain, line_rows, summed_rows
 from streamhost.filters import Polynomials
 from streamhost.structures.division import Ratio, ratio_of
 
@@ -15,14 +16,24 @@ LONG = 64
 """Taps beyond which a line without recursion is drawn as one node rather than as delays, gains and a sum."""
 
 
+UPRIGHT = 8
+"""Taps up to which a line without recursion is drawn downwards, as every other section is."""
+
+
+def can_lie(section: Polynomials) -> bool:
+    """Whether a section is a line without recursion whose taps, alone on a page, are drawn side by side, row under row."""
+    return len(section.a) == 1 and UPRIGHT < len(section.b) <= MOST_TAPS
+
+
 @dataclass(frozen=True)
 class Draft:
     """A section being drawn: its polynomials, its index, and what its labels end with where there are several.
 
     `origin` is where its first column and row are on the page; places are said from there. `numbers` are written for
     the numbers of the coefficients in a section that stands for a longer one. `ratio` is the section in exact numbers,
-    for forms whose coefficients are computed from it. `offered` collects further outputs by name. Nodes are drawn `at` a
-    column and a row of the section; where a form leaves places out, the drawing finds all of them.
+    for forms whose coefficients are computed from it. `alone`: nothing else is drawn. `offered` collects further outputs
+    by name. Nodes are drawn `at` a column and a row of the section; where a form leaves places out, the drawing finds all
+    of them.
     """
 
     builder: Builder
@@ -32,6 +43,7 @@ class Draft:
     origin: Point = (0.0, 0.0)
     numbers: tuple[str, ...] = ()
     exact: Ratio | None = None
+    alone: bool = False
     offered: dict[str, Ref] = field(default_factory=dict)
 
     @property
@@ -70,10 +82,15 @@ class Draft:
         delays = [self.builder.delay(f"{name}{k}{self.suffix}") for k in range(1, length + 1)]
         return tuple(self._placed(delay, (column, (k + 0.5) * pitch), "N") for k, delay in enumerate(delays))
 
-    def b(self, k: int, source: Ref, *, at: Point | None = None) -> Ref:
+    def b(self, k: int, source: Ref, *, at: Point | None = None, face: str = "E") -> Ref:
         """The product b_k source."""
         label = self._named("b", k)
-        return self._placed(self.builder.gain(source, label, self.section.b[k], section=self.index, part="b"), at)
+        return self._placed(self.builder.gain(source, label, self.section.b[k], section=self.index, part="b"), at, face)
+
+    @property
+    def lies(self) -> bool:
+        """Whether the section is drawn side by side, row under row."""
+        return self.alone and can_lie(self.section)
 
     @property
     def is_long_line(self) -> bool:
@@ -84,6 +101,47 @@ class Draft:
         """All b_k x[n-k] as one node, added from the last delay up as the gains of a short line are."""
         taps = self.builder.taps(x, "b", self.section.b, last_first=True, section=self.index, part="b")
         return self._placed(taps, (1.5, 0.0))
+
+    def line_in_rows(self, name: str, x: Ref) -> Ref:
+        """The sum of all b_k x[n-k], its taps side by side, added from the last delay up: the sum runs back to the left."""
+        length = len(self.section.b)
+        rows, taps = line_rows(length), [x]
+        for k in range(1, length):
+            self.lead_on(rows, taps[-1], k, 0, 0.0)
+            delay = self.builder.delay(f"{name}{k}{self.suffix}", taps[-1])
+            taps.append(self._placed(delay, rows.at(k, 0.0, -rows.pitch / 2)))
+        order = list(reversed(range(length)))
+        products = [self.b(k, taps[k], at=rows.at(k, GAIN_DOWN), face="S") for k in order]
+        parts = [replace(part, at=self._on_page(part.at), way=tuple(map(self._on_page, part.way)))
+                 for part in chain(rows, order, 1, SUM_DOWN)]
+        return self._summed("y", products, parts)
+
+    def sums_in_rows(self, delay: str, name: str, x: Ref) -> Ref:
+        """The same with x over all gains and the delays between sums, the last tap first: the sum runs to the right."""
+        last = len(self.section.b) - 1
+        rows = summed_rows(last + 1)
+        delays = [self.builder.delay(f"{delay}{k}{self.suffix}") for k in range(1, last + 1)]
+        for k, ref in enumerate(delays, 1):
+            self._placed(ref, rows.at(last + 1 - k, SUM_DOWN, 0.875 - rows.pitch))
+        for tap in range(rows.a_row, last + 1, rows.a_row):
+            self.lead_on(rows, x, tap, 0, 0.0)
+        self.trunk(x, rows.at(last))
+        result: Ref | None = None
+        for k in range(last + 1):
+            tap = last - k
+            terms = [self.b(k, x, at=rows.at(tap, GAIN_DOWN), face="S"), *delays[k : k + 1]]
+            s = self.add(f"{name}{k}" if k else "y", terms, at=rows.at(tap, SUM_DOWN))
+            result = result or s
+            self.lead_on(rows, s, tap + 1, 1, SUM_DOWN)
+            if k:
+                delays[k - 1].takes(s)
+        assert result is not None, "a section has a coefficient"
+        return result
+
+    def lead_on(self, rows: Rows, source: Ref, tap: int, lane: int, down: float) -> None:
+        """The wire out of a node goes on in the row of a tap, if that begins one."""
+        if rows.begins_a_row(tap) and tap < len(self.section.b):
+            self.trunk(source, *rows.way(tap, lane, down))
 
     def a(self, k: int, source: Ref, *, at: Point | None = None) -> Signed:
         """The product a_k source, to be subtracted."""

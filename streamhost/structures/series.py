@@ -5,17 +5,21 @@ from dataclasses import replace
 
 from streamhost.diagram import Builder, Diagram, Ref
 from streamhost.diagram.hints import General
+from streamhost.diagram.tapped import LEAD
 from streamhost.filters import Polynomials
 from streamhost.structures.branches import Branches
 from streamhost.structures.division import Division, Part, Parts
-from streamhost.structures.form import Draft, Form, delays_down
-from streamhost.structures.tiles import BUS, FRONT, GUTTER, LEAD, ROOM, Tiles, begins_with_symbol
+from streamhost.structures.form import Draft, Form, can_lie, delays_down
+from streamhost.structures.tiles import BUS, FRONT, GUTTER, ROOM, Tiles, begins_with_symbol
 
 MOST_DRAWN = 8
 """Sections beyond which one that stands for all is drawn."""
 
 MOST_ROWS = 16
 """Rows that fit the height of a page; in a longer section one row stands for all between the first and the last."""
+
+FEWEST_ROWS = 8
+"""Rows from which a section is offered like that, for where marks and a table need the height."""
 
 SHORT = ("0", "_k", "_N")
 """The numbers of the coefficients in a section whose row k stands for all between the first and the last."""
@@ -36,7 +40,8 @@ def draw(parts: Parts, form: Form) -> Diagram:
 def draw_all(builder: Builder, tiles: "Sequence[Tiles]", signal: Ref) -> None:
     """What is common, a register behind it, and from there, or else from the input, what leads to each output."""
     if len(tiles) == 1:
-        tiles[0].place_output(builder.output(tiles[0].draw(signal)))
+        end = tiles[0].draw(signal)
+        tiles[0].place_output(builder.output(end), end)
         return
     common, branches = ([], tiles) if tiles[0].part.name else (tiles[:1], tiles[1:])
     builder.trunk(signal, *([(BUS, 0.0)] if not common else []))
@@ -47,7 +52,7 @@ def draw_all(builder: Builder, tiles: "Sequence[Tiles]", signal: Ref) -> None:
         lead_down(builder, signal, above.top, line)
         ends.append(line.draw(signal))
     for line, end in zip(branches, ends, strict=True):
-        line.place_output(builder.output(end, line.part.name))
+        line.place_output(builder.output(end, line.part.name), end)
 
 
 def lead_down(builder: Builder, signal: Ref, above: float, line: "Tiles") -> None:
@@ -66,6 +71,7 @@ def tiles_of(builder: Builder, parts: Parts, form: Form) -> "list[Tiles]":
     for part in parts:
         kind = Tiles if part.division.direct is None else Branches
         found.append(kind(builder, part, form, left + (ROOM if len(parts) > 1 else 0.0), top, first))
+        found[-1].alone = len(parts) == 1 and part.division.direct is None
         top, first = found[-1].bottom, first + len(part.division.sections) + (part.division.direct is not None)
     return found
 
@@ -74,10 +80,14 @@ def general_of(parts: Parts, form: Form) -> General | None:
     """What is drawn where there are too many sections, or one is too long."""
     sections = [section for part in parts for section in part.division.sections]
     deepest = max(map(delays_down, sections)) * form.pitch if form.size is None else 0.0
+    if len(sections) == len(parts) == 1 and not parts[0].division.shifts and can_lie(sections[0]):
+        deepest = 0.0
     branched = any(part.division.direct is not None for part in parts)
     too_high = (branched or len(parts) > 1) and rows_of(parts, form) > MOST_ROWS
     if len(sections) <= MOST_DRAWN and (deepest > MOST_ROWS or (too_high and len(sections) == len(parts))):
         return general_row(parts, form)
+    if len(sections) == 1 and not form.origin and deepest >= FEWEST_ROWS:
+        return replace(general_row(parts, form), always=False)
     return general_section(parts, form) if too_high or len(sections) > MOST_DRAWN else None
 
 

@@ -3,6 +3,7 @@
 from math import ceil
 
 from streamhost.diagram import Builder, Ref
+from streamhost.diagram.tapped import LEAD, ahead
 from streamhost.structures.division import Division, Part
 from streamhost.structures.form import Draft, Form
 
@@ -12,7 +13,6 @@ MOST_COLUMNS = 11.75
 FRONT = 0.75
 """Columns from the input to the gain in front, and from there to the first section."""
 
-LEAD = 0.875
 GAP = 1.0
 WIDER = 0.75
 """Columns that a power of two takes before a section."""
@@ -33,9 +33,11 @@ class Tiles:
     """The sections of a part: drawn side by side, row under row, from a column and a row on.
 
     `first`: the number of the part's first section among all. `numbers`, if there are some, are those of `SHORT`.
+    `alone`: there is no other part.
     """
 
     numbers: tuple[str, ...] = ()
+    alone = False
 
     def __init__(self, builder: Builder, part: Part, form: Form, left: float, top: float, first: int) -> None:
         self.builder, self.part, self.form, self.left, self.top, self.first = builder, part, form, left, top, first
@@ -68,7 +70,7 @@ class Tiles:
                 signal = self.register(signal, index)
             suffix = f"{self.ending}_{index + 1}" if len(division.sections) > 1 else self.ending
             draft = Draft(self.builder, section, self.first + index, suffix, self.origin(index), self.numbers,
-                          division.ratio(index))
+                          division.ratio(index), self.alone and len(division.sections) == 1 and not division.shifts)
             signal = self.form.build_section(draft, signal)
         return self.scaled(signal, len(division.sections))
 
@@ -108,11 +110,23 @@ class Tiles:
         self.builder.trunk(between, (out, row), (out, gutter), (BUS, gutter), (BUS, below))
         return between
 
+    @property
+    def is_compact(self) -> bool:
+        """Whether the last section has nothing to the right of where its signal leaves: the forms have feedback there."""
+        division = self.part.division
+        own_shape = self.form.size is not None or self.form.origin
+        return not own_shape and not division.shifts and len(division.sections[-1].a) == 1
+
     def mark(self, signal: Ref, index: int) -> Ref:
         column, row = self.right(index - 1)
         between = self.builder.round(signal, f"between{self.ending}_{index}")
         return self.builder.place(between, (column + self.gap - GAP / 2, row), small=True)
 
-    def place_output(self, output: Ref) -> None:
+    def place_output(self, output: Ref, signal: Ref) -> None:
+        """Where the last section ends, or, of one that is alone and without recursion, right behind its last node."""
         column, row = self.right(len(self.sizes) - 1)
+        place = self.builder.place_of(signal)
+        if place is not None and self.alone and self.is_compact:
+            self.builder.place(output, ahead(place), place.face)
+            return
         self.builder.place(output, (column + LEAD + (WIDER if any(self.part.division.shifts[-1:]) else 0.0), row))

@@ -43,6 +43,8 @@ from streamhost.structures.form import Draft, Form
 def build_section(draft: Draft, x: Ref) -> Ref:
     if draft.is_long_line:
         return draft.tapped_line(x)
+    if draft.lies:
+        return draft.line_in_rows("x", x)
     b, a = draft.section.b, draft.section.a
     xs = (x, *draft.line("x", len(b) - 1, x, column=0))
     ys = draft.line("y", len(a) - 1, column=4)

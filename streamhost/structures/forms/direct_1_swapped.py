@@ -44,6 +44,8 @@ from streamhost.structures.form import Draft, Form
 def build_section(draft: Draft, x: Ref) -> Ref:
     if draft.is_long_line:
         return draft.tapped_line(x)
+    if draft.lies:
+        return draft.line_in_rows("v", x)
     b, a = draft.section.b, draft.section.a
     ws = draft.line("w", len(a) - 1, column=1.75)
     # Only a recursion makes a w that is not yet there; without one the copy's line hangs on x.

@@ -42,6 +42,8 @@ from streamhost.structures.form import Draft, Form
 def build_section(draft: Draft, x: Ref) -> Ref:
     if draft.is_long_line:
         return draft.tapped_line(x)
+    if draft.lies:
+        return draft.line_in_rows("w", x)
     b, a = draft.section.b, draft.section.a
     recursive = len(a) > 1
     ws = draft.line("w", max(len(a), len(b)) - 1, None if recursive else x, column=1.75)

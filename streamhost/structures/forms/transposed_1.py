@@ -44,6 +44,8 @@ PITCH = 1.25
 
 
 def build_section(draft: Draft, x: Ref) -> Ref:
+    if draft.lies:
+        return draft.sums_in_rows("dt", "t", x)
     b, a = draft.section.b, draft.section.a
     ds = draft.separate("ds", len(a) - 1, column=0, pitch=PITCH)
     dt = draft.separate("dt", len(b) - 1, column=3.5, pitch=PITCH)

@@ -40,6 +40,8 @@ PITCH = 1.25
 
 
 def build_section(draft: Draft, x: Ref) -> Ref:
+    if draft.lies:
+        return draft.sums_in_rows("d", "s", x)
     b, a = draft.section.b, draft.section.a
     last = max(len(a), len(b)) - 1
     d = draft.separate("d", last, column=1.5, pitch=PITCH)
