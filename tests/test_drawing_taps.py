@@ -85,6 +85,12 @@ def test_every_length_is_drawn_as_it_is(kind: str) -> None:
         assert page.scale >= 0.8  # subscripts of 5.6 pt; smaller ones are hard to read in print (common practice)
 
 
+@pytest.mark.parametrize("kind", KINDS[:3])
+def test_one_tap_is_a_gain_on_the_way(kind: str) -> None:
+    text = svg(tapped(1, kind))
+    assert all(start[1] == end[1] for start, end in page_of(text).lines)
+
+
 @pytest.mark.parametrize("kind", KINDS)
 @pytest.mark.parametrize("length", [MOST_TAPS + 1, MOST_TAPS + 2, 300])
 def test_a_longer_line_is_three_taps_that_stand_for_all(length: int, kind: str) -> None:

@@ -126,7 +126,8 @@ def written_out(diagram: Diagram, index: int, x: str, y: str) -> tuple[Diagram, 
         line, caption = shortened(line)
     builder = Builder()
     source = builder.place(builder.input(x), (-LEAD, 0.0))
-    result = plain_line(builder, line, source) if line.fold is None else folded_line(builder, line, source)
+    is_folded = line.fold is not None and line.length > 1
+    result = folded_line(builder, line, source) if is_folded else plain_line(builder, line, source)
     place = builder.place_of(result)
     assert place is not None, "every node of a line has its place"
     builder.place(builder.output(result, y), ahead(place), place.face)
@@ -134,7 +135,7 @@ def written_out(diagram: Diagram, index: int, x: str, y: str) -> tuple[Diagram, 
 
 
 def ahead(place: Place) -> Point:
-    """Where the output of a line stands whose last node stands at a place: LEAD in front of it."""
+    """Where the output of a line stands whose last node stands at a place, facing E or W: LEAD in front of it."""
     return place.at[0] + (-LEAD if place.face == "W" else LEAD), place.at[1]
 
 
@@ -152,11 +153,13 @@ def shortened(line: Line) -> tuple[Line, str]:
 
 def plain_line(builder: Builder, line: Line, x: Ref) -> Ref:
     """Delays on top, gains under them, and the sum at the bottom: from left to right, or back if the last tap is first."""
+    if line.length == 1:
+        return product(builder, line, 0, x, (0.0, 0.0), "E")
     rows = line_rows(line.length)
     taps = delayed(builder, rows, line.length, x)
     products = [product(builder, line, k, taps[k], rows.at(k, GAIN_DOWN), "S") for k in range(line.length)]
     order = list(reversed(range(line.length))) if line.last_first else list(range(line.length))
-    return total(builder, [products[k] for k in order], chain(rows, order, 1, SUM_DOWN) if len(order) > 1 else ())
+    return total(builder, [products[k] for k in order], chain(rows, order, 1, SUM_DOWN))
 
 
 def delayed(builder: Builder, rows: Rows, length: int, x: Ref) -> list[Ref]:
