@@ -129,7 +129,8 @@ class _Judge:
         if max(weighted.clip(min=0.0).sum(), -weighted.clip(max=0.0).sum()) <= DENSITY_SHARE:
             return ""
         octave, worst = divmod(int(np.argmax(np.abs(weighted))), len(self.expected))
-        where = f"{OCTAVES - octave} octaves below half the rate" if octave else "at the lowest frequencies"
+        octaves = "1 octave" if octave == OCTAVES - 1 else f"{OCTAVES - octave} octaves"
+        where = f"{octaves} below half the rate" if octave else "at the lowest frequencies"
         return f"what {self.expected[worst].label} drops is not white {where}"
 
     def beyond(self, ratio: float, degrees: float) -> float:
