@@ -103,6 +103,13 @@ class Builder:
         slot = self._slot(Slot(label, section, part, feedback), value)
         return self._add(Gain(self._label(label, "g"), self._own(source), slot))
 
+    def again(self, gain: Ref, source: Ref, label: str = "") -> Ref:
+        """Another multiplication by the coefficient of a gain, which is stored once."""
+        node = self._nodes[self._own(gain)]
+        if not isinstance(node, Gain):
+            raise DiagramError(f'"{node.label}" is a {node.kind}, and only a gain has a coefficient to multiply by again.')
+        return self._add(Gain(self._label(label, node.label), self._own(source), node.coefficient))
+
     def shift(self, source: Ref, k: int, label: str = "") -> Ref:
         """2^k of the structure."""
         return self._add(Shift(self._label(label, "shift"), self._own(source), k))

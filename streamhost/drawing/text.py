@@ -117,7 +117,7 @@ def delay(frames: int) -> Label:
 
 
 def power_of_two(k: int) -> Label:
-    return Run("2"), Run(str(k).replace("-", MINUS), level=1)
+    return (Run("2"),) if k == 1 else (Run("2"), Run(str(k).replace("-", MINUS), level=1))
 
 
 def short_number(value: float) -> Label:

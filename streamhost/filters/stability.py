@@ -1,5 +1,6 @@
 """Stability decided exactly, on the coefficients or poles as they stand in float64."""
 
+from collections.abc import Iterator
 from fractions import Fraction
 
 from streamhost.filters.exact import Polynomial, exactly, stripped
@@ -13,14 +14,23 @@ def is_stable(ascending: Polynomial) -> bool:
     Step-down recursion (Schur-Cohn test) on exact fractions: stable if and only if every reflection coefficient is
     less than 1 in magnitude (Oppenheim & Schafer, lattice filters; Mitra, stability test by all-pass sections).
     """
-    rest = [value / ascending[0] for value in ascending]
-    while len(rest) > 1:
-        reflection = rest[-1]
-        if abs(reflection) >= 1:
-            return False
+    return all(abs(stage[-1]) < 1 for stage in step_down(ascending))
+
+
+def step_down(ascending: Polynomial) -> Iterator[Polynomial]:
+    """A_N, A_(N-1), ... A_1 of A = A_N, all beginning with 1; the last coefficient of A_m is the reflection coefficient k_m.
+
+    A_(m-1) = (A_m - k_m z^-m A_m(1/z)) / (1 - k_m^2). It ends early with the first A_m, m > 1, whose k_m is 1 or -1,
+    since no A_(m-1) exists then.
+    """
+    stage = tuple(value / ascending[0] for value in ascending)
+    while len(stage) > 1:
+        yield stage
+        reflection = stage[-1]
         scale = 1 - reflection * reflection
-        rest = [(x - reflection * y) / scale for x, y in zip(rest, reversed(rest), strict=True)][:-1]
-    return True
+        if scale == 0:
+            return
+        stage = tuple((x - reflection * y) / scale for x, y in zip(stage, reversed(stage), strict=True))[:-1]
 
 
 def unstable_poles(factor: Polynomials | ZerosPoles) -> int:

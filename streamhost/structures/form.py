@@ -65,6 +65,10 @@ class Draft:
         label = f"{name}{self.suffix}"
         return self._placed(self.builder.gain(source, label, value, section=self.index, part=part), at, face)
 
+    def again(self, gain: Ref, name: str, source: Ref, *, at: Point | None = None, face: str = "E") -> Ref:
+        """The product of a coefficient that another gain stores; drawn with the coefficient's name."""
+        return self._placed(self.builder.again(gain, source, f"{name}{self.suffix}"), at, face)
+
     def shift(self, name: str, k: int, source: Ref, *, at: Point | None = None, face: str = "E") -> Ref:
         """2^k of the structure."""
         return self._placed(self.builder.shift(source, k, f"{name}{self.suffix}"), at, face)
@@ -153,12 +157,17 @@ class Draft:
         """The sum of the terms in their order, drawn as one adder. One term alone is no sum, unless it is subtracted."""
         return self._summed(name, terms, [Part(self._on_page(at), len(terms), face)] if at is not None else [])
 
-    def climb(self, name: str, terms: Sequence[Ref | Signed], *, column: float, rows: Sequence[int]) -> Ref:
+    def climb(self, name: str, terms: Sequence[Ref | Signed], *, column: float, rows: Sequence[float]) -> Ref:
         """The same, drawn as a chain of adders upwards: each term enters at its row, the last leaves to the right."""
         counts = adders(rows)
         parts = [Part(self._on_page((column, row)), count, "N") for row, count in counts[:-1]]
         row, count = counts[-1]
         return self._summed(name, terms, [*parts, Part(self._on_page((column, row)), count)])
+
+    def stride(self, name: str, terms: Sequence[Ref | Signed], *, columns: Sequence[float], row: float) -> Ref:
+        """The same, drawn as a chain of adders to the right: each term enters at its column."""
+        parts = [Part(self._on_page((column, row)), count) for column, count in adders(columns)]
+        return self._summed(name, terms, parts)
 
     def trunk(self, source: Ref, *points: Point) -> None:
         """The wire out of a node runs along these points before it branches."""
@@ -184,14 +193,14 @@ class Draft:
         return self.origin[0] + point[0], self.origin[1] + point[1]
 
 
-def adders(rows: Sequence[float]) -> list[tuple[float, int]]:
-    """(row, how many terms enter there) of each adder of a chain; a first term alone joins at the row after it."""
+def adders(places: Sequence[float]) -> list[tuple[float, int]]:
+    """(place, how many terms enter there) of each adder of a chain; a first term alone joins at the place after it."""
     found: list[tuple[float, int]] = []
-    for row in rows:
-        if found and (found[-1][0] == row or (len(found) == 1 and found[0][1] == 1)):
-            found[-1] = (row, found[-1][1] + 1)
+    for place in places:
+        if found and (found[-1][0] == place or (len(found) == 1 and found[0][1] == 1)):
+            found[-1] = (place, found[-1][1] + 1)
         else:
-            found.append((row, 1))
+            found.append((place, 1))
     return found
 
 

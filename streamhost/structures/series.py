@@ -15,7 +15,7 @@ from streamhost.structures.tiles import BUS, FRONT, GUTTER, ROOM, Tiles, begins_
 MOST_DRAWN = 8
 """Sections beyond which one that stands for all is drawn."""
 
-MOST_ROWS = 16
+MOST_ROWS = 16.25
 """Rows that fit the height of a page; in a longer section one row stands for all between the first and the last."""
 
 FEWEST_ROWS = 8
@@ -83,8 +83,9 @@ def general_of(parts: Parts, form: Form) -> General | None:
     if len(sections) == len(parts) == 1 and not parts[0].division.shifts and can_lie(sections[0]):
         deepest = 0.0
     branched = any(part.division.direct is not None for part in parts)
-    too_high = (branched or len(parts) > 1) and rows_of(parts, form) > MOST_ROWS
-    if len(sections) <= MOST_DRAWN and (deepest > MOST_ROWS or (too_high and len(sections) == len(parts))):
+    too_high = (branched or len(sections) > 1) and rows_of(parts, form) > MOST_ROWS
+    one_each = form.size is None and len(sections) == len(parts)
+    if len(sections) <= MOST_DRAWN and (deepest > MOST_ROWS or (too_high and one_each)):
         return general_row(parts, form)
     if len(sections) == 1 and not form.origin and deepest >= FEWEST_ROWS:
         return replace(general_row(parts, form), always=False)

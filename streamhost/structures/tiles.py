@@ -7,7 +7,7 @@ from streamhost.diagram.tapped import LEAD, ahead
 from streamhost.structures.division import Division, Part
 from streamhost.structures.form import Draft, Form
 
-MOST_COLUMNS = 11.75
+MOST_COLUMNS = 12.0
 """Columns that fit the width of a page: up to these, two sections are drawn side by side."""
 
 FRONT = 0.75
@@ -97,8 +97,11 @@ class Tiles:
         between = self.mark(signal, index)
         column, row = self.right(index - 1)
         left, below = self.origin(index)
+        out = column + self.gap - 0.125
+        if below < row:
+            self.builder.trunk(between, (out, row), (out, below))
         if below > row:
-            gutter, out, back = below - LEAD, column + self.gap - 0.125, left - 0.5
+            gutter, back = below - LEAD, left - 0.5
             self.builder.trunk(between, (out, row), (out, gutter), (back, gutter), (back, below))
         return between
 

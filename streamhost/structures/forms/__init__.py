@@ -2,10 +2,34 @@
 
 from streamhost.structures.choices import check
 from streamhost.structures.form import Form
-from streamhost.structures.forms import direct_1, direct_1_swapped, direct_2, transposed_1, transposed_2
+from streamhost.structures.forms import (
+    coupled,
+    direct_1,
+    direct_1_swapped,
+    direct_2,
+    lattice_ladder,
+    lattice_normalized,
+    lattice_one_multiplier,
+    state_variable,
+    state_variable_delayed,
+    transposed_1,
+    transposed_2,
+)
 
 FORMS: dict[str, Form] = {
-    module.FORM.name: module.FORM for module in (direct_1, direct_1_swapped, direct_2, transposed_1, transposed_2)
+    module.FORM.name: module.FORM for module in (
+        direct_1,
+        direct_1_swapped,
+        direct_2,
+        transposed_1,
+        transposed_2,
+        lattice_ladder,
+        lattice_one_multiplier,
+        lattice_normalized,
+        coupled,
+        state_variable,
+        state_variable_delayed,
+    )
 }
 
 
