@@ -4,7 +4,7 @@ from collections.abc import Iterable
 from fractions import Fraction
 from typing import TypeVar
 
-from streamhost.diagram import Delay, Diagram, Gain, Input, Output, Round, Sum
+from streamhost.diagram import Delay, Diagram, Gain, Input, Output, Round, Shift, Sum
 
 Number = TypeVar("Number", float, Fraction)
 
@@ -40,6 +40,8 @@ def _value(
             return state.get(index, kind(0))
         case Gain():
             return coefficients[node.coefficient] * now[node.source]
+        case Shift():
+            return now[node.source] * kind(2) ** node.k
         case Sum():
             first, *others = node.terms
             total = now[first.source] if first.sign > 0 else -now[first.source]

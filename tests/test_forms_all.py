@@ -5,12 +5,11 @@ import re
 import numpy as np
 import pytest
 from drawing_reader import faults_of_figure, page_of
-from form_filters import RATE, built, carried, filters
+from form_filters import RATE, built, carried, filters, rounding_bound
 from native_runs import busy, run_counting, run_native
 from scipy import signal
 
 from streamhost import Filter, Fixed
-from streamhost.diagram.norms import norms_to_output, powers_from_input
 from streamhost.drawing import layout_of, svg
 from streamhost.errors import StructureError
 from streamhost.filters import Polynomials
@@ -22,7 +21,6 @@ DECOMPOSITIONS = ("cascade", "whole")
 CASES = [(name, how, which) for name in forms() for how in DECOMPOSITIONS for which in carried(name, how)]
 FEW = [cases[place] for name in forms() for cases in [[case for case in CASES if case[0] == name]] for place in (0, -1)]
 HEADINGS = ("Source:", "Counts:", "Good at:", "Fails:", "Carries:", "Arithmetic:")
-EPSILON = 2.0**-52
 LEAST_SCALE = 0.8  # subscripts of 5.6 pt; smaller ones are hard to read in print (common practice)
 FRAMES = 400
 
@@ -38,23 +36,12 @@ def by_scipy(filter: Filter, x: np.ndarray) -> np.ndarray:
     return x
 
 
-def rounding_bound(name: str, how: str, which: str) -> float:
-    """The most that one rounding of each node, and of each coefficient, of a signal of at most 1 makes at the output.
-
-    A node's value is taken as six times what white noise gives it. Doubled for scipy's own, of the same kind.
-    """
-    diagram = built(name, how, which).diagram
-    values = 6.0 * np.sqrt(powers_from_input(diagram))
-    to_output = norms_to_output(diagram, range(len(diagram.nodes))).l1
-    return 2.0 * 2.0 * EPSILON * float(np.sum(values * to_output))
-
-
 @pytest.mark.parametrize(("name", "how", "which"), CASES)
 def test_in_float64_it_is_scipys_filter(name: str, how: str, which: str) -> None:
     x = np.random.default_rng(1).uniform(-1, 1, FRAMES)
     # The definition: kernels have their own test below, and compiling one for each case would take minutes.
     y = run_definition(lower(built(name, how, which).diagram, named_format("float64")), x[:, np.newaxis])[:, 0, 0]
-    np.testing.assert_allclose(y, by_scipy(filters()[which], x), rtol=0, atol=rounding_bound(name, how, which))
+    np.testing.assert_allclose(y, by_scipy(filters()[which], x), rtol=0, atol=rounding_bound(built(name, how, which).diagram))
 
 
 @pytest.mark.parametrize(("name", "how", "which"), FEW)

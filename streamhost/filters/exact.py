@@ -90,6 +90,11 @@ def conjugate_section(zeros: Sequence[complex], poles: Sequence[complex], gain: 
     return Polynomials(rounded(numerator), rounded(from_roots(poles)))
 
 
+def to_multiple(number: Fraction, bits: int) -> Fraction:
+    """The nearest multiple of 2^-bits: what keeps the numbers of a long calculation short."""
+    return Fraction(round(number * (1 << bits)), 1 << bits)
+
+
 def square_root(number: Fraction) -> Fraction:
     """The square root of a number >= 0, low by less than 2^-ROOT_BITS of itself."""
     if number == 0:

@@ -1,9 +1,9 @@
 """Stability decided exactly, on the coefficients or poles as they stand in float64."""
 
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 from fractions import Fraction
 
-from streamhost.filters.exact import Polynomial, exactly, stripped
+from streamhost.filters.exact import Polynomial, exactly, stripped, to_multiple
 from streamhost.filters.factors import Polynomials, ZerosPoles
 from streamhost.filters.roots import roots_outside
 
@@ -17,20 +17,26 @@ def is_stable(ascending: Polynomial) -> bool:
     return all(abs(stage[-1]) < 1 for stage in step_down(ascending))
 
 
-def step_down(ascending: Polynomial) -> Iterator[Polynomial]:
+def step_down(ascending: Polynomial, bits: int | None = None) -> Iterator[Polynomial]:
     """A_N, A_(N-1), ... A_1 of A = A_N, all beginning with 1; the last coefficient of A_m is the reflection coefficient k_m.
 
     A_(m-1) = (A_m - k_m z^-m A_m(1/z)) / (1 - k_m^2). It ends early with the first A_m, m > 1, whose k_m is 1 or -1,
-    since no A_(m-1) exists then.
+    since no A_(m-1) exists then. Exact, or, for long polynomials, every coefficient to a multiple of 2^-bits, and k_m
+    within 2^-(bits/2) of 1 or -1 taken as such.
     """
-    stage = tuple(value / ascending[0] for value in ascending)
+    least = Fraction(0) if bits is None else Fraction(1, 1 << bits // 2)
+    stage = _to(bits, (value / ascending[0] for value in ascending))
     while len(stage) > 1:
         yield stage
         reflection = stage[-1]
         scale = 1 - reflection * reflection
-        if scale == 0:
+        if abs(scale) <= least:
             return
-        stage = tuple((x - reflection * y) / scale for x, y in zip(stage, reversed(stage), strict=True))[:-1]
+        stage = _to(bits, ((x - reflection * y) / scale for x, y in zip(stage[:-1], stage[:0:-1], strict=True)))
+
+
+def _to(bits: int | None, values: Iterable[Fraction]) -> Polynomial:
+    return tuple(values) if bits is None else tuple(to_multiple(value, bits) for value in values)
 
 
 def unstable_poles(factor: Polynomials | ZerosPoles) -> int:

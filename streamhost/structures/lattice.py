@@ -8,20 +8,24 @@ output of stage m is G_m = z^-m A_m(1/z) / A(z) times the input, and the numerat
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
+from functools import lru_cache
 from math import ceil
 
 from streamhost.diagram.builder import Ref
 from streamhost.diagram.hints import Point
 from streamhost.filters import Polynomials
-from streamhost.filters.exact import ONE, Polynomial
+from streamhost.filters.exact import ONE, Polynomial, rounded, to_multiple
 from streamhost.filters.stability import step_down
 from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Size
 
 
+LEAST_BITS = 512
+
+
 @dataclass(frozen=True)
 class Lattice:
-    """k_1 ... k_N and v_0 ... v_M, exact."""
+    """k_1 ... k_N and v_0 ... v_M."""
 
     reflections: Polynomial
     ladder: Polynomial
@@ -34,16 +38,33 @@ class Lattice:
         return self.reflections[m - 1]
 
 
+@lru_cache(maxsize=64)
 def lattice_of(ratio: Ratio) -> Lattice:
-    """The coefficients of a section that `why_not` has nothing against."""
-    stages = [ONE, *reversed(list(step_down(ratio.a)))]
+    """The coefficients of a section that `why_not` has nothing against, good to more than float64 holds.
+
+    Exact numbers grow too long in filters of high order. The calculation is made to multiples of 2^-bits, with ever
+    more bits until twice as many change no coefficient in float64; numbers of few binary digits stay exact.
+    """
+    bits = LEAST_BITS
+    found = _to_bits(ratio, bits)
+    while True:
+        bits *= 2
+        finer = _to_bits(ratio, bits)
+        if (rounded(found.reflections), rounded(found.ladder)) == (rounded(finer.reflections), rounded(finer.ladder)):
+            return finer
+        found = finer
+
+
+def _to_bits(ratio: Ratio, bits: int) -> Lattice:
+    stages = [ONE, *reversed(list(step_down(ratio.a, bits)))]
     order = len(stages) - 1
-    rest = list(ratio.b)
+    rest = [to_multiple(value, bits) for value in ratio.b]
     ladder: list[Fraction] = []
     for m in reversed(range(len(rest))):
         backward = [Fraction(0)] * (m - order) + list(reversed(stages[min(m, order)]))
-        ladder.append(rest.pop())
-        rest = [value - ladder[-1] * term for value, term in zip(rest, backward[:-1], strict=True)]
+        tap = rest.pop()
+        ladder.append(tap if abs(tap) > Fraction(1, 1 << bits // 2) else Fraction(0))
+        rest = [to_multiple(value - ladder[-1] * term, bits) for value, term in zip(rest, backward[:-1], strict=True)]
     return Lattice(tuple(stage[-1] for stage in stages[1:]), tuple(reversed(ladder)))
 
 
@@ -51,10 +72,10 @@ def why_not(ratio: Ratio) -> str:
     """Why a section has no lattice, "" where it has."""
     if not ratio.is_recursive:
         return "it has no recursion, and a lattice is made of the recursion's reflection coefficients"
-    lowest = list(step_down(ratio.a))[-1]
+    lowest = list(step_down(ratio.a, LEAST_BITS))[-1]
     if len(lowest) > 2:
         m = len(lowest) - 1
-        return f"its reflection coefficient k{m} is {int(lowest[-1])}, where the step-down to the stages below ends"
+        return f"its reflection coefficient k{m} is {round(lowest[-1])}, where the step-down to the stages below ends"
     return ""
 
 

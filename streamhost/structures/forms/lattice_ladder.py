@@ -23,7 +23,7 @@ drawn for a second-order section (* joins, wires cross):
 Of A = A(N) the step-down recursion gives A(m-1) = (A(m) - km z^-m A(m)(1/z)) / (1 - km^2), km being the last
 coefficient of A(m). So k is of the sign of the coefficient: A(1) = 1 + k1 z^-1. The other convention, a(m) = -km, is
 also in use. The vm follow from B = v0 A(0) + v1 z^-1 A(1)(1/z) + ... + vM z^-M A(M)(1/z), the highest first. All are
-computed in exact numbers and rounded once. The filter is stable if and only if every |km| < 1.
+computed to hundreds of digits and rounded once. The filter is stable if and only if every |km| < 1.
 
 Nodes are evaluated stage by stage from the input, f(m-1) before g(m); each sum as it is written above.
 

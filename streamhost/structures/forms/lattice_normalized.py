@@ -16,8 +16,8 @@ drawn for a second-order section:
           |                              v                              v
           +---------------------------->(+)--------------------------->(+)---> y
 
-The km are those of lattice-ladder; the vm are its, divided by cm+1 ... cN. All are computed in exact numbers and rounded
-once. Seen from the input, the g(m) are orthonormal: for white input each has the power of the input, and no two are
+The km are those of lattice-ladder; the vm are its, divided by cm+1 ... cN. All are computed to hundreds of digits and
+rounded once. Seen from the input, the g(m) are orthonormal: for white input each has the power of the input, and no two are
 correlated. So v0^2 + ... + vN^2 is the power of the filter's response.
 
 Nodes are evaluated stage by stage from the input, f(m-1) before g(m); each sum as it is written above.
