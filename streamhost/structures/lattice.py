@@ -19,7 +19,6 @@ from streamhost.filters.stability import step_down
 from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Size
 
-
 LEAST_BITS = 512
 
 
