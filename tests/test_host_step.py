@@ -143,6 +143,9 @@ def test_diagrams_of_every_kind_of_node_and_of_several_outputs(seed: int, channe
         expected = realization.process(signal(channels))
     except FormatError:  # the two do not go together, which is said elsewhere
         return
+    except RequestError as error:
+        assert "samples are float64, which holds 53 bits" in str(error)
+        return
     lane = Lane(realization, channels, metered=True)
     (y,), _ = run([lane], divided(signal(channels), lengths))
     assert y.tobytes() == expected.reshape(FRAMES, -1).tobytes()
