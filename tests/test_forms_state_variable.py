@@ -20,9 +20,9 @@ from streamhost.drawing import svg
 from streamhost.errors import StructureError
 from streamhost.filters import Filter, Polynomials
 from streamhost.filters.stability import is_stable
-from streamhost.formats import Fixed
+from streamhost.formats import Fixed, named_format
 from streamhost.measure.predicted import predicted_noise
-from streamhost.program.run import lower
+from streamhost.program.run import lower, run_definition
 from streamhost.structures import Built, build, form
 from streamhost.structures.form import Draft
 from streamhost.structures.forms.state_variable_delayed import highest_tuning
@@ -281,6 +281,26 @@ def test_poles_on_the_circle_are_carried(name: str) -> None:
     for a in ([1.0, -1.0, 1.0], [1.0, 0.0, 1.0]):
         found = response(drawn(name, [1.0], a).diagram, 60, float)
         assert found == pytest.approx([float(value) for value in series([1.0], a, 60)], abs=60 * 10 * 2.0**-52)
+
+
+@pytest.mark.parametrize("name", ["lattice-ladder", "lattice-normalized", TRAPEZOIDAL, DELAYED])
+def test_channels_may_differ_in_what_is_filled_up_with_zeros(name: str) -> None:
+    """One channel has a section of first order and a wire where the other has two of second order."""
+    alone = design("butterworth", rate=RATE, response="low-pass", order=1, frequency=6000)
+    both = (alone, design("butterworth", rate=RATE, response="low-pass", order=4, frequency=6000))
+    x = np.random.default_rng(1).uniform(-1, 1, (200, 2))
+    y = run_definition(lower(build(both, form=name).diagram, named_format("float64")), x)[:, 0, :]
+    for channel, filter in enumerate(both):
+        diagram = build(filter, form=name).diagram
+        wanted = run_definition(lower(diagram, named_format("float64")), x[:, channel : channel + 1])[:, 0, 0]
+        np.testing.assert_allclose(y[:, channel], wanted, rtol=0, atol=10 * rounding_bound(diagram))
+
+
+def test_coupled_states_cannot_be_filled_up() -> None:
+    both = (design("butterworth", rate=RATE, response="low-pass", order=1, frequency=6000),
+            design("low-pass", rate=RATE, frequency=1000, q=1))
+    with pytest.raises(StructureError, match="a section of channel 1 at the length that it has in another channel: its two"):
+        build(both, form="coupled")
 
 
 # --- drawings

@@ -29,7 +29,9 @@ def draw_channels(channels: Sequence[Parts], form: Form) -> Diagram:
     """
     if len(channels) == 1:
         return draw(channels[0], form)
-    first, *others = (draw(parts, form) for parts in of_one_shape(channels))
+    shaped = of_one_shape(channels)
+    _check_carried(shaped, form)
+    first, *others = (draw(parts, form) for parts in shaped)
     for number, other in enumerate(others, 2):
         if other.hash != first.hash:
             raise StructureError(
@@ -37,6 +39,17 @@ def draw_channels(channels: Sequence[Parts], form: Form) -> Diagram:
                 "channels run through one. The direct and transposed forms draw all sections of one length alike."
             )
     return first.with_values(np.hstack([first.values, *(other.values for other in others)]))
+
+
+def _check_carried(channels: Sequence[Parts], form: Form) -> None:
+    for number, parts in enumerate(channels, 1):
+        for division in (part.division for part in parts):
+            for index in range(len(division.sections)):
+                if reason := form.carries(division.ratio(index)):
+                    raise StructureError(
+                        f'form "{form.name}" cannot carry a section of channel {number} at the length that it has in '
+                        f"another channel: {reason}. The direct and transposed forms draw all sections of one length alike."
+                    )
 
 
 def of_one_shape(channels: Sequence[Parts]) -> list[Parts]:
