@@ -52,8 +52,8 @@ def value_table(diagram: Diagram) -> Table | None:
     if None not in sections and len(names) <= MOST_COLUMNS:
         what = "section" if len(sections) > 1 else ""
         table = grid(entries, what, lambda e: e.row, lambda e: e.letters + e.number, lambda e: e.section or 0)
-    elif sections == {0} or (sections == {None} and all(entry.number for entry in entries)):
-        table = grid(entries, "k", lambda e: e.number, lambda e: e.letters, lambda e: int(e.number or 0))
+    elif sections in ({0}, {None}) and all(entry.number for entry in entries):
+        table = grid(entries, "k", lambda e: e.number, lambda e: e.letters, lambda e: int(e.number))
     else:
         table = None
     return in_blocks(table or listed(entries))

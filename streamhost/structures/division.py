@@ -2,6 +2,7 @@
 
 from collections.abc import Iterable
 from dataclasses import dataclass
+from fractions import Fraction
 
 from streamhost.filters import Polynomials
 from streamhost.filters.exact import Polynomial, exactly
@@ -19,6 +20,13 @@ class Ratio:
     @property
     def order(self) -> int:
         return max(len(self.a), len(self.b)) - 1
+
+    @property
+    def padded(self) -> tuple[Polynomial, Polynomial]:
+        """b and a with zeros after them, order + 1 of each."""
+        length = self.order + 1
+        b, a = ((*values, *[Fraction(0)] * (length - len(values))) for values in (self.b, self.a))
+        return b, a
 
     @property
     def is_recursive(self) -> bool:

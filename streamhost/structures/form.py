@@ -5,7 +5,7 @@ from dataclasses import dataclass, field, replace
 from typing import Literal
 
 from streamhost.diagram.builder import Builder, Ref, Signed, minus
-from streamhost.diagram.hints import Part, Point
+from streamhost.diagram.hints import General, Part, Point
 from streamhost.diagram.tapped import GAIN_DOWN, MOST_TAPS, SUM_DOWN, Rows, chain, line_rows, summed_rows
 from streamhost.filters import Polynomials
 from streamhost.structures.division import Ratio, ratio_of
@@ -60,10 +60,11 @@ class Draft:
         return self._placed(self.builder.delay(f"{name}{self.suffix}", source, n=n), at, face)
 
     def gain(self, name: str, value: float, source: Ref, *, at: Point | None = None, face: str = "E",
-             part: str = "") -> Ref:
-        """The product of a coefficient of the form's own."""
+             part: str = "", feedback: bool = False) -> Ref:
+        """The product of a coefficient of the form's own; `feedback`: it is to be subtracted, as an a_k is."""
         label = f"{name}{self.suffix}"
-        return self._placed(self.builder.gain(source, label, value, section=self.index, part=part), at, face)
+        product = self.builder.gain(source, label, value, section=self.index, part=part, feedback=feedback)
+        return self._placed(product, at, face)
 
     def again(self, gain: Ref, name: str, source: Ref, *, at: Point | None = None, face: str = "E") -> Ref:
         """The product of a coefficient that another gain stores; drawn with the coefficient's name."""
@@ -72,6 +73,10 @@ class Draft:
     def shift(self, name: str, k: int, source: Ref, *, at: Point | None = None, face: str = "E") -> Ref:
         """2^k of the structure."""
         return self._placed(self.builder.shift(source, k, f"{name}{self.suffix}"), at, face)
+
+    def residue(self, name: str, register: Ref, *, at: Point, face: str = "S") -> Ref:
+        """What the rounding of a register drops."""
+        return self._placed(self.builder.residue(register, f"{name}{self.suffix}"), at, face)
 
     def line(self, name: str, length: int, source: Ref | None = None, *, column: float) -> tuple[Ref, ...]:
         """`length` delays in a row, the first driven by `source`, or later where there is none; drawn downwards."""
@@ -169,6 +174,10 @@ class Draft:
         parts = [Part(self._on_page((column, row)), count) for column, count in adders(columns)]
         return self._summed(name, terms, parts)
 
+    def chain(self, name: str, terms: Sequence[Ref | Signed], *, at: Sequence[Point], face: str = "E") -> Ref:
+        """The same, drawn as a chain of adders at those places: two terms enter the first, one each of the others."""
+        return self._summed(name, terms, [Part(self._on_page(point), 2 if k == 0 else 1, face) for k, point in enumerate(at)])
+
     def trunk(self, source: Ref, *points: Point) -> None:
         """The wire out of a node runs along these points before it branches."""
         self.builder.trunk(source, *map(self._on_page, points))
@@ -229,7 +238,8 @@ class Form:
 
     `carries` says in words why a section cannot be drawn in this form, "" where it can. `hazards` are sentences about a
     section that is drawn and is dangerous. Drawn, a section is `width` columns wide and has `pitch` rows for each delay,
-    its output leaving at the top right, unless `size` says otherwise. `origin` is the file of a user's own form.
+    its output leaving at the top right, unless `size` says otherwise. `general` is what stands for a section that is too
+    long to be drawn, None where it is not. `origin` is the file of a user's own form.
     """
 
     name: str
@@ -242,6 +252,7 @@ class Form:
     carries: Callable[[Ratio], str] = lambda ratio: ""
     hazards: Callable[[Ratio], tuple[str, ...]] = lambda ratio: ()
     size: Callable[[Polynomials], Size] | None = None
+    general: Callable[[Polynomials], General | None] = lambda section: None
     origin: str = ""
 
     def size_of(self, section: Polynomials) -> Size:

@@ -79,7 +79,10 @@ def tiles_of(builder: Builder, parts: Parts, form: Form) -> "list[Tiles]":
 def general_of(parts: Parts, form: Form) -> General | None:
     """What is drawn where there are too many sections, or one is too long."""
     sections = [section for part in parts for section in part.division.sections]
-    deepest = max(map(delays_down, sections)) * form.pitch if form.size is None else 0.0
+    longest = max(sections, key=delays_down)
+    if (general := form.general(longest)) is not None:
+        return general if len(sections) == 1 else replace(general, caption=f"{caption_of(parts)} {general.caption}")
+    deepest = delays_down(longest) * form.pitch if form.size is None else 0.0
     if len(sections) == len(parts) == 1 and not parts[0].division.shifts and can_lie(sections[0]):
         deepest = 0.0
     branched = any(part.division.direct is not None for part in parts)
