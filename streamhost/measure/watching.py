@@ -10,7 +10,7 @@ from streamhost.formats import Fixed
 from streamhost.measure.naming import rounding_name
 from streamhost.measure.predicted import Prediction, predicted_noise, source_shares
 from streamhost.measure.residues import ResidueSum, octave_edges
-from streamhost.measure.whiteness import Expected, Whiteness, judged
+from streamhost.measure.whiteness import LEAST_SHARE, Expected, Whiteness, judged
 from streamhost.program.program import Program, RoundArithmetic
 from streamhost.program.sources import Source, noise_sources, traced_roundings
 
@@ -62,7 +62,7 @@ class _ColumnWatch:
     def __init__(self, program: Program, column: int) -> None:
         self._program, self._column = program, column
         self._sources = noise_sources(program, column)
-        self._columns, self._expected = _watched(program, self._sources)
+        self._columns, self._expected, _ = _watched(program, self._sources)
         self._sum = ResidueSum(np.array([rounding.lowest for rounding in self._expected]))
         self._seen = False
 
@@ -81,12 +81,13 @@ class _ColumnWatch:
         sources = tuple(self._sources[k] for k in reaching)
         if blind := _toward_zero(self._program, sources):
             return Whiteness(False, f"rounding toward zero follows the sign of the signal ({blind})")
-        columns, expected = _watched(self._program, sources)
-        if len(expected) < len(sources):
-            inside = len(sources) - len(expected)
+        columns, expected, seen = _watched(self._program, sources)
+        written = [reaching[k] for k in seen]
+        if shares.sum() - shares[:, written].sum() >= LEAST_SHARE:
+            inside = len(sources) - len(written)
             return Whiteness(None, f"{inside} of {len(sources)} errors arise inside sums, where none is written down")
         kept = [self._columns.index(column) for column in columns]
-        weighed = tuple(replace(each, shares=tuple(shares[:, k])) for k, each in zip(reaching, expected, strict=True))
+        weighed = tuple(replace(each, shares=tuple(shares[:, k])) for k, each in zip(written, expected, strict=True))
         return judged(weighed, self._sum.result().only(kept) if self._seen else None)
 
 
@@ -132,12 +133,12 @@ def _chosen_blocks(frames: int, wait: int, block: int) -> set[int]:
     return {whole[k * len(whole) // count] * block for k in range(count)}
 
 
-def _watched(program: Program, sources: tuple[Source, ...]) -> tuple[list[int], tuple[Expected, ...]]:
-    """The columns of a trace that belong to sources of noise, and what the model says of each."""
+def _watched(program: Program, sources: tuple[Source, ...]) -> tuple[list[int], tuple[Expected, ...], list[int]]:
+    """The columns of a trace that belong to sources of noise, what the model says of each, and which sources they are."""
     columns = {index: column for column, index in enumerate(traced_roundings(program))}
-    nodes = [(source.places[0][0], source) for source in sources]
-    seen = [(node, source) for node, source in nodes if node in columns]
-    return [columns[node] for node, _ in seen], tuple(_expected(program, node, source) for node, source in seen)
+    seen = [(k, source.places[0][0], source) for k, source in enumerate(sources) if source.places[0][0] in columns]
+    expected = tuple(_expected(program, node, source) for _, node, source in seen)
+    return [columns[node] for _, node, _ in seen], expected, [k for k, _, _ in seen]
 
 
 def _expected(program: Program, node: int, source: Source) -> Expected:
