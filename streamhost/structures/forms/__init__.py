@@ -7,6 +7,10 @@ from streamhost.structures.forms import (
     direct_1,
     direct_1_swapped,
     direct_2,
+    error_feedback,
+    error_feedback_1,
+    error_feedback_2,
+    error_feedback_c1,
     lattice_ladder,
     lattice_normalized,
     lattice_one_multiplier,
@@ -16,21 +20,25 @@ from streamhost.structures.forms import (
     transposed_2,
 )
 
-FORMS: dict[str, Form] = {
-    module.FORM.name: module.FORM for module in (
-        direct_1,
-        direct_1_swapped,
-        direct_2,
-        transposed_1,
-        transposed_2,
-        lattice_ladder,
-        lattice_one_multiplier,
-        lattice_normalized,
-        coupled,
-        state_variable,
-        state_variable_delayed,
-    )
-}
+MODULES = (
+    direct_1,
+    direct_1_swapped,
+    direct_2,
+    transposed_1,
+    transposed_2,
+    lattice_ladder,
+    lattice_one_multiplier,
+    lattice_normalized,
+    coupled,
+    state_variable,
+    state_variable_delayed,
+    error_feedback_1,
+    error_feedback_2,
+    error_feedback_c1,
+    error_feedback,
+)
+
+FORMS: dict[str, Form] = {module.FORM.name: module.FORM for module in MODULES}
 
 
 def forms() -> tuple[str, ...]:
