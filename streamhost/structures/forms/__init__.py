@@ -14,6 +14,8 @@ from streamhost.structures.forms import (
     lattice_ladder,
     lattice_normalized,
     lattice_one_multiplier,
+    minimum_noise,
+    normal,
     state_variable,
     state_variable_delayed,
     transposed_1,
@@ -36,6 +38,8 @@ MODULES = (
     error_feedback_2,
     error_feedback_c1,
     error_feedback,
+    normal,
+    minimum_noise,
 )
 
 FORMS: dict[str, Form] = {module.FORM.name: module.FORM for module in MODULES}
