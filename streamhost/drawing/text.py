@@ -21,6 +21,7 @@ ASCII = (
 )
 OTHERS = {MINUS: 838, DOTS: 1000}
 WIDEST = 1000
+GREEK = {"alpha": "\N{GREEK SMALL LETTER ALPHA}", "beta": "\N{GREEK SMALL LETTER BETA}"}
 
 COEFFICIENT = re.compile(r"(-?)([A-Za-z]+)_?(\d*)(?:_(\d+|[A-Za-z]))?")
 TO_AN_OUTPUT = re.compile(r"(-?)([A-Za-z]|[A-Za-z]+(?=\d))(?:_?(\d+|[kN]))?_([a-z][a-z0-9]+)(?:_(\d+))?")
@@ -58,20 +59,24 @@ def advance(character: str) -> int:
 
 
 def plain(label: Label) -> str:
-    """The label on one line of ASCII: b0, z^-1."""
+    """The label on one line of ASCII: b0, alpha1, z^-1."""
     marks = {0: "", -1: "", 1: "^"}
-    return "".join(marks[run.level] + run.text for run in label).replace(MINUS, "-").replace(DOTS, "...")
+    line = "".join(marks[run.level] + run.text for run in label).replace(MINUS, "-").replace(DOTS, "...")
+    for word, letter in GREEK.items():
+        line = line.replace(letter, word)
+    return line
 
 
 def coefficient(name: str) -> Label:
     """A coefficient's name: "b0" is b with 0 lowered, "b0_1" the same of section 1, "b0_low_1" of section 1 to the output low.
 
-    What is no such name is kept as it is.
+    "alpha1" is the Greek letter with 1 lowered. What is no such name is kept as it is.
     """
     found = COEFFICIENT.fullmatch(name) or TO_AN_OUTPUT.fullmatch(name)
     if found is None:
         return (Run(name),)
     sign, letters, *numbers = found.groups()
+    letters = GREEK.get(letters, letters)
     below = [number for number in numbers if number]
     subscript = ("" if all(len(number) == 1 for number in below) else ",").join(below)
     runs = [Run(MINUS)] if sign else []

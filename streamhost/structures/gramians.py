@@ -21,6 +21,9 @@ BITS = 400
 LEAST_MODE = Fraction(1, 1 << 16)
 """Of the largest: smaller modes are taken as that, so that a state which nothing hears stays a state."""
 
+MOST_DOUBLINGS = 128
+"""A pole of float64 coefficients lies some 2^-54 or further from the circle."""
+
 NOTHING = Fraction(1, 1 << 150)
 """What is below stands for 0: far above the rounding errors of 400 bits, far below any coefficient of float64."""
 
@@ -142,10 +145,12 @@ def observability(a: Any, c: Any) -> Any:
     import mpmath
 
     w, power = c.T * c, a
-    while max(abs(value) for value in power) > mpmath.mpf(2) ** -(BITS // 2):
+    for _ in range(MOST_DOUBLINGS):
+        if max(abs(value) for value in power) < mpmath.mpf(2) ** -(BITS // 2):
+            return w
         w = w + power.T * w * power
         power = power * power
-    return w
+    raise AssertionError("the states of a stable filter die out: a pole on the unit circle?")
 
 
 def shares(modes: list[Any]) -> list[Any]:

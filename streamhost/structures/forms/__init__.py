@@ -4,6 +4,7 @@ from streamhost.structures.choices import check
 from streamhost.structures.form import Form
 from streamhost.structures.forms import (
     coupled,
+    delta,
     direct_1,
     direct_1_swapped,
     direct_2,
@@ -11,6 +12,7 @@ from streamhost.structures.forms import (
     error_feedback_1,
     error_feedback_2,
     error_feedback_c1,
+    kingsbury,
     lattice_ladder,
     lattice_normalized,
     lattice_one_multiplier,
@@ -20,6 +22,7 @@ from streamhost.structures.forms import (
     state_variable_delayed,
     transposed_1,
     transposed_2,
+    zoelzer,
 )
 
 MODULES = (
@@ -40,6 +43,9 @@ MODULES = (
     error_feedback,
     normal,
     minimum_noise,
+    delta,
+    kingsbury,
+    zoelzer,
 )
 
 FORMS: dict[str, Form] = {module.FORM.name: module.FORM for module in MODULES}
