@@ -319,4 +319,4 @@ def test_a_cascade_fits_the_page_without_a_crossing(name: str, sections: int) ->
 
 
 def test_a_doubling_is_drawn_as_2() -> None:
-    assert ">2</" in svg(cascade(TRAPEZOIDAL, 1), values=False)
+    assert ">2</" in svg(cascade(TRAPEZOIDAL, 1), values="none")
