@@ -256,13 +256,15 @@ def realize(
     pairing: str | None = None,
     ordering: str | None = None,
     scaling: str | None = None,
+    outputs: str | None = None,
     format: Format | str = "float64",
     allow_unstable: bool = False,
 ) -> Realization:
     """A filter realized: divided, drawn, and put into an arithmetic. Of a sequence, each is the filter of a channel.
 
     `format` is a Fixed, a Float or the name of a shipped arithmetic. Choices left at None take the defaults: pairing
-    nearest, ordering outward, scaling none; a filter given as sections keeps them.
+    nearest, ordering outward, scaling none; a filter given as sections keeps them. `outputs` "all" adds those that a form
+    offers beside the filter's own.
     Raises FilterError for a filter that is unstable as asked (unless allowed), StructureError, FormatError.
     """
     filters = (filter,) if isinstance(filter, Filter) else _of_channels(filter)
@@ -275,7 +277,8 @@ def realize(
             f"allow_unstable = true to run it all the same."
         )
     arithmetic = named_format(format) if isinstance(format, str) else format
-    built = build(filters, form=form, decomposition=decomposition, pairing=pairing, ordering=ordering, scaling=scaling)
+    built = build(filters, form=form, decomposition=decomposition, pairing=pairing, ordering=ordering, scaling=scaling,
+                  outputs=outputs)
     return Realization(filters, built, _with_codes(filters, arithmetic))
 
 

@@ -251,6 +251,7 @@ def _figures(one: Compared) -> dict[str, object]:
     if measured.sum_deviation is not None:
         found["sum_response_deviation_db"] = measured.sum_deviation.db
         found["sum_response_deviation_hz"] = measured.sum_deviation.hz
+    if len(outputs) > 1:
         found["outputs"] = [{"name": each.name, **own} for each, own in zip(measured.outputs, outputs, strict=True)]
     return found
 

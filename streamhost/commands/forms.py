@@ -40,6 +40,7 @@ def _everything() -> list[str]:
         "structure.pairing": structures.PAIRINGS,
         "structure.ordering": structures.ORDERINGS,
         "structure.scaling": structures.SCALINGS,
+        "structure.outputs": structures.OUTPUTS,
         "format.arithmetic": (*ARITHMETICS, *FLOATS),
         "format.rounding": ROUNDINGS,
         "format.overflow": OVERFLOWS,

@@ -133,9 +133,10 @@ class Measurement:
         """Everything that was found, after the last block."""
         assert self._first is not None, "a signal has at least one frame"
         realization, several = self._realization, range(len(self._sums))
+        adds_up = 1 < len(realization.filters[0].outputs) == len(several)
         return Measured(
             outputs=tuple(self._figures(output, name) for output, name in enumerate(realization.outputs)),
-            sum_deviation=response_deviation(realization, self._band, several) if len(several) > 1 else None,
+            sum_deviation=response_deviation(realization, self._band, several) if adds_up else None,
             unstable=realization.unstable,
             tally=self._run.tally(),
             counts=realization.program.drawn.counts(),

@@ -5,7 +5,9 @@ from dataclasses import dataclass
 from math import inf, pi
 
 import numpy as np
+from numpy.typing import NDArray
 
+from streamhost.diagram import Diagram
 from streamhost.diagram.fan import from_input
 from streamhost.diagram.norms import response_to_output
 from streamhost.measure.bands import Band
@@ -57,14 +59,20 @@ class _Responses:
     def magnitudes(self, hertz: FloatArray) -> tuple[FloatArray, FloatArray]:
         """|H asked| and |H rounded|; the latter infinite where the rounded filter does not settle."""
         filters, diagram = self.realization.filters, self.realization.program.diagram
-        asked = filters[min(self.channel, len(filters) - 1)].response(hertz)
-        if asked.ndim > hertz.ndim:
-            asked = asked[list(self.outputs)].sum(axis=0)
+        filter = filters[min(self.channel, len(filters) - 1)]
         w = 2.0 * pi * hertz / self.realization.rate
+        if len(filter.outputs) < len(self.realization.outputs):
+            asked = self._of_diagram(self.realization.diagram, w)  # what the form has inside is asked for by the form alone
+        else:
+            asked = filter.response(hertz)
+            asked = asked[list(self.outputs)].sum(axis=0) if asked.ndim > hertz.ndim else asked
+        return np.abs(asked), np.abs(self._of_diagram(diagram, w))
+
+    def _of_diagram(self, diagram: Diagram, w: FloatArray) -> NDArray[np.complex128]:
+        channel = min(self.channel, diagram.channels - 1)
         with np.errstate(invalid="ignore"):
-            rounded = sum(response_to_output(diagram, [diagram.inputs[0]], w, self.channel, output=output)[:, 0]
-                          for output in self.outputs)
-        return np.abs(asked), np.abs(np.asarray(rounded))
+            return np.asarray(sum(response_to_output(diagram, [diagram.inputs[0]], w, channel, output=output)[:, 0]
+                                  for output in self.outputs))
 
     @property
     def poles(self) -> Iterable[complex]:

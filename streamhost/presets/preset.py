@@ -40,6 +40,7 @@ class Preset:
     pairing: str | None
     ordering: str | None
     scaling: str | None
+    outputs: str | None
     format: Format
     limits: Mapping[str, object]
     allow_unstable: bool

@@ -165,7 +165,7 @@ def _structure(mistakes: Mistakes, table: Mapping[str, Any]) -> dict[str, Any]:
     stated = read_table(mistakes, table, ("structure",), StructureTable)
     choices = {
         "form": structures.forms(), "decomposition": structures.decompositions(), "pairing": structures.PAIRINGS,
-        "ordering": structures.ORDERINGS, "scaling": structures.SCALINGS,
+        "ordering": structures.ORDERINGS, "scaling": structures.SCALINGS, "outputs": structures.OUTPUTS,
     }
     for key, value in stated.items():
         allowed = tuple(choices[key])

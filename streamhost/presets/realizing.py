@@ -25,7 +25,8 @@ def realize_preset(preset: Preset, channels: int | None = None) -> Realization:
     try:
         return realize(
             preset.filters(count), form=preset.form, decomposition=preset.decomposition, pairing=preset.pairing,
-            ordering=preset.ordering, scaling=preset.scaling, format=preset.format, allow_unstable=preset.allow_unstable,
+            ordering=preset.ordering, scaling=preset.scaling, outputs=preset.outputs, format=preset.format,
+            allow_unstable=preset.allow_unstable,
         )
     except FilterError as error:
         _add(mistakes, preset, ("filter",), str(error))
@@ -85,5 +86,5 @@ def _format_path(preset: Preset, error: FormatError) -> Path:
 
 def _structure_path(error: StructureError) -> Path:
     """The choice that the refusal names first; a cascade is named without its key."""
-    named = re.search(r'(form|decomposition|pairing|ordering|scaling) "', str(error))
+    named = re.search(r'(form|decomposition|pairing|ordering|scaling|outputs) "', str(error))
     return ("structure", named[1] if named else "decomposition")

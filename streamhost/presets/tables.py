@@ -73,6 +73,7 @@ class StructureTable(msgspec.Struct, kw_only=True):
     pairing: Text | None = None
     ordering: Text | None = None
     scaling: Text | None = None
+    outputs: Text | None = None
 
 
 class FixedTable(msgspec.Struct, kw_only=True):

@@ -1,7 +1,7 @@
 """From a filter and the names of a structure to a diagram."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from streamhost.diagram import Diagram
 from streamhost.errors import StructureError
@@ -59,17 +59,18 @@ class Built:
 
 def build(
     filter: Filter | Sequence[Filter], *, form: str, decomposition: str = "cascade", pairing: str | None = None,
-    ordering: str | None = None, scaling: str | None = None,
+    ordering: str | None = None, scaling: str | None = None, outputs: str | None = None,
 ) -> Built:
     """The diagram of a filter in a form; of a sequence, a filter for each channel, all with the same outputs.
 
     A choice of None is not stated: see `cascade.divide` for what is then done. With `whole` there is one section, and
     pairing and ordering make no difference. A filter given as codes is drawn as the cascade it is. What all outputs have
-    in common, and what leads to each of them, is divided and scaled apart, each as if it stood alone.
+    in common, and what leads to each of them, is divided and scaled apart, each as if it stood alone. `outputs` "all" adds
+    those that a form offers beside the filter's own, of a filter that is one section.
     StructureError where a name is unknown, the filter cannot be divided like that, or the form cannot carry a section.
     """
     drawn_as = form_of(form)
-    check_all(decomposition, pairing, ordering, scaling)
+    check_all(decomposition, pairing, ordering, scaling, outputs)
     channels: list[Parts] = []
     hazards: list[str] = []
     for each in (filter,) if isinstance(filter, Filter) else filter:
@@ -79,7 +80,21 @@ def build(
             _check_carried(division, drawn_as, name)
             hazards += [*hazards_of(piece, division.sections), *_hazards(division, drawn_as)]
         channels.append(tuple(Part(name, division) for name, _, division in pieces))
-    return Built(draw_channels(channels, drawn_as), decomposition, form, tuple(channels), tuple(dict.fromkeys(hazards)))
+    if outputs == "all":
+        channels = [_with_all_outputs(parts, form) for parts in channels]
+    diagram = draw_channels(channels, drawn_as)
+    if outputs == "all" and len(diagram.outputs) == 1:
+        raise StructureError(f'outputs "all" asks for more than the filter, and form "{form}" offers none. Allowed is "main".')
+    return Built(diagram, decomposition, form, tuple(channels), tuple(dict.fromkeys(hazards)))
+
+
+def _with_all_outputs(parts: Parts, form: str) -> Parts:
+    if len(parts) > 1 or len(parts[0].division.sections) > 1 or parts[0].division.direct is not None:
+        raise StructureError(
+            f'outputs "all" asks for those that form "{form}" has inside, and this filter is more than one section. Allowed '
+            'for it is "main"; with decomposition "whole" a filter is one section.'
+        )
+    return (Part(parts[0].name, replace(parts[0].division, all_outputs=True)),)
 
 
 def _pieces(filter: Filter) -> list[tuple[str, Filter]]:

@@ -43,6 +43,7 @@ class Division:
     """Sections in the order in which they are drawn, a gain in front of the first (None: none), and what was chosen.
 
     `shifts`: the powers of two before each section and behind the last, where the scaling is made of them; else empty.
+    `all_outputs`: whether the form's further outputs are drawn.
     `direct`: the finite response beside sections in parallel; None where they are in series.
 
     `undivided`: the filter itself in exact numbers, where it is the one section as it stands.
@@ -56,6 +57,7 @@ class Division:
     undivided: Ratio | None = None
     shifts: tuple[int, ...] = ()
     direct: tuple[float, ...] | None = None
+    all_outputs: bool = False
 
     def ratio(self, index: int) -> Ratio:
         """A section in exact numbers: of an undivided filter before its coefficients were rounded."""

@@ -31,8 +31,9 @@ class Draft:
 
     `origin` is where its first column and row are on the page; places are said from there. `numbers` are written for
     the numbers of the coefficients in a section that stands for a longer one. `ratio` is the section in exact numbers,
-    for forms whose coefficients are computed from it. `alone`: nothing else is drawn. `offered` collects further outputs
-    by name. Nodes are drawn `at` a column and a row of the section; where a form leaves places out, the drawing finds all
+    for forms whose coefficients are computed from it. `alone`: nothing else is drawn. Where `all_outputs` says so,
+    `offered` collects further outputs by name; else nodes that only they read would reach no output, and a form makes none.
+    Nodes are drawn `at` a column and a row of the section; where a form leaves places out, the drawing finds all
     of them.
     """
 
@@ -44,6 +45,7 @@ class Draft:
     numbers: tuple[str, ...] = ()
     exact: Ratio | None = None
     alone: bool = False
+    all_outputs: bool = False
     offered: dict[str, Ref] = field(default_factory=dict)
 
     @property

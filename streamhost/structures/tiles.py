@@ -1,6 +1,8 @@
 """The sections of one part of a filter on the page."""
 
+from collections.abc import Mapping
 from math import ceil
+from types import MappingProxyType
 
 from streamhost.diagram import Builder, Ref
 from streamhost.diagram.tapped import LEAD, ahead
@@ -33,11 +35,12 @@ class Tiles:
     """The sections of a part: drawn side by side, row under row, from a column and a row on.
 
     `first`: the number of the part's first section among all. `numbers`, if there are some, are those of `SHORT`.
-    `alone`: there is no other part.
+    `alone`: there is no other part. `offered`: further outputs of the form, once drawn, where they are asked for.
     """
 
     numbers: tuple[str, ...] = ()
     alone = False
+    offered: Mapping[str, Ref] = MappingProxyType({})
 
     def __init__(self, builder: Builder, part: Part, form: Form, left: float, top: float, first: int) -> None:
         self.builder, self.part, self.form, self.left, self.top, self.first = builder, part, form, left, top, first
@@ -70,8 +73,11 @@ class Tiles:
                 signal = self.register(signal, index)
             suffix = f"{self.ending}_{index + 1}" if len(division.sections) > 1 else self.ending
             draft = Draft(self.builder, section, self.first + index, suffix, self.origin(index), self.numbers,
-                          division.ratio(index), self.alone and len(division.sections) == 1 and not division.shifts)
+                          division.ratio(index), self.alone and len(division.sections) == 1 and not division.shifts,
+                          division.all_outputs)
             signal = self.form.build_section(draft, signal)
+            if division.all_outputs:
+                self.offered = draft.offered
         return self.scaled(signal, len(division.sections))
 
     def scaled(self, signal: Ref, index: int) -> Ref:
