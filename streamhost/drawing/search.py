@@ -2,6 +2,7 @@
 
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
+from functools import cached_property
 from heapq import heappop, heappush
 from math import inf
 
@@ -48,18 +49,22 @@ class Query:
     overlap: bool
     limit: float = inf
 
-    def starts(self) -> Iterator[tuple[float, State]]:
-        """Where a branch may begin, in which direction, and the price of its beginning."""
-        knots = {cell for cell, mask in self.tree.items() if mask not in STRAIGHT_ARMS}
-        for cell, mask in self.tree.items():
-            if cell not in knots and self.board.is_crossed(cell, self.net):
-                continue
-            price = self.price_of_branch(cell, mask, knots)
-            for direction in range(4):
-                if not mask >> direction & 1:
-                    yield price + self.price_of_turn(cell, mask, direction), (cell, direction)
+    @cached_property
+    def knots(self) -> set[Cell]:
+        """Where the tree turns, branches or ends."""
+        return {cell for cell, mask in self.tree.items() if mask not in STRAIGHT_ARMS}
 
-    def price_of_branch(self, cell: Cell, mask: int, knots: set[Cell]) -> float:
+    def starts(self, cell: Cell) -> Iterator[tuple[float, State]]:
+        """The directions in which a branch may begin at a cell of the tree, and the price of its beginning."""
+        mask = self.tree[cell]
+        if cell not in self.knots and self.board.is_crossed(cell, self.net):
+            return
+        price = self.price_of_branch(cell, mask)
+        for direction in range(4):
+            if not mask >> direction & 1:
+                yield price + self.price_of_turn(cell, mask, direction), (cell, direction)
+
+    def price_of_branch(self, cell: Cell, mask: int) -> float:
         arms = mask.bit_count()
         if arms < 2:
             return 0.0
@@ -67,7 +72,7 @@ class Query:
         price += DOT_AT_SOURCE if cell == self.source.cell else 0.0
         price += DOT_ON_ARROW if cell in self.ends else 0.0
         x, y = cell
-        near = not knots.isdisjoint(((x + 1, y), (x - 1, y), (x, y + 1), (x, y - 1)))
+        near = not self.knots.isdisjoint(((x + 1, y), (x - 1, y), (x, y + 1), (x, y - 1)))
         return price + (DOT_NEAR if near else 0.0)
 
     def price_of_turn(self, cell: Cell, mask: int, direction: int) -> float:
@@ -81,10 +86,12 @@ class Query:
             return 0.0
         return None if direction == self.goal.direction ^ 2 else BEND + CORNER_AT_SINK
 
-    def estimate(self, cell: Cell, direction: int) -> float:
+    def distance(self, cell: Cell) -> float:
         goal = self.goal.cell
-        distance = abs(cell[0] - goal[0]) + abs(cell[1] - goal[1])
-        return distance * STRAIGHT + BEND * bends_between(cell, direction, goal, self.goal.direction)
+        return (abs(cell[0] - goal[0]) + abs(cell[1] - goal[1])) * STRAIGHT
+
+    def estimate(self, cell: Cell, direction: int) -> float:
+        return self.distance(cell) + BEND * bends_between(cell, direction, self.goal.cell, self.goal.direction)
 
     def enter(self, cell: Cell, direction: int) -> float | None:
         """The price of stepping into a cell; its own tree and stubs are no way."""
@@ -110,11 +117,15 @@ class Search:
     heap: list[tuple[float, float, State]] = field(default_factory=list)
 
     def run(self) -> Way | None:
-        for price, (cell, direction) in self.query.starts():
-            self.offer(price, (cell, direction + START), None, self.query.estimate(cell, direction))
         goal = self.query.goal
         end = (goal.cell, END)
-        while self.heap:
+        waiting = sorted(((self.query.distance(cell), cell) for cell in self.query.tree), reverse=True)
+        while True:
+            # A cell of the tree begins nothing that costs less than its distance: it waits until that is the least.
+            while waiting and not (self.heap and self.heap[0][0] < waiting[-1][0]):
+                self.begin(waiting.pop()[1])
+            if not self.heap:
+                return None
             _, cost, state = heappop(self.heap)
             if state == end:
                 return Way(self.traced(self.before[end]), cost)
@@ -124,7 +135,10 @@ class Search:
                 self.arrive(cost, state, end)
             else:
                 self.spread(cost, state)
-        return None
+
+    def begin(self, cell: Cell) -> None:
+        for price, (_, direction) in self.query.starts(cell):
+            self.offer(price, (cell, direction + START), None, self.query.estimate(cell, direction))
 
     def spread(self, cost: float, state: State) -> None:
         """On from a state: straight, or round a corner where nobody else is."""
