@@ -268,9 +268,8 @@ def test_pole_sensitivity_is_1_where_that_of_direct_1_is_10() -> None:
     # a step of 1e-6 bends the line by 1e-6 times 10^2 / 0.05 / 2 of itself
     assert moved("direct-1", "a1") == pytest.approx(10.004168, rel=2e-3)
     assert moved("direct-1", "a2") == pytest.approx(10.10522, rel=2e-3)
-    # in the normal form sigma stands twice, and half of its movement comes from either
-    assert moved("normal", "a11") == pytest.approx(0.5, rel=2e-3)
-    assert moved("normal", "a12") == pytest.approx(0.5, rel=2e-3)
+    assert moved("normal", "sigma") == pytest.approx(1.0, rel=1e-8)
+    assert moved("normal", "omega") == pytest.approx(1.0, rel=1e-8)
 
 
 # --- many digits

@@ -21,7 +21,8 @@ ASCII = (
 )
 OTHERS = {MINUS: 838, DOTS: 1000}
 WIDEST = 1000
-GREEK = {"alpha": "\N{GREEK SMALL LETTER ALPHA}", "beta": "\N{GREEK SMALL LETTER BETA}"}
+GREEK = {"alpha": "\N{GREEK SMALL LETTER ALPHA}", "beta": "\N{GREEK SMALL LETTER BETA}",
+         "sigma": "\N{GREEK SMALL LETTER SIGMA}", "omega": "\N{GREEK SMALL LETTER OMEGA}"}
 
 COEFFICIENT = re.compile(r"(-?)([A-Za-z]+)_?(\d*)(?:_(\d+|[A-Za-z]))?")
 TO_AN_OUTPUT = re.compile(r"(-?)([A-Za-z]|[A-Za-z]+(?=\d))(?:_?(\d+|[kN]))?_([a-z][a-z0-9]+)(?:_(\d+))?")

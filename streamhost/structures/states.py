@@ -3,8 +3,8 @@
 from collections.abc import Callable
 from math import ceil, log2
 
-from streamhost.diagram.builder import Builder, Ref, Signed, minus
-from streamhost.diagram.hints import General
+from streamhost.diagram.builder import Builder, Ref, Signed
+from streamhost.diagram.hints import General, Point
 from streamhost.filters import Polynomials
 from streamhost.filters.exact import rounded, stripped
 from streamhost.filters.roots import roots
@@ -12,6 +12,9 @@ from streamhost.filters.stability import is_stable
 from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Size, delays_down
 from streamhost.structures.gramians import StateSpace
+
+Entry = Callable[[int, int, Ref, Point], Ref | Signed | None]
+"""From i, j, the state s_j and a place to the term a_ij s_j; None where there is none."""
 
 B, SUM, STATE, C, Y = 0.75, 1.5, 2.375, 3.75, 4.5
 FIRST = 1.625
@@ -33,10 +36,8 @@ def size(section: Polynomials) -> Size:
     return Size(Y, COEFFICIENTS[1, 1] if states == 2 else FIRST if states == 1 else 0.0)
 
 
-def draw(
-    draft: Draft, x: Ref, space: StateSpace, keeps: Callable[[int, int], bool], turned: tuple[int, int] | None = None
-) -> Ref:
-    """The section. Entries of A that are not kept are not drawn; the entry `turned` is stored with its sign turned.
+def draw(draft: Draft, x: Ref, space: StateSpace, entry: Entry) -> Ref:
+    """The section. `entry` makes the terms of A.
 
     Row after row, each by its states in order and then its input; the output last, from the last state to the first.
     """
@@ -44,17 +45,18 @@ def draw(
     s = [draft.delay(f"s{i + 1}", at=(STATE, row(i))) for i in states]
     draft.trunk(x, (0, 0), (0, row(len(s) - 1)), (0, 0), (SUM, 0))
     for i in states:
-        terms: list[Ref | Signed] = []
-        for j in states:
-            if keeps(i, j):
-                value = -space.a[i][j] if (i, j) == turned else space.a[i][j]
-                product = draft.gain(f"a{i + 1}{j + 1}", value, s[j], at=(STATE, row_of(i, j)), face="W", part="a")
-                terms.append(minus(product) if (i, j) == turned else product)
-        terms.append(draft.gain(f"b{i + 1}", space.b[i], x, at=(B, row(i)), part="b"))
-        s[i].takes(draft.add(f"t{i + 1}", terms, at=(SUM, row(i))))
+        found = [entry(i, j, s[j], (STATE, row_of(i, j))) for j in states]
+        terms = [term for term in found if term is not None]
+        fed = draft.gain(f"b{i + 1}", space.b[i], x, at=(B, row(i)), part="b")
+        s[i].takes(draft.add(f"t{i + 1}", [*terms, fed], at=(SUM, row(i))))
     heard = [draft.gain(f"c{i + 1}", space.c[i], s[i], at=(C, row(i)), part="c") for i in reversed(states)]
     direct = draft.gain("d", space.d, x, at=(STATE, 0), part="d")
     return draft.climb("y", [*heard, direct], column=Y, rows=[*(row(i) for i in reversed(states)), 0.0])
+
+
+def each(draft: Draft, space: StateSpace) -> Entry:
+    """Every entry of A as a coefficient of its own."""
+    return lambda i, j, s, at: draft.gain(f"a{i + 1}{j + 1}", space.a[i][j], s, at=at, face="W", part="a")
 
 
 def row(i: int) -> float:

@@ -8,7 +8,8 @@
 
 N is the order, alpha and beta are the coefficients of the same filter in powers of delta^-1:
 B / A = (beta0 + beta1 delta^-1 + ...) / (1 + alpha1 delta^-1 + ...), of second order alpha1 = (2 + a1) / D and
-alpha2 = (1 + a1 + a2) / D^2. D is the smallest power of two, at most 1, for which no alpha is larger than 1, if there is one.
+alpha2 = (1 + a1 + a2) / D^2. D is the smallest power of two, at most 1, for which no alpha is larger than 1, if there is one;
+another k is another program.
 Drawn for a second-order section:
 
     x ---+---beta0--->(+)------------------+---> y

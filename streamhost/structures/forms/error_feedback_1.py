@@ -3,7 +3,8 @@
     y[n] = b0 x[n] + b1 x[n-1] + b2 x[n-2] - a1 y[n-1] - a2 y[n-2] - c1 e[n-1],   C(z) = 1 + c1 z^-1 = 1 - z^-1
 
 e[n] is what the rounding of y[n] dropped: the sum before minus y[n] after, without what an overflow took away. Where
-the poles are nearer to z = -1, C(z) = 1 + z^-1. The rounding is heard through C / A. Drawn for a second-order section:
+the poles are nearer to z = -1, C(z) = 1 + z^-1, which is another program. The rounding is heard through C / A. Drawn for
+a second-order section:
 
     x ---+---b0--->(+)------------+-------+---> y
          |          ^             e       |

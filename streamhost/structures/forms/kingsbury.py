@@ -25,11 +25,11 @@ Nodes are evaluated in the order u, h, v, y; each sum as it is written above. Th
 
 Source: N. Kingsbury, "Second-order recursive digital-filter element for poles near the unit circle and the real z axis",
 Electronics Letters 8 (1972); Zölzer, Digital Audio Signal Processing, ch. 5 (both from memory: the denominator in k1 and
-k2; that the numerator is taken from x and the registers is our own choice). The recursion is that of the delay-based
-state-variable filter; its outputs are not made here.
+k2; that the numerator is taken from x and the registers is our own choice). The recursion is that of
+state-variable-delayed with F = k1, q = k2, whose numerator is mixed from its high, band and low outputs.
 
-Counts: a second-order section 6, 6, 2; first order 3, 3, 1, one register u that k = 1 + a1 moves towards x. In fixed point
-four roundings of second order (u, h, v, y), two of first.
+Counts: a second-order section 6, 6, 2; first order 3, 3, 1, one register u that k1 = 1 + a1 moves towards x. k1 is stored
+once. In fixed point four roundings of second order (u, h, v, y), two of first.
 
 Good at: low frequencies in short words. k1 and k2 say the distance of the poles from z = 1 with their first bits. u is the
 low-passed input, v reaches Q times it, so that no register needs integer bits for the recursion. Its noise grows by 3 dB
@@ -64,10 +64,11 @@ def build_section(draft: Draft, x: Ref) -> Ref:
     v1 = draft.delay("dv", at=(3.125, UPPER))
     u1 = draft.delay("du", at=(1.375, BACK))
     draft.trunk(x, (0, 0), (0, UPPER), (0, 0), (1.5, 0))
-    u = draft.add("u", [u1, draft.gain("k1", k1, v1, at=(2.75, LOWER), face="W", part="k")], at=(2.0, LOWER), face="W")
+    slow = draft.gain("k1", k1, v1, at=(2.75, LOWER), face="W", part="k")
+    u = draft.add("u", [u1, slow], at=(2.0, LOWER), face="W")
     damped = draft.gain("k2", k2, v1, at=(2.375, K2), face="W", part="k")
     h = draft.chain("h", [x, minus(u), minus(damped)], at=[(0.5, UPPER), (1.0, UPPER)])
-    v1.takes(draft.add("v", [v1, draft.gain("k1", k1, h, at=(1.75, UPPER), part="k")], at=(2.25, UPPER)))
+    v1.takes(draft.add("v", [v1, draft.again(slow, "k1", h, at=(1.75, UPPER))], at=(2.25, UPPER)))
     u1.takes(u)
     heard = [draft.gain("c2", c2, u1, at=(integrators.C, BACK), part="c"),
              draft.gain("c1", c1, v1, at=(integrators.C, UPPER), part="c"),

@@ -57,7 +57,8 @@ def build_section(draft: Draft, x: Ref) -> Ref:
     ratio = draft.ratio
     if ratio.order == 0:
         return draft.gain("d", float(ratio.b[0]), x, at=(states.STATE, 0), part="d")
-    return states.draw(draft, x, quietest(ratio), lambda i, j: True)
+    space = quietest(ratio)
+    return states.draw(draft, x, space, states.each(draft, space))
 
 
 def carries(ratio: Ratio) -> str:

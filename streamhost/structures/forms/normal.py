@@ -1,26 +1,26 @@
 """normal: a state space whose matrix is normal: a turn and a shrinking, for a pair of poles sigma +- j omega.
 
-    s1[n+1] =  a11 s1[n] + a12 s2[n] + b1 x[n],   a11 = a22 = sigma
-    s2[n+1] = -a21 s1[n] + a22 s2[n] + b2 x[n],   a12 = a21 = omega
-    y[n]    =  c1 s1[n] + c2 s2[n] + d x[n]
+    s1[n+1] =  sigma s1[n] + omega s2[n] + b1 x[n]
+    s2[n+1] = -omega s1[n] + sigma s2[n] + b2 x[n]
+    y[n]    =  c2 s2[n] + c1 s1[n] + d x[n]
 
-Two real poles are two states of their own, without a12 and a21; one pole is one state. The states are scaled: white input
+Two real poles p1 and p2 are two states of their own, without omega; one pole is one state. The states are scaled: white input
 of power 1 gives each of them the power 1. Drawn for a pair of poles:
 
-    x ---+------------------ d ----------------->(+)---> y
-         |     +<--- a11 ---+                     ^
-         |     v            |                     |
-         +-b1->(+)--->z^-1--+---------- c1 ----->(+)
-         |     ^            |                     ^
-         |     +<--- a12 ---|--+                  |
-         |     +<-- -a21 ---+  |                  |
-         |     v               |                  |
-         +-b2->(+)--->z^-1-----+------- c2 --------+
-               ^               |
-               +<--- a22 ------+
+    x ---+------------------- d ----------------->(+)---> y
+         |     +<-- sigma ---+                     ^
+         |     v             |                     |
+         +-b1->(+)--->z^-1---+---------- c1 ----->(+)
+         |     ^             |                     ^
+         |     +<-- omega ---|--+                  |
+         |     +<-- omega ---+  |                  |
+         |   - v                |                  |
+         +-b2->(+)--->z^-1------+------- c2 -------+
+               ^                |
+               +<-- sigma ------+
 
-Row after row in the order t1, t2, y, each sum as written above, but y from the last state up: c2 s2 + c1 s1 + d x. The sum
-that a state takes is labelled t, its delay s.
+Row after row in the order t1, t2, y, each sum as written above. The sum that a state takes is labelled t, its delay s. sigma
+and omega are stored once. The form coupled has the same matrix and a power of two for the scale of its states.
 
 Source: C. Barnes and A. Fam, "Minimum norm recursive digital filters that are free of overflow limit cycles", IEEE Trans.
 CAS-24 (1977); Jackson, Lindgren & Kim, "Optimal synthesis of second-order state-space structures for digital filters",
@@ -29,8 +29,8 @@ IEEE Trans. CAS-26 (1979).
 Counts: a second-order section 9, 6, 2; with real poles 7, 4, 2; first order 4, 2, 1. In fixed point one rounding a state,
 and one of the output.
 
-Good at: whatever must not oscillate. The matrix shrinks every state by the poles' radius, also with its coefficients rounded,
-since a11 and a22, and a12 and a21, are rounded alike: an overflow dies out whether it wraps or saturates, and with registers
+Good at: whatever must not oscillate. The matrix shrinks every state by the poles' radius, also with its coefficients rounded:
+an overflow dies out whether it wraps or saturates, and with registers
 rounded toward zero everything does. Its coefficients move the poles by as much as they move, where
 those of direct-1 move poles near each other by many times that. The roundings of the states are heard with half the power
 of one for a low-pass of Q 0.707 at any frequency; direct-1's is heard 52 dB louder than it is at 100 Hz and 48 kHz.
@@ -45,11 +45,12 @@ Arithmetic: fixed point with a state of a few more integer bits (state and opera
 Carries: stable sections of first and second order with a recursion and without a double pole.
 """
 
-from streamhost.diagram.builder import Ref
+from streamhost.diagram.builder import Ref, Signed, minus
+from streamhost.diagram.hints import Point
 from streamhost.structures import states
 from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Form
-from streamhost.structures.gramians import heard, least_noise
+from streamhost.structures.gramians import StateSpace, heard, least_noise
 from streamhost.structures.modal import discriminant
 from streamhost.structures.modal import normal as computed
 
@@ -63,7 +64,27 @@ def build_section(draft: Draft, x: Ref) -> Ref:
         return draft.gain("d", float(ratio.b[0]), x, at=(states.STATE, 0), part="d")
     space = computed(ratio)
     is_pair = ratio.order == 2 and discriminant(ratio) < 0
-    return states.draw(draft, x, space, lambda i, j: is_pair or i == j, (1, 0) if is_pair else None)
+    return states.draw(draft, x, space, turning(draft, space) if is_pair else apart(draft, space))
+
+
+def turning(draft: Draft, space: StateSpace) -> states.Entry:
+    """[[sigma, omega], [-omega, sigma]], either stored in the first row."""
+    stored: dict[bool, Ref] = {}
+
+    def entry(i: int, j: int, s: Ref, at: Point) -> Ref | Signed:
+        name = "sigma" if i == j else "omega"
+        if i == 0:
+            stored[i == j] = draft.gain(name, space.a[i][j], s, at=at, face="W", part="a")
+            return stored[i == j]
+        product = draft.again(stored[i == j], name, s, at=at, face="W")
+        return product if i == j else minus(product)
+
+    return entry
+
+
+def apart(draft: Draft, space: StateSpace) -> states.Entry:
+    """A diagonal of real poles."""
+    return lambda i, j, s, at: draft.gain(f"p{i + 1}", space.a[i][i], s, at=at, face="W", part="a") if i == j else None
 
 
 def carries(ratio: Ratio) -> str:

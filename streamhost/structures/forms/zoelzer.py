@@ -9,7 +9,8 @@
     d = b0, c1 = (b1 - b0 a1) / (2^m z1^2), c2 = B(1) / A(1) - b0
 
 For poles of small angle theta, z1 is near theta^(2/3). The shifts keep v as large as u: 2^-m is the power of two nearest to
-the root of z1 by ratio, at most 1. Without them (m = 0) nothing is drawn in their place. Drawn for a second-order section:
+the root of z1 by ratio, at most 1. Without them (m = 0) nothing is drawn in their place; another m is
+another program. Drawn for a second-order section:
 
     x ---+--------------------- d ---------------------->(+)---> y
          |                                                ^
@@ -32,8 +33,8 @@ rounded. The delay of u is labelled du, that of v dv.
 Source: Zölzer, Digital Audio Signal Processing, ch. 5 (from memory: the denominator in z1 and z2, three factors z1 around the
 loop; that the numerator is taken from x and the registers, and the shifts, are our own choice).
 
-Counts: a second-order section 7, 6, 2; first order 3, 3, 1, one register u that z1 = 1 + a1 moves towards x. In fixed point
-four roundings of second order (u, h, v, y), two of first.
+Counts: a second-order section 7, 6, 2; first order 3, 3, 1, one register u that z1 = 1 + a1 moves towards x. z1 is stored
+once. In fixed point four roundings of second order (u, h, v, y), two of first.
 
 Good at: low frequencies in short words, where even k1 of kingsbury is small: at 20 Hz and 48 kHz k1 is 0.0026, 86 steps of
 a 16-bit coefficient, and z1 is 0.019, 623 steps, so that the poles can lie on a grid that much finer.
@@ -68,12 +69,13 @@ def build_section(draft: Draft, x: Ref) -> Ref:
     v1 = draft.delay("dv", at=(3.125, REGISTER), face="S")
     u1 = draft.delay("du", at=(1.0, BACK))
     draft.trunk(x, (0, 0), (0, UPPER), (0, 0), (1.5, 0))
-    slow = shifted(draft, "down", -m, draft.gain("z1", z1, v1, at=(2.75, LOWER), face="W", part="z"), (2.125, LOWER), "W")
+    first = draft.gain("z1", z1, v1, at=(2.75, LOWER), face="W", part="z")
+    slow = shifted(draft, "down", -m, first, (2.125, LOWER), "W")
     u = draft.add("u", [u1, slow], at=(1.5, LOWER), face="W")
-    error = draft.gain("z1", z1, draft.add("p", [x, minus(u)], at=(0.5, UPPER)), at=(1.125, UPPER), part="z")
+    error = draft.again(first, "z1", draft.add("p", [x, minus(u)], at=(0.5, UPPER)), at=(1.125, UPPER))
     fast = shifted(draft, "up", m, error, (1.75, UPPER), "E")
     h = draft.add("h", [fast, minus(draft.gain("z2", z2, v1, at=(2.375, ADDER), face="N", part="z"))], at=(2.375, UPPER))
-    turned = draft.gain("z1", z1, h, at=(3.125, DOWN), face="S", part="z")
+    turned = draft.again(first, "z1", h, at=(3.125, DOWN), face="S")
     v1.takes(draft.add("v", [v1, turned], at=(3.125, ADDER), face="S"))
     u1.takes(u)
     heard = [draft.gain("c2", c2, u1, at=(4.0, BACK), part="c"), draft.gain("c1", c1, v1, at=(4.0, TAP), part="c"),
