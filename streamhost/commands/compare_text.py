@@ -164,6 +164,8 @@ def _remarks(compared: Sequence[Compared]) -> Iterator[str]:
 
 def _noise_remarks(figures: Figures, format: Format) -> Iterator[str]:
     noise, white, floating = figures.noise, figures.white, isinstance(format, Float)
+    if figures.channel is not None:
+        yield f": noise is told of channel {figures.channel}, the worst"
     if noise.reason:
         yield f" has no noise figure{'' if floating else ' and no verdict on the white model'}: {noise.reason}"
         return
@@ -270,6 +272,7 @@ def _figures_of(figures: Figures) -> dict[str, object]:
         "dc_lsb": figures.dc_lsb,
         "peak_dbfs": figures.peak_dbfs,
         "difference_gain_db": figures.difference_gain_db,
+        **({"noise_channel": figures.channel} if figures.channel is not None else {}),
     }
 
 

@@ -35,7 +35,8 @@ class Figures:
 
     `peak_dbfs`: of the output. `dc_lsb`: the noise's mean in steps of the output's word, None in floating point.
     `difference_gain_db`: what brings the peak of the difference near -12 dBFS, in whole dB; None where there is no
-    difference, or one that runs away.
+    difference, or one that runs away. `channel`: where channels have coefficients of their own, the one, from 1, that
+    noise, prediction and verdict are of, the worst; None where they are of all channels together.
     """
 
     name: str
@@ -46,6 +47,7 @@ class Figures:
     dc_lsb: float | None
     peak_dbfs: float
     difference_gain_db: int | None
+    channel: int | None = None
 
 
 @dataclass(frozen=True)
@@ -146,40 +148,51 @@ class Measurement:
 
     def _figures(self, output: int, name: str) -> Figures:
         realization, found = self._realization, self._sums[output]
-        noise = found.noise.result()
+        channel, noise = found.worst()
         return Figures(
             name=name,
             deviation=response_deviation(realization, self._band, (output,)),
             noise=noise,
-            prediction=None if found.ran_away else self._watch.prediction(realization.rate, output),
-            white=self._white(noise, output),
+            prediction=None if found.ran_away else self._watch.prediction(realization.rate, output, channel),
+            white=self._white(noise, output, channel),
             dc_lsb=_in_steps(noise.mean, realization) if isinstance(realization.format, Fixed) else None,
             peak_dbfs=peak_dbfs(found.peak),
             difference_gain_db=None if found.ran_away else _listening_gain(found.difference_peak),
+            channel=channel + 1 if realization.diagram.channels > 1 else None,
         )
 
-    def _white(self, noise: Noise, output: int) -> Whiteness:
+    def _white(self, noise: Noise, output: int, channel: int) -> Whiteness:
         """The verdict, where there is a noise for the model to be one of."""
         if self._realization.unstable:
             return Whiteness(None, "with its coefficients rounded the filter is not stable")
         if noise.dbfs is None:
             return Whiteness(None, "there is no noise figure")
-        return self._watch.verdict(self._realization.rate, output)
+        return self._watch.verdict(self._realization.rate, output, channel)
 
 
 class _OutputSum:
-    """What is summed up of one output."""
+    """What is summed up of one output. Where channels have coefficients of their own, each has its noise."""
 
     def __init__(self, realization: Realization, frames: int, channels: int, settling: float) -> None:
-        self.noise = NoiseSum(realization.rate, frames, channels, settling)
+        columns = realization.diagram.channels
+        groups = [slice(channel, channel + 1) for channel in range(columns)] if columns > 1 else [slice(channels)]
+        self._noises = [(group, NoiseSum(realization.rate, frames, channels // columns, settling)) for group in groups]
         self.peak = self.difference_peak = 0.0
         self.ran_away = False
 
     def add(self, output: FloatArray, difference: FloatArray, marks: NDArray[np.uint8]) -> None:
-        self.noise.add(difference, marks)
+        for group, noise in self._noises:
+            noise.add(difference[:, group], marks[:, group])
         self.peak = max(self.peak, _largest(output))
         self.difference_peak = max(self.difference_peak, _largest(difference))
         self.ran_away = self.ran_away or has_run_away(difference)
+
+    def worst(self) -> tuple[int, Noise]:
+        """The channel with the most noise, or without a figure, and that noise."""
+        results = [noise.result() for _, noise in self._noises]
+        levels = [inf if result.dbfs is None else result.dbfs for result in results]
+        channel = levels.index(max(levels))
+        return channel, results[channel]
 
 
 def measure(realization: Realization, x: FloatArray, band: Band) -> Measured:

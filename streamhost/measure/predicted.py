@@ -32,20 +32,19 @@ class Prediction:
     a_dbfs: float | None
 
 
-def predicted_noise(program: Program, rate: float, rms: FloatArray | None = None, *, output: int = 0) -> Prediction:
-    """The noise of a program's roundings at an output under the white model, the mean power over its channels.
+def predicted_noise(
+    program: Program, rate: float, rms: FloatArray | None = None, *, output: int = 0, channel: int = 0
+) -> Prediction:
+    """The noise of a program's roundings at an output under the white model, with the coefficients of a channel.
 
-    A floating-point program's is an estimate that needs the `rms` of every node, (nodes,), or (channels, nodes) where
-    channels have coefficients of their own.
+    A floating-point program's is an estimate that needs the `rms` of every node, (nodes,).
     """
-    channels = range(program.diagram.channels)
-    densities = [_density(program, channel, output, rms) for channel in channels]
-    poles = {complex(pole) for channel in channels for pole in to_output(program.diagram, [], channel, output=output).poles}
+    density = _density(program, channel, output, rms)
+    poles = {complex(pole) for pole in to_output(program.diagram, [], channel, output=output).poles}
 
     def level(low: float, high: float, weight: Density | None = None) -> float:
-        edges = breakpoints(poles, low, high)
-        powers = [integral(_weighted(density, weight), edges) / np.pi for density in densities]
-        return power_dbfs(float(np.mean(powers))) if isfinite(sum(powers)) else inf
+        power = integral(_weighted(density, weight), breakpoints(poles, low, high)) / np.pi
+        return power_dbfs(power) if isfinite(power) else inf
 
     band = audio_band(rate)
     full = level(0.0, np.pi)
@@ -59,8 +58,7 @@ def predicted_noise(program: Program, rate: float, rms: FloatArray | None = None
 def _density(program: Program, channel: int, output: int, rms: FloatArray | None) -> Density:
     if isinstance(program.format, Float):
         assert rms is not None, "what floats round depends on the signal"
-        own = np.atleast_2d(rms)
-        return lambda w: float_spectrum(program, own[min(channel, len(own) - 1)], w, channel, output)
+        return lambda w: float_spectrum(program, rms, w, channel, output)
     return lambda w: noise_spectrum(program, w, channel, output)
 
 

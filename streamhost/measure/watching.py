@@ -38,22 +38,15 @@ class FixedWatch:
                 self._columns[min(channel, len(self._columns) - 1)].add(x[:, channel], trace[:, channel])
         self._frame += len(x)
 
-    def verdict(self, rate: float, output: int = 0) -> Whiteness:
+    def verdict(self, rate: float, output: int = 0, channel: int = 0) -> Whiteness:
         """Whether the white model holds at that rate at an output, each rounding judged by its part in the noise there.
 
-        Where channels are judged apart it holds if it does in all in which something is rounded.
+        `channel`: with coefficients of its own; 0 where all are alike.
         """
-        found = [(number, column.verdict(rate, output)) for number, column in enumerate(self._columns, 1)]
-        judged = [(number, verdict) for number, verdict in found if verdict is not None]
-        worst = next((pair for kind in (False, None) for pair in judged if pair[1].holds is kind), None)
-        if worst is None:
-            return judged[0][1] if judged else Whiteness(None, "nothing is rounded")
-        number, verdict = worst
-        where = f" in channel {number}" if len(self._columns) > 1 else ""
-        return replace(verdict, reason=f"{verdict.reason}{where}")
+        return self._columns[channel].verdict(rate, output)
 
-    def prediction(self, rate: float, output: int = 0) -> Prediction:
-        return predicted_noise(self._program, rate, output=output)
+    def prediction(self, rate: float, output: int = 0, channel: int = 0) -> Prediction:
+        return predicted_noise(self._program, rate, output=output, channel=channel)
 
 
 class _ColumnWatch:
@@ -72,12 +65,11 @@ class _ColumnWatch:
             self._sum.add(x, trace[:, self._columns])
             self._seen = True
 
-    def verdict(self, rate: float, output: int) -> Whiteness | None:
-        """None where nothing is rounded on the way to the output."""
+    def verdict(self, rate: float, output: int) -> Whiteness:
         shares = source_shares(self._program, rate, np.pi * octave_edges(2), self._column, output)
         reaching = [k for k in range(len(self._sources)) if shares[:, k].any()]
         if not reaching:
-            return None
+            return Whiteness(None, "nothing is rounded")
         sources = tuple(self._sources[k] for k in reaching)
         if blind := _toward_zero(self._program, sources):
             return Whiteness(False, f"rounding toward zero follows the sign of the signal ({blind})")
@@ -110,13 +102,13 @@ class FloatWatch:
             self._samples[column] += len(settled)
         self._frame += len(x)
 
-    def verdict(self, rate: float, output: int = 0) -> Whiteness:
+    def verdict(self, rate: float, output: int = 0, channel: int = 0) -> Whiteness:
         return Whiteness(None, "what floating point rounds grows and shrinks with the signal: there is no such model")
 
-    def prediction(self, rate: float, output: int = 0) -> Prediction:
+    def prediction(self, rate: float, output: int = 0, channel: int = 0) -> Prediction:
         """An estimate."""
-        power = self._squares / np.maximum(self._samples, 1.0)[:, np.newaxis]
-        return predicted_noise(self._program, rate, np.sqrt(power), output=output)
+        power = self._squares[channel] / max(1.0, self._samples[channel])
+        return predicted_noise(self._program, rate, np.sqrt(power), output=output, channel=channel)
 
 
 def watch(program: Program, frames: int, wait: int, block: int) -> FixedWatch | FloatWatch:
