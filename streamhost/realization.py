@@ -10,13 +10,11 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from streamhost.diagram import Diagram
-from streamhost.diagram.loop_matrices import loop_matrices
-from streamhost.diagram.polynomials import determinant
 from streamhost.errors import FilterError, FormatError, RequestError
-from streamhost.filters import Filter, Polynomials
-from streamhost.filters.stability import unstable_poles
+from streamhost.filters import Filter
 from streamhost.formats import Fixed, Float, Format, named_format, parse_word
 from streamhost.program.carrying import Carried, carry, is_run
+from streamhost.program.poles import exact_running_sums, unstable_poles_in
 from streamhost.program.program import Program
 from streamhost.program.run import lower
 from streamhost.structures import Built, build
@@ -95,8 +93,20 @@ class Realization:
 
     @cached_property
     def unstable(self) -> int:
-        """Poles of the diagram with its coefficients as stored that lie on or outside the unit circle, decided exactly."""
-        return max(_unstable_in(self.program.diagram, channel) for channel in range(self.program.diagram.channels))
+        """Poles of the diagram with its coefficients as stored that lie on or outside the unit circle, decided exactly.
+
+        Without those of running sums that wrap and drop no bit, which zeros cancel exactly.
+        """
+        return unstable_poles_in(self.program.diagram) - exact_running_sums(self.program)
+
+    @property
+    def unstable_since(self) -> str:
+        """What put the unstable poles there, in words that follow "unstable"."""
+        if self.unstable_as_asked:
+            return "as asked"
+        if unstable_poles_in(self.diagram):
+            return "as drawn"
+        return "with its coefficients rounded"
 
     def check_samples(self, name: str = "this realization") -> None:
         """RequestError where the input's or the output's word is longer than a sample in float64; `name` is its subject."""
@@ -321,11 +331,3 @@ def _with_codes(filters: Sequence[Filter], format: Format) -> Format:
             f"The filter is given as codes of {word}, which they keep: leave `coefficients` out of the format."
         )
     return format.with_coefficient_word(word)
-
-
-def _unstable_in(diagram: Diagram, channel: int) -> int:
-    return sum(_unstable_poles_of(determinant(matrix)) for matrix in loop_matrices(diagram, channel))
-
-
-def _unstable_poles_of(denominator: Sequence[object]) -> int:
-    return unstable_poles(Polynomials((1.0,), tuple(denominator)))  # type: ignore[arg-type]

@@ -5,8 +5,6 @@ from functools import cache
 import numpy as np
 
 from streamhost import Filter, design
-from streamhost.diagram import Diagram
-from streamhost.diagram.norms import norms_to_output, powers_from_input
 from streamhost.errors import StructureError
 from streamhost.structures import Built, build
 
@@ -64,12 +62,3 @@ def _built(form: str, decomposition: str, name: str) -> Built | None:
         assert "cannot carry" in str(error)
         return None
 
-
-def rounding_bound(diagram: Diagram) -> float:
-    """The most that one rounding of each node, and of each coefficient, of a signal of at most 1 makes at the output.
-
-    A node's value is taken as six times what white noise gives it. Doubled for scipy's own, of the same kind.
-    """
-    values = 6.0 * np.sqrt(powers_from_input(diagram))
-    to_output = norms_to_output(diagram, range(len(diagram.nodes))).l1
-    return 2.0 * 2.0 * EPSILON * float(np.sum(values * to_output))

@@ -5,7 +5,8 @@ import re
 import numpy as np
 import pytest
 from drawing_reader import faults_of_figure, page_of
-from form_filters import RATE, built, carried, filters, rounding_bound
+from form_bounds import rounding_bound
+from form_filters import RATE, built, carried, filters
 from native_runs import busy, run_native
 from scipy import signal
 
@@ -39,9 +40,11 @@ def by_scipy(filter: Filter, x: np.ndarray) -> np.ndarray:
 @pytest.mark.parametrize(("name", "how", "which"), CASES)
 def test_in_float64_it_is_scipys_filter(name: str, how: str, which: str) -> None:
     x = np.random.default_rng(1).uniform(-1, 1, FRAMES)
+    diagram = built(name, how, which).diagram
+    bound = rounding_bound(diagram, FRAMES)
     # The definition: kernels have their own test below, and compiling one for each case would take minutes.
-    y = run_definition(lower(built(name, how, which).diagram, named_format("float64")), x[:, np.newaxis])[:, 0, 0]
-    np.testing.assert_allclose(y, by_scipy(filters()[which], x), rtol=0, atol=rounding_bound(built(name, how, which).diagram))
+    y = run_definition(lower(diagram, named_format("float64")), x[:, np.newaxis])[:, 0, 0]
+    np.testing.assert_allclose(y, by_scipy(filters()[which], x), rtol=0, atol=bound)
 
 
 @pytest.mark.parametrize(("name", "how", "which"), FEW)

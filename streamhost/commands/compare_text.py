@@ -153,7 +153,8 @@ def _remarks(compared: Sequence[Compared]) -> Iterator[str]:
     for number, one in enumerate(compared, 1):
         measured = one.measured
         if measured.unstable:
-            yield f"{number} is unstable {_as_what(one)}: {_poles(measured.unstable)} on or outside the unit circle."
+            since = one.realization.unstable_since
+            yield f"{number} is unstable {since}: {_poles(measured.unstable)} on or outside the unit circle."
         own = [(name, figures) for name, other, figures in lines if other is one]
         yield from (f"{name}{remark}." for name, figures in own for remark in _noise_remarks(figures, one.realization.format))
         if isinstance(one.realization.format, Float) and any(figures.prediction is not None for _, figures in own):
@@ -175,10 +176,6 @@ def _noise_remarks(figures: Figures, format: Format) -> Iterator[str]:
         yield f": the white model does not hold here: {white.reason}"
     elif white.reason and not floating:
         yield f": whether the white model holds is not known: {white.reason}"
-
-
-def _as_what(one: Compared) -> str:
-    return "as asked" if one.realization.unstable_as_asked else "with its coefficients rounded"
 
 
 def _poles(count: int) -> str:

@@ -91,9 +91,9 @@ def summary(rendered: "Rendered", realization: "Realization") -> list[str]:
     if counted:
         lines.append(", ".join(counted))
     if realization.unstable:
-        why = "as asked" if realization.unstable_as_asked else "once the coefficients are rounded"
         lie = "lies" if realization.unstable == 1 else "lie"
-        lines.append(f"unstable: {_count(realization.unstable, 'pole')} {lie} on or outside the unit circle {why}")
+        poles = f"{_count(realization.unstable, 'pole')} {lie} on or outside the unit circle"
+        lines.append(f"unstable {realization.unstable_since}: {poles}")
     return lines + [f"hazard: {sentence}" for sentence in realization.hazards]
 
 

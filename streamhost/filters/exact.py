@@ -17,8 +17,8 @@ ONE: Polynomial = (Fraction(1),)
 ROOT_BITS = 256
 
 
-def exactly(values: Iterable[float]) -> Polynomial:
-    """The polynomial with exactly these float64 coefficients."""
+def exactly(values: Iterable[float | Fraction]) -> Polynomial:
+    """The polynomial with exactly these coefficients."""
     return tuple(Fraction(value) for value in values)
 
 

@@ -33,7 +33,7 @@ class _Root:
         return self.multiplicity * (2 if self.imaginary else 1)
 
 
-def roots(descending: tuple[float, ...]) -> tuple[complex, ...]:
+def roots(descending: tuple[float, ...] | Polynomial) -> tuple[complex, ...]:
     """Roots in z of a polynomial in descending powers of z (which is A(z^-1) read as it stands).
 
     First and last coefficient must not be 0. Each root is rounded once to complex128 and repeated as often as it
@@ -56,7 +56,7 @@ def roots_outside(descending: tuple[float, ...]) -> int:
 
 
 @lru_cache(maxsize=256)
-def _precise(descending: tuple[float, ...]) -> tuple[_Root, ...]:
+def _precise(descending: tuple[float, ...] | Polynomial) -> tuple[_Root, ...]:
     assert descending[0] != 0 and descending[-1] != 0
     polynomial = exactly(descending)
     if len(polynomial) <= 3:

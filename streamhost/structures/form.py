@@ -80,6 +80,10 @@ class Draft:
         """What the rounding of a register drops."""
         return self._placed(self.builder.residue(register, f"{name}{self.suffix}"), at, face)
 
+    def register(self, name: str, source: Ref, *, at: Point, face: str = "E") -> Ref:
+        """A register where the rules give none, drawn as a mark on its wire."""
+        return self.builder.place(self.builder.round(source, f"{name}{self.suffix}"), self._on_page(at), face, small=True)
+
     def line(self, name: str, length: int, source: Ref | None = None, *, column: float) -> tuple[Ref, ...]:
         """`length` delays in a row, the first driven by `source`, or later where there is none; drawn downwards."""
         delays: list[Ref] = []
@@ -154,15 +158,31 @@ class Draft:
         if rows.begins_a_row(tap) and tap < len(self.section.b):
             self.trunk(source, *rows.way(tap, lane, down))
 
+    def folded_line(self, x: Ref, values: Sequence[float], fold: str) -> Ref:
+        """The same of symmetric taps, each pair added before it is multiplied, from the outer pair inwards."""
+        return self._placed(self.builder.taps(x, "b", values, fold=fold, section=self.index, part="b"), (1.5, 0.0))
+
     def a(self, k: int, source: Ref, *, at: Point | None = None) -> Signed:
         """The product a_k source, to be subtracted."""
         label = self._named("a", k)
         product = self.builder.gain(source, label, self.section.a[k], section=self.index, part="a", feedback=True)
         return minus(self._placed(product, at, "W"))
 
-    def add(self, name: str, terms: Sequence[Ref | Signed], *, at: Point | None = None, face: str = "E") -> Ref:
-        """The sum of the terms in their order, drawn as one adder. One term alone is no sum, unless it is subtracted."""
-        return self._summed(name, terms, [Part(self._on_page(at), len(terms), face)] if at is not None else [])
+    def add(
+        self, name: str, terms: Sequence[Ref | Signed], *, at: Point | None = None, face: str = "E", grow: int | None = None
+    ) -> Ref:
+        """The sum of the terms in their order, drawn as one adder. One term alone is no sum, unless it is subtracted.
+
+        `grow` marks a register so many bits longer than the signal, which wraps.
+        """
+        parts = [Part(self._on_page(at), len(terms), face)] if at is not None else []
+        return self._summed(name, terms, parts, grow)
+
+    def chain(
+        self, name: str, terms: Sequence[Ref | Signed], parts: Sequence[tuple[Point, int, str]], *, grow: int | None = None
+    ) -> Ref:
+        """The same, drawn as one adder after the other: place, how many terms enter there, and the side it leaves by."""
+        return self._summed(name, terms, [Part(self._on_page(at), count, face) for at, count, face in parts], grow)
 
     def climb(self, name: str, terms: Sequence[Ref | Signed], *, column: float, rows: Sequence[float]) -> Ref:
         """The same, drawn as a chain of adders upwards: each term enters at its row, the last leaves to the right."""
@@ -176,18 +196,16 @@ class Draft:
         parts = [Part(self._on_page((column, row)), count) for column, count in adders(columns)]
         return self._summed(name, terms, parts)
 
-    def chain(self, name: str, terms: Sequence[Ref | Signed], *, at: Sequence[Point], face: str = "E") -> Ref:
-        """The same, drawn as a chain of adders at those places: two terms enter the first, one each of the others."""
-        return self._summed(name, terms, [Part(self._on_page(point), 2 if k == 0 else 1, face) for k, point in enumerate(at)])
-
     def trunk(self, source: Ref, *points: Point) -> None:
         """The wire out of a node runs along these points before it branches."""
         self.builder.trunk(source, *map(self._on_page, points))
 
-    def _summed(self, name: str, terms: Sequence[Ref | Signed], parts: Sequence[Part]) -> Ref:
+    def _summed(
+        self, name: str, terms: Sequence[Ref | Signed], parts: Sequence[Part], grow: int | None = None
+    ) -> Ref:
         if len(terms) == 1 and isinstance(terms[0], Ref):
             return terms[0]
-        total = self.builder.sum(*terms, label=f"{name}{self.suffix}")
+        total = self.builder.sum(*terms, label=f"{name}{self.suffix}", grow=grow)
         if not parts:
             return total
         return self.builder.place(total, parts[-1].at, parts[-1].face, parts=parts if len(parts) > 1 else ())
@@ -215,7 +233,7 @@ def adders(places: Sequence[float]) -> list[tuple[float, int]]:
     return found
 
 
-def delays_down(section: Polynomials) -> int:
+def delays_down(section: Polynomials | Ratio) -> int:
     """How many delays a section of the direct forms has below each other."""
     return max(len(section.a), len(section.b)) - 1
 
@@ -253,10 +271,10 @@ class Form:
     pitch: float = 1.0
     carries: Callable[[Ratio], str] = lambda ratio: ""
     hazards: Callable[[Ratio], tuple[str, ...]] = lambda ratio: ()
-    size: Callable[[Polynomials], Size] | None = None
+    size: Callable[[Ratio], Size] | None = None
     general: Callable[[Polynomials], General | None] = lambda section: None
     origin: str = ""
 
-    def size_of(self, section: Polynomials) -> Size:
-        """What the section takes on the page."""
-        return self.size(section) if self.size else Size(self.width, self.pitch * delays_down(section))
+    def size_of(self, ratio: Ratio) -> Size:
+        """What a section takes on the page."""
+        return self.size(ratio) if self.size else Size(self.width, self.pitch * delays_down(ratio))

@@ -8,7 +8,7 @@ from streamhost.diagram.hints import General
 from streamhost.diagram.tapped import LEAD
 from streamhost.filters import Polynomials
 from streamhost.structures.branches import Branches
-from streamhost.structures.division import Division, Part, Parts
+from streamhost.structures.division import Division, Part, Parts, ratio_of
 from streamhost.structures.form import Draft, Form, can_lie, delays_down
 from streamhost.structures.tiles import BUS, FRONT, GUTTER, ROOM, Tiles, begins_with_symbol
 
@@ -109,7 +109,7 @@ def general_section(parts: Parts, form: Form) -> General:
     fullest = max(sections, key=lambda section: len(section.a) + len(section.b))
     x = builder.place(builder.input("x_i"), (0.0, 0.0))
     y = form.build_section(Draft(builder, fullest, 0, "_i", (LEAD, 0.0)), x)
-    size = form.size_of(fullest)
+    size = form.size_of(ratio_of(fullest))
     builder.place(builder.output(y, "y_i"), (LEAD + size.columns + LEAD, size.exit))
     return General(builder.build(), caption_of(parts))
 

@@ -10,7 +10,6 @@ from math import log10
 
 from streamhost.diagram.builder import Ref, Signed, minus
 from streamhost.diagram.hints import Point
-from streamhost.filters import Polynomials
 from streamhost.filters.exact import ONE, Polynomial
 from streamhost.filters.stability import is_stable
 from streamhost.structures.division import Ratio
@@ -31,7 +30,7 @@ LOUDER = 10.0 ** (1 / 20)
 """One decibel, from which it is said."""
 
 
-def size(section: Polynomials) -> Size:
+def size(section: Ratio) -> Size:
     return Size(Y, ROWS[delays_down(section)])
 
 

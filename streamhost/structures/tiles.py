@@ -44,7 +44,7 @@ class Tiles:
 
     def __init__(self, builder: Builder, part: Part, form: Form, left: float, top: float, first: int) -> None:
         self.builder, self.part, self.form, self.left, self.top, self.first = builder, part, form, left, top, first
-        self.sizes = [form.size_of(section) for section in part.division.sections]
+        self.sizes = [form.size_of(part.division.ratio(index)) for index in range(len(part.division.sections))]
         self.width = max(size.columns for size in self.sizes)
         self.height = max(size.rows for size in self.sizes) + GUTTER
         self.gap = GAP + (WIDER if part.division.shifts else 0.0)

@@ -3,6 +3,7 @@
 from streamhost.structures.choices import check
 from streamhost.structures.form import Form
 from streamhost.structures.forms import (
+    all_pass_sum,
     coupled,
     delta,
     direct_1,
@@ -12,16 +13,21 @@ from streamhost.structures.forms import (
     error_feedback_1,
     error_feedback_2,
     error_feedback_c1,
+    fir_lattice,
+    folded,
+    frequency_sampling,
     kingsbury,
     lattice_ladder,
     lattice_normalized,
     lattice_one_multiplier,
     minimum_noise,
     normal,
+    running_sum,
     state_variable,
     state_variable_delayed,
     transposed_1,
     transposed_2,
+    wave_digital,
     zoelzer,
 )
 
@@ -46,6 +52,12 @@ MODULES = (
     delta,
     kingsbury,
     zoelzer,
+    all_pass_sum,
+    wave_digital,
+    folded,
+    fir_lattice,
+    running_sum,
+    frequency_sampling,
 )
 
 FORMS: dict[str, Form] = {module.FORM.name: module.FORM for module in MODULES}

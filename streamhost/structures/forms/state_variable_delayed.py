@@ -50,7 +50,6 @@ from fractions import Fraction
 from math import sqrt
 
 from streamhost.diagram.builder import Ref, minus
-from streamhost.filters import Polynomials
 from streamhost.filters.exact import rounded, square_root, value
 from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Form, Size
@@ -156,7 +155,7 @@ def highest_tuning(damping: float) -> float:
     return sqrt(damping * damping + 4) - damping
 
 
-def size(section: Polynomials) -> Size:
+def size(section: Ratio) -> Size:
     return Size(7.875, MAIN + 2.25) if len(section.a) == 3 else Size(4.125, MAIN + 0.875)
 
 

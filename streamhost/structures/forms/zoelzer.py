@@ -50,7 +50,6 @@ Carries: sections of first and second order with a recursion and with 1 + a1 + a
 
 from streamhost.diagram.builder import Ref, minus
 from streamhost.diagram.hints import Point
-from streamhost.filters import Polynomials
 from streamhost.structures import integrators
 from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Form, Size
@@ -105,7 +104,7 @@ def coefficients(ratio: Ratio, m: int) -> tuple[float, float, float, float]:
         return rounded(z1), rounded(number(1 - ratio.padded[1][2]) / z1), rounded(c1 / (2**m * z1**2)), rounded(c2)
 
 
-def size(section: Polynomials) -> Size:
+def size(section: Ratio) -> Size:
     return integrators.size(section, BACK)
 
 
