@@ -61,6 +61,10 @@ def carries(ratio: Ratio) -> str:
     return ""
 
 
+SIDE = 0.5
+"""Columns to the left of the line, in which the wire from a section before it comes up."""
+
+
 def build_section(draft: Draft, x: Ref) -> Ref:
     b = draft.ratio.b
     if lead := lead_of(b):
@@ -78,7 +82,7 @@ def size(ratio: Ratio) -> Size:
     if len(taps) > DRAWN:
         return Size(3.0, 1.0)
     rows = _rows(len(taps), symmetry_of(taps))
-    return Size(4.25 if len(rows) > 1 else 3.0, PITCH * (len(taps) // 2), rows[-1])
+    return Size(SIDE + (4.25 if len(rows) > 1 else 3.0), PITCH * (len(taps) // 2), rows[-1])
 
 
 def _rows(taps: int, symmetry: int) -> list[float]:
@@ -103,8 +107,9 @@ class Folded:
     def place(self, k: int) -> tuple[float, float]:
         """Where the delay to x[n-k] is drawn."""
         if self.taps == 2 * k:
-            return 1.0, (k - 1) * PITCH
-        return (0.0, (k - 0.5) * PITCH) if 2 * k < self.taps else (2.0, (self.taps - k - 0.5) * PITCH)
+            return SIDE + 1.0, (k - 1) * PITCH
+        down, up = (k - 0.5) * PITCH, (self.taps - k - 0.5) * PITCH
+        return (SIDE, down) if 2 * k < self.taps else (SIDE + 2.0, up)
 
     def face(self, k: int) -> str:
         return "E" if self.taps == 2 * k else "S" if 2 * k < self.taps else "N"
@@ -114,7 +119,7 @@ class Folded:
         terms = [self.product(k, row) for k, row in enumerate(rows)]
         counts = [2, *[1] * (len(rows) - 2)]
         faces = [*["S"] * (len(counts) - 1), "E"]
-        adders = [((4.25, row), count, face) for row, count, face in zip(rows[1:], counts, faces, strict=False)]
+        adders = [((SIDE + 4.25, row), count, face) for row, count, face in zip(rows[1:], counts, faces, strict=False)]
         return self.draft.chain("y", terms, adders)
 
     def product(self, k: int, row: float) -> Ref:
@@ -123,9 +128,9 @@ class Folded:
         operand = first
         if k < self.pairs:
             last = 2 * k + 2 == self.taps
-            at, face = ((2.0, row), "E") if last else ((1.0, k * PITCH), "S")
+            at, face = ((SIDE + 2.0, row), "E") if last else ((SIDE + 1.0, k * PITCH), "S")
             operand = self.draft.add(f"p{k}", [first, second if self.symmetry > 0 else minus(second)], at=at, face=face)
-        return self.draft.gain(f"b{k}", self.values[k], operand, at=(3.0, row), part="b")
+        return self.draft.gain(f"b{k}", self.values[k], operand, at=(SIDE + 3.0, row), part="b")
 
 
 FORM = Form(
