@@ -14,7 +14,7 @@ from streamhost.errors import FilterError, FormatError, RequestError
 from streamhost.filters import Filter
 from streamhost.formats import Fixed, Float, Format, named_format, parse_word
 from streamhost.program.carrying import Carried, carry, is_run
-from streamhost.program.poles import exact_running_sums, unstable_poles_in
+from streamhost.program.poles import running_sums, unstable_poles_in
 from streamhost.program.program import Program
 from streamhost.program.run import lower
 from streamhost.structures import Built, build
@@ -89,24 +89,22 @@ class Realization:
     @property
     def hazards(self) -> tuple[str, ...]:
         """What is certain to be dangerous about this structure in this format, in sentences."""
-        return (*self.built.hazards, *_narrow_operand(self.diagram, self.format))
+        return (*self.built.hazards, *_narrow_operand(self.diagram, self.format), *_drifting(self.program))
 
     @cached_property
     def unstable(self) -> int:
         """Poles of the diagram with its coefficients as stored that lie on or outside the unit circle, decided exactly.
 
-        Without those of running sums that wrap and drop no bit, which zeros cancel exactly.
+        Without those of running sums that lose nothing, which zeros cancel exactly.
         """
-        return unstable_poles_in(self.program.diagram) - exact_running_sums(self.program)
+        return unstable_poles_in(self.program.diagram) - running_sums(self.program)[0]
 
     @property
     def unstable_since(self) -> str:
-        """What put the unstable poles there, in words that follow "unstable"."""
+        """Where the unstable poles come from, in words that follow "unstable"."""
         if self.unstable_as_asked:
             return "as asked"
-        if unstable_poles_in(self.diagram):
-            return "as drawn"
-        return "with its coefficients rounded"
+        return "as drawn" if unstable_poles_in(self.diagram) else "with its coefficients rounded"
 
     def check_samples(self, name: str = "this realization") -> None:
         """RequestError where the input's or the output's word is longer than a sample in float64; `name` is its subject."""
@@ -317,6 +315,17 @@ def _narrow_operand(diagram: Diagram, format: Format) -> tuple[str, ...]:
     return (said,)
 
 
+def _drifting(program: Program) -> tuple[str, ...]:
+    if not running_sums(program)[1]:
+        return ()
+    why = "adds more fraction bits than the signal has" if isinstance(program.format, Fixed) else "is rounded in floating point"
+    said = (
+        f"the running sum {why}: what it loses stays lost, and its output drifts. In fixed point it is exact where what it "
+        "adds is no longer than the signal."
+    )
+    return (said,)
+
+
 def _with_codes(filters: Sequence[Filter], format: Format) -> Format:
     """The format with the word of filters given as codes at its `coefficients` place."""
     given = sorted({"" if each.codes is None else each.codes.word for each in filters})
@@ -331,3 +340,4 @@ def _with_codes(filters: Sequence[Filter], format: Format) -> Format:
             f"The filter is given as codes of {word}, which they keep: leave `coefficients` out of the format."
         )
     return format.with_coefficient_word(word)
+

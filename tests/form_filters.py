@@ -5,6 +5,8 @@ from functools import cache
 import numpy as np
 
 from streamhost import Filter, design
+from streamhost.diagram import Diagram
+from streamhost.diagram.norms import norms_to_output, powers_from_input, responses_to_output
 from streamhost.errors import StructureError
 from streamhost.structures import Built, build
 
@@ -62,3 +64,17 @@ def _built(form: str, decomposition: str, name: str) -> Built | None:
         assert "cannot carry" in str(error)
         return None
 
+
+def rounding_bound(diagram: Diagram, frames: int | None = None) -> float:
+    """The most that one rounding of each node, and of each coefficient, of a signal of at most 1 makes at the output.
+
+    In that many frames, where they are given: what a running sum rounds never dies out. A node's value is taken as six
+    times what white noise gives it. Doubled for scipy's own, of the same kind.
+    """
+    nodes = range(len(diagram.nodes))
+    values = 6.0 * np.sqrt(powers_from_input(diagram))
+    if frames is None:
+        to_output = norms_to_output(diagram, nodes).l1
+    else:
+        to_output = np.abs(responses_to_output(diagram, nodes, frames=frames)).sum(axis=0)
+    return 2.0 * 2.0 * EPSILON * float(np.sum(values * to_output))

@@ -5,7 +5,7 @@ from scipy import linalg
 
 from streamhost import Filter, Fixed
 from streamhost.diagram import Diagram
-from streamhost.diagram.norms import noise_gains
+from streamhost.diagram.norms import noise_gains, norms_to_output, powers_from_input
 from streamhost.filters import Polynomials
 from streamhost.formats import named_format
 from streamhost.measure.predicted import predicted_noise
@@ -41,6 +41,16 @@ def poles_at(radius: float, angle: float) -> list[float]:
 
 def in_float64(diagram: Diagram, x: np.ndarray) -> np.ndarray:
     return run_definition(lower(diagram, named_format("float64")), x[:, np.newaxis])[:, 0, 0]
+
+
+def rounding_bound(diagram: Diagram) -> float:
+    """The most that one rounding of each node, and of each coefficient, of a signal of at most 1 makes at the output.
+
+    A node's value is taken as six times what white noise gives it. Doubled for the other side's own, of the same kind.
+    """
+    values = 6.0 * np.sqrt(powers_from_input(diagram))
+    to_output = norms_to_output(diagram, range(len(diagram.nodes))).l1
+    return 2.0 * 2.0 * EPSILON * float(np.sum(values * to_output))
 
 
 def by_definition(sections: tuple[Polynomials, ...], x: np.ndarray) -> np.ndarray:

@@ -5,8 +5,7 @@ import re
 import numpy as np
 import pytest
 from drawing_reader import faults_of_figure, page_of
-from form_bounds import rounding_bound
-from form_filters import RATE, built, carried, filters
+from form_filters import RATE, built, carried, filters, rounding_bound
 from native_runs import busy, run_native
 from scipy import signal
 

@@ -4,13 +4,13 @@ from fractions import Fraction
 
 import numpy as np
 import pytest
-from form_bounds import rounding_bound
+from form_filters import rounding_bound
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from scipy import signal
 
 from streamhost import Filter, Fixed, design, realize
-from streamhost.diagram import Builder, Counts, Diagram
+from streamhost.diagram import Counts, Diagram
 from streamhost.diagram.fan import impulse_response
 from streamhost.diagram.nodes import Delay
 from streamhost.diagram.norms import norms_from_input
@@ -25,7 +25,6 @@ from streamhost.signals import white
 from streamhost.structures import build, form
 from streamhost.structures.all_pass import Halves, halves
 from streamhost.structures.division import Ratio
-from streamhost.structures.form import Draft
 from streamhost.structures.forms.wave_digital import scale
 
 RATE = 48000
@@ -52,14 +51,9 @@ def halves_of(filter: Filter) -> Halves:
 
 
 def with_complement(filter: Filter, name: str) -> Diagram:
-    builder = Builder()
-    b, a = filter.whole()
-    section = build(filter, form=name, decomposition="whole").sections[0]
-    draft = Draft(builder, section, exact=Ratio(*filter.ratio()), all_outputs=True)
-    assert (section.b, section.a) == (b, a)
-    builder.output(form(name).build_section(draft, builder.input()))
-    builder.output(draft.offered["complement"], "complement")
-    return builder.build()
+    diagram = build(filter, form=name, decomposition="whole", outputs="all").diagram
+    assert [diagram.nodes[index].label for index in diagram.outputs] == ["y", "complement"]
+    return diagram
 
 
 # --- the division

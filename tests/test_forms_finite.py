@@ -5,10 +5,10 @@ from fractions import Fraction
 import numpy as np
 import pytest
 from diagram_examples import fir as line_of_taps
-from form_bounds import rounding_bound
+from form_filters import rounding_bound
 from hypothesis import assume, given, settings
 from hypothesis import strategies as st
-from native_runs import busy, run_counting
+from native_runs import busy
 from scipy import signal
 
 from streamhost import Filter, Fixed, design, realize
@@ -98,7 +98,7 @@ def test_drawn_tap_by_tap_it_has_the_bits_of_a_folded_line(format: Fixed, length
     taps = symmetric(half, length % 2 == 1, sign)
     one_node = line_of_taps(taps, fold="even" if sign > 0 else "odd")
     x = busy(150, 1, 2)
-    drawn, line = (run_counting(lower(diagram, format), x)[0] for diagram in (whole("folded", taps).diagram, one_node))
+    drawn, line = (run_definition(lower(diagram, format), x) for diagram in (whole("folded", taps).diagram, one_node))
     np.testing.assert_array_equal(drawn, line)
 
 
@@ -228,7 +228,7 @@ def test_a_sum_that_saturates_is_wrong_for_ever() -> None:
     codes = np.concatenate((WORST, np.zeros(500, int)))
     assert sum_in_codes(whole("running-sum", np.ones(64)).diagram, codes, 7)[-1] == 0
     assert sum_in_codes(by_hand(64, None), codes, 7)[-1] != 0  # without the mark: in the signal's word, which saturates
-    with pytest.raises(FormatError, match="66 bits, and at most 63 can be stored"):
+    with pytest.raises(FormatError, match="66 bits, and a register has at most 64"):
         lower(by_hand(64, 34), Fixed("Q1.31"))
     builder = Builder()
     with pytest.raises(DiagramError, match="Saturation there is refused"):

@@ -4,10 +4,9 @@ from fractions import Fraction
 
 import numpy as np
 import pytest
-from form_bounds import rounding_bound
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from low_noise_forms import RATE, by_definition, in_float64, noise_gain, random_filter, section
+from low_noise_forms import RATE, by_definition, in_float64, noise_gain, random_filter, rounding_bound, section
 
 from streamhost import Filter, Fixed, design, realize
 from streamhost.diagram import Counts, Diagram

@@ -6,8 +6,7 @@ from math import asin, pi
 import numpy as np
 import pytest
 from drawing_reader import crossings, faults_of, page_of
-from form_bounds import rounding_bound
-from form_filters import RATE
+from form_filters import RATE, rounding_bound
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from noise_figures import noise_gain_db, stated

@@ -164,7 +164,7 @@ class Measurement:
     def _white(self, noise: Noise, output: int, channel: int) -> Whiteness:
         """The verdict, where there is a noise for the model to be one of."""
         if self._realization.unstable:
-            return Whiteness(None, f"it is unstable {self._realization.unstable_since}")
+            return Whiteness(None, f"the filter is not stable {self._realization.unstable_since}")
         if noise.dbfs is None:
             return Whiteness(None, "there is no noise figure")
         return self._watch.verdict(self._realization.rate, output, channel)

@@ -1,4 +1,4 @@
-"""Poles of a program that lie on or outside the unit circle, decided exactly."""
+"""Poles of a program that lie on or outside the unit circle, decided exactly, and those of them that do no harm."""
 
 from collections.abc import Sequence
 
@@ -13,20 +13,32 @@ from streamhost.program.program import Program, RoundArithmetic
 
 
 def unstable_poles_in(diagram: Diagram) -> int:
-    """Of the channel that has most; what zeros cancel is counted too."""
+    """Of the channel that has most; a pole that zeros cancel is counted like any other."""
     return max(_in_channel(diagram, channel) for channel in range(diagram.channels))
 
 
-def exact_running_sums(program: Program) -> int:
-    """Loops of one marked sum that wraps and drops no bit: nothing is lost in them, so that their pole does no harm."""
-    return sum(all(_is_exact(program, index) for index in loop) for loop in loops(program.diagram.readers))
+def running_sums(program: Program) -> tuple[int, int]:
+    """Loops of one marked sum and a delay: those in which nothing is ever lost, since they wrap and drop no bit, and others.
+
+    The pole of the former at z = 1 is cancelled exactly; in the latter what is lost once stays.
+    """
+    found = [loop for loop in loops(program.diagram.readers) if _is_running_sum(program, loop)]
+    exact = sum(all(_drops_nothing(program, index) for index in loop) for loop in found)
+    return exact, len(found) - exact
 
 
-def _is_exact(program: Program, index: int) -> bool:
-    node, arithmetic = program.nodes[index], program.arithmetic[index] if program.arithmetic else None
-    if isinstance(node, Round):
-        return isinstance(arithmetic, RoundArithmetic) and arithmetic.drop <= 0 and arithmetic.quantizer.overflow == "wrap"
-    return isinstance(node, Delay) or (isinstance(node, Sum) and node.grow is not None and arithmetic is not None)
+def _is_running_sum(program: Program, loop: Sequence[int]) -> bool:
+    nodes = [program.nodes[index] for index in loop]
+    marked = any(isinstance(node, Sum) and node.grow is not None for node in nodes)
+    return marked and all(isinstance(node, Sum | Delay | Round) for node in nodes)
+
+
+def _drops_nothing(program: Program, index: int) -> bool:
+    """Floats round every sum."""
+    if not isinstance(program.nodes[index], Round):
+        return bool(program.arithmetic)
+    arithmetic = program.arithmetic[index]
+    return isinstance(arithmetic, RoundArithmetic) and arithmetic.drop <= 0
 
 
 def _in_channel(diagram: Diagram, channel: int) -> int:

@@ -13,9 +13,6 @@ from streamhost.errors import DiagramError, FormatError
 from streamhost.formats import Fixed, Quantizer, Word
 from streamhost.program.roles import Roles
 
-LONGEST_STORED = 63
-"""Bits of a stored word: with the extreme negative value's magnitude, what a signed 64-bit integer holds."""
-
 
 @dataclass(frozen=True)
 class Operand:
@@ -41,13 +38,7 @@ class Widths:
             return node.quantizer
         if isinstance(node, Sum) and node.grow is not None:
             signal = self.format.signal
-            word = signal.word.widened(node.grow)
-            if word.bits > LONGEST_STORED:
-                raise FormatError(
-                    f'The sum "{node.label}" is {node.grow} bits longer than the signal, {signal.word}: {word.bits} bits, and '
-                    f"at most {LONGEST_STORED} can be stored. Give the signal fewer bits, or divide the filter."
-                )
-            return Quantizer(word, signal.rounding, "wrap", signal.dither)
+            return Quantizer(signal.word.widened(node.grow), signal.rounding, "wrap", signal.dither)
         return self.format.state if self.roles.delayed[index] else self.format.signal
 
     def base(self, index: int) -> tuple[int, int]:

@@ -76,13 +76,13 @@ class Draft:
         """2^k of the structure."""
         return self._placed(self.builder.shift(source, k, f"{name}{self.suffix}"), at, face)
 
-    def residue(self, name: str, register: Ref, *, at: Point, face: str = "S") -> Ref:
-        """What the rounding of a register drops."""
-        return self._placed(self.builder.residue(register, f"{name}{self.suffix}"), at, face)
-
     def register(self, name: str, source: Ref, *, at: Point, face: str = "E") -> Ref:
         """A register where the rules give none, drawn as a mark on its wire."""
         return self.builder.place(self.builder.round(source, f"{name}{self.suffix}"), self._on_page(at), face, small=True)
+
+    def residue(self, name: str, register: Ref, *, at: Point, face: str = "S") -> Ref:
+        """What the rounding of a register drops."""
+        return self._placed(self.builder.residue(register, f"{name}{self.suffix}"), at, face)
 
     def line(self, name: str, length: int, source: Ref | None = None, *, column: float) -> tuple[Ref, ...]:
         """`length` delays in a row, the first driven by `source`, or later where there is none; drawn downwards."""
@@ -116,6 +116,10 @@ class Draft:
         """All b_k x[n-k] as one node, added from the last delay up as the gains of a short line are."""
         taps = self.builder.taps(x, "b", self.section.b, last_first=True, section=self.index, part="b")
         return self._placed(taps, (1.5, 0.0))
+
+    def folded_line(self, x: Ref, values: Sequence[float], fold: str) -> Ref:
+        """The same of symmetric taps, the two of a pair added before they are multiplied, from the outer pair inwards."""
+        return self._placed(self.builder.taps(x, "b", values, fold=fold, section=self.index, part="b"), (1.5, 0.0))
 
     def line_in_rows(self, name: str, x: Ref) -> Ref:
         """The sum of all b_k x[n-k], its taps side by side, added from the last delay up: the sum runs back to the left."""
@@ -158,31 +162,15 @@ class Draft:
         if rows.begins_a_row(tap) and tap < len(self.section.b):
             self.trunk(source, *rows.way(tap, lane, down))
 
-    def folded_line(self, x: Ref, values: Sequence[float], fold: str) -> Ref:
-        """The same of symmetric taps, each pair added before it is multiplied, from the outer pair inwards."""
-        return self._placed(self.builder.taps(x, "b", values, fold=fold, section=self.index, part="b"), (1.5, 0.0))
-
     def a(self, k: int, source: Ref, *, at: Point | None = None) -> Signed:
         """The product a_k source, to be subtracted."""
         label = self._named("a", k)
         product = self.builder.gain(source, label, self.section.a[k], section=self.index, part="a", feedback=True)
         return minus(self._placed(product, at, "W"))
 
-    def add(
-        self, name: str, terms: Sequence[Ref | Signed], *, at: Point | None = None, face: str = "E", grow: int | None = None
-    ) -> Ref:
-        """The sum of the terms in their order, drawn as one adder. One term alone is no sum, unless it is subtracted.
-
-        `grow` marks a register so many bits longer than the signal, which wraps.
-        """
-        parts = [Part(self._on_page(at), len(terms), face)] if at is not None else []
-        return self._summed(name, terms, parts, grow)
-
-    def chain(
-        self, name: str, terms: Sequence[Ref | Signed], parts: Sequence[tuple[Point, int, str]], *, grow: int | None = None
-    ) -> Ref:
-        """The same, drawn as one adder after the other: place, how many terms enter there, and the side it leaves by."""
-        return self._summed(name, terms, [Part(self._on_page(at), count, face) for at, count, face in parts], grow)
+    def add(self, name: str, terms: Sequence[Ref | Signed], *, at: Point | None = None, face: str = "E") -> Ref:
+        """The sum of the terms in their order, drawn as one adder. One term alone is no sum, unless it is subtracted."""
+        return self._summed(name, terms, [Part(self._on_page(at), len(terms), face)] if at is not None else [])
 
     def climb(self, name: str, terms: Sequence[Ref | Signed], *, column: float, rows: Sequence[float]) -> Ref:
         """The same, drawn as a chain of adders upwards: each term enters at its row, the last leaves to the right."""
@@ -196,13 +184,22 @@ class Draft:
         parts = [Part(self._on_page((column, row)), count) for column, count in adders(columns)]
         return self._summed(name, terms, parts)
 
+    def chain(self, name: str, terms: Sequence[Ref | Signed], *, at: Sequence[Point], face: str = "E", last: str = "",
+              grow: int | None = None) -> Ref:
+        """The same, drawn as a chain of adders at those places: two terms enter the first, one each of the others.
+
+        `last`: the face of the last one, if it is another. `grow` marks a register so many bits longer than the signal,
+        which wraps.
+        """
+        faces = [*[face] * (len(at) - 1), last or face]
+        parts = [Part(self._on_page(point), 1 + (k == 0), side) for k, (point, side) in enumerate(zip(at, faces, strict=False))]
+        return self._summed(name, terms, parts, grow)
+
     def trunk(self, source: Ref, *points: Point) -> None:
         """The wire out of a node runs along these points before it branches."""
         self.builder.trunk(source, *map(self._on_page, points))
 
-    def _summed(
-        self, name: str, terms: Sequence[Ref | Signed], parts: Sequence[Part], grow: int | None = None
-    ) -> Ref:
+    def _summed(self, name: str, terms: Sequence[Ref | Signed], parts: Sequence[Part], grow: int | None = None) -> Ref:
         if len(terms) == 1 and isinstance(terms[0], Ref):
             return terms[0]
         total = self.builder.sum(*terms, label=f"{name}{self.suffix}", grow=grow)
@@ -233,7 +230,7 @@ def adders(places: Sequence[float]) -> list[tuple[float, int]]:
     return found
 
 
-def delays_down(section: Polynomials | Ratio) -> int:
+def delays_down(section: Polynomials) -> int:
     """How many delays a section of the direct forms has below each other."""
     return max(len(section.a), len(section.b)) - 1
 
@@ -258,7 +255,8 @@ class Form:
 
     `carries` says in words why a section cannot be drawn in this form, "" where it can. `hazards` are sentences about a
     section that is drawn and is dangerous. Drawn, a section is `width` columns wide and has `pitch` rows for each delay,
-    its output leaving at the top right, unless `size` says otherwise. `general` is what stands for a section that is too
+    its output leaving at the top right, unless `size` says otherwise, or `exact_size` where that follows from what only the
+    exact numbers tell. `general` is what stands for a section that is too
     long to be drawn, None where it is not. `origin` is the file of a user's own form.
     """
 
@@ -271,10 +269,18 @@ class Form:
     pitch: float = 1.0
     carries: Callable[[Ratio], str] = lambda ratio: ""
     hazards: Callable[[Ratio], tuple[str, ...]] = lambda ratio: ()
-    size: Callable[[Ratio], Size] | None = None
+    size: Callable[[Polynomials], Size] | None = None
+    exact_size: Callable[[Ratio], Size] | None = None
     general: Callable[[Polynomials], General | None] = lambda section: None
     origin: str = ""
 
-    def size_of(self, ratio: Ratio) -> Size:
-        """What a section takes on the page."""
-        return self.size(ratio) if self.size else Size(self.width, self.pitch * delays_down(ratio))
+    @property
+    def has_size(self) -> bool:
+        """Whether a section's size follows from more than its delays."""
+        return self.size is not None or self.exact_size is not None
+
+    def size_of(self, section: Polynomials, ratio: Ratio | None = None) -> Size:
+        """What the section takes on the page; `ratio`: the same in exact numbers."""
+        if self.exact_size is not None:
+            return self.exact_size(ratio or ratio_of(section))
+        return self.size(section) if self.size else Size(self.width, self.pitch * delays_down(section))

@@ -9,6 +9,7 @@ from fractions import Fraction
 from typing import Any
 
 from streamhost.diagram.builder import Ref, minus
+from streamhost.filters import Polynomials
 from streamhost.filters.exact import Polynomial
 from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Size, delays_down
@@ -39,7 +40,7 @@ def far(ratio: Ratio) -> tuple[str, ...]:
     return (FAR,) if ratio.order == 2 and ratio.padded[1][1] > 0 else ()
 
 
-def size(section: Ratio, rows: float) -> Size:
+def size(section: Polynomials, rows: float) -> Size:
     """Of a section whose second order takes so many rows."""
     return Size(Y, (0.0, ROW, rows)[delays_down(section)])
 

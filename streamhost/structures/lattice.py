@@ -13,6 +13,7 @@ from math import ceil
 
 from streamhost.diagram.builder import Ref
 from streamhost.diagram.hints import Point
+from streamhost.filters import Polynomials
 from streamhost.filters.exact import ONE, Polynomial, rounded, to_multiple
 from streamhost.filters.stability import step_down
 from streamhost.structures.division import Ratio
@@ -154,9 +155,9 @@ class Grid:
         return Size(max(self.right, self.tap(0)[0]), exit, exit)
 
 
-def size_in(stage: Stage) -> Callable[[Ratio], Size]:
+def size_in(stage: Stage) -> Callable[[Polynomials], Size]:
     """What a lattice of such stages takes on the page."""
-    def size(section: Ratio) -> Size:
+    def size(section: Polynomials) -> Size:
         order = len(section.a) - 1
         return Grid(stage, order, max(0, len(section.b) - 1 - order)).size
 

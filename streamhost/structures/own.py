@@ -125,6 +125,7 @@ def _checked(form: object, origin: str) -> Form:
         carries=_guarded(form.carries, form.name, origin),
         hazards=_guarded(form.hazards, form.name, origin),
         size=_guarded(form.size, form.name, origin) if form.size else None,
+        exact_size=_guarded(form.exact_size, form.name, origin) if form.exact_size else None,
     )
 
 

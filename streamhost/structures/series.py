@@ -8,7 +8,7 @@ from streamhost.diagram.hints import General
 from streamhost.diagram.tapped import LEAD
 from streamhost.filters import Polynomials
 from streamhost.structures.branches import Branches
-from streamhost.structures.division import Division, Part, Parts, ratio_of
+from streamhost.structures.division import Division, Part, Parts
 from streamhost.structures.form import Draft, Form, can_lie, delays_down
 from streamhost.structures.tiles import BUS, FRONT, GUTTER, ROOM, Tiles, begins_with_symbol
 
@@ -84,12 +84,12 @@ def general_of(parts: Parts, form: Form) -> General | None:
     longest = max(sections, key=delays_down)
     if (general := form.general(longest)) is not None:
         return general if len(sections) == 1 else replace(general, caption=f"{caption_of(parts)} {general.caption}")
-    deepest = delays_down(longest) * form.pitch if form.size is None else 0.0
+    deepest = delays_down(longest) * form.pitch if not form.has_size else 0.0
     if len(sections) == len(parts) == 1 and not parts[0].division.shifts and can_lie(sections[0]):
         deepest = 0.0
     branched = any(part.division.direct is not None for part in parts)
     too_high = (branched or len(sections) > 1) and rows_of(parts, form) > MOST_ROWS
-    one_each = form.size is None and len(sections) == len(parts)
+    one_each = not form.has_size and len(sections) == len(parts)
     if len(sections) <= MOST_DRAWN and (deepest > MOST_ROWS or (too_high and one_each)):
         return general_row(parts, form)
     if len(sections) == 1 and not form.origin and deepest >= FEWEST_ROWS:
@@ -109,7 +109,7 @@ def general_section(parts: Parts, form: Form) -> General:
     fullest = max(sections, key=lambda section: len(section.a) + len(section.b))
     x = builder.place(builder.input("x_i"), (0.0, 0.0))
     y = form.build_section(Draft(builder, fullest, 0, "_i", (LEAD, 0.0)), x)
-    size = form.size_of(ratio_of(fullest))
+    size = form.size_of(fullest)
     builder.place(builder.output(y, "y_i"), (LEAD + size.columns + LEAD, size.exit))
     return General(builder.build(), caption_of(parts))
 

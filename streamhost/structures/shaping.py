@@ -10,6 +10,7 @@ from math import log10
 
 from streamhost.diagram.builder import Ref, Signed, minus
 from streamhost.diagram.hints import Point
+from streamhost.filters import Polynomials
 from streamhost.filters.exact import ONE, Polynomial
 from streamhost.filters.stability import is_stable
 from streamhost.structures.division import Ratio
@@ -30,7 +31,7 @@ LOUDER = 10.0 ** (1 / 20)
 """One decibel, from which it is said."""
 
 
-def size(section: Ratio) -> Size:
+def size(section: Polynomials) -> Size:
     return Size(Y, ROWS[delays_down(section)])
 
 

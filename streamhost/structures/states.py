@@ -31,7 +31,7 @@ LOUD = 4.0
 """Times full scale, from which a state's size is said."""
 
 
-def size(section: Ratio) -> Size:
+def size(section: Polynomials) -> Size:
     states = delays_down(section)
     return Size(Y, COEFFICIENTS[1, 1] if states == 2 else FIRST if states == 1 else 0.0)
 

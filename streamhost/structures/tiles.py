@@ -44,7 +44,7 @@ class Tiles:
 
     def __init__(self, builder: Builder, part: Part, form: Form, left: float, top: float, first: int) -> None:
         self.builder, self.part, self.form, self.left, self.top, self.first = builder, part, form, left, top, first
-        self.sizes = [form.size_of(part.division.ratio(index)) for index in range(len(part.division.sections))]
+        self.sizes = [form.size_of(section, part.division.ratio(i)) for i, section in enumerate(part.division.sections)]
         self.width = max(size.columns for size in self.sizes)
         self.height = max(size.rows for size in self.sizes) + GUTTER
         self.gap = GAP + (WIDER if part.division.shifts else 0.0)
@@ -123,7 +123,7 @@ class Tiles:
     def is_compact(self) -> bool:
         """Whether the last section has nothing to the right of where its signal leaves: the forms have feedback there."""
         division = self.part.division
-        own_shape = self.form.size is not None or self.form.origin
+        own_shape = self.form.has_size or self.form.origin
         return not own_shape and not division.shifts and len(division.sections[-1].a) == 1
 
     def mark(self, signal: Ref, index: int) -> Ref:

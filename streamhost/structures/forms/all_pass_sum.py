@@ -147,8 +147,8 @@ class Chain:
             value = float(denominator[k])
             terms.append(self.draft.gain(f"c{self.number}", value, pair, at=(middle, start + turn / 2), face=face))
             self.number += 1
-        adders = [((column + k, self.row), 2 if k == 1 else 1, "E") for k in range(1, order + 1)]
-        output = [self.draft.chain(f"{self.name}{self.count}", terms, adders), *y]
+        adders = [(column + k, self.row) for k in range(1, order + 1)]
+        output = [self.draft.chain(f"{self.name}{self.count}", terms, at=adders), *y]
         drive(output)
         return output
 
@@ -166,5 +166,5 @@ FORM = Form(
     build_section=build_section,
     docs=__doc__,
     carries=carries,
-    size=size,
+    exact_size=size,
 )

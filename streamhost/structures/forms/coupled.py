@@ -52,6 +52,7 @@ than that; stable or not (an unstable one is not scaled). Not two real poles, no
 from fractions import Fraction
 
 from streamhost.diagram.builder import Ref, minus
+from streamhost.filters import Polynomials
 from streamhost.filters.exact import rounded, square_root
 from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Form, Size
@@ -163,7 +164,7 @@ def hazards(ratio: Ratio) -> tuple[str, ...]:
     ),)
 
 
-def size(section: Ratio) -> Size:
+def size(section: Polynomials) -> Size:
     return Size(4.625, CORE + 3.75 if len(section.a) == 3 else CORE)
 
 

@@ -138,7 +138,7 @@ def hazards(ratio: Ratio) -> tuple[str, ...]:
     return ()
 
 
-def size(section: Ratio) -> Size:
+def size(section: Polynomials) -> Size:
     return Size(Y, PITCH * delays_down(section))
 
 

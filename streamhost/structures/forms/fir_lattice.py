@@ -132,7 +132,7 @@ def stage(draft: Draft, m: int, k: float, from_left: tuple[Ref, Ref], *, last: b
         product = draft.gain(f"k{m}", k, past, at=(column + 1.125, row + LOW))
         return draft.add(f"f{m}", [f, product], at=(column + 1.75, row)), past
     up = draft.gain(f"k{m}", k, past, at=(column + 1.25, row + 0.75))
-    down = draft.gain(f"k{m}", k, f, at=(column + 1.25, row + 1.375))
+    down = draft.again(up, f"k{m}", f, at=(column + 1.25, row + 1.375))
     f = draft.add(f"f{m}", [f, up], at=(column + 1.875, row))
     return f, draft.add(f"g{m}", [down, past], at=(column + 1.875, row + LOW))
 
@@ -163,5 +163,5 @@ FORM = Form(
     docs=__doc__,
     carries=carries,
     hazards=hazards,
-    size=size,
+    exact_size=size,
 )

@@ -48,6 +48,9 @@ DRAWN = 16
 """Taps up to which they are drawn one by one: as many as a page holds."""
 
 PITCH = 2.0
+LEFT = 0.375
+"""The column of the line that runs down, behind the wire that leads up to it from the section before."""
+
 OUT = 0.5
 """Rows from a pair's adder to its gain, between two delays of the line that its wire crosses."""
 
@@ -61,14 +64,10 @@ def carries(ratio: Ratio) -> str:
     return ""
 
 
-SIDE = 0.5
-"""Columns to the left of the line, in which the wire from a section before it comes up."""
-
-
 def build_section(draft: Draft, x: Ref) -> Ref:
     b = draft.ratio.b
     if lead := lead_of(b):
-        x = draft.delay("lead", x, at=(0.0, 0.0), n=lead)
+        x = draft.delay("lead", x, at=(-0.125, 0.0), n=lead)
     taps = b[lead:]
     symmetry = symmetry_of(taps)
     values = mirrored(taps, symmetry)
@@ -82,7 +81,7 @@ def size(ratio: Ratio) -> Size:
     if len(taps) > DRAWN:
         return Size(3.0, 1.0)
     rows = _rows(len(taps), symmetry_of(taps))
-    return Size(SIDE + (4.25 if len(rows) > 1 else 3.0), PITCH * (len(taps) // 2), rows[-1])
+    return Size(LEFT + (4.25 if len(rows) > 1 else 3.0), PITCH * (len(taps) // 2), rows[-1])
 
 
 def _rows(taps: int, symmetry: int) -> list[float]:
@@ -107,9 +106,9 @@ class Folded:
     def place(self, k: int) -> tuple[float, float]:
         """Where the delay to x[n-k] is drawn."""
         if self.taps == 2 * k:
-            return SIDE + 1.0, (k - 1) * PITCH
-        down, up = (k - 0.5) * PITCH, (self.taps - k - 0.5) * PITCH
-        return (SIDE, down) if 2 * k < self.taps else (SIDE + 2.0, up)
+            return LEFT + 1, (k - 1) * PITCH
+        down = 2 * k < self.taps
+        return (LEFT, (k - 0.5) * PITCH) if down else (LEFT + 2, (self.taps - k - 0.5) * PITCH)
 
     def face(self, k: int) -> str:
         return "E" if self.taps == 2 * k else "S" if 2 * k < self.taps else "N"
@@ -117,10 +116,7 @@ class Folded:
     def build(self) -> Ref:
         rows = _rows(self.taps, self.symmetry)
         terms = [self.product(k, row) for k, row in enumerate(rows)]
-        counts = [2, *[1] * (len(rows) - 2)]
-        faces = [*["S"] * (len(counts) - 1), "E"]
-        adders = [((SIDE + 4.25, row), count, face) for row, count, face in zip(rows[1:], counts, faces, strict=False)]
-        return self.draft.chain("y", terms, adders)
+        return self.draft.chain("y", terms, at=[(LEFT + 4.25, row) for row in rows[1:]], face="S", last="E")
 
     def product(self, k: int, row: float) -> Ref:
         """The product of a pair, or of the middle tap."""
@@ -128,9 +124,9 @@ class Folded:
         operand = first
         if k < self.pairs:
             last = 2 * k + 2 == self.taps
-            at, face = ((SIDE + 2.0, row), "E") if last else ((SIDE + 1.0, k * PITCH), "S")
+            at, face = ((LEFT + 2, row), "E") if last else ((LEFT + 1, k * PITCH), "S")
             operand = self.draft.add(f"p{k}", [first, second if self.symmetry > 0 else minus(second)], at=at, face=face)
-        return self.draft.gain(f"b{k}", self.values[k], operand, at=(SIDE + 3.0, row), part="b")
+        return self.draft.gain(f"b{k}", self.values[k], operand, at=(LEFT + 3, row), part="b")
 
 
 FORM = Form(
@@ -140,5 +136,5 @@ FORM = Form(
     build_section=build_section,
     docs=__doc__,
     carries=carries,
-    size=size,
+    exact_size=size,
 )

@@ -160,7 +160,7 @@ def build_section(draft: Draft, x: Ref) -> Ref:
     inner = any(each.inner for each in found)
     v1 = draft.delay("v1", at=(BUS + 0.5, 1.0), face="S") if inner else None
     comb = draft.gain("c0", float(r ** len(taps)), old, at=(1.25, 1.0))
-    v = draft.add("v", [x, minus(comb)], at=(1.625, 0.0), grow=1)
+    v = draft.chain("v", [x, minus(comb)], at=[(1.625, 0.0)], grow=1)
     if v1 is not None:
         v1.takes(v)
     row, outputs, rows = 0.0, [], []
@@ -172,10 +172,7 @@ def build_section(draft: Draft, x: Ref) -> Ref:
     if v1 is not None:
         lowest = max(at for at, each in zip(rows, found, strict=True) if each.inner)
         draft.trunk(v1, (BUS + 0.5, 1.625), (BUS + 0.5, lowest + 1))
-    counts = [2, *[1] * (len(rows) - 2)]
-    faces = [*["S"] * (len(counts) - 1), "E"]
-    adders = [((BUS + 5.25, at), count, face) for at, count, face in zip(rows[1:], counts, faces, strict=False)]
-    return draft.chain("y", outputs, adders)
+    return draft.chain("y", outputs, at=[(BUS + 5.25, at) for at in rows[1:]], face="S", last="E")
 
 
 def _resonate(draft: Draft, each: Resonator, v: Ref, v1: Ref | None, row: float) -> Ref:
@@ -216,5 +213,5 @@ FORM = Form(
     docs=__doc__,
     carries=carries,
     hazards=hazards,
-    size=size,
+    exact_size=size,
 )

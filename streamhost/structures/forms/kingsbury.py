@@ -46,6 +46,7 @@ Carries: sections of first and second order with a recursion and with 1 + a1 + a
 """
 
 from streamhost.diagram.builder import Ref, minus
+from streamhost.filters import Polynomials
 from streamhost.structures import integrators
 from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Form, Size
@@ -66,7 +67,7 @@ def build_section(draft: Draft, x: Ref) -> Ref:
     slow = draft.gain("k1", k1, v1, at=(2.75, LOWER), face="W", part="k")
     u = draft.add("u", [u1, slow], at=(2.0, LOWER), face="W")
     damped = draft.gain("k2", k2, v1, at=(2.375, K2), face="W", part="k")
-    h = draft.chain("h", [x, minus(u), minus(damped)], [((0.5, UPPER), 2, "E"), ((1.0, UPPER), 1, "E")])
+    h = draft.chain("h", [x, minus(u), minus(damped)], at=[(0.5, UPPER), (1.0, UPPER)])
     v1.takes(draft.add("v", [v1, draft.again(slow, "k1", h, at=(1.75, UPPER))], at=(2.25, UPPER)))
     u1.takes(u)
     heard = [draft.gain("c2", c2, u1, at=(integrators.C, BACK), part="c"),
@@ -85,7 +86,7 @@ def coefficients(ratio: Ratio) -> tuple[float, float, float, float]:
         return rounded(k1), rounded(number(1 - ratio.padded[1][2]) / k1), rounded(c1 / k1), rounded(c2)
 
 
-def size(section: Ratio) -> Size:
+def size(section: Polynomials) -> Size:
     return integrators.size(section, BACK)
 
 

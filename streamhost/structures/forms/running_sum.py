@@ -52,19 +52,13 @@ from streamhost.structures.taps import refused_recursion
 TOLERANCE = Fraction(1, 1 << 48)
 MOST_STAGES = 64
 MOST_GROWTH = 30
-"""Bits that the longest signal, of 32, leaves room for in a machine word."""
+"""With so many bits more the sums of a signal of 32 bits stand in a word of 64."""
 
 STAGE = 3.25
 A_ROW = 3
 """Stages drawn side by side."""
 
 HEIGHT = 2.75
-
-
-HAZARD = (
-    "a running sum is exact where its sums wrap in fixed point. In floating point, or where its input has more fraction "
-    "bits than the signal, what is rounded in it stays for ever: it drifts."
-)
 
 
 @dataclass(frozen=True)
@@ -118,10 +112,6 @@ def carries(ratio: Ratio) -> str:
     return ""
 
 
-def hazards(ratio: Ratio) -> tuple[str, ...]:
-    return (HAZARD,)
-
-
 def build_section(draft: Draft, x: Ref) -> Ref:
     found = sums_of(draft.ratio.b)
     assert found is not None, "what cannot be carried is not drawn"
@@ -146,8 +136,8 @@ def _stage(draft: Draft, stage: int, sums: Sums, x: Ref) -> Ref:
     column, row = _place(stage - 1)
     old = draft.delay(f"x{stage}", x, at=(column + 0.625, row + 1), n=sums.length)
     before = draft.delay(f"s{stage}d", at=(column + 2.5, row + 1), face="W")
-    adders = [((column + 1.25, row), 2, "E"), ((column + 2, row), 1, "E")]
-    s = draft.chain(f"s{stage}", [x, minus(old), before], adders, grow=sums.growth(stage))
+    adders = [(column + 1.25, row), (column + 2, row)]
+    s = draft.chain(f"s{stage}", [x, minus(old), before], at=adders, grow=sums.growth(stage))
     before.takes(s)
     return s
 
@@ -174,6 +164,5 @@ FORM = Form(
     build_section=build_section,
     docs=__doc__,
     carries=carries,
-    hazards=hazards,
-    size=size,
+    exact_size=size,
 )

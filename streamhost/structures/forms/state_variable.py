@@ -53,6 +53,7 @@ poles; poles on the circle, but not at z = 1 or -1, where g would be 0 or withou
 from fractions import Fraction
 
 from streamhost.diagram.builder import Ref, minus
+from streamhost.filters import Polynomials
 from streamhost.filters.exact import rounded, square_root, value
 from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Form, Size
@@ -154,7 +155,7 @@ def carries(ratio: Ratio) -> str:
     return ""
 
 
-def size(section: Ratio) -> Size:
+def size(section: Polynomials) -> Size:
     return Size(7.875, MAIN + 2.875) if len(section.a) == 3 else Size(5.5, MAIN + 2.25)
 
 

@@ -50,6 +50,7 @@ from fractions import Fraction
 from math import sqrt
 
 from streamhost.diagram.builder import Ref, minus
+from streamhost.filters import Polynomials
 from streamhost.filters.exact import rounded, square_root, value
 from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Form, Size
@@ -155,7 +156,7 @@ def highest_tuning(damping: float) -> float:
     return sqrt(damping * damping + 4) - damping
 
 
-def size(section: Ratio) -> Size:
+def size(section: Polynomials) -> Size:
     return Size(7.875, MAIN + 2.25) if len(section.a) == 3 else Size(4.125, MAIN + 0.875)
 
 

@@ -86,7 +86,8 @@ def build_section(draft: Draft, x: Ref) -> Ref:
     upper, below = Chain(draft, "u", 0.0, 1), _depth(halves.first)
     u = upper.build(halves.first, x)
     v = Chain(draft, "v", below, upper.number).build(halves.second, x)
-    draft.trunk(x, (0.0, 0.0), (0.0, below))
+    across = [] if halves.second.sections or halves.second.delay else [(_width(halves), below)]
+    draft.trunk(x, (0.0, 0.0), (0.0, below), *across)
     return join(draft, halves, u, v, at=(_width(halves), 0.0))
 
 
@@ -217,5 +218,5 @@ FORM = Form(
     build_section=build_section,
     docs=__doc__,
     carries=carries,
-    size=size,
+    exact_size=size,
 )

@@ -50,6 +50,7 @@ Carries: sections of first and second order with a recursion and with 1 + a1 + a
 
 from streamhost.diagram.builder import Ref, minus
 from streamhost.diagram.hints import Point
+from streamhost.filters import Polynomials
 from streamhost.structures import integrators
 from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Form, Size
@@ -104,7 +105,7 @@ def coefficients(ratio: Ratio, m: int) -> tuple[float, float, float, float]:
         return rounded(z1), rounded(number(1 - ratio.padded[1][2]) / z1), rounded(c1 / (2**m * z1**2)), rounded(c2)
 
 
-def size(section: Ratio) -> Size:
+def size(section: Polynomials) -> Size:
     return integrators.size(section, BACK)
 
 
