@@ -175,6 +175,14 @@ def test_each_channel_has_the_response_that_is_asked_of_it(form, decomposition, 
         assert responses(made, channel) == pytest.approx(filter.response(hertz()), abs=1e-9)
 
 
+def test_in_parallel_too_a_part_that_a_channel_lacks_lets_pass():
+    first, second = (sh.design("butterworth-crossover", rate=RATE, order=order, frequency=2000) for order in (3, 4))
+    filters = (sh.Filter.cascade([PEAK, SHELF, first]), second)
+    made = sh.realize(filters, form="direct-1", decomposition="parallel")
+    for channel, filter in enumerate(filters):
+        assert responses(made, channel) == pytest.approx(filter.response(hertz()), abs=1e-9)
+
+
 def test_one_graph_runs_all_channels():
     filters = (PEAK, sh.Filter.cascade([PEAK, SHELF]))
     made = sh.realize(filters, form="direct-1")

@@ -59,9 +59,16 @@ def of_one_shape(channels: Sequence[Parts]) -> list[Parts]:
     """
     names = sorted(dict.fromkeys(part.name for parts in channels for part in parts), key=bool)
     kept = [{part.name: part.division for part in parts} for parts in channels]
-    wire = Division((WIRE,), None, "given", "given", "none")
-    columns = [_alike([divisions.get(name, wire) for divisions in kept]) for name in names]
+    columns = [_alike([divisions.get(name) or _wire_beside(kept, name) for divisions in kept]) for name in names]
     return [tuple(map(Part, names, row)) for row in zip(*columns, strict=True)]
+
+
+def _wire_beside(kept: Sequence[dict[str, Division]], name: str) -> Division:
+    """A part that lets pass, in series or in parallel as the others of its name are."""
+    others = [divisions[name] for divisions in kept if name in divisions]
+    if others[0].direct is not None:
+        return Division((NOTHING,), None, "given", "given", "none", direct=(1.0,))
+    return Division((WIRE,), None, "given", "given", "none")
 
 
 def _alike(divisions: Sequence[Division]) -> list[Division]:
