@@ -16,6 +16,9 @@ from test_drawing_taps import complementary, tapped
 from streamhost.drawing import svg
 from streamhost.structures import forms
 
+OTHERS = (("whole", "low-pass at 1 kHz"), ("whole", "chebyshev 4"), ("cascade", "elliptic 5"), ("whole", "taps"))
+"""What is drawn in the forms that do not draw a numerator and a denominator as they are written."""
+
 
 def drawings() -> dict[str, str]:
     """Every form, whole and in cascade, with marks and with values beside; tapped lines; graphs without places."""
@@ -29,8 +32,8 @@ def drawings() -> dict[str, str]:
         found[f"{name}, 20 taps, marks"] = svg((diagram := whole(name, 19, 0)), rounded=sums(diagram))
     for name in forms():
         if name not in DIRECT:
-            found |= {f"{name}, {which}": svg(built(name, how, which).diagram)
-                      for how in ("cascade", "whole") for which in carried(name, how)[:2]}
+            found |= {f"{name}, {how}, {which}": svg((diagram := built(name, how, which).diagram), rounded=sums(diagram))
+                      for how, which in OTHERS if which in carried(name, how)}
     found["20 taps, values beside"] = svg(whole("direct-1", 19, 0), values="beside")
     for kind in ("plain", "odd"):
         found[f"tapped line, {kind}"] = svg(tapped(20, kind))

@@ -115,6 +115,19 @@ def test_places_without_room_are_refused() -> None:
         svg(builder.build())
 
 
+def test_places_make_room_for_marks() -> None:
+    builder = Builder()
+    x = builder.place(builder.input(), (0.0, 0.0))
+    g = builder.place(builder.gain(x, "g"), (1.0, 0.0))
+    d = builder.place(builder.delay("d", g), (1.625, 0.0))
+    builder.place(builder.output(d), (2.5, 0.0))
+    diagram = builder.build()
+    plain, marked = svg(diagram), svg(diagram, rounded={g.index})
+    assert faults_of_figure(plain, diagram) == faults_of_figure(marked, diagram) == []
+    gaps = [boxes[2].left - boxes[1].right for boxes in (page_of(plain).boxes, page_of(marked).boxes)]
+    assert gaps[0] < 4 + 13 + 8 <= gaps[1]  # the square, 4 px off its symbol and 13 px wide, and the arrow head
+
+
 @pytest.mark.parametrize(
     ("at", "face", "message"), [((0.1, 0.0), "E", "multiples of 1/8"), ((0.0, 0.0), "up", "one of the sides")]
 )

@@ -32,6 +32,9 @@ TABLE_ROW = 16.0
 AROUND = 128.0
 """What a drawing takes above and below its symbols, with captions and the head of a table, in px."""
 
+ROOM_FOR_MARKS = ((1.0, 1.0), (1.25, 1.0), (1.0, 1.25), (1.25, 1.25), (1.5, 1.5), (2.0, 2.0))
+"""The same of columns and rows for marks."""
+
 DIGITS = 6
 MOST_DELAYS = 8
 """Words of memory beyond which an equation cannot fit on a line."""
@@ -140,14 +143,15 @@ def beside_or_not(diagram: Diagram, rounded: Collection[int], values: bool) -> L
 
 
 def layout_of(diagram: Diagram, rounded: Collection[int] = (), *, values: bool = False, wider: float = 1.0) -> Layout:
-    """A drawing before it is written down."""
-    sheet = sheet_of(diagram, rounded, values=values, wider=wider)
+    """A drawing before it is written down; where marks find no room, columns or rows are moved apart."""
     if diagram.hints.places_for(diagram.nodes) is None:
-        return without_places(sheet)
-    try:
-        return laid_out(sheet)
-    except NoWayError as error:
-        raise DiagramError(f"The places of this diagram's nodes leave {error}. Put them further apart.") from None
+        return without_places(sheet_of(diagram, rounded, values=values))
+    for across, down in ROOM_FOR_MARKS if rounded else ROOM_FOR_MARKS[:1]:
+        try:
+            return laid_out(sheet_of(diagram, rounded, values=values, apart=(wider * across, down)))
+        except NoWayError as error:
+            refused = error
+    raise DiagramError(f"The places of this diagram's nodes leave {refused}. Put them further apart.")
 
 
 def without_places(sheet: Sheet) -> Layout:

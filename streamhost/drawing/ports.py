@@ -5,7 +5,19 @@ from dataclasses import dataclass, replace
 from itertools import pairwise, permutations
 
 from streamhost.drawing.sheet import Sheet, Wire
-from streamhost.drawing.symbols import GRID, MOST_ON_CIRCLE, STEP, Cell, Symbol, in_stub, input_ports, least_out, out_stub
+from streamhost.drawing.symbols import (
+    GRID,
+    HEAD,
+    MOST_ON_CIRCLE,
+    STEP,
+    WITH_HEADS,
+    Cell,
+    Symbol,
+    in_stub,
+    input_ports,
+    least_out,
+    out_stub,
+)
 
 BEND = 10.0
 DISTANCE = 0.5
@@ -138,7 +150,9 @@ def meet(symbols: Sequence[Symbol], wire: Wire, index: int, sources: dict[int, E
     if not straight_ahead(start, end) or distance >= span(*start.line) + span(*end.line):
         return
     length = max(least_out(symbols[wire.source]), distance - span(*end.line))
-    if (distance - length) * GRID < symbols[wire.sink].reach(end.direction):
+    sink = symbols[wire.sink]
+    taken = symbols[wire.source].out_reach + sink.reach(end.direction) + (HEAD[0] if sink.kind in WITH_HEADS else 0.0)
+    if distance * GRID < taken or (distance - length) * GRID < sink.reach(end.direction):
         raise NoWayError(f"no room between symbols {symbols[wire.source].id} and {symbols[wire.sink].id}")
     sources[wire.source] = source_end(symbols[wire.source], length)
     sinks[index] = End(end.root, sources[wire.source].cell, end.direction)

@@ -187,14 +187,16 @@ def boxed(kind: str, label: Label) -> Looks:
     return Looks(kind, box(label), text=label)
 
 
-def sheet_of(diagram: Diagram, marked: Collection[int] = (), *, values: bool = False, wider: float = 1.0) -> Sheet:
+def sheet_of(
+    diagram: Diagram, marked: Collection[int] = (), *, values: bool = False, apart: tuple[float, float] = (1.0, 1.0)
+) -> Sheet:
     """The drawing's symbols and wires; at their places if the diagram's maker said them, else all at one.
 
-    `values`: the gains have theirs beside them. `wider`: columns so much further apart.
+    `values`: the gains have theirs beside them. `apart`: columns and rows so much further apart.
     """
     places = diagram.hints.places_for(diagram.nodes)
     marked = {index for index in marked if not is_rounded_next(diagram, index)}
-    pen = Pen(diagram, places or {}, marked, (wider, stretch(places, marked)), values)
+    pen = Pen(diagram, places or {}, marked, (apart[0], apart[1] * stretch(places, marked)), values)
     for index in range(len(diagram.nodes)):
         pen.draw(index)
     return Sheet(tuple(pen.symbols), tuple(pen.wires()), pen.trunks(diagram.hints.trunks if places else ()))
