@@ -42,8 +42,11 @@ Carries: a finite response of up to 64 taps whose |km| are none exactly 1. Symme
 
 from functools import lru_cache
 
-from streamhost.diagram.builder import Ref
-from streamhost.filters.exact import Polynomial
+from streamhost.diagram.builder import Builder, Ref
+from streamhost.diagram.hints import General
+from streamhost.diagram.tapped import LEAD
+from streamhost.filters import Polynomials
+from streamhost.filters.exact import Polynomial, exactly
 from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Form, Size
 from streamhost.structures.taps import lead_of, refused_recursion
@@ -54,6 +57,9 @@ NEAR = 1e-3
 CELL = 2.5
 A_ROW = 3
 """Stages drawn side by side."""
+
+MOST_DRAWN = 12
+"""Stages that a page holds."""
 
 HEIGHT = 3.75
 FRONT = 0.75
@@ -112,7 +118,7 @@ def build_section(draft: Draft, x: Ref) -> Ref:
     delays = [draft.delay(f"g{m}d", at=(place(m)[0] + 0.5, place(m)[1] + LOW)) for m in range(len(ks))]
     for m, k in enumerate(ks, 1):
         delays[m - 1].takes(g)
-        f, g = stage(draft, m, float(k), (f, delays[m - 1]), last=m == len(ks))
+        f, g = stage(draft, m, str(m), float(k), (f, delays[m - 1]), last=m == len(ks))
         if m < len(ks) and m % A_ROW == 0:
             wrap(draft, f, g, m)
     return f
@@ -124,17 +130,17 @@ def place(m: int) -> tuple[float, float]:
     return FRONT + 0.5 + cell * CELL, row * HEIGHT
 
 
-def stage(draft: Draft, m: int, k: float, from_left: tuple[Ref, Ref], *, last: bool) -> tuple[Ref, Ref]:
-    """f and g of stage m from f and the delayed g of the one before; of the last stage only f."""
+def stage(draft: Draft, m: int, name: str, k: float, from_left: tuple[Ref, Ref], *, last: bool) -> tuple[Ref, Ref]:
+    """f and g of the m-th stage drawn, from f and the delayed g of the one before; of the last stage only f."""
     f, past = from_left
     column, row = place(m - 1)
     if last:
-        product = draft.gain(f"k{m}", k, past, at=(column + 1.125, row + LOW))
-        return draft.add(f"f{m}", [f, product], at=(column + 1.75, row)), past
-    up = draft.gain(f"k{m}", k, past, at=(column + 1.25, row + 0.75))
-    down = draft.again(up, f"k{m}", f, at=(column + 1.25, row + 1.375))
-    f = draft.add(f"f{m}", [f, up], at=(column + 1.875, row))
-    return f, draft.add(f"g{m}", [down, past], at=(column + 1.875, row + LOW))
+        product = draft.gain(f"k{name}", k, past, at=(column + 1.125, row + LOW))
+        return draft.add(f"f{name}", [f, product], at=(column + 1.75, row)), past
+    up = draft.gain(f"k{name}", k, past, at=(column + 1.25, row + 0.75))
+    down = draft.again(up, f"k{name}", f, at=(column + 1.25, row + 1.375))
+    f = draft.add(f"f{name}", [f, up], at=(column + 1.875, row))
+    return f, draft.add(f"g{name}", [down, past], at=(column + 1.875, row + LOW))
 
 
 def wrap(draft: Draft, f: Ref, g: Ref, m: int) -> None:
@@ -155,6 +161,23 @@ def size(ratio: Ratio) -> Size:
     return Size(max(last + 1.75, wide), row + LOW, row)
 
 
+def general(section: Polynomials) -> General | None:
+    """A stage m that stands for all but the last, where there are more than a page holds."""
+    stages = len(section.b) - lead_of(exactly(section.b)) - 1
+    if stages <= MOST_DRAWN:
+        return None
+    builder = Builder()
+    draft = Draft(builder, section, origin=(LEAD, 0.0))
+    x = builder.place(builder.input(), (0.0, 0.0))
+    f = g = draft.gain("b0", 1.0, x, at=(FRONT, 0.0), part="b")
+    for m, name in enumerate(("_m", "_M")):
+        past = draft.delay(f"g{m}d", g, at=(place(m)[0] + 0.5, LOW))
+        f, g = stage(draft, m + 1, name, 0.5, (f, past), last=m == 1)
+    builder.place(builder.output(f), (LEAD + place(1)[0] + 1.75 + LEAD, 0.0))
+    return General(builder.build(), f"The stage of m stands for all stages m = 1 to {stages - 1}, one behind the other; "
+                                    f"M = {stages}.")
+
+
 FORM = Form(
     name="fir-lattice",
     summary="a finite response in lattice stages of two multipliers, as linear prediction makes them",
@@ -164,4 +187,5 @@ FORM = Form(
     carries=carries,
     hazards=hazards,
     exact_size=size,
+    general=general,
 )

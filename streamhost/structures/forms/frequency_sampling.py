@@ -57,13 +57,17 @@ of the size 1/L, lose bits: point = "polynomial" keeps them apart from the poles
 Carries: a finite response of 4 to 128 taps, whole: fewer, as in sections of a cascade, are more easily had.
 """
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 from functools import lru_cache
 from typing import Any
 
-from streamhost.diagram.builder import Ref, Signed, minus
-from streamhost.filters.exact import Polynomial
+from streamhost.diagram.builder import Builder, Ref, Signed, minus
+from streamhost.diagram.hints import General
+from streamhost.diagram.tapped import LEAD
+from streamhost.filters import Polynomials
+from streamhost.filters.exact import Polynomial, exactly
 from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Form, Size
 from streamhost.structures.taps import refused_recursion
@@ -73,6 +77,9 @@ BITS = 256
 NEGLIGIBLE = Fraction(1, 1 << 50)
 
 BUS = 2.25
+MOST_ROWS = 16.25
+"""Rows that a page holds."""
+
 FIRST, SECOND = 1.75, 3.0
 """Rows of a resonator of first and of second order."""
 
@@ -155,29 +162,33 @@ def hazards(ratio: Ratio) -> tuple[str, ...]:
 
 def build_section(draft: Draft, x: Ref) -> Ref:
     taps = draft.ratio.b
-    found, r = resonators(taps), radius(len(taps))
-    old = draft.delay("xd", x, at=(0.625, 1.0), n=len(taps))
-    inner = any(each.inner for each in found)
+    return bank(draft, x, len(taps), [(each, str(each.k)) for each in resonators(taps)])
+
+
+def bank(draft: Draft, x: Ref, length: int, found: Sequence[tuple[Resonator, str]]) -> Ref:
+    """The comb, the resonators, each with the number that its names end with, and their sum."""
+    old = draft.delay("xd", x, at=(0.625, 1.0), n=length)
+    inner = any(each.inner for each, _ in found)
     v1 = draft.delay("v1", at=(BUS + 0.5, 1.0), face="S") if inner else None
-    comb = draft.gain("c0", float(r ** len(taps)), old, at=(1.25, 1.0))
+    comb = draft.gain("c0", float(radius(length) ** length), old, at=(1.25, 1.0))
     v = draft.chain("v", [x, minus(comb)], at=[(1.625, 0.0)], grow=1)
     if v1 is not None:
         v1.takes(v)
     row, outputs, rows = 0.0, [], []
-    for each in found:
-        outputs.append(_resonate(draft, each, v, v1, row))
+    for each, number in found:
+        outputs.append(_resonate(draft, each, number, (v, v1), row))
         rows.append(row)
         row += each.rows
     draft.trunk(v, (BUS, 0.0), (BUS, rows[-1]))
     if v1 is not None:
-        lowest = max(at for at, each in zip(rows, found, strict=True) if each.inner)
+        lowest = max(at for at, (each, _) in zip(rows, found, strict=True) if each.inner)
         draft.trunk(v1, (BUS + 0.5, 1.625), (BUS + 0.5, lowest + 1))
     return draft.chain("y", outputs, at=[(BUS + 5.25, at) for at in rows[1:]], face="S", last="E")
 
 
-def _resonate(draft: Draft, each: Resonator, v: Ref, v1: Ref | None, row: float) -> Ref:
-    """One resonator, drawn as direct-1 is."""
-    k, left = each.k, BUS + 1
+def _resonate(draft: Draft, each: Resonator, k: str, source: tuple[Ref, Ref | None], row: float) -> Ref:
+    """One resonator on v and v1, drawn as direct-1 is."""
+    left, (v, v1) = BUS + 1, source
     past: list[Ref] = []
     for i in range(1, len(each.a) + 1):
         at = (left + 3.25, row + i - 0.5)
@@ -202,7 +213,27 @@ def _resonate(draft: Draft, each: Resonator, v: Ref, v1: Ref | None, row: float)
 def size(ratio: Ratio) -> Size:
     rows = [each.rows for each in resonators(ratio.b)]
     last = sum(rows[:-1])
-    return Size(BUS + (5.25 if len(rows) > 1 else 4.5), last + rows[-1], last)
+    return Size(_width(len(rows)), last + rows[-1], last)
+
+
+def _width(resonators: int) -> float:
+    return BUS + (5.25 if resonators > 1 else 4.5)
+
+
+def general(section: Polynomials) -> General | None:
+    """A resonator k that stands for all of second order, where there are more than a page holds."""
+    found = resonators(exactly(section.b))
+    inner = [each for each in found if each.inner]
+    if sum(each.rows for each in found) <= MOST_ROWS or len(inner) < 2:
+        return None
+    builder = Builder()
+    draft = Draft(builder, section, origin=(LEAD, 0.0))
+    drawn = [(each, "_k" if each.inner else str(each.k)) for each in found if not each.inner or each is inner[0]]
+    y = bank(draft, builder.place(builder.input(), (0.0, 0.0)), len(section.b), drawn)
+    last = sum(each.rows for each, _ in drawn[:-1])
+    builder.place(builder.output(y), (LEAD + _width(len(drawn)) + LEAD, last))
+    return General(builder.build(), f"The resonator of k stands for the {len(inner)} of second order, from k = {inner[0].k} to "
+                                    f"{inner[-1].k}; all outputs are added.")
 
 
 FORM = Form(
@@ -214,4 +245,5 @@ FORM = Form(
     carries=carries,
     hazards=hazards,
     exact_size=size,
+    general=general,
 )
