@@ -62,7 +62,7 @@ def test_everything_that_a_preset_can_state():
     assert preset == Preset(
         title="Peak in double-length state", path=Path("folder/mine.toml"), rate=48000.0,
         designs={48000.0: (Band(design("peak", rate=48000, frequency=1000, gain_db=6, q=0.707)),)},
-        form="direct-1", decomposition="whole", pairing="given", ordering="inward", scaling="l2",
+        form="direct-1", decomposition="whole", pairing="given", ordering="inward", scaling="l2", outputs=None,
         format=Fixed("Q1.15", coefficients="Q2.30", state={"word": "Q1.31", "rounding": "floor"}, operand="Q1.31"),
         limits={"noise_dbfs": -92.0, "response_deviation_db": 0.1, "band_hz": (20.0, 20000.0)},
         allow_unstable=True, source=preset.source,
