@@ -53,6 +53,7 @@ def carried(form: str, decomposition: str) -> tuple[str, ...]:
     return tuple(name for name in filters() if _built(form, decomposition, name) is not None)
 
 
+@cache
 def built(form: str, decomposition: str, name: str) -> Built:
     return build(filters()[name], form=form, decomposition=decomposition)
 
