@@ -112,7 +112,7 @@ def test_a_value_that_cannot_be_is_told_with_the_line_and_with_what_was_asked():
 
 def test_a_key_that_does_not_exist_is_told_with_the_nearest():
     assert refused(["structure.frm=direct-1"]) == (
-        "preset: frm is no key of [structure], which takes form, decomposition, pairing, ordering or scaling. "
+        "preset: frm is no key of [structure], which takes form, decomposition, pairing, ordering, scaling or outputs. "
         'Did you mean "form"? (Asked for by --vary structure.frm=direct-1)'
     )
 
