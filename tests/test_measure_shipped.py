@@ -31,7 +31,13 @@ def recording(name):
     return read_all(resolve(name, "sample"))[0]
 
 
-@pytest.mark.parametrize("name", names("preset"))
+LONG = ("level-", "treble-", "equalizer-", "meter-")
+"""Presets of many registers or taps, which take a second or more each."""
+
+
+@pytest.mark.parametrize(
+    "name", [pytest.param(name, marks=pytest.mark.slow if name.startswith(LONG) else ()) for name in names("preset")]
+)
 def test_limits_are_met_or_missed_as_the_name_says_and_theory_agrees(name):
     """On white noise, peak -20 dBFS, seed 1, by which limits are checked."""
     preset = load_preset(name)

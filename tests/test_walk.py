@@ -69,7 +69,11 @@ def test_the_walk_has_its_steps():
     ]  # fmt: skip
 
 
-@pytest.mark.parametrize("title", STEPS)
+LONG = ("Loudness equalizer", "A-weighting meter", "Treble FIR", "Bass shelf", "Level smoother")
+"""Steps of many or long realizations, each of the same kind as the hum notch: half a minute of work."""
+
+
+@pytest.mark.parametrize("title", [pytest.param(step, marks=pytest.mark.slow if step in LONG else ()) for step in STEPS])
 def test_a_step_of_the_walk(title, tmp_path, monkeypatch, capsys):
     monkeypatch.chdir(tmp_path)
     reader = Reader(capsys)
