@@ -41,7 +41,8 @@ def test_the_sum_of_the_fractions_is_the_filter(pairs: int, reals: int, more: in
     """In exact numbers, from coefficients that are rounded once each: within the rounding of the largest."""
     rng = np.random.default_rng(seed)
     upper = rng.uniform(0.2, 0.95, pairs) * np.exp(1j * (np.arange(pairs) + rng.uniform(0.2, 0.8, pairs)) * np.pi / pairs)
-    poles = [*upper, *upper.conj(), *((np.arange(reals) + rng.uniform(0.2, 0.8, reals)) / max(1, reals) * 1.8 - 0.9)]
+    # Apart from each other and from 0, where more zeros than poles make what stands beside the sections large.
+    poles = [*upper, *upper.conj(), *(np.array([-0.8, 0.4, 0.7])[:reals] + rng.uniform(-0.1, 0.1, reals))]
     count = len(poles)
     zeros = rng.uniform(-1.2, 1.2, count).tolist() if more == 0 else rng.uniform(-1.2, 1.2, count + more).tolist()
     filter = Filter.from_zeros_poles(zeros, [*poles, *[0.0] * max(0, len(zeros) - count)], 0.7, rate=RATE)
@@ -102,11 +103,17 @@ def test_two_real_poles_that_coincide_are_merged() -> None:
 @pytest.mark.parametrize(("poles", "said"), [
     ([0.5, 0.5, 0.5], 'the same pole in more than one section. Allowed for it are "cascade" and "whole"'),
     ([0.5 + 0.3j, 0.5 - 0.3j, 0.5 + 0.3j, 0.5 - 0.3j], "the same pole in more than one section"),
-    ([0.5 + 0.3j, 0.5 - 0.3j, 0.5 + 0.3000001j, 0.5 - 0.3000001j], "since poles of this filter nearly coincide"),
+    ([0.5 + 0.3j, 0.5 - 0.3j, 0.5 + 0.3000001j, 0.5 - 0.3000001j], "since poles of it nearly coincide"),
 ])  # fmt: skip
 def test_other_poles_that_coincide_are_refused(poles: list[complex], said: str) -> None:
     with pytest.raises(StructureError, match=said):
         parallel(Filter.from_zeros_poles([0.1] * len(poles), poles, 1.0, rate=RATE))
+
+
+def test_a_pole_near_zero_under_more_zeros_is_refused() -> None:
+    filter = Filter.from_zeros_poles([0.9, -0.9, 0.8, -0.8], [0.5, 1e-3, 0.0, 0.0], 1.0, rate=RATE)
+    with pytest.raises(StructureError, match="since a pole is nearly 0 beside more zeros than poles"):
+        parallel(filter)
 
 
 @pytest.mark.parametrize(("choices", "said"), [

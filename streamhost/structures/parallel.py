@@ -30,7 +30,8 @@ def divide(filter: Filter, pairing: str | None, ordering: str | None, scaling: s
     """The sections of a filter in parallel, those nearest the unit circle first, and what is beside them.
 
     StructureError where pairing, ordering or a scaling is stated, which have no meaning here; where there is no recursion to
-    divide; and where complex poles or three real ones coincide, or so nearly that the sections cancel a millionfold.
+    divide; and where complex poles or three real ones coincide, or so nearly that the sections cancel a millionfold, or where
+    a pole so near 0 makes what stands beside the sections as large.
     """
     _check_choices(pairing, ordering, scaling)
     check_order(filter)
@@ -142,10 +143,12 @@ def _check_cancelling(solved: ZerosPoles, sections: Sections, direct: tuple[floa
     zeros = np.prod([1.0 - zero * z for zero in solved.zeros], axis=0) if solved.zeros else np.ones_like(z)
     poles = np.prod([1.0 - pole * z for pole in solved.poles], axis=0)
     whole = float(np.abs(solved.gain * zeros / poles).max())
-    largest = max([*parts, max(map(abs, direct))])
+    beside = max(map(abs, direct))
+    largest = max([*parts, beside])
     if largest > MOST_CANCELLED * whole:
+        at_zero = beside > largest / 2  # the section of a pole near 0 and what stands beside it cancel each other
+        reason = "a pole is nearly 0 beside more zeros than poles" if at_zero else "poles of it nearly coincide"
         raise StructureError(
-            f'decomposition "parallel" makes a section {largest / whole:.0e} times as large as the sum of all, since poles of '
-            f'this filter nearly coincide: what remains is the difference of large numbers. Allowed for it are "cascade" and '
-            f'"whole".'
+            f'decomposition "parallel" makes a part of this filter {largest / whole:.0e} times as large as the sum of all, since '
+            f'{reason}: what remains is the difference of large numbers. Allowed for it are "cascade" and "whole".'
         )
