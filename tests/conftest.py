@@ -1,11 +1,15 @@
 """What every test shares: a kernel cache of the tests' own, and laws that are tried on the same examples every time."""
 
+import importlib
 import os
+import pkgutil
 import signal
 import threading
 from pathlib import Path
 
 from hypothesis import settings
+
+import streamhost
 
 ROOT = Path(__file__).resolve().parent.parent
 
@@ -17,6 +21,10 @@ os.environ.setdefault("STREAMHOST_CACHE", str(ROOT / ".pytest_cache" / "streamho
 settings.register_profile("fixed", deadline=None, derandomize=True, database=None)
 settings.register_profile("explore", deadline=None, max_examples=2000, print_blob=True)
 settings.load_profile("fixed")
+
+# Hypothesis draws from the constants of the modules that are loaded: all of them, whichever tests ran before.
+for module in pkgutil.walk_packages(streamhost.__path__, "streamhost."):
+    importlib.import_module(module.name)
 
 # A run in the background of a script starts with Ctrl-C ignored, and so would every process that the tests interrupt.
 if threading.current_thread() is threading.main_thread():

@@ -149,6 +149,6 @@ def _check_cancelling(solved: ZerosPoles, sections: Sections, direct: tuple[floa
         at_zero = beside > largest / 2  # the section of a pole near 0 and what stands beside it cancel each other
         reason = "a pole is nearly 0 beside more zeros than poles" if at_zero else "poles of it nearly coincide"
         raise StructureError(
-            f'decomposition "parallel" makes a part of this filter {largest / whole:.0e} times as large as the sum of all, since '
-            f'{reason}: what remains is the difference of large numbers. Allowed for it are "cascade" and "whole".'
+            f'decomposition "parallel" makes a part of this filter {largest / whole:.0e} times as large as the sum of all, '
+            f'since {reason}: what remains is the difference of large numbers. Allowed for it are "cascade" and "whole".'
         )
