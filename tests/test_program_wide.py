@@ -8,9 +8,10 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 from native_runs import busy, codes_of, run_native
-from numba import njit
+from numpy.typing import NDArray
 
 import streamhost as sh
+from streamhost.cache import load_module
 from streamhost.diagram import Builder, Diagram, minus
 from streamhost.errors import FilterError, FormatError, RequestError
 from streamhost.formats import OVERFLOWS, ROUNDINGS, Fixed, Word
@@ -18,8 +19,9 @@ from streamhost.host.lane import Lane
 from streamhost.measure.running import Run
 from streamhost.program.definition import FixedDefinition
 from streamhost.program.integers import overflowed, rounded
-from streamhost.program.native.kernel import Variant
-from streamhost.program.native.text import Value, overflowed_text, rounded_text
+from streamhost.program.native.frame import Variant, close_text, open_text
+from streamhost.program.native.kernel import SIGNATURE
+from streamhost.program.native.text import Text, Value, overflowed_text, rounded_text
 from streamhost.program.program import RoundArithmetic
 from streamhost.program.run import lower
 from streamhost.program.sources import traced_roundings
@@ -32,24 +34,33 @@ CASES = [(rounding, drop, bound) for rounding in ROUNDINGS
 WORDS = [(Word(1, bits - 1), overflow) for bits in (2, 40, 63, 64) for overflow in OVERFLOWS]
 
 
-def compiled() -> Callable[..., None]:
+def compiled() -> Callable[[int, int, NDArray[np.int64]], None]:
     """f(low, high, out): every case of a 128-bit value given by its halves; two halves of each result."""
-    lines = ["def f(low, high, out):", "    v = (wide(high) << 64) + wide(low)"]
+    text = Text()
+    open_text(text, "Two-word arithmetic.")
+    text("halves = carray(x_, (2,), np.int64)")
+    text("out = carray(y_, (frames, 2), np.int64)")
+    text("v = (wide(halves[1]) << 64) + wide(halves[0])")
     for i, (rounding, drop, bound) in enumerate(CASES):
-        text = rounded_text(Value("v", bound), drop, rounding).text
-        lines += [f"    r{i} = wide({text})", f"    out[{i}, 0], out[{i}, 1] = narrow(r{i}), narrow(r{i} >> 64)"]
+        text(f"r{i} = wide({rounded_text(Value('v', bound), drop, rounding).text})")
+        text(f"out[{i}, 0] = narrow(r{i})")
+        text(f"out[{i}, 1] = narrow(r{i} >> 64)")
     for i, (word, overflow) in enumerate(WORDS, len(CASES)):
-        text = overflowed_text(Value("v", MOST), word, overflow)
-        lines += [f"    out[{i}, 0] = {text}", f"    out[{i}, 1] = out[{i}, 0] >> 63"]
-    space: dict[str, Any] = {}
-    exec("import numpy as np\nfrom streamhost.program.native.intrinsics import clamp, differs, narrow, wide\n"
-         + "\n".join(lines), space)
-    function: Callable[..., None] = njit(space["f"])
-    return function
+        text(f"out[{i}, 0] = {overflowed_text(Value('v', MOST), word, overflow)}")
+        text(f"out[{i}, 1] = out[{i}, 0] >> 63")
+    text.depth = 0
+    close_text(text)
+    module = load_module(str(text), "two-word arithmetic")
+
+    def call(low: int, high: int, out: NDArray[np.int64]) -> None:
+        halves = np.array([low, high])
+        SIGNATURE(module.kernel.address)(halves.ctypes.data, out.ctypes.data, *[None] * 6, len(out), 1, 0)
+
+    return call
 
 
 @pytest.fixture(scope="module")
-def kernel() -> Callable[..., None]:
+def kernel() -> Callable[[int, int, NDArray[np.int64]], None]:
     return compiled()
 
 
@@ -66,7 +77,7 @@ def near_ties() -> st.SearchStrategy[int]:
 
 @given(st.one_of(near_ties(), st.integers(-MOST, MOST), st.integers(-5, 5), st.integers(-(2**65), 2**65),
                  st.sampled_from([MOST, -MOST, 2**126, -(2**126), 2**63, -(2**63), 2**63 - 1])))
-def test_expressions_of_128_bits_are_those_of_python(kernel: Callable[..., None], code: int) -> None:
+def test_expressions_of_128_bits_are_those_of_python(kernel: Callable[[int, int, NDArray[np.int64]], None], code: int) -> None:
     out = np.zeros((len(CASES) + len(WORDS), 2), np.int64)
     low = signed(code)
     kernel(low, signed((code - low) >> 64), out)

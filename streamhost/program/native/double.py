@@ -5,16 +5,11 @@ Dekker 1971 and Knuth (two-sum), products by one fused multiply-add.
 """
 
 from streamhost.diagram.nodes import Delay, Gain, Input, Node, Output, Residue, Round, Shift, Sum, Taps
-from streamhost.program.native.frame import Variant, header, lines
+from streamhost.program.native.frame import Variant, close_text, header, lines
 from streamhost.program.native.text import Text, comment
 from streamhost.program.program import Program
 
 OPERATIONS = """
-from numba import njit
-from streamhost.program.native.intrinsics import fma
-
-
-@njit(inline="always")
 def dd_add(a, b):
     s = a[0] + b[0]
     t = s - a[0]
@@ -29,12 +24,10 @@ def dd_add(a, b):
     return r, g - (r - h)
 
 
-@njit(inline="always")
 def dd_sub(a, b):
     return dd_add(a, (-b[0], -b[1]))
 
 
-@njit(inline="always")
 def dd_mul(k, a):
     p = k * a[0]
     e = fma(k, a[1], fma(k, a[0], -p))
@@ -144,3 +137,4 @@ class _DoublePrinter:
             self.text(f"S[{offset}, c] = s{index}[0]")
             self.text(f"S[{offset + 1}, c] = s{index}[1]")
         self.text.depth -= 2
+        close_text(self.text)

@@ -10,9 +10,7 @@ from streamhost.program.native.text import Text, Value, comment, overflowed_text
 from streamhost.program.program import Program, RoundArithmetic, SumArithmetic, TapsArithmetic, TermArithmetic
 from streamhost.program.sources import traced_roundings
 
-IMPORTS = "from streamhost.program.native.intrinsics import clamp, differs, narrow, wide"
-MIX = """
-@njit(inline="always")
+DITHER = """
 def dither_word(key, step):
     z = key + np.uint64(0x9E3779B97F4A7C15) * step
     z ^= z >> np.uint64(30)
@@ -44,11 +42,9 @@ class FixedPrinter:
         self.traced = {index: k for k, index in enumerate(traced_roundings(program))}
 
     def source(self) -> str:
-        imports = IMPORTS
-        if has_dither(self.program):
-            imports = "from numba import njit\n" + IMPORTS + "\n" + MIX
+        functions = DITHER.strip() if has_dither(self.program) else ""
         title = f"{self.format.label}: nodes {len(self.nodes)}, roundings {len(self.program.roundings)}."
-        header(self.text, self.program, self.variant, imports, "int64", title)
+        header(self.text, self.program, self.variant, functions, "int64", title)
         open_loops(self.text, self.program, self.variant, "{}")
         if self.variant.metered and any(isinstance(node, Taps) for node in self.nodes):
             self.text("o = np.int64(0)")

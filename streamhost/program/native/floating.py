@@ -8,8 +8,6 @@ from streamhost.program.native.frame import Variant, close_loops, header, lines,
 from streamhost.program.native.text import Text
 from streamhost.program.program import Program
 
-IMPORTS = "from streamhost.program.native.intrinsics import fma"
-
 
 def print_float(program: Program, variant: Variant) -> str:
     """The source of a floating-point kernel."""
@@ -27,10 +25,7 @@ class FloatPrinter:
         self.type, self.sum_type = self.format.type, self.format.sum_type
 
     def source(self) -> str:
-        imports = IMPORTS if self.format.fused else ""
-        header(
-            self.text, self.program, self.variant, imports, "float64", f"{self.format.label}: {len(self.nodes)} nodes."
-        )
+        header(self.text, self.program, self.variant, "", "float64", f"{self.format.label}: {len(self.nodes)} nodes.")
         open_loops(self.text, self.program, self.variant, f"np.{self.type}({{}})")
         for index in self.program.diagram.order:
             self.print(index, self.nodes[index])

@@ -4,12 +4,10 @@ A kernel works on one block of `frames` x `channels` in place of its arrays, che
 `frame0` is the number of frames since reset; lines longer than one word are rings that turn with it.
 """
 
-import hashlib
 from dataclasses import dataclass
-from functools import cache
-from pathlib import Path
 
 from streamhost.diagram.nodes import Delay, Taps
+from streamhost.program.native.machine import machine_hash
 from streamhost.program.native.meters import meter_count
 from streamhost.program.native.text import Text, comment
 from streamhost.program.program import Program
@@ -49,25 +47,11 @@ class Variant:
         return 2 if self.double else 1
 
 
-def header(text: Text, program: Program, variant: Variant, imports: str, dtype: str, title: str) -> None:
-    """Everything before the loop over channels."""
+def header(text: Text, program: Program, variant: Variant, functions: str, dtype: str, title: str) -> None:
+    """Everything before the loop over channels; `functions` are those that the text calls."""
     outputs, sources = variant.words * len(program.diagram.outputs), max(1, trace_width(program))
     door = "int64" if variant.codes else "float64"
-    text(f'"""{title}"""')
-    text()
-    text(f"# machine operations {intrinsics_hash()}")
-    text("import numpy as np")
-    text("from numba import carray, cfunc, types")
-    text()
-    if imports:
-        text(imports)
-        text()
-    text("SIGNATURE = types.void(*([types.voidptr] * 8), types.int64, types.int64, types.int64)")
-    text()
-    text()
-    text('@cfunc(SIGNATURE, cache=CACHE, error_model="numpy")')
-    text(f"def kernel({', '.join(ARGUMENTS)}):")
-    text.depth = 1
+    open_text(text, title, functions)
     text(f"x = carray(x_, (frames, channels), np.{door})")
     text(f"y = carray(y_, (frames, {outputs} * channels), np.{door})")
     text(f"S = carray(state_, ({max(1, variant.words * program.state_words)}, channels), np.{dtype})")
@@ -81,11 +65,33 @@ def header(text: Text, program: Program, variant: Variant, imports: str, dtype: 
         text(f"R = carray(trace_, (frames, channels, {sources}), np.float64)")
 
 
-@cache
-def intrinsics_hash() -> str:
-    """Of the file that generated kernels import from: a change there makes other kernels."""
-    source = Path(__file__).with_name("intrinsics.py").read_bytes()
-    return hashlib.sha256(source).hexdigest()[:16]
+def open_text(text: Text, title: str, functions: str = "") -> None:
+    """The start of a module, up to the body of the function that runs; `functions` are those that it calls."""
+    text(f'"""{title}"""')
+    text()
+    text(f"# machine code {machine_hash()}")
+    text("from numba import cfunc")
+    text()
+    text("from streamhost.program.native.machine import SIGNATURE, machine_code")
+    text()
+    text()
+    if functions:
+        text(functions)
+        text()
+        text()
+    text("@machine_code")
+    text(f"def run({', '.join(ARGUMENTS)}):")
+    text.depth = 1
+
+
+def close_text(text: Text) -> None:
+    """The end of a module: the C function that calls the text."""
+    text()
+    text()
+    text('@cfunc(SIGNATURE, cache=CACHE, error_model="numpy")')
+    text(f"def kernel({', '.join(ARGUMENTS)}):")
+    with text.indented():
+        text(f"run({', '.join(ARGUMENTS)})")
 
 
 def trace_width(program: Program) -> int:
@@ -150,3 +156,4 @@ def close_loops(text: Text, program: Program, variant: Variant) -> None:
         for k in range(meter_count(program)):
             text(f"M[{k}] += m{k}")
     text.depth -= 2
+    close_text(text)
