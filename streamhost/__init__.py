@@ -11,6 +11,7 @@ from importlib import import_module
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
+    from streamhost import measure
     from streamhost.diagram import Builder, Diagram, minus
     from streamhost.filters import Filter, design, kinds
     from streamhost.formats import Fixed, Float
@@ -56,6 +57,7 @@ __all__ = [
     "kinds",
     "load_preset",
     "load_structures",
+    "measure",
     "minus",
     "realize",
 ]
@@ -63,6 +65,8 @@ __all__ = [
 
 def __getattr__(name: str) -> object:
     """Names are imported when they are first used: `streamhost --help` needs none of them."""
+    if name == "measure":
+        return import_module("streamhost.measure")
     if name in _HOMES:
         return getattr(import_module(f"streamhost.{_HOMES[name]}"), name)
     raise AttributeError(f"module 'streamhost' has no attribute {name!r}")

@@ -18,8 +18,8 @@ from streamhost.signals import white
 
 RATE = 48000
 KEYS = [
-    "preset", "title", "decomposition", "form", "format", "response_deviation_db", "response_deviation_hz", "noise_dbfs",
-    "noise_interval_db", "noise_full_dbfs", "noise_a_dbfs", "noise_predicted_dbfs", "white_model_holds", "dc_lsb",
+    "preset", "title", "decomposition", "form", "format", "response_deviation_db", "response_deviation_hz", "leak_db",
+    "noise_dbfs", "noise_interval_db", "noise_full_dbfs", "noise_a_dbfs", "noise_predicted_dbfs", "white_model_holds", "dc_lsb",
     "peak_dbfs", "difference_gain_db", "output", "difference", "unstable", "saturations", "wraps", "accumulator_overflows",
     "multiplications", "additions", "delays", "ns_per_frame",
 ]

@@ -2,8 +2,9 @@
 
 import pytest
 
-from streamhost.commands.compare_text import _miss, _title
+from streamhost.commands.compare_text import _title
 from streamhost.commands.main import main
+from streamhost.commands.verdict_text import miss
 from streamhost.files import AudioWriter
 from streamhost.measure import Verdict
 from streamhost.presets import parse_preset, vary
@@ -19,7 +20,7 @@ TEXT = 'title = "{title}"\nrate = 48000\n[[filter]]\nkind = "peak"\nfrequency = 
     (0.100004, 0.1, "0.100004, at most 0.1 dBFS"), (3e-7, 1e-9, "0.0000003, at most 1e−09 dBFS"),
 ])
 def test_a_miss_shows_no_more_decimals_than_tell(found, allowed, said):
-    assert _miss(Verdict("noise_dbfs", found, allowed, "dBFS")) == f"noise_dbfs: {said}"
+    assert miss(Verdict("noise_dbfs", found, allowed, "dBFS")) == f"noise_dbfs: {said}"
 
 
 def test_what_runs_away_slowly_is_told(tmp_path, capsys):

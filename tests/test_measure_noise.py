@@ -8,7 +8,7 @@ from scipy.signal import lfilter
 
 from streamhost.measure.counting import Counting, stretches
 from streamhost.measure.levels import power_dbfs
-from streamhost.measure.noise import NoiseSum, noise_of, settling_of_run
+from streamhost.measure.noise_sum import NoiseSum, noise_of, settling_of_run
 from streamhost.measure.welch import segment_lengths
 
 RATE = 48000

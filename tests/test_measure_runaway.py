@@ -6,7 +6,7 @@ import pytest
 from streamhost import Filter, Fixed, realize
 from streamhost.measure import measure
 from streamhost.measure.levels import LARGEST, has_run_away
-from streamhost.measure.noise import noise_of
+from streamhost.measure.noise_sum import noise_of
 from streamhost.signals import white
 
 RATE = 48000

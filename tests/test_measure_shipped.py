@@ -4,7 +4,8 @@ import numpy as np
 import pytest
 
 from streamhost.files import read_all
-from streamhost.measure import limit_band, limit_signal, measure, verdicts
+from streamhost.measure import limit_band, limit_signal, measure, response, verdicts
+from streamhost.measure.rounding.rounding_noise import figures_of
 from streamhost.presets import load_preset
 from streamhost.presets.realizing import realize_preset
 from streamhost.shipped import names, resolve
@@ -43,8 +44,11 @@ def test_limits_are_met_or_missed_as_the_name_says_and_theory_agrees(name):
     preset = load_preset(name)
     asked = next(load_preset(other).limits for other in names("preset")
                  if other.split("-")[0] == name.split("-")[0] and "naive" not in other)
-    found = measure(realize_preset(preset), limit_signal(preset.rate), limit_band(asked, preset.rate))
-    missed = found.unstable > 0 or not all(verdict.meets for verdict in verdicts(asked, found))
+    realization, band = realize_preset(preset), limit_band(asked, preset.rate)
+    found = measure(realization, limit_signal(preset.rate), band)
+    results = {"noise": figures_of(realization, found), "response": response(realization, [band])}
+    judged = verdicts(asked, realization, results.__getitem__)
+    missed = found.unstable > 0 or not all(verdict.meets for verdict in judged)
     assert missed == (not preset.limits and name not in FAIL_ELSEWHERE)
     for figures in found.outputs:
         assert figures.white.holds or name not in WHITE

@@ -15,7 +15,7 @@ from typing import TYPE_CHECKING, Any, TextIO
 
 import click
 
-from streamhost.errors import PresetError, RequestError
+from streamhost.errors import MachineError, PresetError, RequestError
 
 if TYPE_CHECKING:
     from streamhost.files import AudioInfo
@@ -107,6 +107,39 @@ def check_place(path: Path) -> None:
         raise machine_error("write", path, problem) from problem
 
 
+def check_new(path: Path, input: Path | None, *, force: bool) -> None:
+    """RequestError for the input itself, and for a file that exists unless `force`."""
+    from streamhost.files import same_file
+
+    if input is not None and same_file(path, input):
+        raise RequestError(f"{path}: this would be written over the input. Choose another name.")
+    if path.exists() and not force:
+        raise RequestError(f"{path}: this file exists. Choose another name, or overwrite it with --force.")
+
+
+def check_figures(name: str | None, input: Path | None, *, force: bool) -> None:
+    """RequestError or MachineError where figures cannot be written into the file of that name."""
+    if name is not None and name != "-":
+        check_new(Path(name), input, force=force)
+        check_place(Path(name))
+
+
+def check_folder(folder: Path) -> None:
+    """RequestError where that cannot be a folder for files."""
+    if folder.exists() and not folder.is_dir():
+        raise RequestError(f"{folder}: this is a file, and --output takes the name of a folder.")
+    if not folder.absolute().parent.is_dir():
+        raise RequestError(f"{folder}: the folder {folder.parent} does not exist. Make it first, or choose another.")
+
+
+def make_folder(folder: Path) -> None:
+    """The folder, made where it is not there."""
+    try:
+        folder.mkdir(exist_ok=True)
+    except OSError as problem:
+        raise MachineError(f"{folder}: cannot make this folder: {problem.strerror}. Choose another place.") from problem
+
+
 def _finite(value: Any) -> Any:
     if isinstance(value, float):
         return value if math.isfinite(value) else None
@@ -131,18 +164,22 @@ def _duration(seconds: float) -> str:
 class Progress:
     """Says on stderr how far the work is: one line, written again at every step on a terminal.
 
+    `weights`: about how long each item takes against the others, all alike unless said.
+
     Where stderr is no terminal, every step has its own line, and none as long as the work has taken less than 2 s.
     """
 
     def __init__(
-        self, command: str, total: int, *, stream: TextIO | None = None, clock: Callable[[], float] = time.monotonic
+        self, command: str, total: int, weights: Sequence[float] | None = None, *, stream: TextIO | None = None,
+        clock: Callable[[], float] = time.monotonic,
     ) -> None:
         self._command, self._total = command, total
+        self._weights = [1.0] * total if weights is None else weights
         self._stream = stream or sys.stderr
         self._clock = clock
         self._terminal = self._stream.isatty()
         self._began = clock()
-        self._done = 0
+        self._done, self._label = 0, ""
 
     def __enter__(self) -> "Progress":
         return self
@@ -156,15 +193,28 @@ class Progress:
 
     def step(self, label: str) -> None:
         """The work on the next item begins; the one before it is done."""
-        passed = self._clock() - self._began
-        left = passed / self._done * (self._total - self._done) if self._done else None
-        self._done += 1
-        line = progress_line(self._command, self._done, self._total, label, left)
+        passed, done = self._clock() - self._began, sum(self._weights[: self._done])
+        self._done, self._label = self._done + 1, label
+        line = self._line(label, passed, done)
         if self._terminal:
-            width = shutil.get_terminal_size().columns - 1
-            self._stream.write(f"\r{line[:width]}\x1b[K")
+            self._rewrite(line)
         elif passed > PATIENCE:
             self._stream.write(f"{line}\n")
+            self._stream.flush()
+
+    def within(self, share: float, doing: str) -> None:
+        """So much of the item is done, 0 to 1, and what is being done now. Where stderr is no terminal, nothing is said."""
+        if self._terminal:
+            begun = sum(self._weights[: self._done - 1]) + share * self._weights[self._done - 1]
+            self._rewrite(self._line(f"{self._label}{GAP}{doing}", self._clock() - self._began, begun))
+
+    def _line(self, label: str, passed: float, done: float) -> str:
+        left = passed / done * (sum(self._weights) - done) if done > 0.0 else None
+        return progress_line(self._command, self._done, self._total, label, left)
+
+    def _rewrite(self, line: str) -> None:
+        width = shutil.get_terminal_size().columns - 1
+        self._stream.write(f"\r{line[:width]}\x1b[K")
         self._stream.flush()
 
 

@@ -1,6 +1,6 @@
 """`streamhost compare`: all realizations of one filter on one signal."""
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from contextlib import ExitStack
 from dataclasses import dataclass
 from pathlib import Path
@@ -11,6 +11,7 @@ import click
 from streamhost.commands.common import (
     Progress,
     at_rate,
+    check_figures,
     force_option,
     json_option,
     presets_named,
@@ -75,7 +76,7 @@ def compare(
     limit of a preset is not met. When the run is broken off, the files of the realizations that were done stay.
     """
     from streamhost.cache import notice
-    from streamhost.commands.compare_files import check_figures, destinations, output_folder
+    from streamhost.commands.compare_files import destinations, output_folder
     from streamhost.commands.compare_text import document, misses, text
     from streamhost.files import probe
     from streamhost.presets.realizing import realize_presets
@@ -89,7 +90,7 @@ def compare(
     _check_one_filter(stated, realizations)
     places = destinations(folder, stated, realizations[0].outputs, info, force=force)
     with output_folder(places):
-        check_figures(json_file, info, force=force)
+        check_figures(json_file, info.path, force=force)
         compared = _compare_all(stated, realizations, info, places, force=force)
     if problem := notice():
         click.echo(problem, err=True)
@@ -130,6 +131,7 @@ def _compare_one(
     preset: "Preset", realization: "Realization", info: "AudioInfo", place: "Destination | None", *, force: bool
 ) -> Compared:
     from streamhost.commands.compare_files import DifferenceFile, OutputFile
+    from streamhost.commands.instruments import limit_verdicts
     from streamhost.files import read_blocks
     from streamhost.measure import Measurement, limit_band
 
@@ -145,16 +147,6 @@ def _compare_one(
             for k, (output, difference) in enumerate(zip(outputs, differences, strict=True)):
                 output.write(block.output[:, k])
                 difference.write(block.difference[:, k])
-    verdicts = _verdicts(preset.limits, realization)
     files = [(destination.output, destination.difference if difference.kept else None)
              for destination, difference in zip(place.files if place is not None else (), differences, strict=True)]
-    return Compared(preset, realization, measurement.result(), verdicts, tuple(files))
-
-
-def _verdicts(limits: Mapping[str, object], realization: "Realization") -> "tuple[Verdict, ...]":
-    from streamhost.measure import limit_band, limit_signal, measure, verdicts
-
-    if not limits.keys() - {"band_hz"}:
-        return ()
-    rate = realization.rate
-    return verdicts(limits, measure(realization, limit_signal(rate, realization.diagram.channels), limit_band(limits, rate)))
+    return Compared(preset, realization, measurement.result(), limit_verdicts(preset, realization), tuple(files))

@@ -12,9 +12,9 @@ import click
 import numpy as np
 from numpy.typing import NDArray
 
-from streamhost.commands.common import check_place
-from streamhost.errors import MachineError, RequestError
-from streamhost.files import AudioInfo, AudioWriter, same_file
+from streamhost.commands.common import check_folder, check_new, make_folder
+from streamhost.errors import RequestError
+from streamhost.files import AudioInfo, AudioWriter
 from streamhost.files.atomic import identity
 from streamhost.host.rendering import default_subtype
 from streamhost.measure.levels import has_run_away
@@ -52,10 +52,7 @@ def destinations(
     if folder is None:
         return [None] * len(presets)
     place = Path(folder)
-    if place.exists() and not place.is_dir():
-        raise RequestError(f"{place}: this is a file, and --output takes the name of a folder.")
-    if not place.absolute().parent.is_dir():
-        raise RequestError(f"{place}: the folder {place.parent} does not exist. Make it first, or choose another.")
+    check_folder(place)
     digits = len(str(len(presets)))
     found = []
     for number, preset in enumerate(presets, 1):
@@ -64,8 +61,8 @@ def destinations(
         files = tuple(Pair(place / f"{each}.wav", place / f"{each}-difference.wav") for each in names)
         found.append(Destination(place, files))
     for pair in (pair for destination in found for pair in destination.files):
-        check_new(pair.output, info, force=force)
-        check_new(pair.difference, info, force=force)
+        check_new(pair.output, info.path, force=force)
+        check_new(pair.difference, info.path, force=force)
     return found
 
 
@@ -85,7 +82,7 @@ def output_folder(places: Sequence[Destination | None]) -> Iterator[None]:
         return
     folder = outputs[0].parent
     new, before = not folder.exists(), [identity(output) for output in outputs]
-    _make_folder(folder)
+    make_folder(folder)
     try:
         yield
     except BaseException:
@@ -94,28 +91,6 @@ def output_folder(places: Sequence[Destination | None]) -> Iterator[None]:
         elif any(identity(output) not in (None, was) for output, was in zip(outputs, before, strict=True)):
             click.echo(f"{folder}: the files of the realizations that were done stay there.", err=True)
         raise
-
-
-def check_figures(name: str | None, info: AudioInfo, *, force: bool) -> None:
-    """RequestError or MachineError where figures cannot be written into the file of that name."""
-    if name is not None and name != "-":
-        check_new(Path(name), info, force=force)
-        check_place(Path(name))
-
-
-def _make_folder(folder: Path) -> None:
-    try:
-        folder.mkdir(exist_ok=True)
-    except OSError as problem:
-        raise MachineError(f"{folder}: cannot make this folder: {problem.strerror}. Choose another place.") from problem
-
-
-def check_new(path: Path, info: AudioInfo, *, force: bool) -> None:
-    """RequestError for the input itself, and for a file that exists unless `force`."""
-    if same_file(path, info.path):
-        raise RequestError(f"{path}: this would be written over the input. Choose another name.")
-    if path.exists() and not force:
-        raise RequestError(f"{path}: this file exists. Choose another name, or overwrite it with --force.")
 
 
 class OutputFile(AudioWriter):

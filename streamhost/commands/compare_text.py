@@ -3,17 +3,17 @@
 from collections.abc import Callable, Iterator, Sequence
 from pathlib import Path
 
-from streamhost.commands.common import GAP, MINUS, Cell, Column, ledger, printable
+from streamhost.commands.common import GAP, Cell, Column, ledger, printable
 from streamhost.commands.compare import Compared
+from streamhost.commands.verdict_text import SIGNAL, miss
 from streamhost.files import AudioInfo
 from streamhost.formats import Float, Format
 from streamhost.measure import Figures
-from streamhost.measure.limits import PEAK_DBFS, SECONDS, SEED, Verdict
+from streamhost.measure.limits import SEED
 from streamhost.presets import Preset
 
 LONGEST_TITLE = 56
 LEAST_TITLE = 8
-MOST_DECIMALS, ALL_DECIMALS = 2, 17
 
 NOISE = (
     Column("lane"), Column("form · decomposition · format"), Column("noise", "dBFS", 1), Column("95 %", "± dB", 2),
@@ -111,27 +111,7 @@ def misses(compared: Sequence[Compared]) -> Iterator[str]:
     """A sentence for each realization that does not meet its limits."""
     for number, one in enumerate(compared, 1):
         if one.misses:
-            yield f"{number} misses " + "; ".join(_miss(verdict) for verdict in one.misses) + "."
-
-
-def _miss(verdict: Verdict) -> str:
-    allowed = f"at most {_signed(verdict.allowed)} {verdict.unit}"
-    key = f"{verdict.key} of {verdict.output}" if verdict.output else verdict.key
-    if verdict.found is None:
-        return f"{key}, {allowed}: no figure, since {verdict.reason}"
-    return f"{key}: {_beside(verdict.found, verdict.allowed)}, {allowed}"
-
-
-def _beside(found: float, allowed: float) -> str:
-    """A figure that is too large, with one decimal more than its limit has, at most two, unless that hides the miss."""
-    decimals = min(MOST_DECIMALS, len(f"{allowed:f}".rstrip("0").partition(".")[2]) + 1)
-    while round(found, decimals) <= allowed and decimals < ALL_DECIMALS:
-        decimals += 1
-    return f"{found:.{decimals}f}".replace("-", MINUS)
-
-
-def _signed(number: float) -> str:
-    return f"{number:g}".replace("-", MINUS)
+            yield f"{number} misses " + "; ".join(miss(verdict) for verdict in one.misses) + "."
 
 
 def _sums(compared: Sequence[Compared]) -> Iterator[str]:
@@ -208,8 +188,7 @@ def _conditions(compared: Sequence[Compared], info: AudioInfo) -> str:
         f"The ideal ran in {said}.",
     ]
     if seed_of(compared) is not None:
-        signal = f"{SECONDS:g} s of uniform white noise, peak {_signed(PEAK_DBFS)} dBFS, seed {SEED}"
-        sentences.append(f"Limits were checked on {signal}.")
+        sentences.append(f"Limits were checked on {SIGNAL}.")
     return " ".join(sentences)
 
 
@@ -260,6 +239,7 @@ def _figures_of(figures: Figures) -> dict[str, object]:
     return {
         "response_deviation_db": figures.deviation.db,
         "response_deviation_hz": figures.deviation.hz,
+        "leak_db": figures.deviation.leak_db,
         "noise_dbfs": noise.dbfs,
         "noise_interval_db": noise.interval_db,
         "noise_full_dbfs": noise.full_dbfs,

@@ -45,6 +45,7 @@ COMMANDS = {
         "streamhost.commands.compare:compare",
         "All realizations of one filter on one signal: a table, the audio, the differences.",
     ),
+    "measure": Entry("streamhost.commands.measure:measure", "What a design review asks of one realization, and its limits."),
     "draw": Entry("streamhost.commands.draw:draw", "The block diagram of a realization, as text or SVG."),
     "import": Entry("streamhost.commands.import_:import_", "Coefficients from a foreign file, as a preset."),
     "forms": Entry("streamhost.commands.forms:forms", "What can be chosen; one form explained."),

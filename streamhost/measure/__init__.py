@@ -1,13 +1,16 @@
 """Signals and realizations in, frozen results out. Nothing here plots or writes a file."""
 
-from streamhost.measure.limits import Verdict, limit_band, limit_signal, verdicts
+from streamhost.measure.deviation import Deviation, response_deviation
+from streamhost.measure.limits import LIMITS, Limit, Verdict, limit_band, limit_signal, stated_limits, verdicts
 from streamhost.measure.measuring import Figures, Measured, Measurement, measure
-from streamhost.measure.noise import Noise, noise_of
+from streamhost.measure.noise_sum import Noise, noise_of
 from streamhost.measure.predicted import Prediction, predicted_noise
-from streamhost.measure.response import Deviation, response_deviation
+from streamhost.measure.realized import BandDeviation, Response, response
+from streamhost.measure.rounding import OutputNoise, RoundingNoise, noise
 from streamhost.measure.whiteness import Whiteness
 
 __all__ = [
-    "Deviation", "Figures", "Measured", "Measurement", "Noise", "Prediction", "Verdict", "Whiteness", "limit_band",
-    "limit_signal", "measure", "noise_of", "predicted_noise", "response_deviation", "verdicts",
+    "LIMITS", "BandDeviation", "Deviation", "Figures", "Limit", "Measured", "Measurement", "Noise", "OutputNoise", "Prediction",
+    "Response", "RoundingNoise", "Verdict", "Whiteness", "limit_band", "limit_signal", "measure", "noise", "noise_of",
+    "predicted_noise", "response", "response_deviation", "stated_limits", "verdicts",
 ]

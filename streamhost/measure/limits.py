@@ -1,24 +1,29 @@
-"""Whether a realization keeps the limits of its preset, on a signal that is always the same."""
+"""The limits that a preset can state, and whether a realization keeps them, on a signal that is always the same."""
 
-from collections.abc import Mapping
+from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass
+from math import inf
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from streamhost.measure.bands import Band, audio_band
-from streamhost.measure.measuring import Measured
+from streamhost.realization import Realization
 
 SEED = 1
 SECONDS = 10.0
 PEAK_DBFS = -20.0
 
+AT_MOST, AT_LEAST = "at most", "at least"
+
 
 @dataclass(frozen=True)
 class Verdict:
-    """One limit: its key, what was found (None: no figure, for that reason), what is allowed at most, and its unit.
+    """One limit: its key, what was found (None: no figure, for that reason), what is allowed, and their unit.
 
-    `output`: of which of several.
+    `rule`: whether that is allowed at most or at least. `output`: of which of several. `about`: of what, where the key
+    alone does not tell.
     """
 
     key: str
@@ -27,10 +32,67 @@ class Verdict:
     unit: str
     reason: str = ""
     output: str = ""
+    rule: str = AT_MOST
+    about: str = ""
 
     @property
     def meets(self) -> bool:
-        return self.found is not None and self.found <= self.allowed
+        if self.found is None:
+            return False
+        return self.found >= self.allowed if self.rule == AT_LEAST else self.found <= self.allowed
+
+
+@dataclass(frozen=True)
+class Finding:
+    """The figure that a limit is about, or the reason why there is none, and of which of several outputs."""
+
+    figure: float | None
+    reason: str = ""
+    output: str = ""
+
+
+@dataclass(frozen=True)
+class Limit:
+    """A key of [limits], the unit of its figure, and where the figure is found.
+
+    `instrument`: the name of the one whose result `find` is given; without, it is given the realization.
+    """
+
+    key: str
+    unit: str
+    instrument: str
+    find: Callable[[Any], Iterator[Finding]]
+    rule: str = AT_MOST
+
+
+def _noise(result: Any) -> Iterator[Finding]:
+    for each in result.each:
+        yield Finding(each.measured_dbfs, each.reason, each.output)
+
+
+def _deviation(result: Any) -> Iterator[Finding]:
+    for each in result.bands:
+        yield Finding(each.deviation_db, each.reason, each.output)
+
+
+def _leak(result: Any) -> Iterator[Finding]:
+    """A filter that is nowhere 40 dB down leaks nothing."""
+    for each in result.bands:
+        yield Finding(-inf if each.leak_db is None and not each.reason else each.leak_db, each.reason, each.output)
+
+
+def _counted(count: Callable[[Realization], int]) -> Callable[[Realization], Iterator[Finding]]:
+    return lambda realization: iter([Finding(float(count(realization)))])
+
+
+LIMITS = (
+    Limit("noise_dbfs", "dBFS", "noise", _noise),
+    Limit("response_deviation_db", "dB", "response", _deviation),
+    Limit("leak_db", "dB", "response", _leak),
+    Limit("multiplications", "", "", _counted(lambda each: each.program.drawn.counts().multiplications)),
+    Limit("memory_words", "words", "", _counted(lambda each: each.program.drawn.counts().delays)),
+)
+"""Every limit, in the order in which they are told. Its type in a preset stands in `presets.tables.LimitsTable`."""
 
 
 def limit_band(limits: Mapping[str, object], rate: float) -> Band:
@@ -51,15 +113,24 @@ def limit_signal(rate: float, channels: int = 1) -> NDArray[np.float64]:
     return white(round(SECONDS * rate), channels, SEED, PEAK_DBFS)
 
 
-def verdicts(limits: Mapping[str, object], measured: Measured) -> tuple[Verdict, ...]:
-    """Each stated limit against what was measured on `limit_signal` over `limit_band`, at each output."""
+def stated_limits(limits: Mapping[str, object]) -> tuple[Limit, ...]:
+    """Those of LIMITS that a preset states."""
+    return tuple(limit for limit in LIMITS if limit.key in limits)
+
+
+def verdicts(
+    limits: Mapping[str, object], realization: Realization, result_of: Callable[[str], Any]
+) -> tuple[Verdict, ...]:
+    """Each stated limit against what was found, at each output.
+
+    `result_of` gives the result of an instrument by its name, on `limit_signal` and over `limit_band`; it is called only
+    for those that a stated limit asks for.
+    """
     found = []
-    noise, deviation = limits.get("noise_dbfs"), limits.get("response_deviation_db")
-    for figures in measured.outputs:
-        name = figures.name if len(measured.outputs) > 1 else ""
-        if isinstance(noise, float | int):
-            found.append(Verdict("noise_dbfs", figures.noise.dbfs, float(noise), "dBFS", figures.noise.reason, name))
-        if isinstance(deviation, float | int):
-            reason = figures.deviation.reason
-            found.append(Verdict("response_deviation_db", figures.deviation.db, float(deviation), "dB", reason, name))
+    for limit in stated_limits(limits):
+        subject = result_of(limit.instrument) if limit.instrument else realization
+        allowed = limits[limit.key]
+        assert isinstance(allowed, float | int), "the preset's table says so"
+        for each in limit.find(subject):
+            found.append(Verdict(limit.key, each.figure, float(allowed), limit.unit, each.reason, each.output, limit.rule))
     return tuple(found)

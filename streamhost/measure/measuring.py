@@ -10,10 +10,10 @@ from streamhost.diagram.diagram import Counts
 from streamhost.diagram.norms import settling_frames
 from streamhost.formats import Fixed
 from streamhost.measure.bands import Band
+from streamhost.measure.deviation import Deviation, response_deviation
 from streamhost.measure.levels import has_run_away, peak_dbfs
-from streamhost.measure.noise import Noise, NoiseSum, settling_of_run
+from streamhost.measure.noise_sum import Noise, NoiseSum, settling_of_run
 from streamhost.measure.predicted import Prediction
-from streamhost.measure.response import Deviation, response_deviation
 from streamhost.measure.running import Block, Run
 from streamhost.measure.timing import ns_per_frame
 from streamhost.measure.watching import watch

@@ -114,6 +114,9 @@ class LimitsTable(msgspec.Struct, kw_only=True):
     band_hz: Numbers | None = None
     noise_dbfs: Number | None = None
     response_deviation_db: Number | None = None
+    leak_db: Number | None = None
+    multiplications: Whole | None = None
+    memory_words: Whole | None = None
 
 
 class EquationTable(msgspec.Struct, kw_only=True):

@@ -1,0 +1,91 @@
+"""The instruments of `measure`, and how limits are checked with them."""
+
+from collections.abc import Callable, Iterator
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from streamhost import measure
+from streamhost.commands.measuring import noise, response
+from streamhost.measure.bands import Band
+from streamhost.measure.limits import Verdict, limit_band, limit_signal, verdicts
+from streamhost.presets import Preset
+from streamhost.realization import Realization
+
+Report = Callable[[float, str], None]
+
+
+def unheard(share: float, doing: str) -> None:
+    """A report that goes nowhere."""
+
+
+@dataclass(frozen=True)
+class Asked:
+    """What an instrument is to measure, and how. x: the signal, (frames, channels), 1.0 = full scale."""
+
+    preset: Preset
+    realization: Realization
+    x: NDArray[np.float64]
+    band: Band
+    quick: bool = False
+    report: Report = unheard
+
+
+@dataclass(frozen=True)
+class Wave:
+    """Audio that an instrument found, for a file of that name: samples (frames, channels), 1.0 = full scale."""
+
+    name: str
+    samples: NDArray[np.float64]
+
+
+def _no_waves(result: Any) -> Iterator[Wave]:
+    return iter(())
+
+
+@dataclass(frozen=True)
+class Instrument:
+    """`name`: its key in JSON. `run`: its result, a frozen dataclass. `lines`: what that says. `waves`: audio in it.
+
+    `seconds`: about what it takes, for the progress line. `judged`: a run that gives the figures of its limits and no
+    more, where that is less work.
+    """
+
+    name: str
+    run: Callable[[Asked], Any]
+    lines: Callable[[Any], Iterator[str]]
+    waves: Callable[[Any], Iterator[Wave]] = _no_waves
+    seconds: float = 1.0
+    judged: Callable[[Asked], Any] | None = None
+
+
+INSTRUMENTS = (
+    Instrument("response", lambda asked: measure.response(asked.realization, [asked.band]), response.lines),
+    Instrument("noise", lambda asked: measure.noise(asked.realization, asked.x), noise.lines, seconds=2.0),
+)
+"""In the order in which they run and are told."""
+
+
+def limit_verdicts(preset: Preset, realization: Realization, known: dict[str, Any] | None = None) -> tuple[Verdict, ...]:
+    """Whether a realization keeps its preset's limits. `known`: results that were already found, on the signal for limits."""
+    results = {} if known is None else dict(known)
+    instruments = {instrument.name: instrument for instrument in INSTRUMENTS}
+    asked: list[Asked] = []
+
+    def result_of(name: str) -> Any:
+        if name not in results:
+            if not asked:
+                asked.append(asked_for_limits(preset, realization))
+            instrument = instruments[name]
+            results[name] = (instrument.judged or instrument.run)(asked[0])
+        return results[name]
+
+    return verdicts(preset.limits, realization, result_of)
+
+
+def asked_for_limits(preset: Preset, realization: Realization, *, quick: bool = False) -> Asked:
+    """What limits are checked on."""
+    x = limit_signal(realization.rate, realization.diagram.channels)
+    return Asked(preset, realization, x, limit_band(preset.limits, realization.rate), quick)

@@ -1,0 +1,95 @@
+"""`streamhost measure`: what a design review asks of one realization."""
+
+from collections.abc import Sequence
+from typing import TYPE_CHECKING
+
+import click
+
+from streamhost.commands.common import (
+    at_rate,
+    check_figures,
+    force_option,
+    json_option,
+    presets_named,
+    structures_option,
+    vary_option,
+    write_json,
+)
+from streamhost.errors import RequestError
+
+if TYPE_CHECKING:
+    from streamhost.commands.instruments import Asked
+    from streamhost.presets import Preset
+
+
+@click.command()
+@click.argument("name", metavar="PRESET")
+@click.option("--only", metavar="NAMES", help="Only these instruments and the limits they answer, for instance noise,response.")
+@click.option("--input", "source", metavar="IN",
+              help="An audio file, or a shipped recording's name. Unless said: the noise on which limits are checked.")
+@click.option("--output", "folder", metavar="DIR", help="Write the worst cases that are audio into this folder.")
+@click.option("--quick", is_flag=True, help="Shorter runs and smaller searches.")
+@vary_option
+@json_option
+@structures_option
+@force_option
+def measure(
+    name: str, only: str | None, source: str | None, folder: str | None, quick: bool, variations: Sequence[str],
+    json_file: str | None, force: bool,
+) -> int:
+    """What a design review asks of one realization, and whether it keeps the limits of its preset.
+
+    PRESET is a preset file or the name of a shipped one. Limits are checked on a signal that is always the same, whatever
+    IN is. Exit status 1 says that a limit is not met. Broken off by Ctrl-C, it tells and writes what is done.
+    """
+    from streamhost.cache import notice
+    from streamhost.commands.main import INTERRUPTED
+    from streamhost.commands.measure_run import chosen, measured
+    from streamhost.commands.measure_text import document, misses, text
+    from streamhost.commands.measure_waves import WaveFolder
+    from streamhost.shipped import resolve
+
+    instruments = chosen(only)
+    asked = _asked(_one_preset(name, variations), source, quick=quick)
+    file = resolve(source, "sample") if source is not None else None
+    waves = WaveFolder(folder, asked, file, instruments, force=force)
+    check_figures(json_file, file, force=force)
+    found = measured(asked, instruments, waves, on_limit_signal=source is None and not quick)
+    if problem := notice():
+        click.echo(problem, err=True)
+    if json_file != "-":
+        click.echo(text(found, asked, source))
+    elif said := misses(found):
+        click.echo("\n".join(said), err=True)
+    if json_file is not None:
+        write_json(json_file, document(found, asked, source), force=force)
+    return INTERRUPTED if found.broken_off else int(any(not verdict.meets for verdict in found.verdicts))
+
+
+def _one_preset(name: str, variations: Sequence[str]) -> "Preset":
+    presets = presets_named([name], variations)
+    if len(presets) != 1:
+        raise RequestError(
+            f"{name} with --vary is {len(presets)} realizations, and measure takes one: give one value for each key. "
+            "compare takes them all."
+        )
+    return presets[0]
+
+
+def _asked(stated: "Preset", source: str | None, *, quick: bool) -> "Asked":
+    """The preset on the signal of a file, or on the one for limits. RequestError where they do not go together."""
+    from streamhost.commands.instruments import Asked, asked_for_limits
+    from streamhost.files import probe, read_all
+    from streamhost.measure import limit_band
+    from streamhost.presets.realizing import realize_preset
+    from streamhost.shipped import resolve
+
+    if source is None:
+        realization = realize_preset(stated)
+        realization.check_samples(stated.source.name)
+        return asked_for_limits(stated, realization, quick=quick)
+    info = probe(resolve(source, "sample"))
+    preset = at_rate(stated, info, source)
+    realization = realize_preset(preset, info.channels)
+    realization.check_samples(preset.source.name)
+    return Asked(preset, realization, read_all(info.path)[0], limit_band(preset.limits, preset.rate), quick)

@@ -1,0 +1,1 @@
+"""What the instruments of `measure` say on a terminal: a module for each."""
