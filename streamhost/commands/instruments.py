@@ -1,6 +1,6 @@
 """The instruments of `measure`, and how limits are checked with them."""
 
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass
 from typing import Any
 
@@ -61,8 +61,14 @@ class Instrument:
     judged: Callable[[Asked], Any] | None = None
 
 
+def _response(asked: Asked, *, judged_only: bool = False) -> measure.Response:
+    limits: Mapping[str, Any] = asked.preset.limits
+    masks = [limits["mask"]] if "mask" in limits else []
+    return measure.response(asked.realization, [asked.band], masks, mask_hz=limits.get("mask_hz"), judged_only=judged_only)
+
+
 INSTRUMENTS = (
-    Instrument("response", lambda asked: measure.response(asked.realization, [asked.band]), response.lines),
+    Instrument("response", _response, response.lines, judged=lambda asked: _response(asked, judged_only=True)),
     Instrument("noise", lambda asked: measure.noise(asked.realization, asked.x), noise.lines, seconds=2.0),
 )
 """In the order in which they run and are told."""

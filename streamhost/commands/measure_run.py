@@ -72,5 +72,5 @@ def _check_limits(found: Found, asked: Asked, instruments: Sequence[Instrument],
     asked_for = {limit.key for limit in stated if limit.instrument in answered}
     found.not_asked = tuple(limit.key for limit in stated if limit.key not in asked_for)
     preset = replace(asked.preset, limits={key: value for key, value in asked.preset.limits.items()
-                                           if key in asked_for or key == "band_hz"})
+                                           if key not in found.not_asked})
     found.verdicts = limit_verdicts(preset, asked.realization, known)

@@ -50,9 +50,10 @@ def roots(descending: tuple[float, ...] | Polynomial) -> tuple[complex, ...]:
     return tuple(complex_roots + real_roots)
 
 
-def roots_outside(descending: tuple[float, ...]) -> int:
-    """How many roots lie on the unit circle (to within 2^-200) or outside it, counted before they are rounded."""
-    return sum(root.count for root in _precise(descending) if root.real**2 + root.imaginary**2 >= 1 - ON_CIRCLE)
+def roots_outside(descending: tuple[float, ...] | Polynomial, *, on_circle: bool = True) -> int:
+    """How many roots lie outside the unit circle, or on it (to within 2^-200), counted before they are rounded."""
+    least = 1 - ON_CIRCLE if on_circle else 1 + ON_CIRCLE
+    return sum(root.count for root in _precise(descending) if root.real**2 + root.imaginary**2 >= least)
 
 
 @lru_cache(maxsize=256)

@@ -6,6 +6,7 @@ from fractions import Fraction
 from streamhost.filters.exact import Polynomial, exactly, stripped, to_multiple
 from streamhost.filters.factors import Polynomials, ZerosPoles
 from streamhost.filters.roots import roots_outside
+from streamhost.filters.square_free import common_divisor
 
 
 def is_stable(ascending: Polynomial) -> bool:
@@ -51,3 +52,18 @@ def unstable_poles(factor: Polynomials | ZerosPoles) -> int:
     if is_stable(denominator):
         return 0
     return max(1, roots_outside(factor.a[: len(denominator)]))
+
+
+def roots_on_and_outside(ascending: Polynomial) -> tuple[int, int]:
+    """How many roots of A lie on the unit circle, and how many outside it. Ascending powers of z^-1, a[0] not 0.
+
+    A root on the circle is one of A and of A reversed: all such lie in their greatest common divisor, which is exact, and
+    whose other roots come in pairs r, 1/r. Neither nearness nor rounding takes part in which roots are on the circle.
+    """
+    denominator = stripped(ascending)
+    if is_stable(denominator):
+        return 0, 0
+    shared = common_divisor(denominator, denominator[::-1])
+    pairs = roots_outside(shared, on_circle=False) if len(shared) > 1 else 0
+    on = len(shared) - 1 - 2 * pairs
+    return on, max(roots_outside(denominator) - on, 0 if on else 1)

@@ -15,7 +15,11 @@ from streamhost.measure.frequencies import FloatArray, breakpoints, refined
 from streamhost.measure.levels import decibels
 from streamhost.realization import Realization
 
-JUDGED_DB = 40.0
+ComplexArray = NDArray[np.complex128]
+
+JUDGED = 10.0 ** (-40.0 / 20.0)
+"""Of the maximum of |H asked|: what is smaller is not judged."""
+
 PARTS = 16
 ZOOMS = 6
 DIGITS = 6
@@ -44,12 +48,12 @@ def response_deviation(realization: Realization, band: Band, outputs: Sequence[i
     is then zoomed in on. Of channels the one that deviates most.
     """
     channels = range(realization.program.diagram.channels)
-    found = [_of_channel(_Responses(realization, channel, tuple(outputs)), band) for channel in channels]
+    found = [_of_channel(Responses(realization, channel, tuple(outputs)), band) for channel in channels]
     return max(found, key=lambda deviation: inf if deviation.db is None else deviation.db)
 
 
 @dataclass(frozen=True)
-class _Responses:
+class Responses:
     """To the sum of some outputs of one channel."""
 
     realization: Realization
@@ -58,6 +62,11 @@ class _Responses:
 
     def magnitudes(self, hertz: FloatArray) -> tuple[FloatArray, FloatArray]:
         """|H asked| and |H rounded|; the latter infinite where the rounded filter does not settle."""
+        asked, rounded = self.at(hertz)
+        return np.abs(asked), np.abs(rounded)
+
+    def at(self, hertz: FloatArray) -> tuple[ComplexArray, ComplexArray]:
+        """H asked and H rounded; the latter infinite where the rounded filter does not settle."""
         filters, diagram = self.realization.filters, self.realization.program.diagram
         filter = filters[min(self.channel, len(filters) - 1)]
         w = 2.0 * pi * hertz / self.realization.rate
@@ -66,9 +75,9 @@ class _Responses:
         else:
             asked = filter.response(hertz)
             asked = asked[list(self.outputs)].sum(axis=0) if asked.ndim > hertz.ndim else asked
-        return np.abs(asked), np.abs(self._of_diagram(diagram, w))
+        return asked, self._of_diagram(diagram, w)
 
-    def _of_diagram(self, diagram: Diagram, w: FloatArray) -> NDArray[np.complex128]:
+    def _of_diagram(self, diagram: Diagram, w: FloatArray) -> ComplexArray:
         channel = min(self.channel, diagram.channels - 1)
         with np.errstate(invalid="ignore"):
             return np.asarray(sum(response_to_output(diagram, [diagram.inputs[0]], w, channel, output=output)[:, 0]
@@ -80,7 +89,7 @@ class _Responses:
         return from_input(diagram, self.channel, nodes=[diagram.outputs[output] for output in self.outputs]).poles
 
 
-def _of_channel(responses: _Responses, band: Band) -> Deviation:
+def _of_channel(responses: Responses, band: Band) -> Deviation:
     rate = responses.realization.rate
     low, high = (2.0 * pi * edge / rate for edge in band)
     hertz = np.clip(refined(breakpoints(responses.poles, low, high), PARTS) * rate / (2.0 * pi), *band)
@@ -90,7 +99,7 @@ def _of_channel(responses: _Responses, band: Band) -> Deviation:
     top = float(asked.max())
     if top == 0.0 or not np.isfinite(top):
         return Deviation(None, None, None, "the filter as asked has no response in the band to compare with")
-    judged = asked >= top * 10.0 ** (-JUDGED_DB / 20.0)
+    judged = asked >= top * JUDGED
     leak = rounded[~judged].max(initial=0.0) / top
     db = np.where(judged, _deviation_db(asked, rounded), -1.0)
     at, most = _zoomed(responses, hertz, int(db.argmax()), top)
@@ -102,14 +111,14 @@ def _deviation_db(asked: FloatArray, rounded: FloatArray) -> FloatArray:
         return np.asarray(np.abs(20.0 * np.log10(rounded) - 20.0 * np.log10(asked)), dtype=np.float64)
 
 
-def _zoomed(responses: _Responses, hertz: FloatArray, worst: int, top: float) -> tuple[float, float]:
+def _zoomed(responses: Responses, hertz: FloatArray, worst: int, top: float) -> tuple[float, float]:
     """The frequency and the size of the largest deviation near a point of the grid."""
     low, high = hertz[max(worst - 1, 0)], hertz[min(worst + 1, len(hertz) - 1)]
     at, most = float(hertz[worst]), -inf
     for _ in range(ZOOMS):
         points = np.unique(np.append(np.linspace(low, high, 2 * PARTS + 1), at))
         asked, rounded = responses.magnitudes(points)
-        judged = asked >= top * 10.0 ** (-JUDGED_DB / 20.0)
+        judged = asked >= top * JUDGED
         db = np.where(judged, _deviation_db(asked, rounded), -1.0)
         place = int(db.argmax())
         at, most = float(points[place]), float(db[place])

@@ -44,18 +44,20 @@ class Verdict:
 
 @dataclass(frozen=True)
 class Finding:
-    """The figure that a limit is about, or the reason why there is none, and of which of several outputs."""
+    """The figure that a limit is about, or the reason why there is none, of which of several outputs, and of what."""
 
     figure: float | None
     reason: str = ""
     output: str = ""
+    about: str = ""
 
 
 @dataclass(frozen=True)
 class Limit:
     """A key of [limits], the unit of its figure, and where the figure is found.
 
-    `instrument`: the name of the one whose result `find` is given; without, it is given the realization.
+    `instrument`: the name of the one whose result `find` is given; without, it is given the realization. `threshold`: what
+    is allowed, where a preset states no number.
     """
 
     key: str
@@ -63,6 +65,7 @@ class Limit:
     instrument: str
     find: Callable[[Any], Iterator[Finding]]
     rule: str = AT_MOST
+    threshold: float | None = None
 
 
 def _noise(result: Any) -> Iterator[Finding]:
@@ -81,6 +84,13 @@ def _leak(result: Any) -> Iterator[Finding]:
         yield Finding(-inf if each.leak_db is None and not each.reason else each.leak_db, each.reason, each.output)
 
 
+def _mask(result: Any) -> Iterator[Finding]:
+    for each in result.masks:
+        band = f" about {each.nominal_hz:g} Hz" if each.nominal_hz is not None else ""
+        at = f", nearest to its edge at {each.margin_hz:g} Hz" if each.margin_hz is not None else ""
+        yield Finding(each.margin_db, each.reason, each.output, f"{each.mask}{band}{at}")
+
+
 def _counted(count: Callable[[Realization], int]) -> Callable[[Realization], Iterator[Finding]]:
     return lambda realization: iter([Finding(float(count(realization)))])
 
@@ -89,6 +99,7 @@ LIMITS = (
     Limit("noise_dbfs", "dBFS", "noise", _noise),
     Limit("response_deviation_db", "dB", "response", _deviation),
     Limit("leak_db", "dB", "response", _leak),
+    Limit("mask", "dB inside", "response", _mask, AT_LEAST, threshold=0.0),
     Limit("multiplications", "", "", _counted(lambda each: each.program.drawn.counts().multiplications)),
     Limit("memory_words", "words", "", _counted(lambda each: each.program.drawn.counts().delays)),
 )
@@ -129,8 +140,8 @@ def verdicts(
     found = []
     for limit in stated_limits(limits):
         subject = result_of(limit.instrument) if limit.instrument else realization
-        allowed = limits[limit.key]
+        allowed = limits[limit.key] if limit.threshold is None else limit.threshold
         assert isinstance(allowed, float | int), "the preset's table says so"
-        for each in limit.find(subject):
-            found.append(Verdict(limit.key, each.figure, float(allowed), limit.unit, each.reason, each.output, limit.rule))
+        found += [Verdict(limit.key, each.figure, float(allowed), limit.unit, each.reason, each.output, limit.rule, each.about)
+                  for each in limit.find(subject)]
     return tuple(found)

@@ -28,7 +28,7 @@ class Preset:
 
     `rate` in hertz; `designs` holds the filters for each rate that it is stated for. `pairing`, `ordering` and `scaling`
     are None where the preset leaves them to the defaults.
-    `limits` holds noise_dbfs and response_deviation_db (numbers) and band_hz (a pair in Hz), those that are stated.
+    `limits` holds those keys of [limits] that are stated: numbers, band_hz (a pair in Hz) and mask (a name).
     """
 
     title: str

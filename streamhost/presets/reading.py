@@ -8,6 +8,7 @@ from types import MappingProxyType
 from typing import Any
 
 from streamhost.errors import MachineError, PresetError, nearest
+from streamhost.filters.curves.masks import MASKS, mid_bands_text
 from streamhost.presets.filter_table import read_filters
 from streamhost.presets.format_table import read_format
 from streamhost.presets.lines import scan
@@ -189,4 +190,15 @@ def _limits(mistakes: Mistakes, table: Mapping[str, Any], rate: float | None) ->
                 f"is not allowed: two numbers of hertz that rise, from 0 to half the rate{half}.",
             )
         limits["band_hz"] = tuple(band)
+    _check_mask(mistakes, limits)
     return limits
+
+
+def _check_mask(mistakes: Mistakes, limits: Mapping[str, object]) -> None:
+    mask, mid = limits.get("mask"), limits.get("mask_hz")
+    if isinstance(mask, str) and mask not in MASKS:
+        mistakes.value(("limits", "mask"), mask, f"is not known: {listed(MASKS)}.{nearest(mask, MASKS)}")
+    elif isinstance(mask, str) and mid is not None and mid not in MASKS[mask].nominals:
+        mistakes.value(("limits", "mask_hz"), mid, f"is not allowed: {mid_bands_text(mask)}.")
+    elif mid is not None and mask is None:
+        mistakes.value(("limits", "mask_hz"), mid, "says of which band a mask is, and there is no mask.")

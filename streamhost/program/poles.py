@@ -8,6 +8,7 @@ from streamhost.diagram.loop_matrices import loop_matrices
 from streamhost.diagram.nodes import Delay, Round, Sum
 from streamhost.diagram.polynomials import determinant
 from streamhost.filters import Polynomials
+from streamhost.filters.exact import Polynomial, stripped
 from streamhost.filters.stability import unstable_poles
 from streamhost.program.program import Program, RoundArithmetic
 
@@ -15,6 +16,11 @@ from streamhost.program.program import Program, RoundArithmetic
 def unstable_poles_in(diagram: Diagram) -> int:
     """Of the channel that has most; a pole that zeros cancel is counted like any other."""
     return max(_in_channel(diagram, channel) for channel in range(diagram.channels))
+
+
+def denominators(diagram: Diagram, channel: int = 0) -> list[Polynomial]:
+    """The denominator of each loop, exact, in ascending powers of z^-1; what no loop contains has its poles at 0."""
+    return [stripped(determinant(matrix)) for matrix in loop_matrices(diagram, channel)]
 
 
 def running_sums(program: Program) -> tuple[int, int]:
@@ -42,8 +48,8 @@ def _drops_nothing(program: Program, index: int) -> bool:
 
 
 def _in_channel(diagram: Diagram, channel: int) -> int:
-    return sum(_on_or_outside(determinant(matrix)) for matrix in loop_matrices(diagram, channel))
+    return sum(map(_on_or_outside, denominators(diagram, channel)))
 
 
-def _on_or_outside(denominator: Sequence[object]) -> int:
-    return unstable_poles(Polynomials((1.0,), tuple(denominator)))  # type: ignore[arg-type]
+def _on_or_outside(denominator: Polynomial) -> int:
+    return unstable_poles(Polynomials((1.0,), denominator))  # type: ignore[arg-type]

@@ -4,6 +4,9 @@ from collections.abc import Iterator, Sequence
 from itertools import pairwise
 from math import inf, log10
 
+import numpy as np
+import numpy.typing as npt
+
 from streamhost.filters.curves.bands import OCTAVE_RATIO, band_edges, exact_hz
 from streamhost.filters.curves.goal import Goal
 
@@ -11,6 +14,8 @@ from streamhost.filters.curves.goal import Goal
 INSIDE = ((0.0, 0.4), (1 / 8, 0.5), (1 / 4, 0.7), (3 / 8, 1.4), (1 / 2, 5.3))
 OUTSIDE = ((1 / 2, 1.2), (1.0, 16.6), (2.0, 40.5), (3.0, 60.0), (4.0, 70.0), (5.0, 70.0), (6.0, 70.0))
 LEAST_INSIDE = -0.4
+EDGE = 1e-9
+"""Of a frequency, within which it is taken to be the band's edge."""
 STEPS = 8
 """Points from one breakpoint to the next: between them the limits run straight over the logarithm of frequency."""
 
@@ -23,6 +28,27 @@ def band_goals(nominal_hz: float, bands_per_octave: int, order: int) -> tuple[Go
         for f in {exact_hz(nominal_hz) * ratio, exact_hz(nominal_hz) / ratio}
     ]
     return tuple(sorted(goals, key=lambda goal: (goal.hertz, goal.upper_db)))
+
+
+def band_limits(
+    hertz: npt.NDArray[np.float64], nominal_hz: float, bands_per_octave: int
+) -> tuple[npt.NDArray[np.float64], npt.NDArray[np.float64]]:
+    """The lowest and highest gain in dB, relative to that at the exact mid-band, at frequencies (n,) above 0 Hz.
+
+    Between breakpoints limits run straight over the logarithm of frequency; at the band's edge both sides' limits hold.
+    """
+    ratio = hertz / exact_hz(nominal_hz)
+    distance = np.maximum(ratio, 1 / ratio)
+    edge = breakpoint_ratio(1 / 2, bands_per_octave) * (1 + EDGE)
+
+    def limit(corners: Sequence[tuple[float, float]]) -> npt.NDArray[np.float64]:
+        x, limits = zip(*corners, strict=True)
+        ratios = [breakpoint_ratio(each, bands_per_octave) for each in x]
+        return np.asarray(np.interp(np.log(distance), np.log(ratios), limits), dtype=np.float64)
+
+    lower = np.where(distance <= edge, -limit(INSIDE), -inf)
+    upper = np.where(distance * (1 + EDGE) ** 2 >= edge, -limit(OUTSIDE), -LEAST_INSIDE)
+    return lower, upper
 
 
 def breakpoint_ratio(x: float, bands_per_octave: int) -> float:
