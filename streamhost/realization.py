@@ -166,14 +166,15 @@ class Realization:
         """
         if self.filter.rate != other.filter.rate:
             raise RequestError(f"A state at {other.filter.rate:g} Hz cannot be carried to {self.filter.rate:g} Hz.")
-        if is_run(self.program):
+        run = is_run(self.program)
+        if run:
             self.check_samples()
         self.reset()
         if other._memory is None:
             return Carried("copied", 0.0, 0)
         self._memory = self.memory(other._memory.channels)
         past = other._past()
-        if is_run(self.program):
+        if run:
             self._run(past[-self.program.state_words :], codes=False)
             carried = Carried("run", None, 0)
         else:

@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 
 FloatArray = NDArray[np.float64]
 SPLIT = 134217729.0  # 2^27 + 1
+PRODUCTS_AT_ONCE = 1 << 15
 
 
 @dataclass(frozen=True)
@@ -22,15 +23,14 @@ class Doubled:
     low: FloatArray
 
     def __matmul__(self, other: "Doubled") -> "Doubled":
-        high = np.zeros((self.high.shape[0], other.high.shape[1]))
-        low = np.zeros_like(high)
-        for k in range(self.high.shape[1]):
-            left, right = self.high[:, k, np.newaxis], other.high[np.newaxis, k]
-            product, error = _product(left, right)
-            error = error + (left * other.low[np.newaxis, k] + self.low[:, k, np.newaxis] * right)
-            high, lost = _sum(high, product)
-            low = low + (lost + error)
-        return Doubled(*_sum(high, low))
+        """All products of some rows at once, as many as stay near the processor."""
+        rows, columns = self.high.shape[0], other.high.shape[1]
+        high, low = np.zeros((2, rows, columns))
+        at_once = max(1, PRODUCTS_AT_ONCE // max(1, other.high.size))
+        for first in range(0, rows, at_once):
+            part = slice(first, first + at_once)
+            high[part], low[part] = _rows_product(self.high[part], self.low[part], other)
+        return Doubled(high, low)
 
     def __add__(self, other: "Doubled") -> "Doubled":
         total, lost = _sum(self.high, other.high)
@@ -42,6 +42,15 @@ class Doubled:
     def columns(self, places: Sequence[int]) -> "Doubled":
         """Some columns, in the order asked for."""
         return Doubled(self.high[:, list(places)], self.low[:, list(places)])
+
+    def scaled(self, *, rows: FloatArray | None = None, columns: FloatArray | None = None) -> "Doubled":
+        """Each row, each column times a power of two, which rounds nothing."""
+        factors: FloatArray = np.ones((1, 1)) if rows is None else rows[:, np.newaxis]
+        factors = factors if columns is None else factors * columns
+        return Doubled(self.high * factors, self.low * factors)
+
+    def transposed(self) -> "Doubled":
+        return Doubled(self.high.T, self.low.T)
 
     def beside(self, other: "Doubled") -> "Doubled":
         """The columns of both, these first."""
@@ -56,27 +65,52 @@ def doubled(matrix: FloatArray) -> Doubled:
     return Doubled(matrix, np.zeros_like(matrix))
 
 
-def power(matrix: Doubled, exponent: int) -> Doubled:
-    """By squaring."""
-    result = doubled(np.eye(len(matrix.high)))
-    while exponent:
-        if exponent & 1:
-            result = result @ matrix
-        exponent >>= 1
-        if exponent:
-            matrix = matrix @ matrix
-    return result
+def squares(matrix: Doubled, count: int) -> list[Doubled]:
+    """M, M^2, M^4, ..., count of them."""
+    found = [matrix]
+    while len(found) < count:
+        found.append(found[-1] @ found[-1])
+    return found
 
 
-def krylov(rows: Doubled, matrix: Doubled, count: int) -> Doubled:
-    """rows, rows M, rows M^2, ..., count of them under each other; each time twice as many."""
+def power(raised: Sequence[Doubled], exponent: int) -> Doubled:
+    """The matrix raised to an exponent, from `squares` as far as that needs them."""
+    result: Doubled | None = None
+    for place in range(exponent.bit_length()):
+        if exponent >> place & 1:
+            result = raised[place] if result is None else result @ raised[place]
+    return doubled(np.eye(len(raised[0].high))) if result is None else result
+
+
+def krylov(rows: Doubled, raised: Sequence[Doubled], count: int) -> Doubled:
+    """rows, rows M, rows M^2, ..., count of them under each other; each time twice as many, by the `squares` of M."""
     one = len(rows.high)
-    found, leap = rows, matrix
+    found, doubling = rows, 0
     while len(found.high) < count * one:
-        found = found.over(found @ leap)
-        if len(found.high) < count * one:
-            leap = leap @ leap
+        found = found.over(found @ raised[doubling])
+        doubling += 1
     return Doubled(found.high[: count * one], found.low[: count * one])
+
+
+def _rows_product(high: FloatArray, low: FloatArray, other: Doubled) -> tuple[FloatArray, FloatArray]:
+    """Some rows times a matrix, high and low; inside terms come first and rows last, along which numpy is quick.
+
+    Terms are added in pairs, then pairs of pairs.
+    """
+    left, left_low = high.T[:, np.newaxis, :], low.T[:, np.newaxis, :]
+    right, right_low = other.high[:, :, np.newaxis], other.low[:, :, np.newaxis]
+    products, errors = _product(left, right)
+    errors += left * right_low + left_low * right
+    while (count := len(products)) > 1:
+        half = count // 2
+        total, lost = _sum(products[:half], products[half : 2 * half])
+        rest = errors[:half] + errors[half : 2 * half] + lost
+        products = np.concatenate([total, products[2 * half :]])
+        errors = np.concatenate([rest, errors[2 * half :]])
+    if not len(products):
+        return np.zeros((len(high), other.high.shape[1])), np.zeros((len(high), other.high.shape[1]))
+    total, rest = _sum(products[0], errors[0])
+    return total.T, rest.T
 
 
 def _sum(a: FloatArray, b: FloatArray) -> tuple[FloatArray, FloatArray]:

@@ -13,7 +13,6 @@ from streamhost.diagram.carrying import (
     outputs_alone,
     past_input,
     residue_states,
-    weights_of,
 )
 from streamhost.diagram.linear import state_space
 from streamhost.errors import RequestError
@@ -33,7 +32,7 @@ MOST_SOLVED = 300
 class Carried:
     """How well one realization's state was carried into another.
 
-    `way`: "copied" between equal programs; "solved"; or "run", over the last inputs, where a long response ends.
+    `way`: "copied" between equal programs; "solved"; or "run", over the last inputs: see `is_run`.
     `missed`: the largest deviation of the output, were there no more input, from what would have come, 1.0 = full scale;
     None where it was run. `clipped`: how many states did not fit their word and were saturated.
     """
@@ -83,11 +82,11 @@ def bridge(before: Program, following: Program, rate: float) -> Bridge:
     solved = []
     for channel in range(channels):
         spaces = [state_space(program.diagram, min(channel, program.diagram.channels - 1)) for program in (before, following)]
-        spacing, rows = looked_at(spaces, rate)
-        first = outputs_alone(spaces[0], [pair[0] for pair in common], spacing, rows)
-        second = outputs_alone(spaces[1], [pair[1] for pair in common], spacing, rows)
+        frames = looked_at(spaces, rate)
+        first = outputs_alone(spaces[0], [pair[0] for pair in common], frames)
+        second = outputs_alone(spaces[1], [pair[1] for pair in common], frames)
         given = first.beside(-second.columns([state for state, _, _ in past]))
-        solved.append(continuation(given, second.columns(free), weights_of(spacing, rows, len(common))))
+        solved.append(continuation(given, second.columns(free), frames.weights(len(common))))
     return Bridge(past, free, following.state_words, tuple(solved))
 
 
@@ -114,8 +113,12 @@ def frames_of_history(program: Program) -> int:
 
 
 def is_run(program: Program) -> bool:
-    """Whether the state is made by running the program over its last inputs: a long response that ends."""
-    return program.state_words > MOST_SOLVED and program.diagram.response_ends()
+    """Whether the state is made by running the program over its last inputs.
+
+    That is where its response ends and is long, or ends only because zeros cancel poles, as in a running sum: a state that
+    no input makes, and be it off by the last bit, might never die there.
+    """
+    return (program.state_words > MOST_SOLVED or program.diagram.has_loop()) and program.diagram.response_ends()
 
 
 def _common_outputs(before: Program, following: Program) -> list[tuple[int, int]]:
