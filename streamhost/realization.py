@@ -20,7 +20,7 @@ from streamhost.program.run import lower
 from streamhost.structures import Built, build
 
 if TYPE_CHECKING:
-    from streamhost.program.native.kernel import Kernel, Memory
+    from streamhost.program.native.kernel import Kernel, Memory, Variant
 
 MOST_SAMPLE_BITS = 53
 MOST_HISTORY = 1 << 16
@@ -52,7 +52,7 @@ class Realization:
         self.diagram: Diagram = built.diagram
         self.program: Program = lower(built.diagram, format)
         self._memory: Memory | None = None
-        self._kernels: dict[bool, Kernel] = {}
+        self._kernels: dict[Variant, Kernel] = {}
         self._recent: deque[NDArray[np.generic]] = deque()
 
     def __repr__(self) -> str:
@@ -234,18 +234,19 @@ class Realization:
             raise RequestError(f"Number of channels: {before} in the blocks before, {channels} in this one. reset() first.")
         y = np.empty((frames, len(self.outputs) * channels), block.dtype)
         marks = np.zeros(block.shape, np.uint8)
-        self._kernel(codes).call(self._memory, np.ascontiguousarray(block), y, marks=marks, trace=no_trace())
+        self._kernel(codes, channels).call(self._memory, np.ascontiguousarray(block), y, marks=marks, trace=no_trace())
         self._remember(block)
         if len(self.outputs) > 1:
             return y.reshape(frames, len(self.outputs), channels)
         return y[:, 0] if x.ndim == 1 else y
 
-    def _kernel(self, codes: bool) -> "Kernel":
-        from streamhost.program.native.kernel import Variant, compile_kernel
+    def _kernel(self, codes: bool, channels: int) -> "Kernel":
+        from streamhost.program.native.kernel import Variant, compile_kernel, kernel_width
 
-        if codes not in self._kernels:
-            self._kernels[codes] = compile_kernel(self.program, Variant(codes=codes, metered=True))
-        return self._kernels[codes]
+        variant = Variant(codes=codes, metered=True, width=kernel_width(self.program, channels))
+        if variant not in self._kernels:
+            self._kernels[variant] = compile_kernel(self.program, variant)
+        return self._kernels[variant]
 
 
 def tally(program: Program, meters: NDArray[np.int64] | None) -> Tally:

@@ -1,11 +1,13 @@
 """Laws that every program keeps, whatever the diagram and the format."""
 
+from dataclasses import replace
 from random import Random
 
 import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from native_runs import Run, run_native
 from random_diagrams import random_diagram
 from random_formats import random_format
 
@@ -14,6 +16,7 @@ from streamhost.errors import DiagramError, FormatError
 from streamhost.formats import Fixed, Float, Format
 from streamhost.program.definition import FixedDefinition
 from streamhost.program.dither import dither_key, dither_value, dither_word, mix
+from streamhost.program.native.kernel import Variant
 from streamhost.program.run import lower, run_definition
 
 SEEDS = st.integers(0, 2**32 - 1)
@@ -197,3 +200,25 @@ def test_a_loop_of_delays_that_nothing_drives_has_no_word() -> None:
     b.output(b.sum(x, second, label="y"))
     with pytest.raises(DiagramError, match="drive each other and nothing drives them"):
         lower(b.build(), Fixed("Q1.15"))
+
+
+@pytest.mark.parametrize("seed", range(10))
+def test_channels_that_run_at_once_have_the_bits_that_each_has_alone(seed: int) -> None:
+    """Kernels of every kind, in groups of 2, 4 or 8 of eleven channels, which leave a rest."""
+    diagram, format = drawn(seed)
+    program, fixed = lower(diagram, format), isinstance(format, Fixed)
+    x: np.ndarray = signal(seed, 40, 11)
+    x[::7] = np.nan
+    if isinstance(format, Fixed):
+        word = format.input.word
+        x = np.random.default_rng(seed).integers(word.low, word.high, x.shape)
+    kinds = [Variant(codes=fixed), Variant(codes=fixed, metered=True, traced=True)]
+    for variant in kinds if fixed else [*kinds, Variant(double=True)]:
+        alone = run_native(program, x, variant, blocks=[13, 27])
+        at_once = run_native(program, x, replace(variant, width=(2, 4, 8)[seed % 3]), blocks=[13, 27])
+        for first, second in zip(_everything(at_once), _everything(alone), strict=True):
+            np.testing.assert_array_equal(first, second)
+
+
+def _everything(run: Run) -> tuple[np.ndarray, ...]:
+    return run.y, run.meters, run.marks, run.trace, run.memory.state

@@ -5,7 +5,7 @@ from numpy.typing import NDArray
 
 from streamhost.host.meters import Meters
 from streamhost.host.record import ARRAYS, RECORD
-from streamhost.program.native.kernel import Variant, compile_kernel, no_trace
+from streamhost.program.native.kernel import Variant, compile_kernel, kernel_width, no_trace
 from streamhost.realization import Realization, Tally, tally
 
 
@@ -21,7 +21,8 @@ class Lane:
         realization.check_samples()
         self.realization, self.channels, self.metered = realization, channels, metered
         self.memory = realization.memory(channels)
-        self.kernel = compile_kernel(realization.program, Variant(metered=metered))
+        width = kernel_width(realization.program, channels)
+        self.kernel = compile_kernel(realization.program, Variant(metered=metered, width=width))
         self._outputs = len(realization.outputs)
         self._trace = no_trace()
         self._record = np.zeros(1, RECORD)

@@ -6,7 +6,7 @@ from time import perf_counter_ns
 import numpy as np
 from numpy.typing import NDArray
 
-from streamhost.program.native.kernel import compile_kernel, no_marks, no_trace
+from streamhost.program.native.kernel import Variant, compile_kernel, kernel_width, no_marks, no_trace
 from streamhost.realization import Realization
 
 BLOCK = 4096
@@ -19,7 +19,8 @@ def ns_per_frame(realization: Realization, x: NDArray[np.float64]) -> float:
     x: (frames, channels), of which the first 4096 frames at most are run, from zero state and on.
     """
     block = np.ascontiguousarray(x[:BLOCK])
-    memory, kernel = realization.memory(block.shape[1]), compile_kernel(realization.program)
+    channels, program = block.shape[1], realization.program
+    memory, kernel = realization.memory(channels), compile_kernel(program, Variant(width=kernel_width(program, channels)))
     y = np.empty((len(block), len(realization.outputs) * block.shape[1]))
     marks, trace = no_marks(), no_trace()
     times = []

@@ -6,7 +6,7 @@ from streamhost.program.native.doors import input_text
 from streamhost.program.native.frame import Variant, close_loops, has_dither, header, lines, open_loops
 from streamhost.program.native.meters import meter_places
 from streamhost.program.native.taps import print_taps
-from streamhost.program.native.text import Text, Value, comment, overflowed_text, rounded_text
+from streamhost.program.native.text import SHORT, Text, Value, comment, overflowed_text, rounded_text
 from streamhost.program.program import Program, RoundArithmetic, SumArithmetic, TapsArithmetic, TermArithmetic
 from streamhost.program.sources import traced_roundings
 
@@ -54,9 +54,7 @@ class FixedPrinter:
         for index in self.program.diagram.order:
             self.print(index, self.nodes[index])
         if self.variant.metered and self.flags:
-            self.text(f"if ({' | '.join(self.flags)}) != 0:")
-            with self.text.indented():
-                self.text("F[n, c] = 1")
+            self.text(f"F[n, c] = np.uint8(({' | '.join(self.flags)}) != 0)")
         self.store()
         close_loops(self.text, self.program, self.variant)
         return str(self.text)
@@ -64,7 +62,7 @@ class FixedPrinter:
     def assign(self, index: int, value: Value, *, prefix: str = "v") -> Value:
         """A statement that gives a node's value a name."""
         self.text(f"{prefix}{index} = {value.text}{comment(self.nodes[index].label)}")
-        named = Value(f"{prefix}{index}", value.bound, is_wide=value.is_wide)
+        named = Value(f"{prefix}{index}", value.bound, is_wide=value.is_wide, is_short=value.is_short)
         if prefix == "v":
             self.values[index] = named
         return named
@@ -76,8 +74,7 @@ class FixedPrinter:
         elif isinstance(node, Delay):
             self.print_delay(index, node)
         elif isinstance(node, Gain):
-            coefficient = Value(f"k{node.coefficient}", self.largest(node.coefficient), is_wide=False)
-            self.assign(index, coefficient.times(self.values[node.source]))
+            self.assign(index, self.coefficient(f"k{node.coefficient}", node.coefficient).times(self.values[node.source]))
         elif isinstance(node, Shift):
             self.values[index] = self.values[node.source].left(max(0, node.k))
             if node.source in self.exact:
@@ -100,7 +97,12 @@ class FixedPrinter:
     def value_of(self, text: str, index: int) -> Value:
         """An expression that holds a node's value, in as many words as that takes."""
         number = self.program.numbers[index]
-        return Value(text, number.bound, is_wide=number.carrier > 64)
+        stands_in_word = isinstance(self.nodes[index], Input | Delay | Round)
+        return Value(text, number.bound, is_wide=number.carrier > 64, is_short=stands_in_word and number.bound <= SHORT)
+
+    def coefficient(self, text: str, slot: int) -> Value:
+        assert self.program.stored is not None, "a fixed-point program"
+        return Value(text, self.largest(slot), is_wide=False, is_short=self.program.stored.words[slot].bits <= 32)
 
     def largest(self, slot: int) -> int:
         """The largest magnitude of a coefficient's word: kernels serve every value that fits it and its bound."""
@@ -286,7 +288,7 @@ class FixedPrinter:
         """The code brought into its word, counted where it did not fit."""
         target = name or f"v{index}"
         self.text(f"{target} = {overflowed_text(code, quantizer.word, quantizer.overflow)}")
-        value = Value(target, -quantizer.word.low, is_wide=False)
+        value = Value(target, -quantizer.word.low, is_wide=False, is_short=quantizer.word.bits <= 32)
         if self.variant.metered:
             differs = f"differs({code.text}, wide({target}))" if code.is_wide else f"np.int64({code.text} != {target})"
             self.count(meter, differs)

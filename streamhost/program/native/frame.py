@@ -33,13 +33,14 @@ class Variant:
     """Which kernel of a program: integer codes at its doors, meters, a trace of every rounding's residue.
 
     A traced floating-point kernel writes every node's value instead. `double` runs a float64 program in double-double:
-    two words a state, and two columns an output.
+    two words a state, and two columns an output. `width`: channels that run at once; the bits are the same.
     """
 
     codes: bool = False
     metered: bool = False
     traced: bool = False
     double: bool = False
+    width: int = 1
 
     @property
     def words(self) -> int:
@@ -51,7 +52,7 @@ def header(text: Text, program: Program, variant: Variant, functions: str, dtype
     """Everything before the loop over channels; `functions` are those that the text calls."""
     outputs, sources = variant.words * len(program.diagram.outputs), max(1, trace_width(program))
     door = "int64" if variant.codes else "float64"
-    open_text(text, title, functions)
+    open_text(text, title, functions, variant.width)
     text(f"x = carray(x_, (frames, channels), np.{door})")
     text(f"y = carray(y_, (frames, {outputs} * channels), np.{door})")
     text(f"S = carray(state_, ({max(1, variant.words * program.state_words)}, channels), np.{dtype})")
@@ -65,7 +66,7 @@ def header(text: Text, program: Program, variant: Variant, functions: str, dtype
         text(f"R = carray(trace_, (frames, channels, {sources}), np.float64)")
 
 
-def open_text(text: Text, title: str, functions: str = "") -> None:
+def open_text(text: Text, title: str, functions: str = "", width: int = 1) -> None:
     """The start of a module, up to the body of the function that runs; `functions` are those that it calls."""
     text(f'"""{title}"""')
     text()
@@ -79,7 +80,7 @@ def open_text(text: Text, title: str, functions: str = "") -> None:
         text(functions)
         text()
         text()
-    text("@machine_code")
+    text(f"@machine_code({width})")
     text(f"def run({', '.join(ARGUMENTS)}):")
     text.depth = 1
 
@@ -154,6 +155,6 @@ def close_loops(text: Text, program: Program, variant: Variant) -> None:
         text(f"S[{program.state_offsets[index]}, c] = s{index}")
     if variant.metered:
         for k in range(meter_count(program)):
-            text(f"M[{k}] += m{k}")
+            text(f"M[{k}] += total(m{k})")
     text.depth -= 2
     close_text(text)

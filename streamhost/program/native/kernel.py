@@ -27,6 +27,19 @@ def kernel_source(program: Program, variant: Variant = PLAIN) -> str:
     return print_fixed(program, variant) if isinstance(program.format, Fixed) else print_float(program, variant)
 
 
+def kernel_width(program: Program, channels: int) -> int:
+    """How many of so many channels a kernel of this program had best run at once, by measurement (`tests/benchmarks/lanes.py`).
+
+    Integers gain from four lanes on, for want of short vector multiplications and shifts; words of 128 bits never.
+    """
+    fixed = isinstance(program.format, Fixed)
+    if fixed and any(number.carrier > 64 for number in program.numbers):
+        return 1
+    least, most = (4, 8) if fixed else (2, 16)
+    width = 1 << (min(channels, most).bit_length() - 1)
+    return width if width >= least else 1
+
+
 @dataclass(frozen=True)
 class Kernel:
     """A compiled kernel: its machine address, to be called by pointer, and the object that keeps it alive."""
@@ -85,4 +98,6 @@ def no_trace() -> NDArray[np.float64]:
     return np.zeros(1, np.float64)
 
 
-__all__ = ["Kernel", "Memory", "Variant", "compile_kernel", "kernel_source", "no_marks", "no_trace", "trace_width"]
+__all__ = [
+    "Kernel", "Memory", "Variant", "compile_kernel", "kernel_source", "kernel_width", "no_marks", "no_trace", "trace_width",
+]

@@ -133,7 +133,8 @@ class TapsPrinter:
     def print_product(self, j: str, k: int, value: Value, at: int, halved: int) -> None:
         i, accumulator = self.index, self.arithmetic.accumulator
         first = self.node.coefficients[0]
-        coefficient = Value(f"C[{first} + {j}, c]", self.largest, is_wide=False)
+        short = all(word.bits <= 32 for word in self.words)
+        coefficient = Value(f"C[{first} + {j}, c]", self.largest, is_wide=False, is_short=short)
         product = coefficient.times(value)
         at += self.words[k].fraction
         keep = min(self.arithmetic.keeps[k], at)

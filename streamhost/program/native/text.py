@@ -5,7 +5,7 @@ from contextlib import contextmanager
 
 from streamhost.formats import Word
 
-LIMIT, MOST = 1 << 63, 1 << 127
+SHORT, LIMIT, MOST = 1 << 31, 1 << 63, 1 << 127
 
 
 class Text:
@@ -36,13 +36,14 @@ def comment(label: str) -> str:
 class Value:
     """An integer expression of a kernel: its text, the largest magnitude it can have, and whether it is two words.
 
-    What stands in a word of 64 bits is one, though its magnitude may be 2^63.
+    What stands in a word of 64 bits is one, though its magnitude may be 2^63; likewise `is_short` says that it fits 32 bits.
     """
 
-    def __init__(self, text: str, bound: int, *, is_wide: bool | None = None) -> None:
+    def __init__(self, text: str, bound: int, *, is_wide: bool | None = None, is_short: bool = False) -> None:
         assert bound < MOST, "lowering refuses what two words do not carry"
         self.text, self.bound = text, bound
         self.is_wide = bound >= LIMIT if is_wide is None else is_wide
+        self.is_short = is_short or bound < SHORT
 
     def wide(self) -> "Value":
         return self if self.is_wide else Value(f"wide({self.text})", self.bound, is_wide=True)
@@ -79,7 +80,10 @@ class Value:
     def times(self, other: "Value") -> "Value":
         bound = self.bound * other.bound
         is_wide = bound >= LIMIT
-        return Value(f"({self.as_wide_as(is_wide).text} * {other.as_wide_as(is_wide).text})", bound, is_wide=is_wide)
+        first, second = self.as_wide_as(is_wide), other.as_wide_as(is_wide)
+        if self.is_short and other.is_short:
+            return Value(f"(short({first.text}) * short({second.text}))", bound)
+        return Value(f"({first.text} * {second.text})", bound, is_wide=is_wide)
 
 
 ZERO = Value("np.int64(0)", 0)

@@ -24,11 +24,16 @@ SIGNATURE = types.void(*([types.voidptr] * 8), types.int64, types.int64, types.i
 ADDRESS = Kind("address", None)
 
 
-def machine_code(function: Callable[..., None]) -> Any:
+def machine_code(width: int) -> Callable[[Callable[..., None]], Any]:
     """A kernel's function in a generated module as one that Numba inlines: eight addresses and three int64; it returns nothing.
 
-    The text is read when Numba compiles, not when machine code is taken from disk.
+    The loop over `c` goes over `width` lanes at once, and over the rest one by one. The text is read when Numba compiles, not
+    when machine code is taken from disk.
     """
+    return lambda function: _inlined(function, width)
+
+
+def _inlined(function: Callable[..., None], width: int) -> Any:
 
     @intrinsic
     def run(
@@ -36,7 +41,7 @@ def machine_code(function: Callable[..., None]) -> Any:
         frames: Any, channels: Any, frame0: Any,
     ) -> Any:
         def generate(context: Any, builder: Any, signature: Any, values: Any) -> Any:
-            _translate(function, builder, signature.args, values)
+            _translate(function, width, builder, signature.args, values)
             return context.get_dummy_value()
 
         return SIGNATURE, generate
@@ -44,7 +49,7 @@ def machine_code(function: Callable[..., None]) -> Any:
     return run
 
 
-def _translate(function: Callable[..., None], builder: Any, kinds: Any, values: Any) -> None:
+def _translate(function: Callable[..., None], width: int, builder: Any, kinds: Any, values: Any) -> None:
     lines = linecache.getlines(function.__code__.co_filename)
     module = ast.parse("".join(lines))
     functions = {node.name: node for node in module.body if isinstance(node, ast.FunctionDef)}
@@ -54,7 +59,7 @@ def _translate(function: Callable[..., None], builder: Any, kinds: Any, values: 
         name: Value(KINDS["int64"] if kind == types.int64 else ADDRESS, value)
         for name, kind, value in zip(names, kinds, values, strict=True)
     }
-    Translation(builder, functions, arguments).function(text)
+    Translation(builder, functions, arguments, width).function(text)
 
 
 @cache

@@ -2,26 +2,21 @@
 
 import ast
 from collections.abc import Mapping
-from dataclasses import dataclass
 from typing import Any, Protocol
 
-from streamhost.program.native.machine.kinds import I64, KINDS, Kind, Value, Values, constant, converted
+from streamhost.program.native.machine.kinds import KINDS, Value, Values, constant, converted
+from streamhost.program.native.machine.memory import Array, Place, load
 from streamhost.program.native.machine.operations import CALLS, binary, chosen, compared, negated
 
-
-@dataclass(frozen=True)
-class Array:
-    """An array of the text: where it begins, how many entries a row of each dimension but the first has, and their kind."""
-
-    pointer: Any
-    lengths: tuple[Value, ...]
-    kind: Kind
+LANE = "c"
+"""The variable of the loop that may go over several lanes at once."""
 
 
 class Scope(Protocol):
-    """What names mean at a place of the text."""
+    """What names mean at a place of the text, and over how many lanes the present loop goes at once."""
 
     builder: Any
+    lanes: int
 
     @property
     def arrays(self) -> Mapping[str, Array]:
@@ -42,7 +37,8 @@ class InlineScope:
     """The names of a function of the text whose body stands in place of its call: each new value is a new one."""
 
     def __init__(self, outer: Scope, names: dict[str, Values]) -> None:
-        self.builder, self.arrays, self.functions = outer.builder, outer.arrays, outer.functions
+        self.builder, self.lanes = outer.builder, outer.lanes
+        self.arrays, self.functions = outer.arrays, outer.functions
         self.names = names
 
     def read(self, name: str) -> Values:
@@ -81,8 +77,7 @@ def scalar(scope: Scope, node: ast.expr) -> Value:
     if isinstance(node, ast.Compare):
         return compared(builder, node.ops[0], scalar(scope, node.left), scalar(scope, node.comparators[0]))
     if isinstance(node, ast.Subscript) and _is_array(scope, node):
-        kind, place = address(scope, node)
-        return Value(kind, builder.load(place))
+        return load(builder, place(scope, node))
     if isinstance(node, ast.Call) and called(node) in CALLS:
         return CALLS[called(node)](builder, *(scalar(scope, argument) for argument in node.args))
     value = evaluated(scope, node)
@@ -90,16 +85,26 @@ def scalar(scope: Scope, node: ast.expr) -> Value:
     return value
 
 
-def address(scope: Scope, node: ast.Subscript) -> tuple[Kind, Any]:
-    """The kind and the address of an array's entry. Nothing checks that it lies inside."""
+def place(scope: Scope, node: ast.Subscript) -> Place:
+    """Where an array's entry lies, or, of several lanes, the entry of the first and the distance to the next."""
     assert isinstance(node.value, ast.Name), "arrays have names"
     array, builder = scope.arrays[node.value.id], scope.builder
-    places = node.slice.elts if isinstance(node.slice, ast.Tuple) else [node.slice]
-    offset = converted(builder, scalar(scope, places[0]), KINDS["int64"]).machine
-    for length, place in zip(array.lengths, places[1:], strict=True):
-        offset = builder.add(builder.mul(offset, length.machine), scalar(scope, place).machine)
-    assert offset.type == I64, "places are int64"
-    return array.kind, builder.gep(array.pointer, [offset])
+    indices = node.slice.elts if isinstance(node.slice, ast.Tuple) else [node.slice]
+    offset = converted(builder, scalar(scope, indices[0]), KINDS["int64"]).machine
+    for length, index in zip(array.lengths, indices[1:], strict=True):
+        offset = builder.add(builder.mul(offset, length.machine), scalar(scope, index).machine)
+    lane = next((k for k, index in enumerate(indices) if scope.lanes > 1 and LANE in names(index)), None)
+    step = None
+    if lane is not None:
+        step = constant(1)
+        for length in array.lengths[lane:]:
+            step = Value(length.kind, builder.mul(step.machine, length.machine))
+    return Place(array.kind, array.pointer, offset, scope.lanes if lane is not None else 1, step)
+
+
+def names(node: ast.AST) -> set[str]:
+    """All names in a part of the text."""
+    return {each.id for each in ast.walk(node) if isinstance(each, ast.Name)}
 
 
 def _number(node: ast.expr) -> int | float:

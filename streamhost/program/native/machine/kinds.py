@@ -1,4 +1,7 @@
-"""Values of generated text as LLVM has them: their kinds, and how one becomes another."""
+"""Values of generated text as LLVM has them: their kinds, how one becomes another, and values of several lanes at once.
+
+A value that differs from lane to lane is an LLVM vector with an entry a lane; one that is the same in all stays one.
+"""
 
 from dataclasses import dataclass
 from typing import Any
@@ -31,6 +34,7 @@ KINDS = {
     for kind in (
         Kind("bool", BOOL, unsigned=True),
         Kind("uint8", BYTE, unsigned=True),
+        Kind("int32", ir.IntType(32)),
         Kind("int64", I64),
         Kind("uint64", I64, unsigned=True),
         Kind("wide", WIDE),
@@ -60,29 +64,57 @@ def constant(number: int | float) -> Value:
     return Value(kind, ir.Constant(I64, int(number)))
 
 
+def lanes_of(value: Value) -> int:
+    """Entries of a value; 1 of what is the same in all lanes."""
+    return value.machine.type.count if isinstance(value.machine.type, ir.VectorType) else 1
+
+
+def shaped(kind: Kind, lanes: int) -> Any:
+    """The LLVM type of so many values of a kind."""
+    return kind.type if lanes == 1 else ir.VectorType(kind.type, lanes)
+
+
+def spread(builder: Any, value: Value, lanes: int) -> Value:
+    """A value in so many lanes: the same in all, where it was one."""
+    if lanes_of(value) == lanes:
+        return value
+    shape = shaped(value.kind, lanes)
+    if isinstance(value.machine, ir.Constant):
+        return Value(value.kind, ir.Constant(shape, [value.machine.constant] * lanes))
+    first = builder.insert_element(ir.Constant(shape, ir.Undefined), value.machine, ir.Constant(ir.IntType(32), 0))
+    zeros = ir.Constant(ir.VectorType(ir.IntType(32), lanes), [0] * lanes)
+    return Value(value.kind, builder.shuffle_vector(first, ir.Constant(shape, ir.Undefined), zeros))
+
+
+def alike(builder: Any, *values: Value) -> tuple[Value, ...]:
+    """Operands with as many lanes as the one that has most."""
+    lanes = max(map(lanes_of, values))
+    return tuple(spread(builder, value, lanes) for value in values)
+
+
 def converted(builder: Any, value: Value, kind: Kind) -> Value:
     """A value as another kind, as a conversion in the text says: integers wrap, floats are rounded to nearest even.
 
     A float becomes an integer by cutting its fraction off; one that does not fit is the printer's mistake.
     """
-    source, target = value.kind, kind
-    if source == target:
+    source, machine, shape = value.kind, value.machine, shaped(kind, lanes_of(value))
+    if source == kind:
         return value
-    machine = value.machine
-    if source.is_float and target.is_float:
-        machine = builder.fpext(machine, F64) if target.name == "float64" else builder.fptrunc(machine, F32)
+    if source.is_float and kind.is_float:
+        machine = (builder.fpext if kind.name == "float64" else builder.fptrunc)(machine, shape)
     elif source.is_float:
-        machine = builder.fptosi(machine, target.type)
-    elif target.is_float:
-        machine = (builder.uitofp if source.unsigned else builder.sitofp)(machine, target.type)
-    elif source.type.width < target.type.width:
-        machine = (builder.zext if source.unsigned else builder.sext)(machine, target.type)
-    elif source.type.width > target.type.width:
-        machine = builder.trunc(machine, target.type)
+        machine = builder.fptosi(machine, shape)
+    elif kind.is_float:
+        machine = (builder.uitofp if source.unsigned else builder.sitofp)(machine, shape)
+    elif source.type.width < kind.type.width:
+        machine = (builder.zext if source.unsigned else builder.sext)(machine, shape)
+    elif source.type.width > kind.type.width:
+        machine = builder.trunc(machine, shape)
     return Value(kind, machine)
 
 
-def same(first: Value, second: Value) -> Kind:
-    """The kind of two operands, which the printer has made alike."""
-    assert first.kind == second.kind, f"{first.kind.name} beside {second.kind.name}"
-    return first.kind
+def same(*values: Value) -> Kind:
+    """The kind of operands, which the printer has made alike."""
+    kind = values[0].kind
+    assert all(value.kind == kind for value in values), "operands of several kinds"
+    return kind

@@ -5,11 +5,12 @@ No flag allows a float operation to be contracted or re-associated; integers wra
 
 import ast
 from collections.abc import Callable
+from functools import reduce
 from typing import Any
 
 from llvmlite import ir
 
-from streamhost.program.native.machine.kinds import KINDS, Kind, Value, converted, same
+from streamhost.program.native.machine.kinds import KINDS, Kind, Value, alike, converted, lanes_of, same, shaped, spread
 
 Operation = Callable[..., Value]
 
@@ -22,6 +23,7 @@ def binary(builder: Any, operator: ast.operator, first: Value, second: Value) ->
     """+ - * & | ^ of two alike, shifts by an int64, % of what is not negative."""
     if isinstance(operator, ast.LShift | ast.RShift):
         return _shifted(builder, operator, first, second)
+    first, second = alike(builder, first, second)
     kind = same(first, second)
     if isinstance(operator, ast.Mod):
         return Value(kind, builder.srem(first.machine, second.machine))
@@ -30,7 +32,7 @@ def binary(builder: Any, operator: ast.operator, first: Value, second: Value) ->
 
 
 def _shifted(builder: Any, operator: ast.operator, value: Value, count: Value) -> Value:
-    by = converted(builder, count, value.kind).machine
+    by = spread(builder, converted(builder, count, value.kind), lanes_of(value)).machine
     if isinstance(operator, ast.LShift):
         return Value(value.kind, builder.shl(value.machine, by))
     right = builder.lshr if value.kind.unsigned else builder.ashr
@@ -46,6 +48,7 @@ def negated(builder: Any, value: Value) -> Value:
 
 def compared(builder: Any, operator: ast.cmpop, first: Value, second: Value) -> Value:
     """A bool. A comparison with NaN is false, but for !=, which is true."""
+    first, second = alike(builder, first, second)
     kind, sign = same(first, second), COMPARED[type(operator)]
     if kind.is_float:
         compare = builder.fcmp_unordered if sign == "!=" else builder.fcmp_ordered
@@ -56,6 +59,7 @@ def compared(builder: Any, operator: ast.cmpop, first: Value, second: Value) -> 
 
 def chosen(builder: Any, condition: Value, first: Value, second: Value) -> Value:
     """The first where the condition holds, else the second; both have been evaluated."""
+    condition, first, second = alike(builder, condition, first, second)
     kind = same(first, second)
     return Value(kind, builder.select(condition.machine, first.machine, second.machine))
 
@@ -69,10 +73,16 @@ def _most(builder: Any, first: Value, second: Value) -> Value:
 
 
 def _machine(name: str) -> Operation:
+    """An operation that LLVM has for every float type, of one lane or several."""
+
     def operation(builder: Any, *values: Value) -> Value:
-        kind = values[0].kind
-        form = ir.FunctionType(kind.type, [kind.type] * len(values))
-        function = builder.module.declare_intrinsic(f"llvm.{name}", [kind.type], form)
+        values = alike(builder, *values)
+        kind, lanes = same(*values), lanes_of(values[0])
+        shape = shaped(kind, lanes)
+        full = f"llvm.{name}.{'' if lanes == 1 else f'v{lanes}'}{'f32' if kind.name == 'float32' else 'f64'}"
+        function = builder.module.globals.get(full)
+        if function is None:
+            function = ir.Function(builder.module, ir.FunctionType(shape, [shape] * len(values)), full)
         return Value(kind, builder.call(function, [value.machine for value in values]))
 
     return operation
@@ -94,6 +104,21 @@ def _differs(builder: Any, first: Value, second: Value) -> Value:
     return converted(builder, compared(builder, ast.NotEq(), first, second), KINDS["int64"])
 
 
+def _short(builder: Any, value: Value) -> Value:
+    """An int64 of which the printer knows that it fits 32 bits: said to LLVM where vectors multiply such much faster."""
+    if lanes_of(value) == 1:
+        return value
+    return converted(builder, converted(builder, value, KINDS["int32"]), value.kind)
+
+
+def _total(builder: Any, value: Value) -> Value:
+    """The sum of all lanes."""
+    if lanes_of(value) == 1:
+        return value
+    entries = [builder.extract_element(value.machine, ir.Constant(ir.IntType(32), k)) for k in range(lanes_of(value))]
+    return Value(value.kind, reduce(builder.add, entries))
+
+
 def _conversion(kind: Kind) -> Operation:
     return lambda builder, value: converted(builder, value, kind)
 
@@ -111,5 +136,7 @@ CALLS: dict[str, Operation] = {
     "narrow": _conversion(KINDS["int64"]),
     "clamp": _clamped,
     "differs": _differs,
-    **{f"np.{name}": _conversion(KINDS[name]) for name in ("int64", "uint64", "float32", "float64")},
+    "short": _short,
+    "total": _total,
+    **{f"np.{name}": _conversion(KINDS[name]) for name in ("int64", "uint64", "uint8", "float32", "float64")},
 }

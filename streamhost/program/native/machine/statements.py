@@ -6,26 +6,33 @@ from collections.abc import Iterator, Mapping, Sequence
 from contextlib import contextmanager
 from typing import Any
 
-from streamhost.program.native.machine.expressions import Array, address, assigned, called, evaluated, scalar
-from streamhost.program.native.machine.kinds import KINDS, Value, Values, constant, converted
+from streamhost.program.native.machine.expressions import LANE, assigned, called, evaluated, names, place, scalar
+from streamhost.program.native.machine.kinds import KINDS, Value, Values, constant, spread
+from streamhost.program.native.machine.memory import Array, store
 
 
 class Translation:
     """Translates a function of the text; `read` tells what a name means at the present place.
 
     What is assigned once is the value itself, what is assigned again has a place in memory, which LLVM turns into registers.
+    The loop over lanes goes over `width` of them at once as long as there are so many, and over the rest one by one.
     """
 
-    def __init__(self, builder: Any, functions: Mapping[str, ast.FunctionDef], arguments: Mapping[str, Value]) -> None:
-        self.builder, self.functions = builder, functions
+    def __init__(
+        self, builder: Any, functions: Mapping[str, ast.FunctionDef], arguments: Mapping[str, Value], width: int
+    ) -> None:
+        self.builder, self.functions, self.lanes = builder, functions, 1
         self.arrays: dict[str, Array] = {}
+        self._width = width
         self._values: dict[str, Values] = dict(arguments)
         self._places: dict[str, Values] = {}  # values whose machine part is the address
         self._assignments = Counter[str]()
+        self._varying = set[str]()  # names whose values differ from lane to lane
 
     def function(self, function: ast.FunctionDef) -> None:
         """Translate a whole body."""
-        self._assignments = Counter(_assignments(function))
+        self._assignments = Counter(name for name, _ in _assignments(function))
+        self._varying = _varying(function)
         self.body(function.body)
 
     def body(self, statements: Sequence[ast.stmt]) -> None:
@@ -73,22 +80,28 @@ class Translation:
         value: ast.expr = statement.value
         if isinstance(statement, ast.AugAssign):
             value = ast.BinOp(target, statement.op, statement.value)
-        kind, place = address(self, target)
-        self.builder.store(converted(self.builder, scalar(self, value), kind).machine, place)
+        store(self.builder, place(self, target), scalar(self, value))
 
     def _assign(self, name: str, value: Values) -> None:
         if self._assignments[name] < 2:
             self._values[name] = value
             return
+        if name in self._varying:
+            value = self._spread(value)
         if name not in self._places:
             self._places[name] = self._allocated(value)
         self._put(self._places[name], value)
+
+    def _spread(self, value: Values) -> Values:
+        if isinstance(value, tuple):
+            return tuple(self._spread(entry) for entry in value)
+        return spread(self.builder, value, self.lanes)
 
     def _allocated(self, value: Values) -> Values:
         if isinstance(value, tuple):
             return tuple(self._allocated(entry) for entry in value)
         with self.builder.goto_entry_block():
-            return Value(value.kind, self.builder.alloca(value.kind.type))
+            return Value(value.kind, self.builder.alloca(value.machine.type))
 
     def _put(self, place: Values, value: Values) -> None:
         if isinstance(place, tuple):
@@ -104,23 +117,33 @@ class Translation:
         assert isinstance(loop.target, ast.Name) and isinstance(loop.iter, ast.Call), "a counted loop"
         limits = [scalar(self, limit) for limit in loop.iter.args]
         start, stop = limits if len(limits) == 2 else (constant(0), limits[0])
-        with self._counted(start, stop) as count:
-            self._values[loop.target.id] = count
-            self.body(loop.body)
+        if loop.target.id != LANE:
+            with self._counted(start, stop, 1) as self._values[loop.target.id]:
+                self.body(loop.body)
+            return
+        for width in [self._width, 1] if self._width > 1 else [1]:
+            before = dict(self._values), dict(self._places)
+            self.lanes = width
+            with self._counted(start, stop, width) as start:
+                self._values[LANE] = start
+                self.body(loop.body)
+            self._values, self._places = before  # the same variables in another shape, the next time
 
     @contextmanager
-    def _counted(self, start: Value, stop: Value) -> Iterator[Value]:
-        builder = self.builder
+    def _counted(self, start: Value, stop: Value, step: int) -> Iterator[Value]:
+        """From start, as long as so many steps fit below stop; behind the loop the value is the first that was not taken."""
+        builder, by = self.builder, constant(step).machine
         before = builder.block
         test, inside, after = (builder.append_basic_block(name) for name in ("test", "inside", "after"))
         builder.branch(test)
         builder.position_at_end(test)
         count = builder.phi(start.kind.type)
         count.add_incoming(start.machine, before)
-        builder.cbranch(builder.icmp_signed("<", count, stop.machine), inside, after)
+        following = builder.add(count, by, flags=["nsw"])
+        builder.cbranch(builder.icmp_signed("<=", following, stop.machine), inside, after)
         builder.position_at_end(inside)
         yield Value(start.kind, count)
-        count.add_incoming(builder.add(count, constant(1).machine, flags=["nsw"]), builder.block)
+        count.add_incoming(following, builder.block)
         builder.branch(test)
         builder.position_at_end(after)
 
@@ -134,9 +157,19 @@ def _is_declaration(statement: ast.stmt) -> bool:
     return isinstance(value, ast.Call) and called(value) == "carray"
 
 
-def _assignments(function: ast.FunctionDef) -> Iterator[str]:
+def _assignments(function: ast.FunctionDef) -> Iterator[tuple[str, ast.expr]]:
+    """Every assignment to a variable: its name and what it is given."""
     for node in ast.walk(function):
         if isinstance(node, ast.Assign | ast.AugAssign):
             target = _target(node)
             if isinstance(target, ast.Name):
-                yield target.id
+                yield target.id, node.value
+
+
+def _varying(function: ast.FunctionDef) -> set[str]:
+    """The names that depend on the lane, directly or through others."""
+    depends = [(name, names(value)) for name, value in _assignments(function)]
+    varying = {LANE}
+    while more := {name for name, read in depends if name not in varying and read & varying}:
+        varying |= more
+    return varying
