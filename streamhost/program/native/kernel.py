@@ -30,14 +30,12 @@ def kernel_source(program: Program, variant: Variant = PLAIN) -> str:
 def kernel_width(program: Program, channels: int) -> int:
     """How many of so many channels a kernel of this program had best run at once, by measurement (`tests/benchmarks/lanes.py`).
 
-    Integers gain from four lanes on, for want of short vector multiplications and shifts; words of 128 bits never.
+    Words of 128 bits never gain; integers less than floats, for want of short vector multiplications and shifts.
     """
     fixed = isinstance(program.format, Fixed)
     if fixed and any(number.carrier > 64 for number in program.numbers):
         return 1
-    least, most = (4, 8) if fixed else (2, 16)
-    width = 1 << (min(channels, most).bit_length() - 1)
-    return width if width >= least else 1
+    return 1 << (min(channels, 8 if fixed else 16).bit_length() - 1)
 
 
 @dataclass(frozen=True)
