@@ -72,7 +72,7 @@ def continuation(before: Doubled, following: Doubled, weights: FloatArray) -> Co
     Columns are scaled to a norm near 1; O2 = QR; the singular value decomposition of R, where singular values below 1e-13
     of the largest count as 0, solves for M. A state before may be one that no input makes, whose output this diagram cannot
     continue, and only many together make what it can: solution and rest are refined together in double-double.
-    Source: A. Bjorck, Iterative refinement of linear least squares solutions, BIT 7, 1967.
+    Source: Å. Björck, Iterative refinement of linear least squares solutions I, BIT 7, 1967.
     """
     scales = _power_of_two(np.linalg.norm(following.high * weights[:, np.newaxis], axis=0))
     O1, O2 = before.scaled(rows=weights), following.scaled(rows=weights, columns=1.0 / scales)

@@ -1,14 +1,14 @@
 """Every ordered pair of structures that carry a filter: one runs, the other takes over, and how far its output is off.
 
-    python tests/benchmarks/carrying.py [PART OF A FILTER'S NAME ...]
+    python tests/benchmarks/carrying.py [--all] [PART OF A FILTER'S NAME ...]
 
-All forms in all decompositions that draw a filter, in float64, 48 kHz, on the same noise: A runs for two seconds, B takes
-over and runs for two more. The deviation is that of B's samples after the change from the output that B would have had, had it
-run from the start: the same diagram with its coefficients as stored, in double-double. The rounding floor of a structure is
-how far its own float64 output, unswitched, is from that over all four seconds. The floor of a pair is the greatest of the two
-structures' own, of half a unit in the last place of 1.0, and of how far their outputs in double-double are apart: float64
-rounds the coefficients of each, and by what the two filters then differ no state can mend. Structures that are unstable with
-their coefficients as stored are left out.
+All forms that draw a filter, as a cascade where they can, else whole, or in all decompositions (--all); in float64, at 48
+kHz, on the same noise: A runs for two seconds, B takes over and runs for two more. The deviation is that of B's samples after
+the change from the output that B would have had, had it run from the start: the same diagram with its coefficients as stored,
+in double-double. The rounding floor of a structure is how far its own float64 output, unswitched, is from that over all four
+seconds. The floor of a pair is the greatest of the two structures' own, of half a unit in the last place of 1.0, and of how far
+their outputs in double-double are apart: float64 rounds the coefficients of each, and by what the two filters then differ no
+state can mend. Structures that are unstable with their coefficients as stored are left out.
 
 One line a filter: how many forms and structures carry it; in floors the worst deviation, the most that was reported as missed,
 and the worst deviation where the floor is less than a unit in the last place ("quiet"); processor time of one pair.
@@ -27,7 +27,6 @@ from streamhost.errors import StructureError
 from streamhost.program.carrying import Carried
 from streamhost.program.ideal import ideal_program
 from streamhost.program.native.kernel import Memory, Variant, compile_kernel, no_marks, no_trace
-from streamhost.structures.choices import DECOMPOSITIONS
 
 RATE = 48000
 HALF = 96000
@@ -70,17 +69,18 @@ class Run:
         return f"{self.realization.form}, {self.realization.decomposition}"
 
 
-def structures(filter: Filter, **choices: str) -> Iterator[Realization]:
-    """Each that carries the filter and is stable as stored; a filter of one section once, drawn alike by all decompositions."""
-    seen: set[tuple[str, bytes]] = set()
+def structures(filter: Filter, *, all_decompositions: bool = False) -> Iterator[Realization]:
+    """Each that carries the filter and is stable as stored; what two decompositions draw alike once."""
     for form in forms():
-        for decomposition in DECOMPOSITIONS:
+        seen: set[tuple[str, bytes]] = set()
+        for decomposition in ("cascade", "whole", "parallel"):
             try:
-                realization = realize(filter, form=form, decomposition=decomposition, **choices)
+                realization = realize(filter, form=form, decomposition=decomposition)
             except StructureError:
                 continue
             same = (realization.diagram.hash, realization.diagram.values.tobytes())
-            if same not in seen and not (realization.unstable and not realization.diagram.response_ends()):
+            stable = not realization.unstable or realization.diagram.response_ends()
+            if same not in seen and stable and (all_decompositions or not seen):
                 seen.add(same)
                 yield realization
 
@@ -135,9 +135,9 @@ def changes(runs: list[Run], x: np.ndarray) -> Iterator[Change]:
         yield from (change(before, after, target, x) for before in runs if before is not after)
 
 
-def line(name: str, filter: Filter, x: np.ndarray) -> str:
+def line(name: str, filter: Filter, x: np.ndarray, *, all_decompositions: bool = False) -> str:
     """One row of the table. Time is of the processor, of carrying and running on."""
-    runs = [run(realization, x) for realization in structures(filter)]
+    runs = [run(realization, x) for realization in structures(filter, all_decompositions=all_decompositions)]
     start = time.process_time()
     found = sorted(changes(runs, x), key=lambda change: change.floors)
     spent = (time.process_time() - start) / len(found)
@@ -148,12 +148,13 @@ def line(name: str, filter: Filter, x: np.ndarray) -> str:
             f"{max(same, default=0.0):7.2f} {spent * 1e3:6.0f}   {found[-1].pair}")
 
 
-def main() -> None:
-    print(f"{'filter':32s} forms structures  pairs   worst  missed  quiet     ms   the worst pair")
+def main(arguments: list[str]) -> None:
+    parts = [argument for argument in arguments if argument != "--all"]
+    print(f"{'filter':32s} forms structures  pairs   worst  missed   quiet     ms   the worst pair")
     for name, filter in filters().items():
-        if not sys.argv[1:] or any(part in name for part in sys.argv[1:]):
-            print(line(name, filter, noise()), flush=True)
+        if not parts or any(part in name for part in parts):
+            print(line(name, filter, noise(), all_decompositions="--all" in arguments), flush=True)
 
 
 if __name__ == "__main__":
-    main()
+    main(sys.argv[1:])
