@@ -12,8 +12,9 @@ from streamhost import load_preset
 from streamhost.commands import instruments as registry
 from streamhost.commands.common import Progress
 from streamhost.commands.documents import document_of
-from streamhost.commands.instruments import INSTRUMENTS, Instrument, Wave, limit_verdicts
+from streamhost.commands.instruments import INSTRUMENTS, Instrument, limit_verdicts
 from streamhost.commands.main import main
+from streamhost.commands.measuring.wave import Wave
 from streamhost.files import AudioWriter, read_all
 from streamhost.measure import LIMITS
 from streamhost.presets.realizing import realize_preset

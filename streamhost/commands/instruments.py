@@ -8,7 +8,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from streamhost import measure
-from streamhost.commands.measuring import noise, response
+from streamhost.commands.measuring import noise, overflow, response
+from streamhost.commands.measuring.wave import Wave
 from streamhost.measure.bands import Band
 from streamhost.measure.limits import Verdict, limit_band, limit_signal, verdicts
 from streamhost.presets import Preset
@@ -31,14 +32,6 @@ class Asked:
     band: Band
     quick: bool = False
     report: Report = unheard
-
-
-@dataclass(frozen=True)
-class Wave:
-    """Audio that an instrument found, for a file of that name: samples (frames, channels), 1.0 = full scale."""
-
-    name: str
-    samples: NDArray[np.float64]
 
 
 def _no_waves(result: Any) -> Iterator[Wave]:
@@ -67,9 +60,15 @@ def _response(asked: Asked, *, judged_only: bool = False) -> measure.Response:
     return measure.response(asked.realization, [asked.band], masks, mask_hz=limits.get("mask_hz"), judged_only=judged_only)
 
 
+def _overflow(asked: Asked) -> measure.Overflow:
+    return measure.overflow(asked.realization, asked.x, quick=asked.quick, report=asked.report)
+
+
 INSTRUMENTS = (
     Instrument("response", _response, response.lines, judged=lambda asked: _response(asked, judged_only=True)),
     Instrument("noise", lambda asked: measure.noise(asked.realization, asked.x), noise.lines, seconds=2.0),
+    Instrument("overflow", _overflow, overflow.lines, overflow.waves, seconds=2.0,
+               judged=lambda asked: measure.overflow(asked.realization, judged_only=True)),
 )
 """In the order in which they run and are told."""
 

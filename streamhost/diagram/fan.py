@@ -81,6 +81,12 @@ def from_input(diagram: Diagram, channel: int = 0, *, input: int = 0, nodes: Seq
     return Fan(rows.A, rows.B[:, input], rows.F[watched], rows.G[watched, input])
 
 
+def from_errors(diagram: Diagram, sources: Sequence[int], nodes: Sequence[int], channel: int = 0) -> list[Fan]:
+    """From the error of each source node to nodes."""
+    rows, watched = propagate(diagram, channel, sources), list(nodes)
+    return [Fan(rows.A, rows.N[:, k], rows.F[watched], rows.E[watched, k]) for k in range(len(sources))]
+
+
 def to_output(diagram: Diagram, sources: Sequence[int], channel: int = 0, *, output: int = 0) -> Fan:
     """From the errors of the source nodes to an output, on the transposed system."""
     rows = propagate(diagram, channel, sources)

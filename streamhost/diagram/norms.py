@@ -63,6 +63,12 @@ def norms_from_input(diagram: Diagram, channel: int = 0, *, input: int = 0,
     return _norms(fans.from_input(diagram, channel, input=input, nodes=nodes))
 
 
+def sums_from_errors(diagram: Diagram, sources: Sequence[int], nodes: Sequence[int], channel: int = 0) -> FloatArray:
+    """sum |h| from the error of each source node to nodes, (sources, nodes), never too small."""
+    fan_of_each = fans.from_errors(diagram, sources, nodes, channel)
+    return np.array([_absolute_sums(follow(fan))[0] for fan in fan_of_each]).reshape(len(sources), len(nodes))
+
+
 def norms_to_output(diagram: Diagram, sources: Sequence[int], channel: int = 0, *, output: int = 0) -> Norms:
     """Norms of the responses from errors at the source nodes to an output."""
     return _norms(fans.to_output(diagram, sources, channel, output=output))

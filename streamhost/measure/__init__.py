@@ -4,13 +4,15 @@ from streamhost.measure.deviation import Deviation, response_deviation
 from streamhost.measure.limits import LIMITS, Limit, Verdict, limit_band, limit_signal, stated_limits, verdicts
 from streamhost.measure.measuring import Figures, Measured, Measurement, measure
 from streamhost.measure.noise_sum import Noise, noise_of
+from streamhost.measure.overflows import Overflow, Recovery, Register, overflow
 from streamhost.measure.predicted import Prediction, predicted_noise
 from streamhost.measure.realized import BandDeviation, Response, response
 from streamhost.measure.rounding import OutputNoise, RoundingNoise, noise
 from streamhost.measure.whiteness import Whiteness
 
 __all__ = [
-    "LIMITS", "BandDeviation", "Deviation", "Figures", "Limit", "Measured", "Measurement", "Noise", "OutputNoise", "Prediction",
-    "Response", "RoundingNoise", "Verdict", "Whiteness", "limit_band", "limit_signal", "measure", "noise", "noise_of",
-    "predicted_noise", "response", "response_deviation", "stated_limits", "verdicts",
+    "LIMITS", "BandDeviation", "Deviation", "Figures", "Limit", "Measured", "Measurement", "Noise", "OutputNoise",
+    "Overflow", "Prediction", "Recovery", "Register", "Response", "RoundingNoise", "Verdict", "Whiteness",
+    "limit_band", "limit_signal", "measure", "noise", "noise_of", "overflow", "predicted_noise", "response",
+    "response_deviation", "stated_limits", "verdicts",
 ]

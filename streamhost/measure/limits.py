@@ -91,6 +91,10 @@ def _mask(result: Any) -> Iterator[Finding]:
         yield Finding(each.margin_db, each.reason, each.output, f"{each.mask}{band}{at}")
 
 
+def _headroom(result: Any) -> Iterator[Finding]:
+    yield Finding(result.headroom_db, about=result.headroom_register)
+
+
 def _counted(count: Callable[[Realization], int]) -> Callable[[Realization], Iterator[Finding]]:
     return lambda realization: iter([Finding(float(count(realization)))])
 
@@ -100,6 +104,7 @@ LIMITS = (
     Limit("response_deviation_db", "dB", "response", _deviation),
     Limit("leak_db", "dB", "response", _leak),
     Limit("mask", "dB inside", "response", _mask, AT_LEAST, threshold=0.0),
+    Limit("headroom_db", "dB", "overflow", _headroom, AT_LEAST),
     Limit("multiplications", "", "", _counted(lambda each: each.program.drawn.counts().multiplications)),
     Limit("memory_words", "words", "", _counted(lambda each: each.program.drawn.counts().delays)),
 )

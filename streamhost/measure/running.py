@@ -32,12 +32,17 @@ class Run:
     def __init__(self, realization: Realization, channels: int) -> None:
         realization.check_samples()
         self.program, self.outputs, self.channels = realization.program, len(realization.outputs), channels
-        self._memory = realization.memory(channels)
+        self._realization = realization
         self._kernel = compile_kernel(self.program, Variant(metered=True, traced=True))
         self.ideal = ideal_of(self.program)
-        variant = Variant(double=self.ideal.double)
-        self._ideal_memory = Memory(self.ideal.program, channels, variant)
-        self._ideal_kernel = compile_kernel(self.ideal.program, variant)
+        self._variant = Variant(double=self.ideal.double)
+        self._ideal_kernel = compile_kernel(self.ideal.program, self._variant)
+        self.reset()
+
+    def reset(self) -> None:
+        """Zero state of both, and nothing counted."""
+        self._memory = self._realization.memory(self.channels)
+        self._ideal_memory = Memory(self.ideal.program, self.channels, self._variant)
 
     def step(self, x: FloatArray) -> Block:
         """Run the next block (frames, channels), 1.0 = full scale."""

@@ -115,6 +115,7 @@ class LimitsTable(msgspec.Struct, kw_only=True):
     noise_dbfs: Number | None = None
     response_deviation_db: Number | None = None
     leak_db: Number | None = None
+    headroom_db: Number | None = None
     mask: Text | None = None
     mask_hz: Number | None = None
     multiplications: Whole | None = None
