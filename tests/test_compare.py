@@ -233,6 +233,12 @@ def test_what_runs_away_leaves_no_difference(recording, tmp_path, capsys):
 # Limits
 
 
+def test_limits_beyond_noise_and_response(preset, recording, capsys):
+    name = preset(more="\n[limits]\nheadroom_db = -20.0\nmultiplications = 4\n")
+    assert main(["compare", name, "--input", recording]) == 1
+    assert "1 misses multiplications: 5, at most 4." in capsys.readouterr().out
+
+
 @pytest.mark.parametrize(("noise", "deviation", "status", "said"), [
     (-60.0, 1.0, 0, "1 of 1 with limits meets every limit."),
     (-140.0, 1.0, 1, "1 misses noise_dbfs"),

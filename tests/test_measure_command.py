@@ -131,6 +131,21 @@ def test_limits_are_checked_on_their_own_signal_whatever_the_input_is(gain, tmp_
     assert limit_verdicts(preset, realize_preset(preset))[0].found == own["limits"]["verdicts"][0]["found"]
 
 
+@pytest.mark.parametrize(("judges", "runs"), [(True, 1), (False, 2)])
+def test_a_quick_run_is_good_for_limits_only_where_it_gives_the_same_figures(judges, runs, gain, only, monkeypatch):
+    """The limit on noise, with another instrument in its place."""
+    asked_for = []
+
+    def run(asked):
+        asked_for.append(asked.quick)
+        return SimpleNamespace(each=[SimpleNamespace(measured_dbfs=-100.0, reason="", output="")])
+
+    only(Instrument("noise", run, lambda result: iter(()), quick_judges=judges))
+    monkeypatch.setattr("streamhost.commands.measure_text.document_of", lambda result: None)
+    assert main(["measure", gain("noise_dbfs = -90.0"), "--quick"]) == 0
+    assert asked_for == [True, False][:runs]
+
+
 def test_limits_of_instruments_that_do_not_run_are_not_asked(gain, capsys):
     name = gain("noise_dbfs = -120.0")
     assert main(["measure", name, "--only", "response"]) == 0

@@ -43,7 +43,7 @@ class Instrument:
     """`name`: its key in JSON. `run`: its result, a frozen dataclass. `lines`: what that says. `waves`: audio in it.
 
     `seconds`: about what it takes, for the progress line. `judged`: a run that gives the figures of its limits and no
-    more, where that is less work.
+    more, where that is less work. `quick_judges`: a quick run gives the same figures for its limits.
     """
 
     name: str
@@ -52,6 +52,7 @@ class Instrument:
     waves: Callable[[Any], Iterator[Wave]] = _no_waves
     seconds: float = 1.0
     judged: Callable[[Asked], Any] | None = None
+    quick_judges: bool = False
 
 
 def _response(asked: Asked, *, judged_only: bool = False) -> measure.Response:
@@ -65,10 +66,12 @@ def _overflow(asked: Asked) -> measure.Overflow:
 
 
 INSTRUMENTS = (
-    Instrument("response", _response, response.lines, judged=lambda asked: _response(asked, judged_only=True)),
-    Instrument("noise", lambda asked: measure.noise(asked.realization, asked.x), noise.lines, seconds=2.0),
+    Instrument("response", _response, response.lines, judged=lambda asked: _response(asked, judged_only=True),
+               quick_judges=True),
+    Instrument("noise", lambda asked: measure.noise(asked.realization, asked.x), noise.lines, seconds=2.0,
+               quick_judges=True),
     Instrument("overflow", _overflow, overflow.lines, overflow.waves, seconds=2.0,
-               judged=lambda asked: measure.overflow(asked.realization, judged_only=True)),
+               judged=lambda asked: measure.overflow(asked.realization, judged_only=True), quick_judges=True),
 )
 """In the order in which they run and are told."""
 

@@ -54,7 +54,7 @@ def measure(
     file = resolve(source, "sample") if source is not None else None
     waves = WaveFolder(folder, asked, file, instruments, force=force)
     check_figures(json_file, file, force=force)
-    found = measured(asked, instruments, waves, on_limit_signal=source is None and not quick)
+    found = measured(asked, instruments, waves, on_limit_signal=source is None)
     if problem := notice():
         click.echo(problem, err=True)
     if json_file != "-":

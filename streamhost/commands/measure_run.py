@@ -42,7 +42,7 @@ def chosen(only: str | None) -> tuple[Instrument, ...]:
 def measured(asked: Asked, instruments: Sequence[Instrument], waves: WaveFolder, *, on_limit_signal: bool) -> Found:
     """Run the instruments, write their audio, then check the limits that they answer.
 
-    on_limit_signal: `asked` is what limits are checked on, and its results are good for them.
+    on_limit_signal: x is the signal that limits are checked on, so that results are good for them.
     """
     found = Found()
     with Progress("measure", len(instruments), [instrument.seconds for instrument in instruments]) as progress:
@@ -65,7 +65,8 @@ def measured(asked: Asked, instruments: Sequence[Instrument], waves: WaveFolder,
 def _check_limits(found: Found, asked: Asked, instruments: Sequence[Instrument], on_limit_signal: bool) -> None:
     """After a run that was broken off, only what needs no further run."""
     answered = {"", *(instrument.name for instrument in instruments)}
-    known = {name: result for name, result in found.results.items() if on_limit_signal and name not in found.broken_off}
+    good = {each.name for each in instruments if on_limit_signal and (each.quick_judges or not asked.quick)}
+    known = {name: result for name, result in found.results.items() if name in good - set(found.broken_off)}
     if found.broken_off:
         answered = {"", *known}
     stated = stated_limits(asked.preset.limits)

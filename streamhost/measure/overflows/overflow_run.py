@@ -1,7 +1,7 @@
 """Registers against their words, by norms and by runs."""
 
 from collections.abc import Callable, Iterator, Sequence
-from math import inf, log2
+from math import inf
 
 import numpy as np
 from numpy.typing import NDArray
@@ -81,7 +81,7 @@ def _register(
         name=place.name, kind=place.kind, word=str(place.word), on_overflow=place.on_overflow,
         l1=l1, l2=float(found.l2[k]), peak=peak, bound=max(float(found.highest[k]), float(found.lowest[k])),
         largest=place.largest,
-        headroom_bits=log2(place.largest / l1) if l1 else inf,
+        headroom_bits=_headroom(place.largest, l1) / decibels(4.0),
         headroom_db=_headroom(place.largest, l1),
         sine_headroom_db=_headroom(place.largest, peak),
         fits=fits, proven=safe,
