@@ -15,7 +15,8 @@ What is multiplied is at most 1/2, whichever g is; p is the product, and the sum
            g < -1/2   p = (1 + g) (a2 - a1),   b1 = a1 + p,          b2 = 2 a1 - a2 + p
 
 Of g = 0 two wires are left. Where g < 0, the waves of the second port are larger than those of the first, and stored
-times 2^-s, the least s for which white noise makes them no larger: a2 is shifted up by s, each term of b2 down.
+times 2^-s, the least s for which white noise makes them no larger: a2 is shifted up by s, each term of b2 down. The
+difference that is multiplied there has a register of its own, 2 s + 1 bits longer than the signal, which cannot clip.
 
 A section of first order is an adaptor whose second port ends in a delay, a2 = z^-1 b2: (-g + z^-1) / (1 - g z^-1). In
 one of second order the delay ends in a second adaptor, of h, and that in a delay:
@@ -52,11 +53,14 @@ filter is passive: without input it comes to rest from any state, and no overflo
 
 Fails: passive with registers that round toward zero, and not with others. The default, half-up, is not free of limit
 cycles here either. Rounding toward zero makes more noise, which is not white. A sine at the frequency of a pole makes the
-waves of the second port as much as 2^s times too large: give such signals room. The stop-band is the difference of two
-numbers near 1, as in all-pass-sum. More additions than other forms.
+waves of the second port as much as 2^s times too large: give such signals room. White noise with peaks of half scale clips
+at most 17 of them in 48000 frames (Butterworth low-passes of orders 3, 5, 7 at 100 Hz and 1 kHz, measured); no input at
+all does at -17 dBFS and 1 kHz, at -26 dBFS and 100 Hz. The stop-band is the difference of two numbers near 1, as in
+all-pass-sum. More additions than other forms.
 
 Arithmetic: fixed point with a full or long accumulator, rounding = "toward-zero" for what is said above, coefficients with
-point = "coefficient". In floating point it has no advantage.
+point = "coefficient". The multiplier of a port with g < 0 reads 2 s + 1 bits more than the signal, whatever the operand, so
+that the port stays exact; they hold a state of up to s integer bits more than the signal. In floating point it has no advantage.
 
 Carries: what all-pass-sum carries: a filter that is half the sum of two real all-passes to within -199 dB of its gain,
 verified in exact numbers. Draw it whole.
@@ -134,17 +138,18 @@ class Adaptor:
 
     def _of_negative(self, g: Fraction, a1: Ref, scaled: Ref) -> tuple[Ref, Ref]:
         s = scale(g)
+        more = 2 * s + 1
         a2 = self._shift("up", scaled, s, (0.5, 0.75), "N")
         low = g >= -HALF
-        p = self._product(-g, a1, a2) if low else self._product(1 + g, a2, a1)
+        p = self._product(-g, a1, a2, more) if low else self._product(1 + g, a2, a1, more)
         down = self._shift("down", p, -s, (1.875, 0.75), "S")
         ahead = "E" if self.way > 0 else "W"
         onward = self._shift("on", a1, -s if low else 1 - s, (1.125, 1.75), ahead)
         return self._b1([a2 if low else a1, p]), self._b2([onward, down] if low else [onward, minus(scaled), down])
 
-    def _product(self, multiplier: Fraction, plus: Ref, less: Ref) -> Ref:
+    def _product(self, multiplier: Fraction, plus: Ref, less: Ref, grow: int | None = None) -> Ref:
         ahead = "E" if self.way > 0 else "W"
-        d = self.draft.add(f"d{self.number}", [plus, minus(less)], at=self._at(0.5, 0), face=ahead)
+        d = self.draft.chain(f"d{self.number}", [plus, minus(less)], at=[self._at(0.5, 0)], face=ahead, grow=grow)
         return self.draft.gain(f"c{self.number}", float(multiplier), d, at=self._at(1.25, 0), face=ahead)
 
     def _b1(self, terms: list[Ref | Signed]) -> Ref:
