@@ -60,7 +60,8 @@ all-pass-sum. More additions than other forms.
 
 Arithmetic: fixed point with a full or long accumulator, rounding = "toward-zero" for what is said above, coefficients with
 point = "coefficient". The multiplier of a port with g < 0 reads 2 s + 1 bits more than the signal, whatever the operand, so
-that the port stays exact; they hold a state of up to s integer bits more than the signal. In floating point it has no advantage.
+that the port stays exact; they hold a state of up to s integer bits more than the signal. In floating point it has no
+advantage.
 
 Carries: what all-pass-sum carries: a filter that is half the sum of two real all-passes to within -199 dB of its gain,
 verified in exact numbers. Draw it whole.
