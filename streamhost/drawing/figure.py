@@ -10,7 +10,7 @@ from streamhost.diagram.tapped import written_out
 from streamhost.drawing import text
 from streamhost.drawing.layout import Layout, laid_out
 from streamhost.drawing.ports import NoWayError
-from streamhost.drawing.sheet import Sheet, sheet_of, taps_text
+from streamhost.drawing.sheet import Sheet, has_upright_marks, sheet_of, taps_text
 from streamhost.drawing.symbols import GRID
 from streamhost.drawing.table import Table, value_table
 from streamhost.errors import DiagramError
@@ -34,6 +34,9 @@ AROUND = 128.0
 
 ROOM_FOR_MARKS = ((1.0, 1.0), (1.25, 1.0), (1.0, 1.25), (1.25, 1.25), (1.5, 1.5), (2.0, 2.0))
 """The same of columns and rows for marks."""
+
+TALLER = (1.2, 1.4)
+"""How much taller the rows become before that where symbols that face up or down carry a mark and find no room."""
 
 DIGITS = 6
 MOST_DELAYS = 8
@@ -146,12 +149,20 @@ def layout_of(diagram: Diagram, rounded: Collection[int] = (), *, values: bool =
     """A drawing before it is written down; where marks find no room, columns or rows are moved apart."""
     if diagram.hints.places_for(diagram.nodes) is None:
         return without_places(sheet_of(diagram, rounded, values=values))
-    for across, down in ROOM_FOR_MARKS if rounded else ROOM_FOR_MARKS[:1]:
+    for across, down in room_for_marks(diagram, rounded):
         try:
             return laid_out(sheet_of(diagram, rounded, values=values, apart=(wider * across, down)))
         except NoWayError as error:
             refused = error
     raise DiagramError(f"The places of this diagram's nodes leave {refused}. Put them further apart.")
+
+
+def room_for_marks(diagram: Diagram, rounded: Collection[int]) -> list[tuple[float, float]]:
+    """How far apart columns and rows are tried, the first first."""
+    if not has_upright_marks(diagram, rounded):
+        return list(ROOM_FOR_MARKS if rounded else ROOM_FOR_MARKS[:1])
+    taller = [(1.0, down) for down in TALLER]
+    return [ROOM_FOR_MARKS[0], *taller, *((across, TALLER[-1] * down) for across, down in ROOM_FOR_MARKS[1:])]
 
 
 def without_places(sheet: Sheet) -> Layout:

@@ -24,9 +24,6 @@ from streamhost.drawing.symbols import (
 )
 from streamhost.drawing.text import Label
 
-ROOM_FOR_MARKS = 1.4
-"""How much taller the rows become where symbols that face up or down carry a mark."""
-
 NOWHERE = Place((0.0, 0.0))
 
 
@@ -195,11 +192,15 @@ def sheet_of(
     `values`: the gains have theirs beside them. `apart`: columns and rows so much further apart.
     """
     places = diagram.hints.places_for(diagram.nodes)
-    marked = {index for index in marked if not is_rounded_next(diagram, index)}
-    pen = Pen(diagram, places or {}, marked, (apart[0], apart[1] * stretch(places, marked)), values)
+    pen = Pen(diagram, places or {}, shown_marks(diagram, marked), apart, values)
     for index in range(len(diagram.nodes)):
         pen.draw(index)
     return Sheet(tuple(pen.symbols), tuple(pen.wires()), pen.trunks(diagram.hints.trunks if places else ()))
+
+
+def shown_marks(diagram: Diagram, marked: Collection[int]) -> set[int]:
+    """The marked nodes that get a square of their own."""
+    return {index for index in marked if not is_rounded_next(diagram, index)}
 
 
 def is_rounded_next(diagram: Diagram, index: int) -> bool:
@@ -208,7 +209,7 @@ def is_rounded_next(diagram: Diagram, index: int) -> bool:
     return bool(readers) and all(isinstance(diagram.nodes[reader], Round) for reader in readers)
 
 
-def stretch(places: Mapping[int, Place] | None, marked: Collection[int]) -> float:
-    """How much taller the rows are drawn."""
-    upright = places is not None and any(places[index].face in "NS" for index in marked if index in places)
-    return ROOM_FOR_MARKS if upright else 1.0
+def has_upright_marks(diagram: Diagram, marked: Collection[int]) -> bool:
+    """Whether a symbol that faces up or down carries a mark."""
+    places = diagram.hints.places_for(diagram.nodes) or {}
+    return any(places[index].face in "NS" for index in shown_marks(diagram, marked) if index in places)

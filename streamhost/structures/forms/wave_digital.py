@@ -78,21 +78,30 @@ from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Form, Size
 from streamhost.structures.half_sum import carries, halves_of, join
 
-ROWS = {1: 3.75, 2: 7.75}
-"""What a section takes, by its order."""
+COLUMNS = 3.875
+"""What a section takes; an adaptor begins `LEFT` of that."""
 
-COLUMNS = {1: 3.875, 2: 4.5}
-DELAY = 1.5
+LEFT = 0.375
 END = 0.875
+DELAY = 1.5
+ROWS = {1: 3.75, 2: 7.5}
+"""By its order, with room for a wire over the next."""
+
+OVER, ACROSS, SHIFT, LOWER, STATE, LOOP, INNER = -0.625, 0.5, 1.0, 1.625, 2.5, 3.0, 3.75
+"""Rows of an adaptor: the wires over it and across it, its shifts, the adder of b2, the delay below, the wire back, and
+where the next adaptor begins."""
+
+DIFFERENCE, MULTIPLIER, PRODUCT, SECOND, OUT, BACK = 0.5, 1.25, 1.875, 2.5, 3.125, 3.5
+"""Columns: d, its multiplier, p with the adder of b2 below, the adder of b1 with a2 below, the register, the way up."""
 
 
 def build_section(draft: Draft, x: Ref) -> Ref:
     halves = halves_of(draft.ratio)
     upper, below = Chain(draft, "u", 0.0, 1), _depth(halves.first)
     u = upper.build(halves.first, x)
-    v = Chain(draft, "v", below, upper.number).build(halves.second, x)
     across = [] if halves.second.sections or halves.second.delay else [(_width(halves), below)]
     draft.trunk(x, (0.0, 0.0), (0.0, below), *across)
+    v = Chain(draft, "v", below, upper.number).build(halves.second, x)
     return join(draft, halves, u, v, at=(_width(halves), 0.0))
 
 
@@ -102,7 +111,7 @@ def _width(halves: Halves) -> float:
 
 
 def _length(branch: Branch) -> float:
-    return sum(COLUMNS[len(section) - 1] for section in branch.sections) + (DELAY if branch.delay else 0.0)
+    return COLUMNS * len(branch.sections) + (DELAY if branch.delay else 0.0)
 
 
 def _depth(branch: Branch) -> float:
@@ -116,13 +125,16 @@ def size(ratio: Ratio) -> Size:
 
 @dataclass(frozen=True)
 class Adaptor:
-    """Where one is drawn, and which way it runs: 1 to the right, -1 to the left. `number` is its multiplier's."""
+    """Where one is drawn: a1 comes in at the top left, b1 leaves at the top right, b2 below, and a2 comes in on its right.
+
+    `number` is its multiplier's. `inner`: what a1 is runs over the adaptor already.
+    """
 
     draft: Draft
     number: int
     column: float
     row: float
-    way: int
+    inner: bool = False
 
     def build(self, g: Fraction, a1: Ref, a2: Ref) -> tuple[Ref, Ref]:
         """b1, and b2 times 2^-s; a2 is given times 2^-s."""
@@ -132,32 +144,45 @@ class Adaptor:
 
     def _of_positive(self, g: Fraction, a1: Ref, a2: Ref) -> tuple[Ref, Ref]:
         if g <= HALF:
+            self._lead_across(a2)
             p = self._product(g, a2, a1)
             return self._b1([a2, p]), self._b2([a1, p])
+        self._lead_over(a1)
         p = self._product(1 - g, a1, a2)
-        return self._b1([self._shift("twice", a2, 1, (2.5, 1.0), "N"), minus(a1), p]), self._b2([a2, p])
+        return self._b1([self._shift("twice", a2, 1, (SECOND, SHIFT), "N"), minus(a1), p]), self._b2([a2, p])
 
     def _of_negative(self, g: Fraction, a1: Ref, scaled: Ref) -> tuple[Ref, Ref]:
         s = scale(g)
         more = 2 * s + 1
-        a2 = self._shift("up", scaled, s, (0.5, 0.75), "N")
+        a2 = self._shift("up", scaled, s, (SECOND, SHIFT), "N")
+        self._lead_across(a2)
         low = g >= -HALF
+        if not low:
+            self._lead_over(a1)
         p = self._product(-g, a1, a2, more) if low else self._product(1 + g, a2, a1, more)
-        down = self._shift("down", p, -s, (1.875, 0.75), "S")
-        ahead = "E" if self.way > 0 else "W"
-        onward = self._shift("on", a1, -s if low else 1 - s, (1.125, 1.75), ahead)
+        down = self._shift("down", p, -s, (PRODUCT, SHIFT), "S")
+        onward = self._shift("on", a1, -s if low else 1 - s, (1.0, LOWER), "E")
         return self._b1([a2 if low else a1, p]), self._b2([onward, down] if low else [onward, minus(scaled), down])
 
+    def _lead_across(self, a2: Ref) -> None:
+        """The wire from under the adder of b1 to that of the difference."""
+        self.draft.trunk(a2, self._at(SECOND, ACROSS), self._at(DIFFERENCE, ACROSS))
+
+    def _lead_over(self, a1: Ref) -> None:
+        """The wire from the input over the multiplier to the adder of b1, and back to where the input divides."""
+        if not self.inner:
+            way = [self._at(0, 0), self._at(0, OVER)]
+            self.draft.trunk(a1, *way, self._at(SECOND, OVER), *reversed(way))
+
     def _product(self, multiplier: Fraction, plus: Ref, less: Ref, grow: int | None = None) -> Ref:
-        ahead = "E" if self.way > 0 else "W"
-        d = self.draft.chain(f"d{self.number}", [plus, minus(less)], at=[self._at(0.5, 0)], face=ahead, grow=grow)
-        return self.draft.gain(f"c{self.number}", float(multiplier), d, at=self._at(1.25, 0), face=ahead)
+        d = self.draft.chain(f"d{self.number}", [plus, minus(less)], at=[self._at(DIFFERENCE, 0)], grow=grow)
+        return self.draft.gain(f"c{self.number}", float(multiplier), d, at=self._at(MULTIPLIER, 0))
 
     def _b1(self, terms: list[Ref | Signed]) -> Ref:
-        return self.draft.add(f"e{self.number}", terms, at=self._at(2.5, 0), face="E" if self.way > 0 else "W")
+        return self.draft.add(f"e{self.number}", terms, at=self._at(SECOND, 0))
 
     def _b2(self, terms: list[Ref | Signed]) -> Ref:
-        return self.draft.add(f"f{self.number}", terms, at=self._at(1.875, 1.75), face="S")
+        return self.draft.add(f"f{self.number}", terms, at=self._at(PRODUCT, LOWER), face="S")
 
     def _shift(self, name: str, source: Ref, k: int, at: tuple[float, float], face: str) -> Ref:
         """A wire where k is 0."""
@@ -166,7 +191,14 @@ class Adaptor:
         return self.draft.shift(f"{name}{self.number}", k, source, at=self._at(*at), face=face)
 
     def _at(self, column: float, row: float) -> tuple[float, float]:
-        return self.column + self.way * column, self.row + row
+        return self.column + column, self.row + row
+
+    def state(self, g: Fraction) -> Ref:
+        """The delay that ends the second port, and the wire from there to a2."""
+        delay = self.draft.delay(f"z{self.number}", at=self._at(PRODUCT, STATE), face="S")
+        side = DIFFERENCE if g > HALF else SECOND
+        self.draft.trunk(delay, self._at(PRODUCT, LOOP), self._at(side, LOOP), self._at(side, LOWER))
+        return delay
 
 
 def scale(g: Fraction) -> int:
@@ -189,32 +221,42 @@ class Chain:
         for section in branch.sections:
             self.count += 1
             signal = self.section(section, signal)
-            self.column += COLUMNS[len(section) - 1]
+            self.column += COLUMNS
         if branch.delay == 0:
             return signal
         return self.draft.delay(f"{self.name}d", signal, at=(self.column + DELAY / 2, self.row), n=branch.delay)
 
     def section(self, denominator: Polynomial, x: Ref) -> Ref:
         """A section's output, a register: what the next one multiplies is then a sum of what is stored."""
-        order, row = len(denominator) - 1, self.row
-        left = self.column + COLUMNS[order] - 3.375
-        outer = Adaptor(self.draft, self.number, left, row, 1)
-        end = self.draft.delay(f"z{self.number}", at=(left + 1.875, row + 2.625), face="S")
-        if order == 1:
-            b1, b2 = outer.build(-denominator[1], x, end)
+        left = self.column + LEFT
+        outer = Adaptor(self.draft, self.number, left, self.row)
+        g = -denominator[-1]
+        if len(denominator) == 2:
+            end = outer.state(g)
+            b1, b2 = outer.build(g, x, end)
         else:
-            inner = Adaptor(self.draft, self.number + 1, left + 3, row + 4, -1)
-            below = (left + 1.125, row + 6.625) if denominator[1] else (left + 1.875, row + 3.75)
-            last = self.draft.delay(f"z{self.number + 1}", at=below, face="S")
-            back, onward = inner.build(-denominator[1] / (1 + denominator[2]), end, last)
-            last.takes(onward)
-            if back is not last:
-                back = self.draft.register(f"w{self.number + 1}", back, at=(left - 0.125, row + 4), face="W")
-                self.draft.trunk(back, (left - 0.625, row + 4), (left - 0.625, row + 1.25), (left, row + 1.25))
-            b1, b2 = outer.build(-denominator[2], x, back)
+            end = self.draft.delay(f"z{self.number}", at=(left + PRODUCT, self.row + STATE), face="S")
+            b1, b2 = outer.build(g, x, self.back(-denominator[1] / (1 + denominator[2]), end, left))
         end.takes(b2)
-        self.number += order
-        return self.draft.register(f"{self.name}{self.count}", b1, at=(left + 3.125, row))
+        self.number += len(denominator) - 1
+        return self.draft.register(f"{self.name}{self.count}", b1, at=(left + OUT, self.row))
+
+    def back(self, h: Fraction, end: Ref, left: float) -> Ref:
+        """The wave that the inner adaptor sends back, a register unless it comes from a delay."""
+        row, up = self.row + INNER, (left + BACK, self.row + LOWER)
+        inner = Adaptor(self.draft, self.number + 1, left, row, inner=True)
+        if h == 0:
+            last = self.draft.delay(f"z{self.number + 1}", end, at=(left + PRODUCT, row), face="S")
+            turn = row + LOOP - STATE
+            self.draft.trunk(last, (left + PRODUCT, turn), (left + BACK, turn), up, (left + SECOND, up[1]))
+            return last
+        self.draft.trunk(end, (left + PRODUCT, self.row + LOOP), (left, self.row + LOOP), (left, row))
+        last = inner.state(h)
+        b1, b2 = inner.build(h, end, last)
+        last.takes(b2)
+        wave = self.draft.register(f"w{self.number + 1}", b1, at=(left + OUT, row))
+        self.draft.trunk(wave, (left + BACK, row), up, (left + SECOND, up[1]))
+        return wave
 
 
 FORM = Form(

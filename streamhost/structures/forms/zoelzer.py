@@ -56,7 +56,7 @@ from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Form, Size
 from streamhost.structures.gramians import BITS, number, rounded
 
-UPPER, DOWN, ADDER, REGISTER, TAP, LOWER, BACK = 1.25, 2.0, 2.625, 3.375, 4.0, 4.875, 5.625
+UPPER, DOWN, ADDER, REGISTER, TAP, LOWER, BACK = 1.25, 2.0, 2.625, 3.5, 4.125, 4.875, 5.625
 MOST_SHIFT = 30
 
 
