@@ -60,6 +60,7 @@ adaptor a multiplier: wave-digital.
 """
 
 from streamhost.diagram.builder import Ref, minus
+from streamhost.diagram.hints import Point
 from streamhost.filters.exact import Polynomial
 from streamhost.structures.all_pass import Branch, Halves
 from streamhost.structures.division import Ratio
@@ -75,18 +76,34 @@ DELAY = 1.5
 
 END = 0.75
 LOWER = 3.75
-"""The row at which the lower branch begins, under three rows of the upper one."""
+"""The row at which the lower branch begins, under three rows of the upper one; MIDDLE: that of the output between them."""
 
 MIDDLE = 3.125
-"""The row of the output, between the branches."""
+UNDER = 0.75
+"""Rows under the upper branch for one that is a wire or a delay, which leads straight to the output."""
 
 
 def build_section(draft: Draft, x: Ref) -> Ref:
     halves = halves_of(draft.ratio)
-    upper = Chain(draft, "u", 0.0, 1)
+    upper, (lower, end) = Chain(draft, "u", 0.0, 1), _rows(halves)
     u = upper.build(halves.first, x)
-    v = Chain(draft, "v", LOWER, upper.number).build(halves.second, x)
-    return join(draft, halves, u, v, at=(_middle(halves), MIDDLE))
+    first = [(LEFT, 0.0)] if halves.first.sections else []
+    draft.trunk(x, (0.0, 0.0), *first, (0.0, 0.0), (0.0, lower), _lead(halves.second, _middle(halves), lower))
+    v = Chain(draft, "v", lower, upper.number).build(halves.second, x)
+    return join(draft, halves, u, v, at=(_middle(halves), end))
+
+
+def _lead(branch: Branch, middle: float, row: float) -> Point:
+    """Where the input's wire to the lower branch ends: at its first delay, or, of one that is a wire, where the two meet."""
+    return (middle if not branch.sections and not branch.delay else LEFT), row
+
+
+def _rows(halves: Halves) -> tuple[float, float]:
+    """Where the lower branch begins, and where the branches meet."""
+    if halves.second.sections:
+        return LOWER, MIDDLE
+    down = max((len(section) - 1 for section in halves.first.sections), default=0) * PITCH + UNDER
+    return down, down
 
 
 def _middle(halves: Halves) -> float:
@@ -99,7 +116,9 @@ def _width(branch: Branch) -> float:
 
 
 def size(ratio: Ratio) -> Size:
-    return Size(_middle(halves_of(ratio)) + 0.875, LOWER + 2 * PITCH, MIDDLE)
+    halves = halves_of(ratio)
+    lower, end = _rows(halves)
+    return Size(_middle(halves) + 0.875, lower + (2 * PITCH if halves.second.sections else 0.0), end)
 
 
 class Chain:

@@ -67,9 +67,9 @@ from streamhost.structures.form import Draft, Form, Size, delays_down
 
 MOST_ORDER = 12
 MOST_DRAWN = 4
-PITCH = 2.625
+PITCH = 3.0
 BETA, SUM, ALPHA, Y = 0.75, 1.5, 2.625, 3.375
-SHIFT, ADDER, REGISTER = 0.5, 1.0, 1.625
+SHIFT, ADDER, REGISTER = 0.75, 1.25, 2.125
 """Rows above the sum ui."""
 
 MOST_SHIFT = 40

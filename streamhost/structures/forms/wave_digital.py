@@ -85,7 +85,8 @@ LEFT = 0.375
 END = 0.875
 DELAY = 1.5
 ROWS = {1: 3.75, 2: 7.5}
-"""By its order, with room for a wire over the next."""
+HALF_BAND = 5.0
+"""By its order, with room for a wire over the next; and of one that is a filter in z^-2, whose second adaptor is a wire."""
 
 OVER, ACROSS, SHIFT, LOWER, STATE, LOOP, INNER = -0.625, 0.5, 1.0, 1.625, 2.5, 3.0, 3.75
 """Rows of an adaptor: the wires over it and across it, its shifts, the adder of b2, the delay below, the wire back, and
@@ -115,7 +116,7 @@ def _length(branch: Branch) -> float:
 
 
 def _depth(branch: Branch) -> float:
-    return max([ROWS[len(section) - 1] for section in branch.sections], default=1.0)
+    return max([HALF_BAND if section[1:2] == (0,) else ROWS[len(section) - 1] for section in branch.sections], default=1.0)
 
 
 def size(ratio: Ratio) -> Size:
