@@ -23,8 +23,8 @@ Signal = npt.NDArray[np.float64]
 
 _TURN = 2**64  # phases are fractions of a turn in 64 bits: they wrap by themselves
 _TWO_PI = 6.283185307179586
-_SINE_TERMS = [(-1) ** k / factorial(2 * k + 1) for k in range(9)]
-_COSINE_TERMS = [(-1) ** k / factorial(2 * k) for k in range(10)]
+SINE_TERMS = [(-1) ** k / factorial(2 * k + 1) for k in range(9)]
+COSINE_TERMS = [(-1) ** k / factorial(2 * k) for k in range(10)]
 
 
 def silence(frames: int, channels: int = 1) -> Signal:
@@ -75,7 +75,7 @@ def white(frames: int, channels: int, seed: int, peak_dbfs: float) -> Signal:
 def sine(frames: int, rate: float, frequency: float, peak_dbfs: float, channels: int = 1) -> Signal:
     """A sine that begins at phase 0, `frequency` in Hz between 0 and rate/2, rounded to 24 bits without dither."""
     _check_shape(frames, channels)
-    step = _phase_step(rate, "frequency", frequency)
+    step = phase_step(rate, "frequency", frequency)
     phase = np.arange(frames, dtype=np.uint64) * np.uint64(step)
     return _from_phase(phase, peak_dbfs, channels)
 
@@ -83,7 +83,7 @@ def sine(frames: int, rate: float, frequency: float, peak_dbfs: float, channels:
 def sweep(frames: int, rate: float, frequencies: tuple[float, float], peak_dbfs: float, channels: int = 1) -> Signal:
     """A logarithmic sweep: a sine whose frequency goes from the first to the second by equal ratios per frame."""
     _check_shape(frames, channels)
-    first, last = (_phase_step(rate, "frequencies", frequency) for frequency in frequencies)
+    first, last = (phase_step(rate, "frequencies", frequency) for frequency in frequencies)
     with localcontext() as context:
         context.prec = 40
         span = max(frames - 1, 1)
@@ -121,7 +121,7 @@ def _check_shape(frames: int, channels: int) -> None:
         raise RequestError(f"channels = {channels}: a signal has 1 channel or more.")
 
 
-def _phase_step(rate: float, name: str, frequency: float) -> int:
+def phase_step(rate: float, name: str, frequency: float) -> int:
     """The turn per frame, in units of 2**-64 turns."""
     if not (isfinite(rate) and rate > 0):
         raise RequestError(f"rate = {rate}: a sample rate is above 0 Hz.")
@@ -141,8 +141,8 @@ def _sine(phase: npt.NDArray[np.uint64]) -> Signal:
     rest = (phase - (quarter << np.uint64(62))).view(np.int64)
     angle = rest * (_TWO_PI / _TURN)
     square = angle * angle
-    sine_part = angle * _series(square, _SINE_TERMS)
-    cosine_part = _series(square, _COSINE_TERMS)
+    sine_part = angle * _series(square, SINE_TERMS)
+    cosine_part = _series(square, COSINE_TERMS)
     value = np.where(quarter % 2 == 0, sine_part, cosine_part)
     return np.where(quarter % 4 >= 2, -value, value)
 

@@ -4,8 +4,10 @@ A file drives it in `rendering`. The step allocates nothing, locks nothing and c
 drive the very same machine code, and what is heard is bit for bit what is rendered.
 """
 
-from streamhost.host.engine import BLOCK, Host
+from streamhost.host.engine import BLOCK, Device, Host
+from streamhost.host.guard import Guard
 from streamhost.host.lane import Lane
 from streamhost.host.meters import Meters
+from streamhost.host.plan import Change, Changed
 
-__all__ = ["BLOCK", "Host", "Lane", "Meters"]
+__all__ = ["BLOCK", "Change", "Changed", "Device", "Guard", "Host", "Lane", "Meters"]

@@ -1,6 +1,7 @@
 """The working memory of a kernel as real states, newest first as the linear analysis counts them, and back."""
 
 from collections.abc import Iterator
+from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -48,11 +49,32 @@ def _code(value: float, fraction: int) -> int:
     return whole + (twice > 0 or (twice == 0 and whole % 2 == 1))
 
 
-def _places(program: Program, frame: int) -> Iterator[tuple[int, int, int]]:
-    """(what is stored, state, row of the memory): a line is a ring that was written last in the frame before."""
-    state = 0
+@dataclass(frozen=True)
+class Ring:
+    """Where a state lies: what is stored, and the line of `stores` words from row `offset` that turns with the frames.
+
+    `k`: frames before the newest.
+    """
+
+    source: int
+    offset: int
+    stores: int
+    k: int
+
+    def row(self, frame: int) -> int:
+        """A line is a ring that was written last in the frame before."""
+        return self.offset + (frame - 1 - self.k) % self.stores
+
+
+def rings(program: Program) -> Iterator[Ring]:
+    """Of every state, in their order."""
     for node, offset in program.state_offsets.items():
         stores, (source,) = program.nodes[node].stores, program.nodes[node].reads
         for k in range(stores):
-            yield source, state + k, offset + (frame - 1 - k) % stores
-        state += stores
+            yield Ring(source, offset, stores, k)
+
+
+def _places(program: Program, frame: int) -> Iterator[tuple[int, int, int]]:
+    """(what is stored, state, row of the memory)."""
+    for state, ring in enumerate(rings(program)):
+        yield ring.source, state, ring.row(frame)

@@ -116,7 +116,7 @@ def _length(branch: Branch) -> float:
 
 
 def _depth(branch: Branch) -> float:
-    return max([HALF_BAND if section[1:2] == (0,) else ROWS[len(section) - 1] for section in branch.sections], default=1.0)
+    return max([HALF_BAND if len(section) > 1 and section[1] == 0 else ROWS[len(section) - 1] for section in branch.sections], default=1.0)
 
 
 def size(ratio: Ratio) -> Size:

@@ -1,0 +1,140 @@
+"""What is to happen at which frame: changes of the lane that is heard, of coefficients, of the source, of what is subtracted.
+
+All is prepared here, outside the step, which takes it at the frame; of what was prepared nothing is freed before.
+"""
+
+from bisect import bisect_right
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+
+from streamhost.errors import RequestError, nearest
+from streamhost.host.carrying import Prepared, prepare_carry
+from streamhost.host.lane import Lane
+from streamhost.host.queue import Queue
+from streamhost.host.records import CHANGEOVERS, HEAR, LOGGED
+from streamhost.program.carrying import frames_of_history, is_run
+
+if TYPE_CHECKING:
+    from streamhost.host.engine import Host
+
+FADE_S = 0.02
+"""Of the changeover `fade`, unless said."""
+
+STATE_TAKING = ("keep", "cold", "carry")
+AS_IT_IS = -1
+
+
+@dataclass(frozen=True)
+class Change:
+    """At `frame` of the run the lane numbered `lane`, from 0, is heard; its state by `changeover`."""
+
+    frame: int
+    lane: int
+    changeover: str = "carry"
+
+
+@dataclass(frozen=True)
+class Changed:
+    """A change as the step made it: at which frame, and how many carried states did not fit their word."""
+
+    frame: int
+    lane: int
+    before: int
+    changeover: str
+    clipped: int
+
+
+class Plan:
+    """The changes of one host."""
+
+    def __init__(self, host: "Host", queue: Queue) -> None:
+        self._host, self._queue = host, queue
+        self._heard: list[tuple[int, int]] = [(0, 0)]
+        self._disturbed: dict[int, int] = {}
+
+    @staticmethod
+    def past_frames(lane: Lane) -> int:
+        """Frames of past input that a state carried into the lane may need."""
+        return frames_of_history(lane.realization.program)
+
+    def heard_at(self, frame: int) -> int:
+        """The lane that is heard just before a frame, by what is planned."""
+        return self._heard[bisect_right([at for at, _ in self._heard], frame) - 1][1]
+
+    def change(self, change: Change, *, fade_frames: int | None = None) -> int:
+        """Plan a change, all of it prepared now; its ticket. A frame that is past is the next.
+
+        Raises RequestError for a lane that is not there, an unknown changeover, and one that cannot be: `keep` between
+        different diagrams or words, `carry` where no output is common, a change before one that is planned already.
+        """
+        host, lane = self._host, self._lane(change.lane)
+        frame = max(change.frame, host.frames)
+        if change.changeover not in CHANGEOVERS:
+            raise RequestError(f'There is no changeover "{change.changeover}": {", ".join(CHANGEOVERS)}.'
+                               + nearest(change.changeover, CHANGEOVERS))
+        if frame < self._heard[-1][0]:
+            raise RequestError(f"A change at frame {frame} comes before one that is planned for frame {self._heard[-1][0]}: "
+                               "changes are planned in their order.")
+        before = self.heard_at(frame)
+        prepared = self._prepared(change, before, lane, frame)
+        fade = int(FADE_S * host.rate) if fade_frames is None else fade_frames
+        host.need("act")
+        host.need("carry", prepared is not None)
+        host.need("ideal", lane.ideal is not None)
+        ticket = self._queue.put(
+            host.begins + frame, HEAR, lane=change.lane, before=before, count=fade,
+            changeover=CHANGEOVERS.index(change.changeover), kept=(prepared,),
+            argument=AS_IT_IS if prepared is None else prepared.address,
+        )
+        self._heard.append((frame, change.lane))
+        if change.changeover in STATE_TAKING:
+            self._disturbed[change.lane] = frame
+        return ticket
+
+    @property
+    def changed(self) -> tuple[Changed, ...]:
+        """The changes that the step has made, oldest first, of the last 256 that it did."""
+        shared = self._host.shared
+        done = int(shared.meters["logged"][0])
+        entries = [shared.log[k % LOGGED] for k in range(max(0, done - LOGGED), done)]
+        return tuple(
+            Changed(int(entry["frame"]) - self._host.begins, int(entry["lane"]), int(entry["before"]),
+                    CHANGEOVERS[int(entry["changeover"])], int(entry["clipped"]))
+            for entry in entries if entry["kind"] == HEAR
+        )
+
+    def _lane(self, number: int) -> Lane:
+        if not 0 <= number < len(self._host.lanes):
+            raise RequestError(f"There is no lane {number + 1}: lanes are counted from 1 to {len(self._host.lanes)}.")
+        return self._host.lanes[number]
+
+    def _prepared(self, change: Change, before: int, lane: Lane, frame: int) -> Prepared | None:
+        old = self._host.lanes[before]
+        if change.changeover == "keep" and old.realization.program.key != lane.realization.program.key:
+            raise RequestError(
+                f"keep takes the state of lane {before + 1} as it is under the coefficients of lane {change.lane + 1}, and the "
+                "two differ in diagram or words. Use carry, warm, fade or cold."
+            )
+        if change.changeover != "carry" or old is lane:
+            return None
+        if not is_run(lane.realization.program):
+            return prepare_carry(old, lane)
+        self._has_run(change.lane, frame)
+        return None
+
+    def _has_run(self, lane: int, frame: int) -> None:
+        """A long response that ends is in the lane's state already, once it has run over as many inputs."""
+        needed = self._host.lanes[lane].realization.program.state_words
+        if lane in self._disturbed and frame < self._disturbed[lane] + needed:
+            raise RequestError(
+                f"Lane {lane + 1} continues another once it has run over its last {needed} inputs, which it has at frame "
+                f"{self._disturbed[lane] + needed}."
+            )
+
+
+def banks_of(realizations: list[Lane]) -> NDArray[np.int64]:
+    """Coefficients of several, (banks, slots, channels), as the step copies them."""
+    return np.array([lane.memory.coefficients.view(np.int64) for lane in realizations])

@@ -1,0 +1,41 @@
+"""What those outside the step see and say, in one piece of memory without addresses, which several processes may share."""
+
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from streamhost.host.records import BINS, CONTROL, HOST_METERS, LANE_METERS, LOG, LOGGED, MOST_LANES
+
+
+def layout(width: int, channels: int, recent: int = 0, recording: int = 0) -> np.dtype[np.void]:
+    """The fields, one after the other: control, meters, lanes, histogram, log, and the rings of audio.
+
+    width: columns of a lane's output; recent: frames of the rings `heard`, `sent` (what the guard is given) and `outputs`
+    (of each lane), where frame f of the run stands in row f modulo their length; recording: frames of the ring of what is
+    heard, which `meters.recorded` and `control.drained` count in and out.
+    """
+    return np.dtype([
+        ("control", CONTROL), ("meters", HOST_METERS), ("lanes", LANE_METERS, (MOST_LANES,)),
+        ("histogram", "<i8", (BINS,)), ("log", LOG, (LOGGED,)),
+        ("heard", "<f8", (recent, width)), ("sent", "<f8", (recent, channels)),
+        ("outputs", "<f8", (MOST_LANES, recent, width)), ("recording", "<f8", (recording, width)),
+    ])
+
+
+class Shared:
+    """Views of that memory; `buffer` holds at least `layout(...).itemsize` bytes, zeroed, else memory of its own is taken."""
+
+    def __init__(self, width: int, channels: int, recent: int = 0, recording: int = 0, buffer: Any = None) -> None:
+        kind = layout(width, channels, recent, recording)
+        whole = np.zeros(1, kind) if buffer is None else np.frombuffer(buffer, kind, 1)
+        self.whole = whole
+        self.control: NDArray[np.void] = whole["control"]
+        self.meters: NDArray[np.void] = whole["meters"]
+        self.lanes: NDArray[np.void] = whole["lanes"][0]
+        self.histogram: NDArray[np.int64] = whole["histogram"][0]
+        self.log: NDArray[np.void] = whole["log"][0]
+        self.heard: NDArray[np.float64] = whole["heard"][0]
+        self.sent: NDArray[np.float64] = whole["sent"][0]
+        self.outputs: NDArray[np.float64] = whole["outputs"][0]
+        self.recording: NDArray[np.float64] = whole["recording"][0]

@@ -1,0 +1,74 @@
+"""A chunk of input through every lane, by the address of its kernel; what came is counted."""
+
+TEXT = '''
+@helper
+def bring_in(host, in_, done, frames):
+    channels, given, x_ = host.channels, host.input_channels, host.x + done * host.channels * 8
+    if record(host.source, SOURCE).kind != {device}:
+        call_part(host.generate, host.address, x_, frames, 0)
+    else:
+        for i in range(frames * channels):
+            at, v = (done + i // channels) * given + min(i % channels, given - 1), 0.0
+            if in_ != 0 and given > 0:
+                v = real(in_, at) if host.sample_bytes == 8 else np.float64(single(in_, at))
+            set_real(x_, i, v)
+    for i in range(frames * channels):
+        v = real(x_, i)
+        at = (host.frame + i // channels) % host.input_recent_frames * channels + i % channels
+        set_real(host.input_recent, at, v if v == v else 0.0)
+
+
+@helper
+def count(lane, shown, y_, samples, window):
+    peak, total, bad, own_peak, own_total = shown.peak, shown.sum_of_squares, 0, shown.window_peak, shown.window_squares
+    for i in range(samples):
+        v = real(y_, i)
+        if v != v:
+            bad += 1
+        else:
+            peak, own_peak = max(peak, abs(v)), max(own_peak, abs(v))
+            total += v * v
+            own_total += v * v
+    shown.peak, shown.sum_of_squares, shown.window_peak, shown.window_squares = peak, total, own_peak, own_total
+    shown.not_a_number += bad
+    shown.window_frames += samples // lane.columns
+    if shown.window_frames >= window:
+        shown.shown_peak, shown.shown_squares = own_peak, own_total / np.float64(shown.window_frames * lane.columns)
+        shown.window_peak, shown.window_squares, shown.window_frames = 0.0, 0.0, 0
+    if lane.metered != 0:
+        saturations, wraps, overflows = 0, 0, 0
+        for i in range(lane.counters):
+            number, kind = word(lane.meters, i), word(lane.kinds, i)
+            saturations += number if kind == 1 else 0
+            wraps += number if kind == 2 else 0
+            overflows += number if kind == 3 else 0
+        shown.saturations, shown.wraps, shown.accumulator_overflows = saturations, wraps, overflows
+
+
+@helper
+def run_all(host, done, frames):
+    x_, channels = host.x + done * host.channels * 8, host.channels
+    now = nanoseconds()
+    for k in range({most}):
+        lane_ = word(host.lanes, k)
+        if lane_ == 0:
+            continue
+        lane = record(lane_, LANE)
+        shown, columns = record(lane.shown, LANE_METERS), lane.columns
+        y_ = lane.output + done * columns * 8
+        if lane.metered != 0:
+            for i in range(frames * channels):
+                set_byte(lane.marks, done * channels + i, np.uint8(0))
+        call_kernel(lane.kernel, x_, y_, {arrays}, frames, channels, lane.frame)
+        lane.frame += frames
+        count(lane, shown, y_, frames * columns, host.window_frames)
+        if lane.ideal != 0:
+            call_part(host.ideal, host.address, lane_, done, frames)
+        if lane.recent != 0:
+            for i in range(frames * columns):
+                row = (host.frame + i // columns) % host.recent_frames
+                set_real(lane.recent, row * columns + i % columns, real(y_, i))
+        shown.frame = lane.frame
+        before, now = now, nanoseconds()
+        shown.nanoseconds += now - before
+'''
