@@ -259,7 +259,8 @@ def test_a_lane_of_other_channels_than_its_coefficients_is_refused() -> None:
 
 
 CALLED_BY_NAME = {
-    "memset", "memcpy", "fabs", "is", "assume", "rint", "floor", "trunc", "umin", "umax", "smin", "smax", "lifetime", "@clock_gettime"
+    "memset", "memcpy", "fabs", "is", "assume", "rint", "floor", "trunc", "umin", "umax", "smin", "smax", "lifetime",
+    "@clock_gettime",
 }
 """What the processor does itself, under the names that the compiler has for it, and the clock."""
 

@@ -46,6 +46,7 @@ COMMANDS = {
         "All realizations of one filter on one signal: a table, the audio, the differences.",
     ),
     "measure": Entry("streamhost.commands.measure:measure", "What a design review asks of one realization, and its limits."),
+    "listen": Entry("streamhost.commands.listen:listen", "Realizations side by side, one of them heard."),
     "draw": Entry("streamhost.commands.draw:draw", "The block diagram of a realization, as text or SVG."),
     "import": Entry("streamhost.commands.import_:import_", "Coefficients from a foreign file, as a preset."),
     "forms": Entry("streamhost.commands.forms:forms", "What can be chosen; one form explained."),

@@ -1,5 +1,7 @@
 """A lane: a realization at work inside the host."""
 
+import hashlib
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -10,6 +12,7 @@ from streamhost.host.meters import Meters
 from streamhost.host.records import ARRAYS, LANE, LANE_METERS
 from streamhost.program.native.kernel import Variant, compile_kernel, kernel_width, no_trace
 from streamhost.program.native.meters import meters_by_kind
+from streamhost.program.states import rings
 from streamhost.realization import Realization, Tally, tally
 
 
@@ -122,12 +125,17 @@ class Lane:
         """What its runs have taken since reset, its ideal included."""
         return int(self._shown["nanoseconds"][0])
 
+    def state_hash(self) -> str:
+        """SHA-256 of the words of state, newest first, whatever frame the rings have been turned to."""
+        rows = [ring.row(self.frame) for ring in rings(self.realization.program)]
+        return hashlib.sha256(np.ascontiguousarray(self.memory.state[rows]).tobytes()).hexdigest()
+
     @property
     def meters(self) -> Meters:
         """What the step counted of the output since reset."""
         shown = self._shown[0]
-        frames = int(shown["frame"])
-        return Meters(frames, frames * self._output.shape[1], float(shown["peak"]), float(shown["sum_of_squares"]),
+        samples = int(shown["samples"])
+        return Meters(samples // self._output.shape[1], samples, float(shown["peak"]), float(shown["sum_of_squares"]),
                       int(shown["not_a_number"]))
 
     def tally(self) -> Tally:

@@ -3,16 +3,26 @@
 import math
 from dataclasses import dataclass
 
+import numpy as np
+from numpy.typing import NDArray
+
 
 @dataclass(frozen=True)
 class Meters:
     """Of all outputs and channels of a lane since its reset; 1.0 = full scale, NaN samples left out of both levels."""
 
-    frames: int
-    samples: int
-    peak: float
-    sum_of_squares: float
-    not_a_number: int
+    frames: int = 0
+    samples: int = 0
+    peak: float = 0.0
+    sum_of_squares: float = 0.0
+    not_a_number: int = 0
+
+    def plus(self, block: NDArray[np.float64]) -> "Meters":
+        """With a further block (frames, columns) counted."""
+        numbers = block[~np.isnan(block)]
+        return Meters(self.frames + len(block), self.samples + block.size,
+                      max(self.peak, float(np.abs(numbers).max(initial=0.0))),
+                      self.sum_of_squares + float((numbers**2).sum()), self.not_a_number + block.size - numbers.size)
 
     @property
     def is_finite(self) -> bool:

@@ -7,9 +7,6 @@ from bisect import bisect_right
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
-import numpy as np
-from numpy.typing import NDArray
-
 from streamhost.errors import RequestError, nearest
 from streamhost.host.carrying import Prepared, prepare_carry
 from streamhost.host.lane import Lane
@@ -34,6 +31,23 @@ class Change:
     frame: int
     lane: int
     changeover: str = "carry"
+
+
+SPELLING = (
+    "a change is FRAME:LANE:CHANGEOVER, for instance 48000:2:warm: frames are counted from 0, lanes from 1, and the changeover "
+    f"is {', '.join(CHANGEOVERS)}."
+)
+
+
+def parse_change(text: str, lanes: int) -> Change:
+    """A change as the command line states it, for so many lanes. RequestError for anything else."""
+    frame, _, rest = text.partition(":")
+    lane, _, changeover = rest.partition(":")
+    if not (frame.isdecimal() and lane.isdecimal() and changeover in CHANGEOVERS):
+        raise RequestError(f'"{text}": {SPELLING}{nearest(changeover, CHANGEOVERS)}')
+    if not 1 <= int(lane) <= lanes:
+        raise RequestError(f'"{text}": there is no lane {lane}: lanes are counted from 1 to {lanes}.')
+    return Change(int(frame), int(lane) - 1, changeover)
 
 
 @dataclass(frozen=True)
@@ -133,8 +147,3 @@ class Plan:
                 f"Lane {lane + 1} continues another once it has run over its last {needed} inputs, which it has at frame "
                 f"{self._disturbed[lane] + needed}."
             )
-
-
-def banks_of(realizations: list[Lane]) -> NDArray[np.int64]:
-    """Coefficients of several, (banks, slots, channels), as the step copies them."""
-    return np.array([lane.memory.coefficients.view(np.int64) for lane in realizations])

@@ -42,7 +42,7 @@ LANE = _record(
 )
 
 LANE_METERS = _record(
-    "frame not_a_number saturations wraps accumulator_overflows nanoseconds window_frames",
+    "frame samples not_a_number saturations wraps accumulator_overflows nanoseconds window_frames",
     # of all samples since reset; then of the last whole window, and of the one under way
     "peak sum_of_squares shown_peak shown_squares window_peak window_squares",
 )

@@ -31,6 +31,7 @@ def count(lane, shown, y_, samples, window):
             own_total += v * v
     shown.peak, shown.sum_of_squares, shown.window_peak, shown.window_squares = peak, total, own_peak, own_total
     shown.not_a_number += bad
+    shown.samples += samples
     shown.window_frames += samples // lane.columns
     if shown.window_frames >= window:
         shown.shown_peak, shown.shown_squares = own_peak, own_total / np.float64(shown.window_frames * lane.columns)
