@@ -139,6 +139,27 @@ def test_roundings_count_for_a_proof():
     assert overflow(recursive(a, Fixed("Q1.15", coefficients="Q2.6"), b=[0.109375]), NOTHING, judged_only=True).proven
 
 
+@pytest.mark.parametrize(("kind", "l1"), [("wrap", 1.0), ("saturate", 2.0)])
+def test_a_sum_that_saturates_on_the_way_is_bounded_term_by_term(kind, l1):
+    """1/2 + 1/2 z^-1, then 1 - z^-1: 1/2 - 1/2 z^-2 together, but either term of the second sum alone reaches 1."""
+    filter = Filter.cascade([Filter.from_coefficients(b, rate=RATE) for b in ([0.5, 0.5], [1.0, -1.0])])
+    realization = realize(filter, form="direct-1", format=Fixed(
+        "Q1.15", coefficients="Q2.14", accumulator={"word": "Q2.29", "overflow": kind}))
+    sums = [each for each in overflow(realization, NOTHING, judged_only=True).registers if each.kind == "accumulator"]
+    assert sums[-1].l1 == pytest.approx(l1, rel=1e-9)
+    assert sums[-1].bound >= l1
+
+
+@pytest.mark.parametrize("fold", [False, True])
+def test_a_tapped_line_that_saturates_is_bounded_by_its_taps(fold):
+    b = [0.25, -0.5, -0.5, 0.25] if fold else [0.25, -0.5, 0.125]
+    realization = realize(Filter.from_coefficients(b, rate=RATE), form="folded" if fold else "direct-1",
+                          decomposition="whole", format=Fixed(
+                              "Q1.15", coefficients="Q1.15", accumulator={"word": "Q2.30", "overflow": "saturate"}))
+    sums = [each for each in overflow(realization, NOTHING, judged_only=True).registers if each.kind == "accumulator"]
+    assert sums[-1].l1 == pytest.approx(sum(map(abs, b)), rel=1e-9)
+
+
 # Counts and places
 
 

@@ -64,11 +64,19 @@ def _of_place(
         positive, negative = (sum_of_all + signed) / 2.0, (sum_of_all - signed) / 2.0
         l1 += factor * sum_of_all
         up, down = positive * most + negative * least, positive * least + negative * most
-        if len(place.parts) > 1 or place.kind == "operand":  # what is added up may come with either sign
+        if place.parts != ((place.node, 1.0),):  # what is added up may come with either sign
             up = down = max(up, down)
         highest += factor * (up + float(errors[k]))
         lowest += factor * (down + float(errors[k]))
-    return l1, scale * float(norms.l2[own]), scale * float(norms.peak[own]), highest, lowest
+    own_errors = _own_errors(place, float(errors[own]))
+    return l1, scale * float(norms.l2[own]), scale * float(norms.peak[own]), highest + own_errors, lowest + own_errors
+
+
+def _own_errors(place: Place, at_node: float) -> float:
+    """What is rounded at the place itself, and so is not among the errors of its parts: 3/2 of a step at most in a tap."""
+    if place.kind == "operand":
+        return 1.5 * place.step
+    return at_node if place.parts != ((place.node, 1.0),) else 0.0
 
 
 def _constant_gains(program: Program, nodes: Sequence[int], channel: int) -> FloatArray:

@@ -52,17 +52,19 @@ def _at(program: Program, index: int) -> Iterator[Place]:
     if isinstance(arithmetic, SumArithmetic | TapsArithmetic) and arithmetic.counted:
         accumulator = arithmetic.accumulator
         assert accumulator.word is not None, "only a stated accumulator overflows"
-        yield Place(f"the accumulator of {node.label}", "accumulator", index, _parts(index, arithmetic, accumulator.overflow),
+        yield Place(f"the accumulator of {node.label}", "accumulator", index, _parts(program, index, accumulator.overflow),
                     accumulator.word, accumulator.overflow, meters[index])
 
 
-def _parts(index: int, arithmetic: SumArithmetic | TapsArithmetic, overflow: str) -> tuple[tuple[int, float], ...]:
-    """A sum that wraps on the way is right where its end is in range; one that saturates must be in range at every term.
-
-    Of a tapped line the taps' magnitudes together are its own l1 as well.
-    """
-    if overflow == "wrap" or isinstance(arithmetic, TapsArithmetic):
+def _parts(program: Program, index: int, overflow: str) -> tuple[tuple[int, float], ...]:
+    """A sum that wraps on the way is right where its end is in range; one that saturates must be in range at every term."""
+    if overflow == "wrap":
         return ((index, 1.0),)
+    node, arithmetic = program.nodes[index], program.arithmetic[index]
+    if isinstance(node, Taps):
+        weights = abs(program.diagram.values[list(node.coefficients)]).sum(axis=0).max()
+        return ((node.source, float(weights) * (1.0 if node.fold is None else 2.0)),)
+    assert isinstance(arithmetic, SumArithmetic), "a sum or a tapped line"
     return tuple((term.source, float(2.0**term.shift)) for term in arithmetic.terms)
 
 
