@@ -8,6 +8,8 @@ import pytest
 from streamhost import Filter, Fixed, design, load_preset, realize
 from streamhost.commands.main import main
 from streamhost.errors import PresetError, RequestError
+from streamhost.filters.curves.band_mask import band_goals, band_limits, breakpoint_ratio
+from streamhost.filters.curves.bands import exact_hz
 from streamhost.filters.stability import roots_on_and_outside, step_down
 from streamhost.measure import response
 
@@ -196,6 +198,19 @@ def test_the_octave_mask_agrees_with_its_table(order):
     assert found.margin_db <= at_table + 1e-9
     assert (found.margin_db >= 0.0) == (at_table >= 0.0) == (order >= 3)
     assert found.nominal_hz == 1000.0
+
+
+@pytest.mark.parametrize(("bands", "nominal"), [(1, 1000.0), (3, 2500.0)])
+def test_the_mask_of_every_frequency_is_that_of_the_goals(bands, nominal):
+    """Goals are at points of the same straight lines; at the edge of the band each side has its own."""
+    edges = exact_hz(nominal) * breakpoint_ratio(0.5, bands) ** np.array([-1.0, 1.0])
+    for goal in band_goals(nominal, bands, 3):
+        lower, upper = band_limits(np.array([goal.hertz]), nominal, bands)
+        at_edge = np.isclose(goal.hertz, edges, rtol=1e-12).any()
+        if not (at_edge and goal.lower_db == -np.inf):
+            assert lower[0] == pytest.approx(goal.lower_db, abs=1e-9)
+        if not (at_edge and goal.lower_db > -np.inf):
+            assert upper[0] == pytest.approx(goal.upper_db, abs=1e-9)
 
 
 def test_a_third_octave_band_is_found_and_a_wrong_one_named():

@@ -29,6 +29,8 @@ def lines(result: Response) -> Iterator[str]:
     yield from dict.fromkeys(f"No figure: {one.reason}." for one in result.bands if one.reason)
     if result.outputs:
         yield ledger(DELAYS, [_delay(one) for one in result.outputs], numbered=False)
+    if result.outputs and result.channel is not None:
+        yield f"Delays, poles and zeros are those of channel {result.channel}."
     yield _stability(result.stability)
     yield from _roots(result)
     for mask in result.masks:
