@@ -243,8 +243,9 @@ def test_the_overflow_oscillation_of_four_bits(kind, orbit):
 # M. L. Ebert, J. E. Mazo, M. G. Taylor, Bell System Technical Journal 48 (1969): wrapping is free of oscillations if and
 # only if |a1| + |a2| < 1, saturation in every stable case. The cases and what they did are recomputed.
 @pytest.mark.parametrize(("a1", "a2", "free"), [
-    (-0.5, 0.4, True), (0.55, 0.44, True), (-0.3, -0.6, True), (0.0, 0.95, True),
-    (-1.0, 0.5, False), (1.0, 0.5, False), (-1.6, 0.8, False), (-0.75, 0.75, False),
+    (-0.5, 0.4, True), (-1.0, 0.5, False), (-0.75, 0.75, False),
+    *(pytest.param(*case, marks=pytest.mark.slow) for case in (
+        (0.55, 0.44, True), (-0.3, -0.6, True), (0.0, 0.95, True), (1.0, 0.5, False), (-1.6, 0.8, False))),
 ])
 def test_overflow_oscillations_are_found_where_there_are_some(a1, a2, free):
     wrapping, saturating = (overflow(recursive([1.0, a1, a2], Fixed("Q1.15", coefficients="Q2.14", overflow=kind)), NOTHING,

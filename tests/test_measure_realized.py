@@ -186,7 +186,7 @@ OCTAVE = [(0, -0.4, 0.4), (1 / 8, -0.4, 0.5), (1 / 4, -0.4, 0.7), (3 / 8, -0.4, 
           (2, 40.5, np.inf), (3, 60, np.inf), (4, 70, np.inf)]
 
 
-@pytest.mark.parametrize("order", [1, 2, 3, 4])
+@pytest.mark.parametrize("order", [pytest.param(1, marks=pytest.mark.slow), 2, 3, pytest.param(4, marks=pytest.mark.slow)])
 def test_the_octave_mask_agrees_with_its_table(order):
     filter = design("octave-band", rate=RATE, frequency=1000.0, order=order)
     (found,) = response(realize(filter, form="transposed-2"), masks=["octave-class-1"], judged_only=True).masks

@@ -17,6 +17,7 @@ FloatArray = NDArray[np.float64]
 PARTS = 16
 POINTS_A_CORNER = 32
 DIGITS = 6
+CANDIDATES = 3
 
 
 def mask_margin(responses: Responses, name: str, output: str, nominal_hz: float | None = None) -> MaskMargin:
@@ -26,7 +27,7 @@ def mask_margin(responses: Responses, name: str, output: str, nominal_hz: float 
     mask, rate = MASKS[name], responses.realization.rate
     if nominal_hz is not None and nominal_hz not in mask.nominals:
         raise RequestError(f"mask_hz = {nominal_hz:g} is not allowed: {mid_bands_text(name)}.")
-    mids = [nominal_hz] if nominal_hz is not None else [each for each in mask.nominals if exact_hz(each) < rate / 2.0]
+    mids = [nominal_hz] if nominal_hz is not None else _likely(responses, mask)
     found = [_margin(responses, mask, each) for each in mids or [0.0]]
     if not any(np.isfinite(margin) for margin, _ in found):
         reason = "with its coefficients rounded the filter is not stable and has no response"
@@ -34,6 +35,13 @@ def mask_margin(responses: Responses, name: str, output: str, nominal_hz: float 
     margin, hertz = max(found)
     mid = mids[found.index((margin, hertz))] if mids else None
     return MaskMargin(name, output, mid, margin, float(f"{hertz:.{DIGITS}g}"), rate / 2.0, mask.source, "")
+
+
+def _likely(responses: Responses, mask: Mask) -> list[float]:
+    """The mid-bands at which most passes: a mask asks for the least attenuation there."""
+    mids = [each for each in mask.nominals if exact_hz(each) < responses.realization.rate / 2.0]
+    gains = _decibels(responses, np.array([exact_hz(each) for each in mids])) if mids else np.zeros(0)
+    return [mids[k] for k in sorted(np.argsort(-gains)[:CANDIDATES].tolist())]
 
 
 def _margin(responses: Responses, mask: Mask, nominal: float) -> tuple[float, float]:
