@@ -46,8 +46,8 @@ def with_all_outputs(name: str, b: tuple[float, ...], a: tuple[float, ...]) -> D
     builder = Builder()
     draft = Draft(builder, Polynomials(b, a))
     builder.output(form(name).build_section(draft, builder.input()), "y")
-    for offered, ref in draft.offered.items():
-        builder.output(ref, offered)
+    for offered, offer in draft.offered.items():
+        builder.output(offer.ref, offered)
     return builder.build()
 
 

@@ -26,6 +26,14 @@ def can_lie(section: Polynomials) -> bool:
 
 
 @dataclass(frozen=True)
+class Offer:
+    """A further output of a form, and where on the page it ends."""
+
+    ref: Ref
+    at: Point | None
+
+
+@dataclass(frozen=True)
 class Draft:
     """A section being drawn: its polynomials, its index, and what its labels end with where there are several.
 
@@ -46,15 +54,15 @@ class Draft:
     exact: Ratio | None = None
     alone: bool = False
     all_outputs: bool = False
-    offered: dict[str, Ref] = field(default_factory=dict)
+    offered: dict[str, Offer] = field(default_factory=dict)
 
     @property
     def ratio(self) -> Ratio:
         return self.exact or ratio_of(self.section)
 
-    def offer(self, name: str, ref: Ref) -> None:
-        """A further output of the form, which those who ask for all outputs get."""
-        self.offered[name] = ref
+    def offer(self, name: str, ref: Ref, *, at: Point | None = None) -> None:
+        """A further output of the form, which those who ask for all outputs get; `at`: where it ends, to the right."""
+        self.offered[name] = Offer(ref, self._on_page(at) if at is not None else None)
 
     def delay(self, name: str, source: Ref | None = None, *, at: Point | None = None, face: str = "E",
               n: int = 1) -> Ref:

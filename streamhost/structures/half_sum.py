@@ -29,7 +29,8 @@ def join(draft: Draft, halves: Halves, first: Ref, second: Ref, *, at: Point) ->
         others = [_signed(first, halves.signs[0]), _signed(second, -halves.signs[1])]
         below = (column, row + 1)
         difference = draft.add("difference", others, at=below)
-        draft.offer("complement", _scaled(draft, halves, "complement", difference, (column + 0.875, row + 1)))
+        complement = _scaled(draft, halves, "complement", difference, (column + 0.875, row + 1))
+        draft.offer("complement", complement, at=(column + 1.75, row + 1))
     return y
 
 

@@ -42,8 +42,10 @@ def draw_all(builder: Builder, tiles: "Sequence[Tiles]", signal: Ref) -> None:
     if len(tiles) == 1:
         end = tiles[0].draw(signal)
         tiles[0].place_output(builder.output(end), end)
-        for name, ref in tiles[0].offered.items():
-            builder.output(ref, name)
+        for name, offer in tiles[0].offered.items():
+            output = builder.output(offer.ref, name)
+            if offer.at is not None:
+                builder.place(output, offer.at)
         return
     common, branches = ([], tiles) if tiles[0].part.name else (tiles[:1], tiles[1:])
     builder.trunk(signal, *([(BUS, 0.0)] if not common else []))

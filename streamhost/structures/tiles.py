@@ -7,7 +7,7 @@ from types import MappingProxyType
 from streamhost.diagram import Builder, Ref
 from streamhost.diagram.tapped import LEAD, ahead
 from streamhost.structures.division import Division, Part
-from streamhost.structures.form import Draft, Form
+from streamhost.structures.form import Draft, Form, Offer
 
 MOST_COLUMNS = 12.0
 """Columns that fit the width of a page: up to these, two sections are drawn side by side."""
@@ -40,7 +40,7 @@ class Tiles:
 
     numbers: tuple[str, ...] = ()
     alone = False
-    offered: Mapping[str, Ref] = MappingProxyType({})
+    offered: Mapping[str, Offer] = MappingProxyType({})
 
     def __init__(self, builder: Builder, part: Part, form: Form, left: float, top: float, first: int) -> None:
         self.builder, self.part, self.form, self.left, self.top, self.first = builder, part, form, left, top, first

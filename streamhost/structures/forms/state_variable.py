@@ -82,8 +82,8 @@ def _second(draft: Draft, x: Ref) -> Ref:
     low = draft.add("low", [s2, v2], at=(7.25, MAIN))
     s2.takes(draft.add("t2", [s2, _twice(draft, "2", v2, 6.625)], at=(6.625, MAIN + 1.5), face="W"))
     draft.trunk(s2, (5.25, MAIN + 1.5), (5.25, MAIN + 2.875), (1, MAIN + 2.875), (1, MAIN + 0.75))
-    for name, ref in (("low", low), ("band", band), ("high", high)):
-        draft.offer(name, ref)
+    for name, ref, row in (("low", low, MAIN), ("band", band, -0.75), ("high", high, -1.375)):
+        draft.offer(name, ref, at=(8.75, row))
     products = [
         draft.gain("m2", m_high, high, at=(3.25, MAIN - 0.75), face="N", part="b"),
         draft.gain("m1", m_band, band, at=(5.625, MAIN - 0.75), face="N", part="b"),
@@ -101,8 +101,8 @@ def _first(draft: Draft, x: Ref) -> Ref:
     low = draft.add("low", [s, v], at=(3.125, MAIN))
     s.takes(draft.add("t1", [s, _twice(draft, "1", v, 2.5)], at=(2.5, MAIN + 1.5), face="W"))
     high = draft.add("high", [x, minus(low)], at=(3.875, 0))
-    draft.offer("low", low)
-    draft.offer("high", high)
+    draft.offer("low", low, at=(6.375, MAIN + 0.75))
+    draft.offer("high", high, at=(6.375, -0.75))
     products = [
         draft.gain("m1", m_high, high, at=(4.75, 0), part="b"),
         draft.gain("m0", m_low, low, at=(4.75, MAIN), part="b"),

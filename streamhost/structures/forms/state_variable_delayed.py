@@ -78,8 +78,8 @@ def _second(draft: Draft, x: Ref) -> Ref:
     high = draft.stride("high", [x, minus(low), minus(q)], columns=(1, 1, 1.75), row=MAIN)
     band = draft.add("band", [b1, draft.again(f, "F2", high, at=(3, MAIN), )], at=(3.75, MAIN))
     b1.takes(band)
-    for name, ref in (("low", low), ("band", band), ("high", high)):
-        draft.offer(name, ref)
+    for name, ref, row in (("low", low, MAIN), ("band", band, -0.75), ("high", high, -1.375)):
+        draft.offer(name, ref, at=(8.75, row))
     draft.trunk(b1, (5.5, MAIN), (5.5, MAIN + 1.625), (4.25, MAIN + 1.625))
     draft.trunk(low, (7.875, MAIN), (7.875, MAIN + 2.25), (1, MAIN + 2.25), (1, MAIN + 0.75))
     products = [
@@ -97,8 +97,8 @@ def _first(draft: Draft, x: Ref) -> Ref:
     f = draft.gain("F", tuning, high, at=(2.25, MAIN), part="a")
     low = draft.add("low", [l1, f], at=(3, MAIN))
     l1.takes(low)
-    draft.offer("low", low)
-    draft.offer("high", high)
+    draft.offer("low", low, at=(5.0, MAIN))
+    draft.offer("high", high, at=(5.0, -0.75))
     products = [
         draft.gain("m1", m_high, high, at=(1.625, MAIN - 0.75), face="N", part="b"),
         draft.gain("m0", m_low, low, at=(4.125, MAIN - 0.75), face="N", part="b"),

@@ -116,11 +116,11 @@ def _length(branch: Branch) -> float:
 
 
 def _depth(branch: Branch) -> float:
-    return max((_rows(section) for section in branch.sections), default=1.0)
+    return max(map(_rows, branch.sections), default=1.0)
 
 
 def _rows(section: Polynomial) -> float:
-    return HALF_BAND if len(section) > 1 and section[1] == 0 else ROWS[len(section) - 1]
+    return HALF_BAND if len(section) == 3 and section[1] == 0 else ROWS[len(section) - 1]
 
 
 def size(ratio: Ratio) -> Size:
