@@ -1,20 +1,26 @@
-"""Drawings of every form and of what else there is to draw, for the browser's test and for the eye.
+"""A contact sheet of all forms, and drawings of every form and of what else there is to draw, for a test and for the eye.
 
-`python tests/gallery.py page.html` writes them all on one page, each as large as it prints.
+`python tests/gallery.py page.html` writes the contact sheet: each form once, with its order and its counts, in a grid that
+prints on A4. `python tests/gallery.py page.html all` writes all drawings, each as large as it prints.
 """
 
+import re
 import sys
+from collections.abc import Callable
 from html import escape
 from pathlib import Path
 from random import Random
 
-from form_filters import DIRECT, built, carried
+from form_filters import DIRECT, RATE, built, carried
 from random_diagrams import random_diagram
 from test_drawing_forms import cascade, sums, whole
 from test_drawing_taps import complementary, tapped
 
+from streamhost import Filter, design
+from streamhost.diagram import Diagram
 from streamhost.drawing import svg
-from streamhost.structures import forms
+from streamhost.errors import StructureError
+from streamhost.structures import build, form, forms
 
 OTHERS = (("whole", "low-pass at 1 kHz"), ("whole", "chebyshev 4"), ("cascade", "elliptic 5"), ("whole", "taps"))
 """What is drawn in the forms that do not draw a numerator and a denominator as they are written."""
@@ -42,6 +48,74 @@ def drawings() -> dict[str, str]:
     return found
 
 
+SHOWN = (
+    design("low-pass", rate=RATE, frequency=1000, q=0.707),
+    design("butterworth", rate=RATE, response="low-pass", order=3, frequency=1000),
+    Filter.from_coefficients([0.125, 0.25, 0.375, 0.25, 0.125], rate=RATE),
+    Filter.from_coefficients([0.5, 0.375, 0.25, 0.125], rate=RATE),
+    design("moving-average", rate=RATE, length=8),
+)
+"""The contact sheet has each form with the first of these that it carries."""
+
+SMALLER, LEAST = 0.75, 0.6
+"""The contact sheet's scale, at which names are 7 points high, and the least; what is wider gets both columns."""
+
+HALF_MM, WHOLE_MM = 90.0, 184.0
+
+STYLE = """@page { size: A4; margin: 10mm }
+body { margin: 0; width: 190mm; font: 8pt "DejaVu Serif", serif }
+h1 { font-size: 12pt; margin: 0 0 2mm }
+main { display: grid; grid-template-columns: 1fr 1fr; gap: 2mm; grid-auto-flow: dense }
+figure { margin: 0; padding: 1.5mm; border: 0.2mm solid #999; break-inside: avoid; text-align: center }
+figure.wide { grid-column: span 2 }
+sup { line-height: 0 }
+figcaption { margin-bottom: 1.5mm; text-align: left }"""
+
+
+LEGEND = "<p>× multiplications, + additions, z<sup>−1</sup> words of memory a frame. Heavy lines are loops.</p>"
+
+
+def contact_sheet() -> str:
+    """The page of all forms."""
+    cells = "\n".join(cell(name, *shown(name)) for name in forms())
+    return f"{HEAD}<style>{STYLE}</style>\n<h1>{len(forms())} forms</h1>\n{LEGEND}\n<main>\n{cells}\n</main>\n"
+
+
+def shown(name: str) -> tuple[Filter, Diagram]:
+    """A filter that a form carries, and the form's diagram of it."""
+    for filter in SHOWN:
+        try:
+            return filter, build(filter, form=name, decomposition="whole").diagram
+        except StructureError:
+            continue
+    raise AssertionError(f"{name} carries none of the filters on the contact sheet")
+
+
+def cell(name: str, filter: Filter, diagram: Diagram) -> str:
+    """A form's place on the sheet: its name, order and counts above the drawing."""
+    text = svg(diagram, values="none")
+    wide, high = (float(size) for size in re.findall(r'(?:width|height)="([\d.]+)mm"', text)[:2])
+    spans = wide * LEAST > HALF_MM
+    scale = min(SMALLER, (WHOLE_MM if spans else HALF_MM) / wide)
+    small = re.sub(r'width="[\d.]+mm" height="[\d.]+mm"', f'width="{wide * scale:.2f}mm" height="{high * scale:.2f}mm"', text)
+    counts = diagram.counts()
+    said = f"order {order_of(filter)}, {counts.multiplications} ×, {counts.additions} +, {counts.delays} z<sup>−1</sup>"
+    head = f"<b>{escape(name)}</b>&ensp;{said}<br>{escape(form(name).summary)}"
+    return f'<figure{" class=wide" if spans else ""}><figcaption>{head}</figcaption>\n{small}</figure>'
+
+
+def order_of(filter: Filter) -> int:
+    b, a = filter.ratio()
+    return max(len(b), len(a)) - 1
+
+
+def every_drawing() -> str:
+    """The page of all drawings."""
+    return HEAD + "\n".join(f"<h4>{escape(name)}</h4>\n{text}" for name, text in drawings().items())
+
+
+HEAD = "<!doctype html>\n<meta charset=utf-8>\n"
+PAGES: dict[str, Callable[[], str]] = {"": contact_sheet, "all": every_drawing}
+
 if __name__ == "__main__":
-    figures = "\n".join(f"<h4>{escape(name)}</h4>\n{text}" for name, text in drawings().items())
-    Path(sys.argv[1]).write_text(f"<!doctype html>\n<meta charset=utf-8>\n{figures}", encoding="utf-8")
+    Path(sys.argv[1]).write_text(PAGES["".join(sys.argv[2:])](), encoding="utf-8")
