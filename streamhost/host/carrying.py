@@ -11,9 +11,6 @@ from streamhost.program.carrying import bridge
 from streamhost.program.program import Program
 from streamhost.program.states import rings
 
-WORST_PRODUCTS = 40_000
-"""Of the matrix, all channels: about as many as the step multiplies in a tenth of a millisecond."""
-
 
 @dataclass(frozen=True)
 class Prepared:
@@ -22,7 +19,6 @@ class Prepared:
     record: NDArray[np.void] | None
     arrays: tuple[NDArray[np.generic], ...] = ()
     past_frames: int = 0
-    products: int = 0
 
     @property
     def address(self) -> int:
@@ -35,7 +31,8 @@ def prepare_carry(before: Lane, following: Lane) -> Prepared:
     The step then computes what `Realization.carry_from` computes, operation for operation.
     """
     first, second = before.realization.program, following.realization.program
-    if first.key == second.key and np.array_equal(before.memory.coefficients, following.memory.coefficients):
+    old, new = (lane.realization.memory(lane.channels).coefficients for lane in (before, following))
+    if first.key == second.key and np.array_equal(old, new):
         return Prepared(None)
     solved = bridge(first, second, before.realization.rate)
     size = first.state_words + len(solved.past)
@@ -55,7 +52,7 @@ def prepare_carry(before: Lane, following: Lane) -> Prepared:
     record["before"], record["pasts"], record["frees"] = first.state_words, len(solved.past), len(solved.free)
     record["states"], record["sets"] = second.state_words, len(solved.channels)
     furthest = max((ago for _, _, ago in solved.past), default=0)
-    return Prepared(record, tuple(kept.values()), furthest, size * len(solved.free) * before.channels)
+    return Prepared(record, tuple(kept.values()), furthest)
 
 
 def _rows(program: Program) -> NDArray[np.int64]:

@@ -63,7 +63,7 @@ class Host:
         if block < 1:
             raise RequestError(f"A host's blocks have at least 1 frame, not {block}.")
         assert len({id(lane) for lane in lanes}) == len(lanes), "a lane stands in a host once"
-        self.lanes, self.block = tuple(lanes), block
+        self.lanes, self.block = list(lanes), block
         self.device = device or Device(self.channels)
         width = self.outputs * self.channels
         self.shared = shared or Shared(width, self.channels, recent, recording)
@@ -88,11 +88,11 @@ class Host:
 
     def _set(self, guard: Guard, begins: int, source: Source | None) -> None:
         shared, record = self.shared, self._record
-        self._source = source or device()
+        self._sources, self._former = [source or device()], list[Lane]()
         addresses = {
             "lanes": self._table, "control": shared.control, "meters": shared.meters, "histogram": shared.histogram,
-            "actions": self._queue.slots, "log": shared.log, "source": self._source.record, "x": self._x, "heard": self._heard,
-            "sent": self._sent, "input_recent": self._past,
+            "actions": self._queue.slots, "log": shared.log, "source": self._sources[0].record, "x": self._x,
+            "heard": self._heard, "sent": self._sent, "input_recent": self._past,
         }
         if len(shared.heard):
             addresses |= {"heard_recent": shared.heard, "sent_recent": shared.sent}
@@ -110,13 +110,34 @@ class Host:
             record[name] = array.ctypes.data
         for name, value in numbers.items():
             record[name] = value
-        self.need("generate", self._source.kind != "device")
+        self.need("generate", self._sources[0].kind != "device")
         self.need("ideal", any(lane.ideal for lane in self.lanes))
         self.need("mix", len(self.lanes) > 1 or self.device.outputs > 0 or len(shared.heard) + len(shared.recording) > 0)
         self.need("listen", self.device.outputs > 0)
         self.need("record", len(shared.recording) > 0)
         guard.put(record, shared.control, self.rate)
         shared.control["gain"], shared.control["mute"], shared.control["counter_channel"] = 1.0, 1, -1
+
+    def keep(self, source: Source) -> None:
+        """A source that is taken lives as long as the host."""
+        self._sources.append(source)
+
+    def check(self, lane: Lane) -> None:
+        """RequestError where a lane does not fit those that run."""
+        _common([lane, self.lanes[0]])
+
+    def put_lane(self, slot: int, lane: Lane) -> None:
+        """The lane of a slot, from now on; one that it takes the place of lives as long as the host."""
+        if slot < len(self.lanes):
+            self._former.append(self.lanes[slot])
+            self.lanes[slot] = lane
+        else:
+            self.lanes.append(lane)
+
+    @property
+    def past_frames(self) -> int:
+        """Frames of past input that are kept."""
+        return len(self._past)
 
     def need(self, part: str, needed: bool = True) -> None:
         """Have a part of the step ready, if it is needed."""

@@ -100,6 +100,10 @@ class Lane:
         if self.ideal is not None:
             self.ideal.begin_at(frame)
 
+    def moved_to(self, realization: Realization, banks: object) -> None:
+        """It has, or soon will have, the coefficients of another realization."""
+        self.realization, self._banks = realization, banks
+
     @property
     def output(self) -> NDArray[np.float64]:
         """The last block (frames, outputs * channels), its first output's channels first; the next takes its place."""

@@ -8,14 +8,31 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from streamhost.errors import RequestError, nearest
+from streamhost.host.banks import prepare_banks
 from streamhost.host.carrying import Prepared, prepare_carry
 from streamhost.host.lane import Lane
 from streamhost.host.queue import Queue
-from streamhost.host.records import CHANGEOVERS, HEAR, LOGGED
+from streamhost.host.records import (
+    BANK,
+    BANK_FRAMES,
+    CHANGEOVERS,
+    HEAR,
+    IDEAL,
+    LOGGED,
+    MOST_LANES,
+    NOTHING,
+    PLACE,
+    SUBTRACT,
+    TAKE_SOURCE,
+)
+from streamhost.host.sources import Source
 from streamhost.program.carrying import frames_of_history, is_run
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
     from streamhost.host.engine import Host
+    from streamhost.realization import Realization
 
 FADE_S = 0.02
 """Of the changeover `fade`, unless said."""
@@ -108,6 +125,70 @@ class Plan:
             self._disturbed[change.lane] = frame
         return ticket
 
+    def move(self, lane: int, realizations: "Sequence[Realization]", frame: int = 0) -> int:
+        """Give a lane other coefficients: one set at once at a frame, or several, one every 32 frames, a ramp; its ticket.
+
+        A ramp's first set comes at the next frame that is a multiple of 32. The realizations have the diagram, the words
+        and the kernel of the lane's own, which the last of them takes the place of. RequestError where they do not.
+        """
+        host, moved = self._host, self._lane(lane)
+        banks = prepare_banks(moved, realizations)
+        frame = max(frame, host.frames)
+        if len(realizations) > 1:
+            frame = -(-frame // BANK_FRAMES) * BANK_FRAMES
+        host.need("act")
+        ticket = self._queue.put(host.begins + frame, BANK, lane=lane, count=len(realizations), argument=banks.address,
+                                 ideal_argument=banks.ideal_address, kept=(banks,))
+        moved.moved_to(realizations[-1], banks)
+        return ticket
+
+    def take(self, source: Source, frame: int = 0) -> int:
+        """Another source from a frame on; its ticket. RequestError where it has other channels."""
+        host = self._host
+        if source.kind != "device" and int(source.record["channels"][0]) != host.channels:
+            raise RequestError(f"{source.said} has {source.record['channels'][0]} channels, and this host has {host.channels}.")
+        host.need("act")
+        host.need("generate", source.kind != "device")
+        host.keep(source)
+        return self._queue.put(host.begins + max(frame, host.frames), TAKE_SOURCE, lane=-1, argument=source.address)
+
+    def subtract(self, what: int | str | None, raise_db: float = 0.0, frame: int = 0) -> int:
+        """From a frame on send to the monitor what is heard less another lane, or its "ideal", raised; None: less nothing."""
+        host = self._host
+        lane = NOTHING if what is None else IDEAL if what == "ideal" else int(what)
+        if lane >= 0:
+            self._lane(lane)
+        if not -200.0 <= raise_db <= 200.0:
+            raise RequestError(f"raise_db = {raise_db}: a difference is raised by at most 200 dB.")
+        host.need("act")
+        return self._queue.put(host.begins + max(frame, host.frames), SUBTRACT, lane=lane, value=10.0 ** (raise_db / 20.0))
+
+    def place(self, lane: Lane, slot: int | None = None, frame: int = 0) -> int:
+        """Run a lane more, from zero state at a frame on, in the next slot or in that of one that is not heard; its slot.
+
+        RequestError where there is no room, the lane does not fit, or what is heard would be lost.
+        """
+        host = self._host
+        slot = len(host.lanes) if slot is None else slot
+        if slot >= MOST_LANES:
+            raise RequestError(f"A host runs at most {MOST_LANES} lanes.")
+        if slot < len(host.lanes) and slot in (self._heard[-1][1], host.heard):
+            raise RequestError(f"Lane {slot + 1} is heard: change to another before it is replaced.")
+        host.check(lane)
+        frame = max(frame, host.frames)
+        host.adopt(lane, slot)
+        host.need("act")
+        host.need("mix")
+        host.need("ideal", lane.ideal is not None)
+        host.put_lane(slot, lane)
+        self._disturbed[slot] = frame
+        self._queue.put(host.begins + frame, PLACE, lane=slot, argument=lane.address, kept=(lane,))
+        return slot
+
+    def tend(self) -> None:
+        """Free what the step has done with; to be called now and then in long runs."""
+        self._queue.tend()
+
     @property
     def changed(self) -> tuple[Changed, ...]:
         """The changes that the step has made, oldest first, of the last 256 that it did."""
@@ -135,7 +216,11 @@ class Plan:
         if change.changeover != "carry" or old is lane:
             return None
         if not is_run(lane.realization.program):
-            return prepare_carry(old, lane)
+            prepared = prepare_carry(old, lane)
+            if prepared.past_frames > self._host.past_frames:
+                raise RequestError(f"Lane {change.lane + 1} holds {prepared.past_frames} frames of past input, and this host "
+                                   f"keeps {self._host.past_frames}. Use warm or fade.")
+            return prepared
         self._has_run(change.lane, frame)
         return None
 
