@@ -1,8 +1,9 @@
 """Test signals, the same on every machine.
 
-Every value is a 24-bit code k / 2**23 in float64, shape (frames, channels), 1.0 = full scale. Nothing here asks the
-machine's mathematical library: phases and noise are 64-bit integers, levels and ratios come from decimal arithmetic,
-and the sine is a polynomial of single operations, each of which is rounded alike everywhere.
+Every value is a 24-bit code k / 2**23 in float64, shape (frames, channels), 1.0 = full scale; only `turning` and
+`triangular`, of which measurements make finer ones, are not. Nothing here asks the machine's mathematical library:
+phases and noise are 64-bit integers, levels and ratios come from decimal arithmetic, and the sine is a polynomial of
+single operations, each of which is rounded alike everywhere.
 
 Levels are peaks: a sine of `peak_dbfs` = 0 is a full-scale sine and reads 0 dBFS.
 """
@@ -94,6 +95,30 @@ def sweep(frames: int, rate: float, frequencies: tuple[float, float], peak_dbfs:
     phase = np.zeros(frames, dtype=np.uint64)
     phase[1:] = np.add.accumulate(steps[:-1].astype(np.uint64))
     return _from_phase(phase, peak_dbfs, channels)
+
+
+def turning(frames: int, periods: int, window: int) -> Signal:
+    """sin(2 pi (periods n + 1/8) / window) from n = 0 on, (frames,), to within 3e-16: the same in every window, to the bit.
+
+    The eighth keeps samples from lying symmetric about a zero or a peak. `window` is below 2**31.
+    """
+    place = np.arange(frames, dtype=np.uint64) % np.uint64(window) * np.uint64(periods) % np.uint64(window)
+    whole, rest = divmod(_TURN, window)
+    phase = place * np.uint64(whole) + place * np.uint64(rest) // np.uint64(window)
+    return _sine(phase + np.uint64(_TURN // (8 * window)))
+
+
+def triangular(frames: int, seed: int) -> Signal:
+    """Values between -1 and 1 of triangular density, independent, (frames,): a dither of two steps from peak to peak."""
+    first, second = (random_words(int(start), frames) >> np.uint64(11) for start in random_words(seed, 2))
+    return (first.astype(np.float64) - second.astype(np.float64)) / 2.0**53
+
+
+def level(dbfs: float) -> float:
+    """10^(dbfs / 20), rounded once."""
+    with localcontext() as context:
+        context.prec = 40
+        return float(Decimal(10) ** (Decimal(dbfs) / 20))
 
 
 def peak_code(peak_dbfs: float) -> int:

@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from streamhost import measure
-from streamhost.commands.measuring import noise, overflow, response
+from streamhost.commands.measuring import float_, noise, overflow, response, tone
 from streamhost.commands.measuring.wave import Wave
 from streamhost.measure.bands import Band
 from streamhost.measure.limits import Verdict, limit_band, limit_signal, verdicts
@@ -65,6 +65,10 @@ def _overflow(asked: Asked) -> measure.Overflow:
     return measure.overflow(asked.realization, asked.x, quick=asked.quick, report=asked.report)
 
 
+def _tone(asked: Asked) -> measure.Tones:
+    return measure.tone(asked.realization, quick=asked.quick, report=asked.report)
+
+
 INSTRUMENTS = (
     Instrument("response", _response, response.lines, judged=lambda asked: _response(asked, judged_only=True),
                quick_judges=True),
@@ -72,6 +76,10 @@ INSTRUMENTS = (
                quick_judges=True),
     Instrument("overflow", _overflow, overflow.lines, overflow.waves, seconds=2.0,
                judged=lambda asked: measure.overflow(asked.realization, judged_only=True), quick_judges=True),
+    Instrument("tone", _tone, tone.lines, waves=tone.waves, seconds=4.0,
+               judged=lambda asked: measure.tone(asked.realization, [], idle=False)),
+    Instrument("float", lambda asked: measure.float_particulars(asked.realization, quick=asked.quick, report=asked.report),
+               float_.lines, seconds=1.5),
 )
 """In the order in which they run and are told."""
 

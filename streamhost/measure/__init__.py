@@ -1,6 +1,7 @@
 """Signals and realizations in, frozen results out. Nothing here plots or writes a file."""
 
 from streamhost.measure.deviation import Deviation, response_deviation
+from streamhost.measure.floats import FloatParticulars, float_particulars
 from streamhost.measure.limits import LIMITS, Limit, Verdict, limit_band, limit_signal, stated_limits, verdicts
 from streamhost.measure.measuring import Figures, Measured, Measurement, measure
 from streamhost.measure.noise_sum import Noise, noise_of
@@ -8,11 +9,12 @@ from streamhost.measure.overflows import Overflow, Recovery, Register, overflow
 from streamhost.measure.predicted import Prediction, predicted_noise
 from streamhost.measure.realized import BandDeviation, Response, response
 from streamhost.measure.rounding import OutputNoise, RoundingNoise, noise
+from streamhost.measure.tones import Tones, tone
 from streamhost.measure.whiteness import Whiteness
 
 __all__ = [
-    "LIMITS", "BandDeviation", "Deviation", "Figures", "Limit", "Measured", "Measurement", "Noise", "OutputNoise",
-    "Overflow", "Prediction", "Recovery", "Register", "Response", "RoundingNoise", "Verdict", "Whiteness",
-    "limit_band", "limit_signal", "measure", "noise", "noise_of", "overflow", "predicted_noise", "response",
-    "response_deviation", "stated_limits", "verdicts",
+    "LIMITS", "BandDeviation", "Deviation", "Figures", "FloatParticulars", "Limit", "Measured", "Measurement", "Noise",
+    "OutputNoise", "Overflow", "Prediction", "Recovery", "Register", "Response", "RoundingNoise", "Tones", "Verdict",
+    "Whiteness", "float_particulars", "limit_band", "limit_signal", "measure", "noise", "noise_of", "overflow",
+    "predicted_noise", "response", "response_deviation", "stated_limits", "tone", "verdicts",
 ]

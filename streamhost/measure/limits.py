@@ -95,6 +95,13 @@ def _headroom(result: Any) -> Iterator[Finding]:
     yield Finding(result.headroom_db, about=result.headroom_register)
 
 
+def _thd_n(result: Any) -> Iterator[Finding]:
+    if not result.judged:
+        yield Finding(None, result.reason)
+    for each in result.judged:
+        yield Finding(each.thd_n_db, each.reason, each.output, f"at {each.hz:.1f} Hz and {each.level_dbfs:g} dBFS")
+
+
 def _counted(count: Callable[[Realization], int]) -> Callable[[Realization], Iterator[Finding]]:
     return lambda realization: iter([Finding(float(count(realization)))])
 
@@ -105,6 +112,7 @@ LIMITS = (
     Limit("leak_db", "dB", "response", _leak),
     Limit("mask", "dB inside", "response", _mask, AT_LEAST, threshold=0.0),
     Limit("headroom_db", "dB", "overflow", _headroom, AT_LEAST),
+    Limit("thd_n_db", "dB", "tone", _thd_n),
     Limit("multiplications", "", "", _counted(lambda each: each.program.drawn.counts().multiplications)),
     Limit("memory_words", "words", "", _counted(lambda each: each.program.drawn.counts().delays)),
 )

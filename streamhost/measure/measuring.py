@@ -157,7 +157,7 @@ class Measurement:
             white=self._white(noise, output, channel),
             dc_lsb=_in_steps(noise.mean, realization) if isinstance(realization.format, Fixed) else None,
             peak_dbfs=peak_dbfs(found.peak),
-            difference_gain_db=None if found.ran_away else _listening_gain(found.difference_peak),
+            difference_gain_db=None if found.ran_away else listening_gain(found.difference_peak),
             channel=channel + 1 if realization.diagram.channels > 1 else None,
         )
 
@@ -215,7 +215,7 @@ def _in_steps(mean: float | None, realization: Realization) -> float | None:
     return None if mean is None else mean * 2.0**realization.format.output.word.fraction
 
 
-def _listening_gain(peak: float) -> int | None:
+def listening_gain(peak: float) -> int | None:
     """Whole dB, at most 150, that bring a peak to -12 dBFS or just below; negative where it is louder."""
     if peak == 0.0:
         return None

@@ -44,6 +44,11 @@ class Run:
         self._memory = self._realization.memory(self.channels)
         self._ideal_memory = Memory(self.ideal.program, self.channels, self._variant)
 
+    def restart(self) -> None:
+        """Back to zero state, frame 0."""
+        self._memory.reset()
+        self._ideal_memory.reset()
+
     def step(self, x: FloatArray) -> Block:
         """Run the next block (frames, channels), 1.0 = full scale."""
         frames = len(x)
