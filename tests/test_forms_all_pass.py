@@ -74,6 +74,20 @@ def test_the_third_order_half_band_filter() -> None:
     assert drawn(half_band, "wave-digital").counts() == Counts(1, 4, 3)
 
 
+@pytest.mark.parametrize("order", [3, 5, 7, 9])
+def test_half_band_butterworth_filters_have_the_published_coefficients(order: int) -> None:
+    """Sections (d + z^-2) / (1 + d z^-2), d = tan(k pi / 2N)^2: Gazsi, IEEE CAS-32, January 1985, for lattice wave digital
+    filters, and Vaidyanathan, Mitra & Neuvo, IEEE ASSP-34, 1986 (from memory; they follow from the poles +-j tan(k pi / 2N)).
+    A two-port multiplies by that, or by one less it where that is smaller."""
+    published = np.tan(np.arange(1, (order + 1) // 2) * np.pi / (2 * order)) ** 2
+    found = halves_of(butterworth(order, RATE / 4))
+    sections = [section for half in (found.first, found.second) for section in half.sections]
+    assert [section[1] for section in sections] == [0] * len(published)
+    np.testing.assert_allclose(sorted(float(section[2]) for section in sections), published, rtol=1e-14)
+    multipliers = np.sort(drawn(butterworth(order, RATE / 4), "wave-digital").values[:, 0])
+    np.testing.assert_allclose(multipliers, np.sort(np.minimum(published, 1 - published)), rtol=1e-14)
+
+
 @pytest.mark.parametrize(("order", "first", "second"), [(1, [1], []), (3, [1], [2]), (5, [2, 1], [2]), (7, [2, 1], [2, 2])])
 def test_poles_go_to_the_branches_by_turns(order: int, first: list[int], second: list[int]) -> None:
     found = halves_of(butterworth(order))
