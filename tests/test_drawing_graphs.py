@@ -4,7 +4,7 @@ from random import Random
 
 import diagram_examples as examples
 import pytest
-from drawing_reader import edges_of, expected_edges, faults_of_figure, faults_of_joints, page_of
+from drawing_reader import crossings, edges_of, expected_edges, faults_of_figure, faults_of_joints, page_of
 from random_diagrams import random_diagram
 
 from streamhost.diagram import Builder, Diagram, minus
@@ -41,6 +41,21 @@ def test_many_random_diagrams_are_drawn_as_they_are(seed: int) -> None:
 )
 def test_diagrams_by_hand(diagram: Diagram) -> None:
     check_drawn(diagram)
+
+
+def test_a_loop_hangs_from_a_straight_line() -> None:
+    """One pole: input, adder and output in a row, the delay and its gain on the way back."""
+    builder = Builder()
+    x, held = builder.input(), builder.delay("held")
+    y = builder.sum(x, builder.gain(held, "a", 0.5))
+    held.takes(y)
+    builder.output(y)
+    text = svg(builder.build())
+    rows = {kind: [(box.top + box.bottom) / 2 for box in page_of(text).boxes if box.kind == kind]
+            for kind in ("input", "sum", "output", "delay", "gain")}  # fmt: skip
+    assert rows["input"] == rows["sum"] == rows["output"]
+    assert rows["delay"] == rows["gain"] != rows["sum"]
+    assert crossings(page_of(text)) == 0
 
 
 def test_a_source_read_twice_a_loose_delay_and_a_loop_on_itself() -> None:

@@ -20,6 +20,11 @@ VALUES = ("table", "beside", "none")
 LOOSER = (1.0, 1.5, 2.25, 3.5)
 """How much wider the gaps become each time that the wires found no room."""
 
+IN_LINE = (0.5, 0.0)
+"""How much straighter the way from input to output is tried, the tidiest taken, of diagrams of up to FEW symbols."""
+
+FEW = 20
+
 WIDER = (1.0, 1.25)
 """How much further apart columns may stand to make room for values."""
 
@@ -169,12 +174,16 @@ def without_places(sheet: Sheet) -> Layout:
     """A sheet that is placed here, looser until its wires find room."""
     from streamhost.drawing.placer import placed
 
-    for looseness in LOOSER[:-1]:
-        try:
-            return laid_out(placed(sheet, looseness))
-        except NoWayError:
-            continue
-    return laid_out(placed(sheet, LOOSER[-1]))
+    for looseness in LOOSER:
+        found = []
+        for in_line in IN_LINE if len(sheet.symbols) <= FEW else IN_LINE[:1]:
+            try:
+                found.append(laid_out(placed(sheet, looseness, in_line)))
+            except NoWayError as error:
+                refused = error
+        if found:
+            return min(found, key=lambda layout: layout.disorder)
+    raise refused
 
 
 def short_equation(diagram: Diagram) -> str:

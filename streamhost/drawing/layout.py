@@ -13,6 +13,9 @@ from streamhost.drawing.symbols import Cell, taken
 MARGIN = 14
 """Cells around the symbols in which wires may still run."""
 
+CORNERS = frozenset({0b0011, 0b0110, 0b1100, 0b1001})
+CROSSING = 3
+
 TURNS = 3
 HIT = 40.0
 
@@ -31,6 +34,13 @@ class Layout:
     def is_clear(self) -> bool:
         """Whether every name and every value has a place where it touches nothing."""
         return not any(label.hit for label in self.labels)
+
+    @property
+    def disorder(self) -> int:
+        """How little the eye likes it: bends, and crossings, of which one is as bad as CROSSING bends."""
+        masks = [mask for net in self.nets.values() for mask in net.arms.values()]
+        cells = [cell for net in self.nets.values() for cell in net.arms]
+        return sum(mask in CORNERS for mask in masks) + CROSSING * (len(cells) - len(set(cells)))
 
 
 def laid_out(sheet: Sheet) -> Layout:

@@ -10,6 +10,8 @@ WITH_DELAY = 1
 WITHOUT_DELAY = 4
 BARE = 3
 """Of a wire without any symbol that could be turned round: it would go all the way round."""
+INTO_PILL = 1
+"""More of a chain into an adder of many inputs, which has them all on the left."""
 PASSES = 6
 
 
@@ -52,6 +54,7 @@ def walked(sheet: Sheet, hub: int, first: int, after: dict[int, list[int]], link
         here = after[here][0]
     delayed = any(sheet.symbols[i].kind == "delay" for i in (hub, *symbols))
     cost = WITHOUT_DELAY if not delayed else WITH_DELAY if symbols else BARE
+    cost += INTO_PILL if symbols and sheet.symbols[here].kind == "pill" else 0
     return Chain(hub, here, tuple(symbols), cost)
 
 

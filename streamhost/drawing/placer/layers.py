@@ -16,12 +16,14 @@ Edge = tuple[int, int]
 class Layered:
     """Vertices with their layers; the first ones are the symbols, the others bend points of wires.
 
-    `edges` join vertices of neighbouring layers. `turned` are the symbols that face west.
+    `edges` join vertices of neighbouring layers. `turned` are the symbols that face west; `loose` the edges at both ends
+    of what runs backwards, whose wires turn there anyway.
     """
 
     layer: tuple[int, ...]
     edges: tuple[Edge, ...]
     turned: frozenset[int]
+    loose: frozenset[Edge]
     symbols: int
 
 
@@ -31,6 +33,7 @@ def layered(sheet: Sheet) -> Layered:
     rank = {hub: i for i, hub in enumerate(ordered_hubs(chains))}
     edges: list[Edge] = []
     turned: set[int] = set()
+    loose: set[Edge] = set()
     vertices = len(sheet.symbols)
     for chain in chains:
         if rank[chain.source] < rank[chain.sink]:
@@ -40,9 +43,10 @@ def layered(sheet: Sheet) -> Layered:
             turned.update(chain.symbols)
             edges += steps((chain.sink, *reversed(chain.symbols), vertices))
             edges.append((chain.source, vertices))
+            loose |= {(chain.source, vertices), (chain.sink, chain.symbols[-1])}
             vertices += 1
     layer = shortest(sheet, vertices, edges)
-    return with_steps(len(sheet.symbols), layer, edges, turned)
+    return with_steps(len(sheet.symbols), layer, edges, turned, loose)
 
 
 def steps(path: Sequence[int]) -> list[Edge]:
@@ -83,14 +87,17 @@ def integers(weights: "np.typing.NDArray[np.float64]", least: Sequence[tuple[int
     return [round(value) for value in result.x]
 
 
-def with_steps(symbols: int, layer: Sequence[int], edges: Sequence[Edge], turned: set[int]) -> Layered:
+def with_steps(symbols: int, layer: Sequence[int], edges: Sequence[Edge], turned: set[int], loose: set[Edge]) -> Layered:
     """Edges over several layers cut at every layer between."""
-    layers, short = list(layer), []
+    layers = list(layer)
+    short: list[Edge] = []
+    turning: set[Edge] = set()
     for a, b in edges:
-        here = a
+        here, before = a, len(short)
         for between in range(layer[a] + 1, layer[b]):
             layers.append(between)
             short.append((here, len(layers) - 1))
             here = len(layers) - 1
         short.append((here, b))
-    return Layered(tuple(layers), tuple(short), frozenset(turned), symbols)
+        turning |= {short[before]} if (a, b) in loose else set()
+    return Layered(tuple(layers), tuple(short), frozenset(turned), frozenset(turning), symbols)

@@ -7,7 +7,7 @@ from math import ceil, inf
 
 import numpy as np
 
-from streamhost.drawing.placer.layers import Layered, integers, layered
+from streamhost.drawing.placer.layers import Edge, Layered, integers, layered
 from streamhost.drawing.placer.order import Columns, ordered
 from streamhost.drawing.sheet import Sheet
 from streamhost.drawing.symbols import GRID, WEST, Symbol
@@ -23,19 +23,27 @@ SMALL_STEP = 4
 STRAIGHTNESS = (1, 2, 6)
 """What a cell of height costs between two symbols, a symbol and a bend point, two bend points."""
 
+LOOSE = 0.25
+"""The same where a wire turns back."""
 
-def placed(sheet: Sheet, looseness: float = 1.0) -> Sheet:
-    """The sheet with a cell and a face for every symbol; `looseness` widens the gaps."""
+IN_LINE = frozenset({"input", "output", "delay"})
+
+
+def placed(sheet: Sheet, looseness: float = 1.0, in_line: float = 0.0) -> Sheet:
+    """The sheet with a cell and a face for every symbol; `looseness` widens the gaps.
+
+    `in_line`: what a cell of height costs more beside an input, an output or a delay.
+    """
     graph = layered(sheet)
     columns = ordered(graph)
-    rows = heights(sheet, graph, columns, looseness)
+    rows = heights(sheet, graph, columns, looseness, in_line)
     across = column_places(sheet, graph, columns, rows, looseness)
     symbols = [replace(symbol, at=(across[graph.layer[i]], rows[i]), face=WEST if i in graph.turned else symbol.face)
                for i, symbol in enumerate(sheet.symbols)]
     return replace(sheet, symbols=tuple(symbols), trunks={})
 
 
-def heights(sheet: Sheet, graph: Layered, columns: Columns, looseness: float) -> list[int]:
+def heights(sheet: Sheet, graph: Layered, columns: Columns, looseness: float, in_line: float) -> list[int]:
     """The rows of least total height difference along the edges, the order of each column kept."""
     count = len(graph.layer)
     gaps = [(a, b, round(distance(sheet, graph, a, b) * looseness))
@@ -45,18 +53,27 @@ def heights(sheet: Sheet, graph: Layered, columns: Columns, looseness: float) ->
     for a, b in graph.edges:
         # |v[a] - v[b]| = top - bottom with top >= both >= bottom
         bottom, top = len(weights), len(weights) + 1
-        weight = STRAIGHTNESS[(a >= graph.symbols) + (b >= graph.symbols)]
+        weight = straightness(sheet, graph, (a, b), in_line)
         weights += [-weight, weight]
         least += [(v, top, 0) for v in (a, b)] + [(bottom, v, 0) for v in (a, b)]
     return straightened(integers(np.array(weights), least)[:count], graph, gaps)
+
+
+def straightness(sheet: Sheet, graph: Layered, edge: Edge, in_line: float) -> float:
+    """What a cell of height between two vertices costs."""
+    if edge in graph.loose:
+        return LOOSE
+    main = any(v < graph.symbols and sheet.symbols[v].kind in IN_LINE for v in edge)
+    return STRAIGHTNESS[sum(v >= graph.symbols for v in edge)] + (in_line if main else 0.0)
 
 
 def straightened(rows: list[int], graph: Layered, gaps: Sequence[tuple[int, int, int]]) -> list[int]:
     """Vertices moved to the row of a neighbour where that takes small steps out of wires and there is room."""
     others: list[list[int]] = [[] for _ in rows]
     for a, b in graph.edges:
-        others[a].append(b)
-        others[b].append(a)
+        if (a, b) not in graph.loose:
+            others[a].append(b)
+            others[b].append(a)
     above, below = {b: (a, gap) for a, b, gap in gaps}, {a: (b, gap) for a, b, gap in gaps}
     moved = True
     while moved:
