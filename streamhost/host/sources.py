@@ -157,7 +157,7 @@ def _dc(asked: _Asked) -> Source:
 
 
 def pink_sections(rate: float) -> list[tuple[float, float]]:
-    """(zero, pole) of the sections that make pink noise from white: -3 dB an octave from 10 Hz up, within 0.5 dB.
+    """(zero, pole) of the sections that make pink noise from white: -3 dB an octave from 20 Hz to 10 kHz, within 0.6 dB.
 
     Poles at equal ratios from 10 Hz to half the rate, a zero half a ratio above each, mapped by exp(-2 pi f / rate): a
     slope of half of what a pole gives, as the ladder of equal resistors and capacitors has it.

@@ -16,7 +16,7 @@ def gather(host, lane, carry, channel):
     for k in range(carry.pasts):
         frame = host.frame - word(carry.past, 2 * k + 1)
         v = real(host.input_recent, frame % host.input_recent_frames * host.channels + channel)
-        set_real(carry.given, carry.before + k, v if frame >= host.begins else 0.0)
+        set_real(carry.given, carry.before + k, v if frame >= host.begins and v == v else 0.0)
 
 
 @helper

@@ -2,20 +2,28 @@
 
 TEXT = '''
 @helper
+def into_ring(ring, length, frame, from_, frames, columns):
+    at = frame % length * columns
+    for i in range(frames):
+        for j in range(columns):
+            set_real(ring, at + j, real(from_, i * columns + j))
+        at = at + columns if at + columns < length * columns else 0
+
+
+@helper
 def bring_in(host, in_, done, frames):
     channels, given, x_ = host.channels, host.input_channels, host.x + done * host.channels * 8
     if record(host.source, SOURCE).kind != {device}:
         call_part(host.generate, host.address, x_, frames, 0)
     else:
-        for i in range(frames * channels):
-            at, v = (done + i // channels) * given + min(i % channels, given - 1), 0.0
-            if in_ != 0 and given > 0:
-                v = real(in_, at) if host.sample_bytes == 8 else np.float64(single(in_, at))
-            set_real(x_, i, v)
-    for i in range(frames * channels):
-        v = real(x_, i)
-        at = (host.frame + i // channels) % host.input_recent_frames * channels + i % channels
-        set_real(host.input_recent, at, v if v == v else 0.0)
+        empty, wide = in_ == 0 or given == 0, host.sample_bytes == 8
+        for i in range(frames):
+            for c in range(channels):
+                at, v = (done + i) * given + min(c, given - 1), 0.0
+                if not empty:
+                    v = real(in_, at) if wide else np.float64(single(in_, at))
+                set_real(x_, i * channels + c, v)
+    into_ring(host.input_recent, host.input_recent_frames, host.frame, x_, frames, channels)
 
 
 @helper
@@ -66,9 +74,7 @@ def run_all(host, done, frames):
         if lane.ideal != 0:
             call_part(host.ideal, host.address, lane_, done, frames)
         if lane.recent != 0:
-            for i in range(frames * columns):
-                row = (host.frame + i // columns) % host.recent_frames
-                set_real(lane.recent, row * columns + i % columns, real(y_, i))
+            into_ring(lane.recent, host.recent_frames, host.frame, y_, frames, columns)
         shown.frame = lane.frame
         before, now = now, nanoseconds()
         shown.nanoseconds += now - before

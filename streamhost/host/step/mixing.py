@@ -17,9 +17,10 @@ def fade(host, done, frames):
     if host.fade_frames > 0 and before_ != 0:
         before = record(before_, LANE)
         first, match = before.output + done * width * 8, before.match
-        for i in range(min(frames, left) * width):
-            share = np.float64(host.fade_frames - left + i // width + 1) / np.float64(host.fade_frames + 1)
-            set_real(into, i, real(into, i) * share + real(first, i) * match * (1.0 - share))
+        for i in range(min(frames, left)):
+            share = np.float64(host.fade_frames - left + i + 1) / np.float64(host.fade_frames + 1)
+            for j in range(i * width, (i + 1) * width):
+                set_real(into, j, real(into, j) * share + real(first, j) * match * (1.0 - share))
     if frames >= left:
         host.fade_frames = 0
 
@@ -42,21 +43,23 @@ def mix(host_, done, frames, unused):
                 columns, first, doubled = ideal.columns, ideal.output, ideal.doubled
             else:
                 match, first = 0.0, 0
-    for i in range(frames):
-        row = (host.frame + i) % max(host.recent_frames, 1)
+    raise_by, heard_, sent_ = host.raise_by, host.heard, host.sent
+    at = host.frame % max(host.recent_frames, 1)
+    for i in range(done, done + frames):
         for c in range(channels):
-            v = real(host.heard, (done + i) * width + output + c)
+            v = real(heard_, i * width + output + c)
             if first != 0:
-                at = (done + i) * columns + output + c
-                w = real(first, at)
+                place = i * columns + output + c
+                v -= real(first, place) * match
                 if doubled != 0:
-                    w += real(first, at + width)
-                v = (v - w * match) * host.raise_by
-            set_real(host.sent, (done + i) * channels + c, v)
+                    v -= real(first, place + width) * match
+                v *= raise_by
+            set_real(sent_, i * channels + c, v)
             if host.sent_recent != 0:
-                set_real(host.sent_recent, row * channels + c, v)
+                set_real(host.sent_recent, at * channels + c, v)
         if host.heard_recent != 0:
             for j in range(width):
-                set_real(host.heard_recent, row * width + j, real(host.heard, (done + i) * width + j))
+                set_real(host.heard_recent, at * width + j, real(heard_, i * width + j))
+        at = at + 1 if at + 1 < host.recent_frames else 0
     return 0
 '''

@@ -9,9 +9,11 @@ def keep(host_, frames, unused, nothing):
     if at + frames - load_acquire(host.control + {drained_at}) > length:
         meters.overruns += frames
         return 0
+    row = at % length
     for i in range(frames):
         for j in range(width):
-            set_real(host.recording, (at + i) % length * width + j, real(host.heard, i * width + j))
+            set_real(host.recording, row * width + j, real(host.heard, i * width + j))
+        row = row + 1 if row + 1 < length else 0
     store_release(host.meters + {recorded_at}, at + frames)
     return 0
 '''
