@@ -1,7 +1,8 @@
 """What the compiled step takes of a block's time: a script to be run by hand, since no test is timed.
 
-Eight order-8 lanes, four of them float and four fixed point with their meters, one heard and sent through the guard, blocks of
-64 frames at 48 kHz on the clock, as fast as they go. Printed are the step's own times against the deadline, and each lane's load.
+Eight order-8 lanes, four of them float and four fixed point with their meters, one heard and sent through the guard, blocks
+of 64 frames at 48 kHz on the clock, as fast as they go. Printed are the times of the step against the deadline, and the load
+of each lane.
 
     python tests/benchmarks/step.py [--seconds 60] [--block 64] [--channels 2] [--ideal]
 
