@@ -10,9 +10,13 @@ from test_host_step import divided
 
 import streamhost as sh
 from streamhost.errors import RequestError
-from streamhost.host import Change, Changed, Device, Host, Lane
+from streamhost.host import Change, Changed, Device, Guard, Host, Lane
+from streamhost.host.banks import ramp
+from streamhost.host.clock import run_on_clock
 from streamhost.host.plan import parse_change
+from streamhost.host.shared import Shared, layout
 from streamhost.host.sources import generated
+from streamhost.host.step import SIGNATURE
 from streamhost.host.switching import switched
 from streamhost.program.carrying import is_run
 from streamhost.realization import Realization
@@ -171,6 +175,45 @@ def test_a_run_that_begins_late_is_the_same_run() -> None:
     assert everything([128], begins=2**32 - 1000) == whole()
 
 
+@pytest.mark.slow
+def test_an_hour_that_begins_just_before_frame_2_to_32() -> None:
+    """Equal by the hash of every state to the same hour begun at 0 and run in the blocks of a file."""
+    hashes = []
+    for begins, block in ((2**32 - 1000, 128), (0, 16384)):
+        lanes = [Lane(realized(form, format), 1) for form, format in (("direct-1", "float32"), ("transposed-2", "Q1.23"))]
+        host = Host(lanes, block, device=Device(0, 1), source=generated("white", RATE, 1), begins=begins)
+        for k in range(60):
+            host.plan.change(Change(k * 60 * RATE + 777, k % 2, ("carry", "warm", "cold")[k % 3]))
+        run_on_clock(host, 3600 * RATE, real_time=False)
+        hashes.append([lane.state_hash() for lane in lanes])
+        assert len(host.plan.changed) == 60
+    assert hashes[0] == hashes[1]
+
+
+# As a sound card drives it
+
+
+def test_a_card_may_ask_for_more_frames_than_a_block_and_tells_of_gaps() -> None:
+    """The callback of PortAudio: in, out, frames, time, flags (1, 2 input; 4, 8 output under- and overflow), user data."""
+    width, x = 2, X[:1000].astype(np.float32)
+    memory = bytearray(layout(width, width, 256, 0).itemsize)  # as of memory that processes share
+    host = Host([Lane(realized("direct-1", "float32"), 2)], 64, device=Device(2, 2, float32=True), guard=Guard(start_db=0.0),
+                shared=Shared(width, width, 256, 0, memory))
+    host.come_up()
+    out, call = np.zeros_like(x), SIGNATURE(host.callback)
+    for start, end, flags in ((0, 700, 4), (700, 701, 2), (701, 1000, 16)):
+        assert call(x[start:].ctypes.data, out[start:].ctypes.data, end - start, None, flags, host.address) == 0
+    alone = fresh(realized("direct-1", "float32"), x.astype(np.float64))
+    assert out.tobytes() == alone.astype(np.float32).tobytes()
+    seen = Shared(width, width, 256, 0, memory)
+    meters = seen.meters[0]
+    assert (meters["callbacks"], meters["frame"], meters["output_gaps"], meters["input_gaps"]) == (3, 1000, 1, 1)
+    assert np.array_equal(np.roll(seen.heard, -1000, axis=0), alone[-256:])
+    seen.control["mute"] = 1
+    assert call(x.ctypes.data, out.ctypes.data, 1000, None, 0, host.address) == 0
+    assert not out.any()
+
+
 # Coefficients, lanes, what is planned
 
 
@@ -187,6 +230,8 @@ def test_a_ramp_takes_its_coefficients_every_32_frames_under_the_state_that_is()
         alone.step(X[start:end])
         parts.append(moved.output.copy())
     assert lane.output.tobytes() == np.concatenate(parts).tobytes()
+    assert ramp(lambda value: value, 1000.0, 1600.0, 161)[-2:] == [1500.0, 1600.0]  # type: ignore[arg-type, return-value]
+    assert len(ramp(lambda value: value, 1000.0, 1600.0, 161)) == 6  # type: ignore[arg-type, return-value]
     with pytest.raises(RequestError, match="another diagram or other words"):
         host.plan.move(0, [realized("direct-2", "float32")])
 

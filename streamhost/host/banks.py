@@ -1,6 +1,6 @@
 """Sets of coefficients that a lane takes one after the other under the kernel and the state that it has."""
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -8,6 +8,7 @@ from numpy.typing import NDArray
 
 from streamhost.errors import RequestError
 from streamhost.host.lane import Lane
+from streamhost.host.records import BANK_FRAMES
 from streamhost.program.ideal import ideal_program
 from streamhost.program.native.kernel import Memory, Variant, kernel_source
 from streamhost.realization import Realization
@@ -43,3 +44,9 @@ def prepare_banks(lane: Lane, realizations: Sequence[Realization]) -> Banks:
     if lane.ideal is None:
         return Banks(codes, np.zeros(1))
     return Banks(codes, np.array([Memory(ideal_program(each.program), lane.channels).coefficients for each in realizations]))
+
+
+def ramp(make: Callable[[float], Realization], first: float, last: float, frames: int) -> list[Realization]:
+    """What a parameter makes on its way in a straight line from one value, where it is, to another: one every 32 frames."""
+    count = max(1, -(-frames // BANK_FRAMES))
+    return [make(last if k == count else first + (last - first) * k / count) for k in range(1, count + 1)]
