@@ -1,5 +1,6 @@
 """The instruments of `measure`, and how limits are checked with them."""
 
+import json
 from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass
 from typing import Any
@@ -8,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from streamhost import measure
-from streamhost.commands.measuring import float_, noise, overflow, response, tone
+from streamhost.commands.measuring import float_, limit_cycles, noise, overflow, response, tone
 from streamhost.commands.measuring.wave import Wave
 from streamhost.measure.bands import Band
 from streamhost.measure.limits import Verdict, limit_band, limit_signal, verdicts
@@ -34,7 +35,19 @@ class Asked:
     report: Report = unheard
 
 
+@dataclass(frozen=True)
+class Document:
+    """A text that belongs to a result, for a file of that name behind the preset's: "certificate.json"."""
+
+    name: str
+    text: str
+
+
 def _no_waves(result: Any) -> Iterator[Wave]:
+    return iter(())
+
+
+def _no_documents(result: Any) -> Iterator[Document]:
     return iter(())
 
 
@@ -42,14 +55,15 @@ def _no_waves(result: Any) -> Iterator[Wave]:
 class Instrument:
     """`name`: its key in JSON. `run`: its result, a frozen dataclass. `lines`: what that says. `waves`: audio in it.
 
-    `seconds`: about what it takes, for the progress line. `judged`: a run that gives the figures of its limits and no
-    more, where that is less work. `quick_judges`: a quick run gives the same figures for its limits.
+    `documents`: texts in it. `seconds`: about what it takes, for the progress line. `judged`: a run that gives the figures of
+    its limits and no more, where that is less work. `quick_judges`: a quick run gives the same figures for its limits.
     """
 
     name: str
     run: Callable[[Asked], Any]
     lines: Callable[[Any], Iterator[str]]
     waves: Callable[[Any], Iterator[Wave]] = _no_waves
+    documents: Callable[[Any], Iterator[Document]] = _no_documents
     seconds: float = 1.0
     judged: Callable[[Asked], Any] | None = None
     quick_judges: bool = False
@@ -69,6 +83,15 @@ def _tone(asked: Asked) -> measure.Tones:
     return measure.tone(asked.realization, quick=asked.quick, report=asked.report)
 
 
+def _certificate(result: measure.LimitCycles) -> Iterator[Document]:
+    """What was proven, and the script that checks it again."""
+    from streamhost.measure.cycles.certificate import certificate, script
+
+    if result.sections:
+        yield Document("certificate.json", json.dumps(certificate(result), indent=1) + "\n")
+        yield Document("recheck.py", script())
+
+
 INSTRUMENTS = (
     Instrument("response", _response, response.lines, judged=lambda asked: _response(asked, judged_only=True),
                quick_judges=True),
@@ -76,6 +99,10 @@ INSTRUMENTS = (
                quick_judges=True),
     Instrument("overflow", _overflow, overflow.lines, overflow.waves, seconds=2.0,
                judged=lambda asked: measure.overflow(asked.realization, judged_only=True), quick_judges=True),
+    Instrument(
+        "limit_cycles", lambda asked: measure.limit_cycles(asked.realization, quick=asked.quick, report=asked.report),
+        limit_cycles.lines, limit_cycles.waves, _certificate, seconds=10.0,
+    ),
     Instrument("tone", _tone, tone.lines, waves=tone.waves, seconds=4.0,
                judged=lambda asked: measure.tone(asked.realization, [], idle=False)),
     Instrument("float", lambda asked: measure.float_particulars(asked.realization, quick=asked.quick, report=asked.report),

@@ -1,4 +1,4 @@
-"""The files that `measure` writes: audio of worst cases, and the figures' place."""
+"""The files that `measure` writes: audio of worst cases, documents of results."""
 
 from collections.abc import Sequence
 from pathlib import Path
@@ -6,7 +6,7 @@ from typing import Any
 
 from streamhost.commands.common import check_folder, check_new, make_folder
 from streamhost.commands.instruments import Asked, Instrument
-from streamhost.files import AudioWriter
+from streamhost.files import AudioWriter, write_text_atomic
 
 
 class WaveFolder:
@@ -24,11 +24,11 @@ class WaveFolder:
         if self._folder is None:
             return
         check_folder(self._folder)
-        for path in sorted(path for each in instruments for path in self._folder.glob(f"{self._stem}-{each.name}-*.wav")):
+        for path in sorted(path for each in instruments for path in self._folder.glob(f"{self._stem}-{each.name}-*")):
             check_new(path, input, force=force)
 
     def write(self, instrument: Instrument, result: Any) -> list[Path]:
-        """The audio of a result, each file whole or not at all; the files."""
+        """The audio and the documents of a result, each file whole or not at all; the files."""
         written = []
         for wave in instrument.waves(result) if self._folder is not None else ():
             assert self._folder is not None, "without a folder nothing is written"
@@ -38,5 +38,11 @@ class WaveFolder:
             with AudioWriter(path, rate=round(self._rate), channels=channels, subtype="float", frames_expected=frames,
                              overwrite=self._force) as writer:
                 writer.write(wave.samples)
+            written.append(path)
+        for document in instrument.documents(result) if self._folder is not None else ():
+            assert self._folder is not None, "without a folder nothing is written"
+            make_folder(self._folder)
+            path = self._folder / f"{self._stem}-{instrument.name}-{document.name}"
+            write_text_atomic(path, document.text, overwrite=self._force)
             written.append(path)
         return written

@@ -74,6 +74,12 @@ def norms_to_output(diagram: Diagram, sources: Sequence[int], channel: int = 0, 
     return _norms(fans.to_output(diagram, sources, channel, output=output))
 
 
+def absolute_sums(fan: Fan) -> FloatArray:
+    """The L1 norm of each response of a fan, never too small; infinite where it does not die out or could not be bounded."""
+    l1, slack = _absolute_sums(follow(fan))
+    return np.where(np.isfinite(slack), l1, inf)
+
+
 def powers_from_input(diagram: Diagram, channel: int = 0, *, input: int = 0,
                       nodes: Sequence[int] | None = None) -> FloatArray:
     """The power that white noise of power 1 at an input gives at nodes, (nodes,): L2^2, without the rest."""

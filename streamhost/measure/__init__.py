@@ -1,5 +1,6 @@
 """Signals and realizations in, frozen results out. Nothing here plots or writes a file."""
 
+from streamhost.measure.cycles import LimitCycles, limit_cycles
 from streamhost.measure.deviation import Deviation, response_deviation
 from streamhost.measure.floats import FloatParticulars, float_particulars
 from streamhost.measure.limits import LIMITS, Limit, Verdict, limit_band, limit_signal, stated_limits, verdicts
@@ -13,8 +14,8 @@ from streamhost.measure.tones import Tones, tone
 from streamhost.measure.whiteness import Whiteness
 
 __all__ = [
-    "LIMITS", "BandDeviation", "Deviation", "Figures", "FloatParticulars", "Limit", "Measured", "Measurement", "Noise",
-    "OutputNoise", "Overflow", "Prediction", "Recovery", "Register", "Response", "RoundingNoise", "Tones", "Verdict",
-    "Whiteness", "float_particulars", "limit_band", "limit_signal", "measure", "noise", "noise_of", "overflow",
+    "LIMITS", "BandDeviation", "Deviation", "Figures", "FloatParticulars", "Limit", "LimitCycles", "Measured", "Measurement",
+    "Noise", "OutputNoise", "Overflow", "Prediction", "Recovery", "Register", "Response", "RoundingNoise", "Tones", "Verdict",
+    "Whiteness", "float_particulars", "limit_band", "limit_cycles", "limit_signal", "measure", "noise", "noise_of", "overflow",
     "predicted_noise", "response", "response_deviation", "stated_limits", "tone", "verdicts",
 ]

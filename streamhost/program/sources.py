@@ -5,7 +5,7 @@ The model: each error is white, uniform over the values it can take, uncorrelate
 is made once and passed on through delays is one source seen at several places.
 """
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from math import inf
 
 import numpy as np
@@ -21,11 +21,15 @@ FloatArray = NDArray[np.float64]
 
 @dataclass(frozen=True)
 class Source:
-    """One white error: variance and mean in units of full scale (squared), and the (node, delay) at which it is added."""
+    """One white error: variance and mean in units of full scale (squared), and the (node, delay) at which it is added.
+
+    `largest`: the magnitude that it never exceeds.
+    """
 
     label: str
     variance: float
     mean: float
+    largest: float
     places: tuple[tuple[int, int], ...]
 
 
@@ -42,6 +46,16 @@ def traced_roundings(program: Program) -> tuple[int, ...]:
 def noise_sources(program: Program, channel: int = 0) -> tuple[Source, ...]:
     """The sources of a fixed-point program that add noise in one channel, in evaluation order."""
     return _Finder(program, channel).find()
+
+
+def separate_sources(program: Program, channel: int = 0) -> tuple[Source, ...]:
+    """The same for a bound that is easy to check: more sources and larger errors than there are, never fewer or smaller.
+
+    Each place has an error of its own, a floor and a truncation lose up to a whole step, and what a register, a state or a
+    saturating accumulator holds may have any low bits.
+    """
+    found = _Finder(program, channel, plain=True).find()
+    return tuple(replace(source, places=(place,)) for source in found for place in source.places)
 
 
 def noise_spectrum(program: Program, frequencies: FloatArray, channel: int = 0, output: int = 0) -> FloatArray:
@@ -80,12 +94,24 @@ def rounding_moments(drop: int, rounding: str) -> tuple[float, float]:
     return 1 / 12 + least**2 / 6, 0.0
 
 
+def largest_error(drop: int, rounding: str, *, plain: bool = False) -> float:
+    """The largest magnitude of rounded minus exact, in steps of the result: half a step, or all of one but the last bit.
+
+    `plain`: or all of one.
+    """
+    if drop <= 0:
+        return 0.0
+    if rounding in ("floor", "toward-zero"):
+        return 1.0 if plain else 1.0 - 2.0**-drop
+    return 0.5
+
+
 class _Finder:
     """Walks a program once and gathers its sources; `zeros` counts the low bits of each value that are always 0."""
 
-    def __init__(self, program: Program, channel: int) -> None:
+    def __init__(self, program: Program, channel: int, *, plain: bool = False) -> None:
         assert isinstance(program.format, Fixed) and program.stored is not None, "fixed point has sources of this kind"
-        self.program, self.nodes = program, program.nodes
+        self.program, self.nodes, self.plain = program, program.nodes, plain
         self.codes = [row[min(channel, len(row) - 1)] for row in program.stored.codes]
         self.zeros: dict[int, float] = {}
         self.found: dict[object, Source] = {}
@@ -113,6 +139,8 @@ class _Finder:
             self.zeros[index] = 0.0 if isinstance(node, Input | Residue) else self.zeros[node.reads[0]]
 
     def stored_zeros(self, index: int) -> float:
+        if self.plain:
+            return 0.0
         while isinstance(node := self.nodes[index], Delay):
             index = node.source
         arithmetic = self.program.arithmetic[index]
@@ -131,22 +159,24 @@ class _Finder:
         """A source of an error that drops so many bits, in steps of `step`."""
         if drop > 0 and drop != inf:
             variance, mean = rounding_moments(int(drop), rounding)
-            self.merge(key, Source(label, variance * step**2, sign * mean * step, places))
+            largest = largest_error(int(drop), rounding, plain=self.plain) * step
+            self.merge(key, Source(label, variance * step**2, sign * mean * step, largest, places))
 
     def merge(self, key: object, source: Source) -> None:
         before = self.found.get(key)
         places = source.places if before is None else before.places + source.places
-        self.found[key] = Source(source.label, source.variance, source.mean, places)
+        self.found[key] = replace(source, places=places)
 
     def visit_round(self, index: int, arithmetic: RoundArithmetic) -> None:
         node = self.nodes[index]
         assert isinstance(node, Round), "a rounding has a Round"
         quantizer, step = arithmetic.quantizer, 2.0**-arithmetic.quantizer.word.fraction
         drop = max(0.0, arithmetic.drop - self.zeros[node.source])
-        self.zeros[index] = max(0.0, -arithmetic.drop)
+        self.zeros[index] = 0.0 if self.plain else max(0.0, -arithmetic.drop)
         if quantizer.dither and arithmetic.drop > 0:
             variance = (1 - 4.0**-arithmetic.drop) / 4
-            self.merge(index, Source(node.label, variance * step**2, 0.0, ((index, 0),)))
+            largest = (1.0 + largest_error(arithmetic.drop, quantizer.rounding)) * step
+            self.merge(index, Source(node.label, variance * step**2, 0.0, largest, ((index, 0),)))
             return
         source, delay = self.behind_delays(node.source)
         self.add((source, quantizer), node.label, drop, quantizer.rounding, step, ((index, delay),))
@@ -173,7 +203,8 @@ class _Finder:
             zeros, drop = zeros + max(0, term.shift), at + max(0, -term.shift) - fraction
             self.add((index, k, "term"), label, drop - zeros, "floor", 2.0**-fraction, ((index, 0),), term.sign)
             least = min(least, max(0.0, zeros - drop))
-        self.zeros[index] = least
+        saturates = arithmetic.accumulator.word is not None and arithmetic.accumulator.overflow == "saturate"
+        self.zeros[index] = 0.0 if self.plain and saturates else least
 
     def visit_taps(self, index: int, arithmetic: TapsArithmetic) -> None:
         node = self.nodes[index]

@@ -1,8 +1,9 @@
 """Generated text as machine code: a small part of Python, translated to LLVM inside a function that Numba compiles.
 
-The text is Python that anyone can read: assignments, counted loops, `if`, the operators, the calls of `operations.CALLS`,
-arrays declared by `carray(address, lengths, kind)`, pairs, and functions of its own that end with `return`. Every value has one
-kind, which conversions in the text fix, so that no type need be inferred, which is what takes long in Numba's own front end.
+The text is Python that anyone can read: assignments, counted loops, `while`, `if`, the operators, the calls of
+`operations.CALLS`, arrays declared by `carray(address, lengths, kind)`, pairs, and functions of its own that end with `return`.
+Every value has one kind, which conversions in the text fix, so that no type need be inferred, which is what takes long in
+Numba's own front end.
 """
 # mypy: disallow-untyped-decorators=False
 

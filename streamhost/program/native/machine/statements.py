@@ -52,6 +52,8 @@ class Translation:
     def _statement(self, statement: ast.stmt) -> None:
         if isinstance(statement, ast.For):
             self._loop(statement)
+        elif isinstance(statement, ast.While):
+            self._while(statement)
         elif isinstance(statement, ast.If):
             assert not statement.orelse, "the text has no else"
             with self.builder.if_then(scalar(self, statement.test).machine):
@@ -128,6 +130,17 @@ class Translation:
                 self._values[LANE] = start
                 self.body(loop.body)
             self._values, self._places = before  # the same variables in another shape, the next time
+
+    def _while(self, loop: ast.While) -> None:
+        builder = self.builder
+        test, inside, after = (builder.append_basic_block(name) for name in ("while", "inside", "after"))
+        builder.branch(test)
+        builder.position_at_end(test)
+        builder.cbranch(scalar(self, loop.test).machine, inside, after)
+        builder.position_at_end(inside)
+        self.body(loop.body)
+        builder.branch(test)
+        builder.position_at_end(after)
 
     @contextmanager
     def _counted(self, start: Value, stop: Value, step: int) -> Iterator[Value]:
