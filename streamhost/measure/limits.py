@@ -102,6 +102,15 @@ def _thd_n(result: Any) -> Iterator[Finding]:
         yield Finding(each.thd_n_db, each.reason, each.output, f"at {each.hz:.1f} Hz and {each.level_dbfs:g} dBFS")
 
 
+def _limit_cycle(result: Any) -> Iterator[Finding]:
+    """The largest there is, where that is proven; else the largest found, overflow oscillations among them."""
+    found = [each for each in (result.found_lsb, result.overflow_lsb, result.ended_lsb) if each is not None]
+    if result.proven_lsb is not None:
+        found = [*(each for each in (result.overflow_lsb, result.ended_lsb) if each is not None), result.proven_lsb]
+    about = "proven" if result.proven_lsb is not None else "the largest found, which is no proof"
+    yield Finding(float(max(found)), about=about) if found else Finding(None, result.reason)
+
+
 def _counted(count: Callable[[Realization], int]) -> Callable[[Realization], Iterator[Finding]]:
     return lambda realization: iter([Finding(float(count(realization)))])
 
@@ -112,6 +121,7 @@ LIMITS = (
     Limit("leak_db", "dB", "response", _leak),
     Limit("mask", "dB inside", "response", _mask, AT_LEAST, threshold=0.0),
     Limit("headroom_db", "dB", "overflow", _headroom, AT_LEAST),
+    Limit("limit_cycle_lsb", "LSB", "limit_cycles", _limit_cycle),
     Limit("thd_n_db", "dB", "tone", _thd_n),
     Limit("multiplications", "", "", _counted(lambda each: each.program.drawn.counts().multiplications)),
     Limit("memory_words", "words", "", _counted(lambda each: each.program.drawn.counts().delays)),

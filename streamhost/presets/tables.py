@@ -118,6 +118,7 @@ class LimitsTable(msgspec.Struct, kw_only=True):
     headroom_db: Number | None = None
     mask: Text | None = None
     mask_hz: Number | None = None
+    limit_cycle_lsb: Number | None = None
     thd_n_db: Number | None = None
     multiplications: Whole | None = None
     memory_words: Whole | None = None
