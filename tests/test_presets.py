@@ -9,6 +9,7 @@ from streamhost.filters import Filter, design
 from streamhost.formats import FLOATS, Fixed, Float
 from streamhost.presets import Preset, load_preset, parse_preset
 from streamhost.presets.bands import Band
+from streamhost.presets.tables import LimitsTable
 from streamhost.structures import forms
 
 HEAD = "rate = 48000\n"
@@ -337,6 +338,7 @@ def test_formats_that_cannot_be(table, expected):
     assert problem(f"{GOOD}[format]\n{table}\n") == f"mine.toml:{expected}"
 
 
+LIMIT_KEYS = LimitsTable.__struct_fields__
 LIMITS = {
     "band_hz = [20]":
         "8: band_hz = [20.0] is not allowed: two numbers of hertz that rise, from 0 to half the rate (24000).",
@@ -344,8 +346,8 @@ LIMITS = {
         "8: band_hz = [20.0, 24001.0] is not allowed: two numbers of hertz that rise, from 0 to half the rate (24000).",
     "band_hz = 20": "8: band_hz = 20 is not allowed: band_hz is a list of numbers, for instance [1.0, -0.5].",
     "noise = -90":
-        "8: noise is no key of [limits], which takes band_hz, noise_dbfs, response_deviation_db, leak_db, headroom_db, mask, "
-        'mask_hz, multiplications or memory_words. Did you mean "noise_dbfs"?',
+        f"8: noise is no key of [limits], which takes {', '.join(LIMIT_KEYS[:-1])} or {LIMIT_KEYS[-1]}. "
+        'Did you mean "noise_dbfs"?',
     'noise_dbfs = "-90"': '8: noise_dbfs = "-90" is not allowed: noise_dbfs is a number.',
     "response_deviation_db = -0.1":
         "8: response_deviation_db = -0.1 is not allowed: a deviation is at least 0 dB.",
