@@ -36,9 +36,10 @@ def lines(result: FloatParticulars) -> Iterator[str]:
 def _tail(tail: Tail) -> Iterator[str]:
     after = f"After {tail.signal_s:g} s of noise, peak {_number(tail.signal_peak_dbfs, 0)} dBFS,"
     if tail.first_frame is None:
-        end = f"every state is 0 after {tail.ended_frame} frames" if tail.ended_frame is not None else (
-            f"{tail.watched_frames} frames were watched")
-        yield f"{after} no state becomes subnormal: {end}."
+        if tail.ended_frame is not None:
+            yield f"{after} no state becomes subnormal: all are 0 after {tail.ended_frame} frames."
+        else:
+            yield f"{after} no state becomes subnormal, and they do not die out: {tail.watched_frames} frames were watched."
         return
     longest = max(tail.states, key=lambda state: state.subnormal_frames)
     began = f"{after} states are subnormal from frame {tail.first_frame} on"

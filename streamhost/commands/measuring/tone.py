@@ -68,9 +68,13 @@ def _said(settings: Sequence[Setting], *, floating: bool) -> Iterator[str]:
                              if each.reason and each.added_dbfs is None)
     clean = [each for each in settings if not each.overflow_frames and each.added_dbfs is not None]
     loud = [each for each in settings if each.overflow_frames]
+    silent = [each for each in settings if each.reason and each.added_dbfs is not None]
     if clean:
         yield _follows(clean) if floating else _adds(max(clean, key=_added))
         yield _own_line(clean)
+    if silent:
+        highest = max(each.level_dbfs for each in silent)
+        yield f"Nothing comes out of {len(silent)} of {len(settings)} tones, from {_number(highest, 0)} dBFS down."
     if loud:
         worst = max(loud, key=lambda each: each.overflow_frames)
         found = f" and gives THD+N {_number(worst.thd_n_db)} dB" if worst.thd_n_db is not None else ""
@@ -124,14 +128,20 @@ def _idle(each: Sequence[Idle]) -> Iterator[str]:
     found = [idle for idle in each if idle.found]
     expected, alarm = each[0].expected_over_floor_db, each[0].alarm_over_floor_db
     chance = f"noise alone shows {expected:.1f} dB, and more than {alarm:.1f} once in 1,000"
+    constants, tones = (
+        [idle for idle in each if (idle.constant_lsb is not None) == constant] for constant in (True, False))
     if not found:
-        yield f"Idle tones: none, on {len(each)} constants and tones of about a step ({chance})."
+        yield f"Idle tones: none, on {len(constants)} constants and {len(tones)} tones of about a step ({chance})."
         return
     worst = max(found, key=lambda idle: idle.line.dbfs if idle.line is not None else -inf)
     assert worst.line is not None, "what is found is a line"
     of = f"a constant of {worst.constant_lsb:g}" if worst.constant_lsb is not None else f"a tone of {worst.tone_lsb:g}"
-    yield (f"Idle tones: on {len(found)} of {len(each)} constants and tones of about a step ({chance}). Strongest: "
+    yield (f"Idle tones: on {_share(constants)} constants and {_share(tones)} tones of about a step ({chance}). Strongest: "
            f"{_line(worst.line)}, on {of} LSB{', dithered' if worst.dithered else ''}.")
+
+
+def _share(each: Sequence[Idle]) -> str:
+    return f"{sum(idle.found for idle in each)} of {len(each)}"
 
 
 def _levels(settings: Sequence[Setting]) -> str:
