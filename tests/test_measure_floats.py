@@ -105,6 +105,7 @@ def test_a_running_sum_drifts_as_it_is_told():
     assert drift.predicted_after_1_s_dbfs == pytest.approx(drift.found_after_1_s_dbfs, abs=3.0)
 
 
+@pytest.mark.slow
 def test_a_longer_run_walks_as_the_root_of_the_time():
     """Its mean square grows by as much in each second: 10 s and 3 s agree, 150 steps scatter by 0.5 dB."""
     long, short = (float_particulars(running_sum("float32"), quick=quick).drift[0] for quick in (False, True))

@@ -201,7 +201,10 @@ def at_997(realization, level_dbfs):
 
 
 # 10 lg of the mean squares of sine and error, 6.02 N + 1.76: Oppenheim & Schafer ch. 6; 0 dBFS as AES17-2015, 3.12.1.
-@pytest.mark.parametrize(("bits", "snr"), [(8, 49.93), (12, 74.01), (16, 98.09), (20, 122.17), (24, 146.26)])
+@pytest.mark.parametrize(("bits", "snr"), [
+    (8, 49.93), (16, 98.09), (24, 146.26), pytest.param(12, 74.01, marks=pytest.mark.slow),
+    pytest.param(20, 122.17, marks=pytest.mark.slow),
+])
 def test_rounding_a_full_scale_tone_to_n_bits(bits, snr):
     """At -0.1 dBFS: the largest code of 8 bits lies 0.07 dB below full scale."""
     near = at_997(rounding_to(bits), -0.1)
@@ -209,7 +212,7 @@ def test_rounding_a_full_scale_tone_to_n_bits(bits, snr):
 
 
 # With triangular dither the total error is 1/4 of a step squared: Lipshitz, Wannamaker & Vanderkooy, JAES 40 (1992).
-@pytest.mark.parametrize(("bits", "snr"), [(8, 45.15), (16, 93.32)])
+@pytest.mark.parametrize(("bits", "snr"), [(8, 45.15), pytest.param(16, 93.32, marks=pytest.mark.slow)])
 def test_rounding_with_dither_is_louder_and_has_no_harmonics(bits, snr):
     """At -20 dBFS, where dither cannot take the peaks out of range."""
     for each in tone(rounding_to(bits, dither="tpdf"), [], idle=False).settings:
