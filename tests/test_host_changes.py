@@ -1,5 +1,6 @@
 """Changes at frames: what each changeover makes of the next lane's state, for any division into blocks."""
 
+import weakref
 from functools import cache
 
 import numpy as np
@@ -234,6 +235,20 @@ def test_a_ramp_takes_its_coefficients_every_32_frames_under_the_state_that_is()
     assert len(ramp(lambda value: value, 1000.0, 1600.0, 161)) == 6  # type: ignore[arg-type, return-value]
     with pytest.raises(RequestError, match="another diagram or other words"):
         host.plan.move(0, [realized("direct-2", "float32")])
+
+
+def test_what_is_prepared_lives_until_the_step_has_done_with_it_and_no_longer() -> None:
+    lane = Lane(realized("direct-1", "float32", 1000.0), 2)
+    host, known = Host([lane], 6000), []
+    for frame in (100, 300, 500):
+        host.plan.move(0, [realized("direct-1", "float32", 1000.0 + frame + k) for k in range(4)], frame)
+        known.append(weakref.ref(lane.banks))
+    for frames, alive in ((50, 3), (100, 3), (200, 2), (300, 1)):
+        host.step(X[:frames])
+        host.plan.tend()
+        assert sum(each() is not None for each in known) == alive
+    ended = Lane(realized("direct-1", "float32", 1503.0), 2)
+    assert lane.memory.coefficients.tobytes() == ended.memory.coefficients.tobytes()
 
 
 def test_a_lane_that_is_placed_runs_from_its_frame_on() -> None:

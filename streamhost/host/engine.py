@@ -88,10 +88,10 @@ class Host:
 
     def _set(self, guard: Guard, begins: int, source: Source | None) -> None:
         shared, record = self.shared, self._record
-        self._sources, self._former = [source or device()], list[Lane]()
+        self.source = source or device()
         addresses = {
             "lanes": self._table, "control": shared.control, "meters": shared.meters, "histogram": shared.histogram,
-            "actions": self._queue.slots, "log": shared.log, "source": self._sources[0].record, "x": self._x,
+            "actions": self._queue.slots, "log": shared.log, "source": self.source.record, "x": self._x,
             "heard": self._heard, "sent": self._sent, "input_recent": self._past,
         }
         if len(shared.heard):
@@ -110,7 +110,7 @@ class Host:
             record[name] = array.ctypes.data
         for name, value in numbers.items():
             record[name] = value
-        self.need("generate", self._sources[0].kind != "device")
+        self.need("generate", self.source.kind != "device")
         self.need("ideal", any(lane.ideal for lane in self.lanes))
         self.need("mix", len(self.lanes) > 1 or self.device.outputs > 0 or len(shared.heard) + len(shared.recording) > 0)
         self.need("listen", self.device.outputs > 0)
@@ -118,21 +118,9 @@ class Host:
         guard.put(record, shared.control, self.rate)
         shared.control["gain"], shared.control["mute"], shared.control["counter_channel"] = 1.0, 1, -1
 
-    def keep(self, source: Source) -> None:
-        """A source that is taken lives as long as the host."""
-        self._sources.append(source)
-
     def check(self, lane: Lane) -> None:
         """RequestError where a lane does not fit those that run."""
         _common([lane, self.lanes[0]])
-
-    def put_lane(self, slot: int, lane: Lane) -> None:
-        """The lane of a slot, from now on; one that it takes the place of lives as long as the host."""
-        if slot < len(self.lanes):
-            self._former.append(self.lanes[slot])
-            self.lanes[slot] = lane
-        else:
-            self.lanes.append(lane)
 
     @property
     def past_frames(self) -> int:

@@ -38,6 +38,7 @@ class Lane:
         self.ideal = Ideal(realization, channels) if ideal else None
         self._outputs = len(realization.outputs)
         self._trace = no_trace()
+        self.banks: object = None
         self._kinds = _kinds(realization)
         self._scales = state_scales(realization.program)
         self._record, self._shown = np.zeros(1, LANE), np.zeros(1, LANE_METERS)
@@ -102,7 +103,7 @@ class Lane:
 
     def moved_to(self, realization: Realization, banks: object) -> None:
         """It has, or soon will have, the coefficients of another realization."""
-        self.realization, self._banks = realization, banks
+        self.realization, self.banks = realization, banks
 
     @property
     def output(self) -> NDArray[np.float64]:

@@ -138,7 +138,7 @@ class Plan:
             frame = -(-frame // BANK_FRAMES) * BANK_FRAMES
         host.need("act")
         ticket = self._queue.put(host.begins + frame, BANK, lane=lane, count=len(realizations), argument=banks.address,
-                                 ideal_argument=banks.ideal_address, kept=(banks,))
+                                 ideal_argument=banks.ideal_address, kept=(banks, moved.banks))
         moved.moved_to(realizations[-1], banks)
         return ticket
 
@@ -149,8 +149,9 @@ class Plan:
             raise RequestError(f"{source.said} has {source.record['channels'][0]} channels, and this host has {host.channels}.")
         host.need("act")
         host.need("generate", source.kind != "device")
-        host.keep(source)
-        return self._queue.put(host.begins + max(frame, host.frames), TAKE_SOURCE, lane=-1, argument=source.address)
+        before, host.source = host.source, source
+        return self._queue.put(host.begins + max(frame, host.frames), TAKE_SOURCE, lane=-1, argument=source.address,
+                               kept=(source, before))
 
     def subtract(self, what: int | str | None, raise_db: float = 0.0, frame: int = 0) -> int:
         """From a frame on send to the monitor what is heard less another lane, or its "ideal", raised; None: less nothing."""
@@ -170,8 +171,8 @@ class Plan:
         """
         host = self._host
         slot = len(host.lanes) if slot is None else slot
-        if slot >= MOST_LANES:
-            raise RequestError(f"A host runs at most {MOST_LANES} lanes.")
+        if slot >= MOST_LANES or slot > len(host.lanes):
+            raise RequestError(f"A host runs at most {MOST_LANES} lanes, and lane {len(host.lanes) + 1} is the next.")
         if slot < len(host.lanes) and slot in (self._heard[-1][1], host.heard):
             raise RequestError(f"Lane {slot + 1} is heard: change to another before it is replaced.")
         host.check(lane)
@@ -180,9 +181,10 @@ class Plan:
         host.need("act")
         host.need("mix")
         host.need("ideal", lane.ideal is not None)
-        host.put_lane(slot, lane)
+        before = host.lanes[slot : slot + 1]
+        host.lanes[slot : slot + 1] = [lane]
         self._disturbed[slot] = frame
-        self._queue.put(host.begins + frame, PLACE, lane=slot, argument=lane.address, kept=(lane,))
+        self._queue.put(host.begins + frame, PLACE, lane=slot, argument=lane.address, kept=(lane, before))
         return slot
 
     def tend(self) -> None:
