@@ -1,11 +1,14 @@
 """The verdict on the white model, from residues alone."""
 
+from itertools import pairwise
+
 import numpy as np
 import pytest
 
 from streamhost import Filter, Fixed, design, realize
 from streamhost.measure import measure
-from streamhost.measure.residues import BINS, LAGS, ResidueSum
+from streamhost.measure.bands import bin_shares
+from streamhost.measure.residues import BINS, HANN_SHARE, LAGS, OCTAVES, OctaveSum, ResidueSum, octave_edges, octave_powers
 from streamhost.measure.whiteness import Expected, judged
 from streamhost.signals import dc, silence, sine, white
 
@@ -131,7 +134,7 @@ BLOCK = 1 << 15
 
 
 def residues_of(blocks, x=None):
-    total = ResidueSum(np.full(blocks[0].shape[1], -0.5))
+    total = ResidueSum(np.full(blocks[0].shape[1], -0.5), BLOCK)
     rng = np.random.default_rng(99)
     for k, block in enumerate(blocks):
         total.add(rng.standard_normal(len(block)) if x is None else x[k], block)
@@ -158,7 +161,9 @@ def test_what_the_sums_say():
     assert residues.histogram.shape == (2, BINS)
     assert residues.histogram.sum(axis=1) == pytest.approx(1.0, rel=1e-12)
     assert residues.correlation.shape == (LAGS + 1, 2, 2)
-    assert residues.correlation[0, 0, 0] == pytest.approx(1.0, rel=1e-12)
+    assert residues.correlation[0, 0, 0] == pytest.approx(1.0, rel=1e-6)  # products are in single precision
+    shifted = np.corrcoef(together[5:, 0], together[:-5, 1])[0, 1]
+    assert residues.correlation[5, 1, 0] == pytest.approx(shifted, abs=2e-4)  # 8 frames of a block less, each by 1 / 2^18
 
 
 def test_false_alarms_are_as_rare_as_said():
@@ -207,6 +212,40 @@ def test_two_roundings_that_agree_are_found():
     shared = np.arange(BLOCK) % 10 == 0
     blocks = [np.column_stack((e, np.where(shared, e[:, 0], np.roll(e[:, 0], 999)))) for e in uniform(6)]
     assert "drop is correlated" in reason_of(blocks, (UNIFORM, UNIFORM))
+
+
+def test_many_roundings_are_judged_in_groups():
+    """300 are held against each other as 64 sums: each of the 150 pairs that agree makes a part of a correlation."""
+    blocks = uniform(9, count=1, columns=300)
+    assert reason_of(blocks, (UNIFORM,) * 300) == ""
+    mirrored = [np.concatenate((e[:, :150], e[:, 149::-1]), axis=1) for e in blocks]
+    assert "others" in (reason := reason_of(mirrored, (UNIFORM,) * 300))
+    assert reason.endswith("drop is correlated")
+
+
+def test_the_last_frames_count_as_all_others_do():
+    """Less than a block at the end, where what is dropped stands still: a signal has faded away."""
+    blocks = uniform(10, count=9)
+    assert reason_of(blocks) == ""
+    blocks[-1] = np.full((BLOCK // 2 + 77, 1), -0.37)
+    assert "in the mean" in reason_of(blocks)
+
+
+def test_octaves_are_parted_as_a_meter_parts_bins():
+    power = np.random.default_rng(11).random((2, 1025))
+    edges = octave_edges(1025)
+    expected = [power @ bin_shares(1025, 1.0, (low, high)) for low, high in pairwise(edges.tolist())]
+    assert octave_powers(power) == pytest.approx(np.array(expected), rel=1e-12)
+
+
+def test_a_line_at_the_end_is_seen_between_segments():
+    """Half a segment behind the last whole one is in the spectrum too."""
+    total = OctaveSum(1, 1024)
+    tone = np.sin(2 * np.pi * np.arange(600) * 0.1).astype(np.float32)
+    total.add(np.concatenate((np.zeros(2048, np.float32), tone))[:, None], 0)
+    octaves, degrees = total.result()
+    assert int(np.argmax(octaves[:, 0])) == OCTAVES - 3  # 0.1 of the rate lies in 1/16 to 1/8 of it
+    assert degrees[-1] == pytest.approx(5 * 512 * HANN_SHARE)  # four starts and the last, half the bins, twice
 
 
 def test_what_follows_the_input_is_found():

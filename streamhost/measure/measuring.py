@@ -118,7 +118,7 @@ class Measurement:
         settling = max(settling_frames(diagram, channel) for channel in range(diagram.channels))
         self.block = block_length(frames, settling)
         self._sums = [_OutputSum(realization, frames, channels, settling) for _ in realization.outputs]
-        self._watch = watch(realization.program, frames, settling_of_run(settling, frames), self.block)
+        self._watch = watch(realization.program, settling_of_run(settling, frames), self.block)
         self._first: FloatArray | None = None
 
     def step(self, x: FloatArray) -> Block:

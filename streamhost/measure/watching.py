@@ -16,26 +16,23 @@ from streamhost.program.sources import Source, noise_sources, traced_roundings
 
 FloatArray = NDArray[np.float64]
 
-WATCHED_BLOCKS = 32
-"""At most so many blocks are judged, spread evenly over the run after the settling time."""
-
-
 class FixedWatch:
-    """The residues of a fixed-point program in a run of `frames`, of which the first `wait` do not count.
+    """The residues of a fixed-point program in a run, of which the first `wait` frames do not count and all others do.
 
     Channels with coefficients of their own drop other values than the rest, and are judged apart.
     """
 
-    def __init__(self, program: Program, frames: int, wait: int, block: int) -> None:
-        self._program = program
-        self._columns = [_ColumnWatch(program, column) for column in range(program.diagram.channels)]
-        self._frame, self._chosen = 0, _chosen_blocks(frames, wait, block)
+    def __init__(self, program: Program, wait: int, block: int) -> None:
+        self._program, self._wait, self._frame = program, wait, 0
+        self._columns = [_ColumnWatch(program, column, block) for column in range(program.diagram.channels)]
 
     def add(self, x: FloatArray, trace: FloatArray) -> None:
         """The next block: the input (frames, channels) and the trace (frames, channels, columns)."""
-        if self._frame in self._chosen:
+        settled = slice(max(0, self._wait - self._frame), None)
+        if self._wait < self._frame + len(x):
             for channel in range(x.shape[1]):
-                self._columns[min(channel, len(self._columns) - 1)].add(x[:, channel], trace[:, channel])
+                column = self._columns[min(channel, len(self._columns) - 1)]
+                column.add(x[settled, channel], trace[settled, channel], channel)
         self._frame += len(x)
 
     def verdict(self, rate: float, output: int = 0, channel: int = 0) -> Whiteness:
@@ -52,17 +49,17 @@ class FixedWatch:
 class _ColumnWatch:
     """The residues of the channels that have the coefficients of one column."""
 
-    def __init__(self, program: Program, column: int) -> None:
+    def __init__(self, program: Program, column: int, block: int) -> None:
         self._program, self._column = program, column
         self._sources = noise_sources(program, column)
         self._columns, self._expected, _ = _watched(program, self._sources)
-        self._sum = ResidueSum(np.array([rounding.lowest for rounding in self._expected]))
+        self._sum = ResidueSum(np.array([rounding.lowest for rounding in self._expected]), block)
         self._seen = False
 
-    def add(self, x: FloatArray, trace: FloatArray) -> None:
+    def add(self, x: FloatArray, trace: FloatArray, channel: int) -> None:
         """A block of one channel: the input (frames,) and the trace (frames, columns)."""
         if self._expected:
-            self._sum.add(x, trace[:, self._columns])
+            self._sum.add(x, trace[:, self._columns], channel)
             self._seen = True
 
     def verdict(self, rate: float, output: int) -> Whiteness:
@@ -111,18 +108,11 @@ class FloatWatch:
         return predicted_noise(self._program, rate, np.sqrt(power), output=output, channel=channel)
 
 
-def watch(program: Program, frames: int, wait: int, block: int) -> FixedWatch | FloatWatch:
-    """What is to be seen of a program in a run of `frames`, given in blocks of `block`, after the first `wait`."""
+def watch(program: Program, wait: int, block: int) -> FixedWatch | FloatWatch:
+    """What is to be seen of a program in a run in blocks of `block` frames, after the first `wait`."""
     if isinstance(program.format, Fixed):
-        return FixedWatch(program, frames, wait, block)
+        return FixedWatch(program, wait, block)
     return FloatWatch(program, wait)
-
-
-def _chosen_blocks(frames: int, wait: int, block: int) -> set[int]:
-    """The first frames of the whole blocks to be judged."""
-    whole = range(-(-wait // block), frames // block)
-    count = min(len(whole), WATCHED_BLOCKS)
-    return {whole[k * len(whole) // count] * block for k in range(count)}
 
 
 def _watched(program: Program, sources: tuple[Source, ...]) -> tuple[list[int], tuple[Expected, ...], list[int]]:

@@ -2,9 +2,8 @@
 
 The model (Bennett 1948; Oppenheim & Schafer, ch. 6): every error is uniform over the values it can take, white, and
 uncorrelated with the input and the other errors. Each bound is what one of a hundred runs of such errors would pass by
-chance, all checks together, plus an allowance for what makes no difference of half a dB: a rounding's departures
-count by its part in the predicted noise, octave by octave, and one with next to no part is looked at for its spectrum
-alone.
+chance, all checks together. What departures are beyond it count by the roundings' parts in the predicted noise, that of the
+spectrum octave by octave, and are added up over all roundings: as little as makes no difference of 0.3 dB is allowed.
 """
 
 from dataclasses import dataclass
@@ -13,8 +12,11 @@ from math import sqrt
 from statistics import NormalDist
 
 import numpy as np
+from numpy.typing import NDArray
 
 from streamhost.measure.residues import BINS, LAGS, OCTAVES, Residues
+
+FloatArray = NDArray[np.float64]
 
 CHANCE = 0.01
 LEAST_FRAMES = 4096
@@ -23,15 +25,20 @@ MEAN_STEPS = 0.01
 VARIANCE_SHARE = 0.05
 DISTRIBUTION_SHARE = 0.05
 """Ten values evenly apart pass, two do not: noise power knows no more of a distribution than its moments."""
-CORRELATION = 0.05
-"""Between frames it bends the spectrum by at most twice as much, between roundings it adds as much: under half a dB."""
-DENSITY_SHARE = 0.12
-"""Half a dB."""
+CORRELATION = 0.07
+"""Of the noise, what correlations may add at some frequency: 0.3 dB."""
+DENSITY_SHARE = 0.07
+"""0.3 dB."""
 
 LEAST_SHARE = 0.05
+"""Of the predicted noise, what may come from where no residue is written down."""
 
 UNIFORM_VARIANCE_SHARE = 4.0**-5
 """A rounding that drops some six bits or more has a variance this near to that of a continuous error."""
+
+
+OF_WHITE = (2.0 ** (1 - OCTAVES), *(2.0 ** (octave - OCTAVES) for octave in range(1, OCTAVES)))
+"""By octave, the shares of noise that is white where it comes out."""
 
 
 @dataclass(frozen=True)
@@ -51,13 +58,8 @@ class Expected:
     variance: float
     lowest: float
     dithered: bool
-    shares: tuple[float, ...] = (1.0,) * OCTAVES
+    shares: tuple[float, ...] = OF_WHITE
     """Its part in the predicted noise of all roundings, by octave from the lowest up."""
-
-    @property
-    def matters(self) -> bool:
-        """Whether half again as much of it would be a tenth of a dB of the noise."""
-        return sum(self.shares) >= LEAST_SHARE
 
 
 def judged(expected: tuple[Expected, ...], residues: Residues | None) -> Whiteness:
@@ -77,55 +79,59 @@ class _Judge:
     residues: Residues
 
     @cached_property
-    def chance(self) -> float:
-        """What a single check may pass by chance."""
-        count = len(self.expected)
-        return CHANCE / (count * (4 + OCTAVES + (LAGS + 1) * (count + 1)))
-
-    @property
-    def that_matter(self) -> list[tuple[int, Expected]]:
-        """Roundings with a part in the noise, with their place."""
-        return [(k, rounding) for k, rounding in enumerate(self.expected) if rounding.matters]
+    def shares(self) -> FloatArray:
+        """Of each rounding in the noise of all of them, by octave, (s, OCTAVES)."""
+        shares = np.array([rounding.shares for rounding in self.expected])
+        return np.asarray(shares / shares.sum())
 
     @cached_property
-    def sigmas(self) -> float:
-        return NormalDist().inv_cdf(1.0 - self.chance / 2.0)
+    def parts(self) -> FloatArray:
+        """Of each rounding in the noise of all of them, (s,)."""
+        return np.asarray(self.shares.sum(axis=1))
+
+    @cached_property
+    def chance(self) -> float:
+        """What a single check may pass by chance."""
+        count, groups = len(self.expected), len(self.residues.correlation[0])
+        return CHANCE / (count * (4 + OCTAVES + LAGS + 1) + (LAGS + 1) * groups**2)
 
     @cached_property
     def scatter(self) -> float:
-        """Of a mean of independent values of variance 1, as many sigmas as are allowed."""
-        return self.sigmas / sqrt(self.residues.frames)
+        """Of a mean of independent values of variance 1, as much as is allowed."""
+        return NormalDist().inv_cdf(1.0 - self.chance / 2.0) / sqrt(self.residues.frames)
 
     def moments(self) -> str:
-        for k, rounding in self.that_matter:
-            mean, variance = float(self.residues.mean[k]), float(self.residues.variance[k])
-            # the square of a uniform variable scatters by root 0.8 of its mean
-            if abs(variance / rounding.variance - 1.0) > VARIANCE_SHARE + self.scatter * sqrt(0.8):
-                return (f"{rounding.label} drops values of variance {variance:.3g} steps squared, "
-                        f"not {rounding.variance:.3g}")
-            if abs(mean - rounding.mean) > MEAN_STEPS + self.scatter * sqrt(rounding.variance):
-                return f"{rounding.label} drops {mean:.3f} of a step in the mean, not {rounding.mean:.3f}"
+        means, variances = np.array([(rounding.mean, rounding.variance) for rounding in self.expected]).T
+        mean, variance = self.residues.mean, self.residues.variance
+        # the square of a uniform variable scatters by root 0.8 of its mean
+        beyond = self.parts * _beyond(variance / variances - 1.0, self.scatter * sqrt(0.8))
+        if beyond.sum() > VARIANCE_SHARE:
+            k = int(np.argmax(beyond))
+            return f"{self.expected[k].label} drops values of variance {variance[k]:.3g} steps squared, not {variances[k]:.3g}"
+        beyond = self.parts * _beyond(mean - means, self.scatter * np.sqrt(variances))
+        if beyond.sum() > MEAN_STEPS:
+            k = int(np.argmax(beyond))
+            return f"{self.expected[k].label} drops {mean[k]:.3f} of a step in the mean, not {round(means[k], 3) + 0.0:.3f}"
         return ""
 
     def distribution(self) -> str:
         """By the largest distance between cumulative distributions (Kolmogorov and Smirnov)."""
-        for k, rounding in self.that_matter:
-            continuous = abs(12.0 * rounding.variance - 1.0) < UNIFORM_VARIANCE_SHARE
-            if rounding.dithered or not continuous:
-                continue
-            distance = np.abs(np.cumsum(self.residues.histogram[k]) - np.arange(1, BINS + 1) / BINS).max()
-            if distance > DISTRIBUTION_SHARE + self.scatter / 2.0:
-                return f"what {rounding.label} drops is not uniform"
+        levels = np.cumsum(self.residues.histogram, axis=1) - np.arange(1, BINS + 1) / BINS
+        continuous = [abs(12.0 * rounding.variance - 1.0) < UNIFORM_VARIANCE_SHARE and not rounding.dithered
+                      for rounding in self.expected]
+        beyond = self.parts * _beyond(np.abs(levels).max(axis=1), self.scatter / 2.0) * continuous
+        if beyond.sum() > DISTRIBUTION_SHARE:
+            return f"what {self.expected[int(np.argmax(beyond))].label} drops is not uniform"
         return ""
 
     def density(self) -> str:
         """The power that roundings put into octaves beyond what chance explains, by its part in the noise."""
-        for k, rounding in self.that_matter:
-            if abs(self.beyond(self.residues.drift[k], self.residues.drift_degrees)) > DENSITY_SHARE:
-                return f"the mean of what {rounding.label} drops drifts"
-        excess = np.array([[self.beyond(self.residues.octaves[octave, k], degrees) for k in range(len(self.expected))]
-                           for octave, degrees in enumerate(self.residues.octave_degrees)])
-        weighted = excess * np.array([rounding.shares for rounding in self.expected]).T
+        drift = self.parts * np.abs([self.beyond(each, self.residues.drift_degrees) for each in self.residues.drift])
+        if drift.sum() > DENSITY_SHARE:
+            return f"the mean of what {self.expected[int(np.argmax(drift))].label} drops drifts"
+        excess = np.array([[self.beyond(each, degrees) for each in octave]
+                           for octave, degrees in zip(self.residues.octaves, self.residues.octave_degrees, strict=True)])
+        weighted = excess * self.shares.T
         if max(weighted.clip(min=0.0).sum(), -weighted.clip(max=0.0).sum()) <= DENSITY_SHARE:
             return ""
         octave, worst = divmod(int(np.argmax(np.abs(weighted))), len(self.expected))
@@ -141,19 +147,33 @@ class _Judge:
         return float(ratio - min(max(ratio, low), high))
 
     def correlations(self) -> str:
-        allowed = CORRELATION + self.scatter
-        to_input, between = self.residues.to_input.copy(), self.residues.correlation
-        if (beyond := np.argwhere(np.abs(to_input) > allowed)).size:
-            return f"what {self.expected[beyond[0][1]].label} drops follows the input"
-        count = len(self.expected)
-        own = np.zeros_like(between, dtype=np.bool_)
-        own[0][np.diag_indices(count)] = True
-        idle = [k for k in range(count) if not self.expected[k].matters]
-        own[:, idle], own[:, :, idle], to_input[:, idle] = True, True, 0.0
-        if not (beyond := np.argwhere((np.abs(between) > allowed) & ~own)).size:
+        to_input = self.parts * _beyond(self.residues.to_input, self.scatter)
+        if to_input.sum(axis=1).max() > CORRELATION:
+            return f"what {self.expected[int(np.argmax(to_input.max(axis=0)))].label} drops follows the input"
+        between = self.residues.correlation.copy()
+        groups = np.zeros(between.shape[1])
+        np.add.at(groups, self.residues.groups, self.parts)
+        between[0] -= np.eye(len(groups))
+        allowed = np.full_like(between, self.scatter)
+        allowed[0] += (sqrt(2.0) - 1.0) * self.scatter * np.eye(len(groups))  # of a square, which is a group's own variance
+        beyond = _beyond(between, allowed) * np.sqrt(np.outer(groups, groups))
+        beyond[1:] *= 2.0  # a lag counts backwards too
+        if beyond.sum(axis=(1, 2)).max() <= CORRELATION:
             return ""
-        lag, earlier, later = beyond[0]
-        if earlier == later:
+        lag, earlier, later = np.unravel_index(int(np.argmax(beyond)), beyond.shape)
+        first, second = self._heaviest(int(earlier)), self._heaviest(int(later))
+        if lag and earlier == later:
             frames = "1 frame" if lag == 1 else f"{lag} frames"
-            return f"what {self.expected[later].label} drops is correlated with what it dropped {frames} before"
-        return f"what {self.expected[earlier].label} and {self.expected[later].label} drop is correlated"
+            return f"what {first} drops is correlated with what it dropped {frames} before"
+        return f"what {first} and {second} drop is correlated"
+
+    def _heaviest(self, group: int) -> str:
+        """What a group is called: by its member with the most noise, and that there are others."""
+        members = np.flatnonzero(self.residues.groups == group)
+        label = self.expected[members[np.argmax(self.parts[members])]].label
+        return label if len(members) == 1 else f"{label} or one of {len(members) - 1} others"
+
+
+def _beyond(departure: FloatArray, scatter: FloatArray | float) -> FloatArray:
+    """How much larger departures are than what chance explains."""
+    return np.asarray(np.maximum(np.abs(departure) - scatter, 0.0))
