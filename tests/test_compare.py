@@ -97,7 +97,7 @@ def test_the_shipped_presets_on_the_shipped_audio(tmp_path, capsys):
     assert naive["response_deviation_db"] is naive["noise_dbfs"] is naive["noise_predicted_dbfs"] is None
     assert naive["white_model_holds"] is None
     assert "3 has no noise figure and no verdict on the white model: with its coefficients rounded" in shown
-    assert "2: the white model does not hold here: the output drops values of variance" in shown  # it fades to silence
+    assert "1: the white model does not hold here: the output drops values of variance" in shown  # it fades to silence
     assert ".q0" not in shown
     assert "3 is unstable with its coefficients rounded: 1 pole" in shown
     assert "2 of 2 with limits meet every limit; 3, 4, 5, 6 state none." in shown

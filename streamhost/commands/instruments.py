@@ -16,6 +16,9 @@ from streamhost.measure.limits import Verdict, limit_band, limit_signal, verdict
 from streamhost.presets import Preset
 from streamhost.realization import Realization
 
+RECORDING = "chord"
+"""In which noise is measured too: mono, quiet, and it fades to silence."""
+
 Report = Callable[[float, str], None]
 
 
@@ -25,7 +28,7 @@ def unheard(share: float, doing: str) -> None:
 
 @dataclass(frozen=True)
 class Asked:
-    """What an instrument is to measure, and how. x: the signal, (frames, channels), 1.0 = full scale."""
+    """What an instrument is to measure, and how. x: the signal, (frames, channels), 1.0 = full scale; `heard`: its name."""
 
     preset: Preset
     realization: Realization
@@ -33,6 +36,7 @@ class Asked:
     band: Band
     quick: bool = False
     report: Report = unheard
+    heard: str = "white"
 
 
 @dataclass(frozen=True)
@@ -75,6 +79,17 @@ def _response(asked: Asked, *, judged_only: bool = False) -> measure.Response:
     return measure.response(asked.realization, [asked.band], masks, mask_hz=limits.get("mask_hz"), judged_only=judged_only)
 
 
+def _noise(asked: Asked) -> measure.RoundingNoise:
+    """On the signal, a tone and, at its rate, a shipped recording."""
+    from streamhost.files import probe, read_all
+    from streamhost.shipped import resolve
+
+    path = resolve(RECORDING, "sample")
+    fits = not asked.quick and asked.realization.rate == probe(path).rate
+    more = {RECORDING: np.repeat(read_all(path)[0], asked.realization.diagram.channels, axis=1)} if fits else {}
+    return measure.noise(asked.realization, asked.x, name=asked.heard, more=more, quick=asked.quick, report=asked.report)
+
+
 def _overflow(asked: Asked) -> measure.Overflow:
     return measure.overflow(asked.realization, asked.x, quick=asked.quick, report=asked.report)
 
@@ -95,8 +110,8 @@ def _certificate(result: measure.LimitCycles) -> Iterator[Document]:
 INSTRUMENTS = (
     Instrument("response", _response, response.lines, judged=lambda asked: _response(asked, judged_only=True),
                quick_judges=True),
-    Instrument("noise", lambda asked: measure.noise(asked.realization, asked.x), noise.lines, seconds=2.0,
-               quick_judges=True),
+    Instrument("noise", _noise, noise.lines, seconds=4.0,
+               judged=lambda asked: measure.noise(asked.realization, asked.x, judged_only=True), quick_judges=True),
     Instrument("overflow", _overflow, overflow.lines, overflow.waves, seconds=2.0,
                judged=lambda asked: measure.overflow(asked.realization, judged_only=True), quick_judges=True),
     Instrument(

@@ -92,4 +92,5 @@ def _asked(stated: "Preset", source: str | None, *, quick: bool) -> "Asked":
     preset = at_rate(stated, info, source)
     realization = realize_preset(preset, info.channels)
     realization.check_samples(preset.source.name)
-    return Asked(preset, realization, read_all(info.path)[0], limit_band(preset.limits, preset.rate), quick)
+    x, band = read_all(info.path)[0], limit_band(preset.limits, preset.rate)
+    return Asked(preset, realization, x, band, quick, heard=info.path.stem)

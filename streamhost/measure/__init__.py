@@ -9,13 +9,14 @@ from streamhost.measure.noise_sum import Noise, noise_of
 from streamhost.measure.overflows import Overflow, Recovery, Register, overflow
 from streamhost.measure.predicted import Prediction, predicted_noise
 from streamhost.measure.realized import BandDeviation, Response, response
-from streamhost.measure.rounding import OutputNoise, RoundingNoise, noise
+from streamhost.measure.rounding import DynamicRange, OutputNoise, RoundingNoise, SignalNoise, SourceNoise, noise
 from streamhost.measure.tones import Tones, tone
 from streamhost.measure.whiteness import Whiteness
 
 __all__ = [
-    "LIMITS", "BandDeviation", "Deviation", "Figures", "FloatParticulars", "Limit", "LimitCycles", "Measured", "Measurement",
-    "Noise", "OutputNoise", "Overflow", "Prediction", "Recovery", "Register", "Response", "RoundingNoise", "Tones", "Verdict",
-    "Whiteness", "float_particulars", "limit_band", "limit_cycles", "limit_signal", "measure", "noise", "noise_of", "overflow",
-    "predicted_noise", "response", "response_deviation", "stated_limits", "tone", "verdicts",
+    "LIMITS", "BandDeviation", "Deviation", "DynamicRange", "Figures", "FloatParticulars", "Limit", "LimitCycles", "Measured",
+    "Measurement", "Noise", "OutputNoise", "Overflow", "Prediction", "Recovery", "Register", "Response", "RoundingNoise",
+    "SignalNoise", "SourceNoise", "Tones", "Verdict", "Whiteness", "float_particulars", "limit_band", "limit_cycles",
+    "limit_signal", "measure", "noise", "noise_of", "overflow", "predicted_noise", "response", "response_deviation",
+    "stated_limits", "tone", "verdicts",
 ]

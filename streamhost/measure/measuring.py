@@ -13,7 +13,7 @@ from streamhost.measure.bands import Band
 from streamhost.measure.deviation import Deviation, response_deviation
 from streamhost.measure.levels import has_run_away, peak_dbfs
 from streamhost.measure.noise_sum import Noise, NoiseSum, settling_of_run
-from streamhost.measure.predicted import Prediction
+from streamhost.measure.predicted import Density, Prediction
 from streamhost.measure.running import Block, Run
 from streamhost.measure.timing import ns_per_frame
 from streamhost.measure.watching import watch
@@ -107,8 +107,8 @@ def block_length(frames: int, settling: float) -> int:
 class Measurement:
     """Takes a signal of a known length block after block, then gives the result. Memory does not grow with the length.
 
-    Blocks are of `block` frames, but for the last. An overflow anywhere disturbs all outputs. Raises RequestError for words
-    at the doors that samples do not hold.
+    Blocks are of `block` frames, but for the last; the first `wait` frames do not count. An overflow anywhere disturbs all
+    outputs. Raises RequestError for words at the doors that samples do not hold.
     """
 
     def __init__(self, realization: Realization, frames: int, channels: int, band: Band) -> None:
@@ -118,7 +118,8 @@ class Measurement:
         settling = max(settling_frames(diagram, channel) for channel in range(diagram.channels))
         self.block = block_length(frames, settling)
         self._sums = [_OutputSum(realization, frames, channels, settling) for _ in realization.outputs]
-        self._watch = watch(realization.program, settling_of_run(settling, frames), self.block)
+        self.wait = settling_of_run(settling, frames)
+        self._watch = watch(realization.program, self.wait, self.block)
         self._first: FloatArray | None = None
 
     def step(self, x: FloatArray) -> Block:
@@ -145,6 +146,11 @@ class Measurement:
             ns_per_frame=ns_per_frame(realization, self._first),
             ideal=self._run.ideal.label,
         )
+
+    def predicted_density(self, figures: Figures) -> Density:
+        """Of an output and channel with figures: the predicted power, at radians a frame."""
+        output = self._realization.outputs.index(figures.name)
+        return self._watch.density(output, (figures.channel or 1) - 1)
 
     def _figures(self, output: int, name: str) -> Figures:
         realization, found = self._realization, self._sums[output]

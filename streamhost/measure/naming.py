@@ -2,6 +2,7 @@
 
 from streamhost.diagram.nodes import Delay, Gain, Input, Output, Round, Sum
 from streamhost.program.program import Program
+from streamhost.program.sources import Source
 
 
 def rounding_name(program: Program, index: int) -> str:
@@ -15,6 +16,12 @@ def rounding_name(program: Program, index: int) -> str:
     stored = isinstance(source, Delay | Input | Round) or (isinstance(source, Sum) and source.exact)
     multiplied = stored and all(isinstance(reader, Gain) for reader in readers)
     return f"the {'operand' if multiplied else 'register'} {_drawn_label(program, node.label)}"
+
+
+def source_name(program: Program, source: Source) -> str:
+    """A source of noise: as its rounding is called, or, inside a sum, as the term is."""
+    node = source.places[0][0]
+    return rounding_name(program, node) if isinstance(program.nodes[node], Round) else source.label
 
 
 def _drawn_label(program: Program, label: str) -> str:

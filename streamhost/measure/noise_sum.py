@@ -3,7 +3,7 @@
 Given as dBFS, the power of all channels averaged. The mean is taken out and told apart.
 """
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from math import isfinite
 
 import numpy as np
@@ -14,7 +14,7 @@ from streamhost.measure.counting import Counting, stretches
 from streamhost.measure.interval import degrees_of_freedom, half_width_db
 from streamhost.measure.levels import has_run_away, power_dbfs
 from streamhost.measure.moments import Moments
-from streamhost.measure.weighting import a_weighting
+from streamhost.measure.weighting import a_weighting, itu_468_weighting
 from streamhost.measure.welch import Spectrum, SpectrumSum, mean_spectrum, segment_lengths
 
 MOST_EXCLUDED = 0.01
@@ -26,19 +26,21 @@ ENOUGH_SEEN = 0.5
 class Noise:
     """What was measured; a figure is None where it cannot be given, and `reason` then says why.
 
-    dbfs: 20 Hz to the lower of 20 kHz and half the rate; full_dbfs: 0 to half the rate; a_dbfs: A-weighted in the band
-    of dbfs. interval_db: how far the 95 % interval reaches from dbfs, to the side where it reaches further. mean: of
-    the channel where it is largest in magnitude, 1.0 = full scale. excluded: share of the frames after the settling
-    time that lie within it from an overflow on.
+    dbfs: 20 Hz to the lower of 20 kHz and half the rate; full_dbfs: 0 to half the rate; a_dbfs and rms_468_dbfs: in the
+    band of dbfs through the curves A and 468. interval_db: how far the 95 % interval reaches from dbfs, to the side where
+    it reaches further. mean: of the channel where it is largest in magnitude, 1.0 = full scale. excluded: share of the
+    frames after the settling time that lie within it from an overflow on. spectrum: of all channels, unweighted.
     """
 
     dbfs: float | None
     interval_db: float | None
     full_dbfs: float | None
     a_dbfs: float | None
+    rms_468_dbfs: float | None
     mean: float | None
     excluded: float
     reason: str = ""
+    spectrum: Spectrum | None = field(default=None, compare=False, repr=False)
 
 
 def settling_of_run(settling: float, frames: int) -> int:
@@ -87,12 +89,12 @@ class NoiseSum:
         settled = sum(counting.settled for counting in self._counting)
         excluded = sum(counting.excluded for counting in self._counting) / settled if settled else 0.0
         if reason := self._why_none(excluded):
-            return Noise(None, None, None, None, None, excluded, reason)
+            return Noise(None, None, None, None, None, None, excluded, reason)
         full = power_dbfs(float(np.mean([moments.variance for moments in self._moments if moments.count])))
         mean = max((moments.mean for moments in self._moments), key=abs)
         band = audio_band(self._rate)
         if band is None:
-            return Noise(None, None, full, None, mean, excluded, "half the rate is below 20 Hz, where the band begins")
+            return Noise(None, None, full, None, None, mean, excluded, "half the rate is below 20 Hz, where the band begins")
         return self._in_band(band, full, mean, excluded)
 
     def _why_none(self, excluded: float) -> str:
@@ -119,9 +121,10 @@ class NoiseSum:
         spectrum = self._spectrum()
         shares = bin_shares(len(spectrum.power), spectrum.spacing, band)
         power = float(spectrum.power @ shares)
-        weighted = float(spectrum.power @ (shares * a_weighting(spectrum.frequencies)))
+        a, by_468 = (power_dbfs(float(spectrum.power @ (shares * weighting(spectrum.frequencies))))
+                     for weighting in (a_weighting, itu_468_weighting))
         interval = half_width_db(degrees_of_freedom(spectrum, shares)) if power else None
-        return Noise(power_dbfs(power), interval, full, power_dbfs(weighted), mean, excluded)
+        return Noise(power_dbfs(power), interval, full, a, by_468, mean, excluded, spectrum=spectrum)
 
 
 def noise_of(difference: NDArray[np.float64], rate: float, settling: float = 0.0) -> Noise:

@@ -12,7 +12,7 @@ from streamhost.formats import Float
 from streamhost.measure.bands import audio_band
 from streamhost.measure.frequencies import FloatArray, breakpoints, integral, integrals
 from streamhost.measure.levels import power_dbfs
-from streamhost.measure.weighting import a_weighting
+from streamhost.measure.weighting import a_weighting, itu_468_weighting
 from streamhost.program.float_errors import float_spectrum
 from streamhost.program.program import Program
 from streamhost.program.sources import noise_sources, noise_spectrum, source_spectra
@@ -22,7 +22,7 @@ Density = Callable[[FloatArray], FloatArray]
 
 @dataclass(frozen=True)
 class Prediction:
-    """Noise in dBFS: in the audio band, from 0 to half the rate, and A-weighted in the audio band.
+    """Noise in dBFS: in the audio band, from 0 to half the rate, and in the audio band through the curves A and 468.
 
     Infinite where an error does not die out; None in the band of a rate that has none.
     """
@@ -30,6 +30,7 @@ class Prediction:
     dbfs: float | None
     full_dbfs: float
     a_dbfs: float | None
+    rms_468_dbfs: float | None
 
 
 def predicted_noise(
@@ -39,27 +40,34 @@ def predicted_noise(
 
     A floating-point program's is an estimate that needs the `rms` of every node, (nodes,).
     """
-    density = _density(program, channel, output, rms)
+    density = predicted_density(program, rms, output=output, channel=channel)
     poles = {complex(pole) for pole in to_output(program.diagram, [], channel, output=output).poles}
-
-    def level(low: float, high: float, weight: Density | None = None) -> float:
-        power = integral(_weighted(density, weight), breakpoints(poles, low, high)) / np.pi
-        return power_dbfs(power) if isfinite(power) else inf
-
+    full = _dbfs(integral(density, breakpoints(poles, 0.0, np.pi)))
     band = audio_band(rate)
-    full = level(0.0, np.pi)
     if band is None:
-        return Prediction(None, full, None)
+        return Prediction(None, full, None, None)
     low, high = (2.0 * np.pi * edge / rate for edge in band)
-    in_hertz = rate / (2.0 * np.pi)
-    return Prediction(level(low, high), full, level(low, high, lambda w: a_weighting(w * in_hertz)))
+
+    def heard(w: FloatArray) -> FloatArray:
+        hertz = w * rate / (2.0 * np.pi)
+        weights = np.column_stack((np.ones_like(w), a_weighting(hertz), itu_468_weighting(hertz)))
+        return np.asarray(density(w)[:, None] * weights)
+
+    plain, a, by_468 = (_dbfs(power) for power in integrals(heard, breakpoints(poles, low, high)))
+    return Prediction(plain, full, a, by_468)
 
 
-def _density(program: Program, channel: int, output: int, rms: FloatArray | None) -> Density:
+def predicted_density(program: Program, rms: FloatArray | None = None, *, output: int = 0, channel: int = 0) -> Density:
+    """The power density at radians a frame: its mean over 0 .. pi is the noise power. `rms` as in `predicted_noise`."""
     if isinstance(program.format, Float):
         assert rms is not None, "what floats round depends on the signal"
         return lambda w: float_spectrum(program, rms, w, channel, output)
     return lambda w: noise_spectrum(program, w, channel, output)
+
+
+def _dbfs(integrated: float) -> float:
+    power = float(integrated) / np.pi
+    return power_dbfs(power) if isfinite(power) else inf
 
 
 def source_shares(program: Program, rate: float, edges: FloatArray, channel: int = 0, output: int = 0) -> FloatArray:
@@ -77,7 +85,3 @@ def source_shares(program: Program, rate: float, edges: FloatArray, channel: int
     if not np.isfinite(power).all():
         power = np.where(np.isfinite(power), 0.0, 1.0)
     return np.asarray(power / (power.sum() or 1.0), dtype=np.float64)
-
-
-def _weighted(density: Density, weight: Density | None) -> Density:
-    return density if weight is None else lambda w: density(w) * weight(w)

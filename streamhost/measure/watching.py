@@ -8,7 +8,7 @@ from numpy.typing import NDArray
 
 from streamhost.formats import Fixed
 from streamhost.measure.naming import rounding_name
-from streamhost.measure.predicted import Prediction, predicted_noise, source_shares
+from streamhost.measure.predicted import Density, Prediction, predicted_density, predicted_noise, source_shares
 from streamhost.measure.residues import ResidueSum, octave_edges
 from streamhost.measure.whiteness import LEAST_SHARE, Expected, Whiteness, judged
 from streamhost.program.program import Program, RoundArithmetic
@@ -44,6 +44,10 @@ class FixedWatch:
 
     def prediction(self, rate: float, output: int = 0, channel: int = 0) -> Prediction:
         return predicted_noise(self._program, rate, output=output, channel=channel)
+
+    def density(self, output: int = 0, channel: int = 0) -> Density:
+        """Of the predicted power, at radians a frame."""
+        return predicted_density(self._program, output=output, channel=channel)
 
 
 class _ColumnWatch:
@@ -104,8 +108,14 @@ class FloatWatch:
 
     def prediction(self, rate: float, output: int = 0, channel: int = 0) -> Prediction:
         """An estimate."""
-        power = self._squares[channel] / max(1.0, self._samples[channel])
-        return predicted_noise(self._program, rate, np.sqrt(power), output=output, channel=channel)
+        return predicted_noise(self._program, rate, self._rms(channel), output=output, channel=channel)
+
+    def density(self, output: int = 0, channel: int = 0) -> Density:
+        """An estimate."""
+        return predicted_density(self._program, self._rms(channel), output=output, channel=channel)
+
+    def _rms(self, channel: int) -> FloatArray:
+        return np.asarray(np.sqrt(self._squares[channel] / max(1.0, self._samples[channel])))
 
 
 def watch(program: Program, wait: int, block: int) -> FixedWatch | FloatWatch:

@@ -1,6 +1,6 @@
 """The instrument `noise`: what rounding the signals adds, predicted and measured."""
 
-from streamhost.measure.rounding.result import OutputNoise, RoundingNoise
+from streamhost.measure.rounding.result import DynamicRange, OutputNoise, RoundingNoise, SignalNoise, SourceNoise
 from streamhost.measure.rounding.rounding_noise import noise
 
-__all__ = ["OutputNoise", "RoundingNoise", "noise"]
+__all__ = ["DynamicRange", "OutputNoise", "RoundingNoise", "SignalNoise", "SourceNoise", "noise"]
