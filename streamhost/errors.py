@@ -34,7 +34,11 @@ class FormatError(RequestError):
 
 
 class StructureError(RequestError):
-    """A form or decomposition that does not exist or cannot carry the filter."""
+    """A form or decomposition that does not exist or cannot carry the filter; `reason`: a clause that says why not."""
+
+    def __init__(self, message: str, reason: str = "") -> None:
+        self.reason = reason
+        super().__init__(message)
 
 
 class AudioFileError(RequestError):

@@ -79,7 +79,7 @@ def test_the_shipped_presets_on_the_shipped_audio(tmp_path, capsys):
     assert main(["compare", *names, "--input", "plucked", "--output", str(folder), "--json", str(figures)]) == 0
     shown = capsys.readouterr().out
     document = json.loads(figures.read_text(encoding="utf-8"))
-    assert list(document) == ["rate", "input", "seed", "realizations"]
+    assert list(document) == ["rate", "input", "seed", "realizations", "refused"]
     assert (document["rate"], document["input"], document["seed"]) == (RATE, "plucked", 1)
     assert len(document["realizations"]) == len(names) >= 6
     for number, (name, row) in enumerate(zip(names, document["realizations"], strict=True), 1):

@@ -34,7 +34,8 @@ json_option = click.option(
 )
 vary_option = click.option(
     "--vary", "variations", metavar="KEY=V1,V2", multiple=True,
-    help="Make a family of each preset, for instance structure.form=direct-1,transposed-2. May be repeated.",
+    help="Make a family of each preset, for instance structure.form=direct-1,transposed-2; in compare, structure.form=all "
+         "takes all forms that carry the filter. May be repeated.",
 )
 
 

@@ -77,14 +77,17 @@ def compare(
     """
     from streamhost.cache import notice
     from streamhost.commands.compare_files import destinations, output_folder
-    from streamhost.commands.compare_text import document, misses, text
+    from streamhost.commands.compare_text import document, misses, refused, text
     from streamhost.files import probe
-    from streamhost.presets.realizing import realize_presets
+    from streamhost.presets.realizing import realize_those_that_carry
     from streamhost.shipped import resolve
 
     info = probe(resolve(source, "sample"))
-    stated = [at_rate(preset, info, source) for preset in presets_named(presets, variations)]
-    realizations = realize_presets(stated, info.channels)
+    asked = [at_rate(preset, info, source) for preset in presets_named(presets, variations)]
+    made, refusals = realize_those_that_carry(asked, info.channels)
+    if not made:
+        raise RequestError(" ".join(refused(refusals)))
+    stated, realizations = [preset for preset, _ in made], [realization for _, realization in made]
     for preset, realization in zip(stated, realizations, strict=True):
         realization.check_samples(preset.source.name)
     _check_one_filter(stated, realizations)
@@ -95,11 +98,11 @@ def compare(
     if problem := notice():
         click.echo(problem, err=True)
     if json_file != "-":
-        click.echo(text(compared, info))
+        click.echo(text(compared, info, refusals))
     elif missed := list(misses(compared)):
         click.echo("\n".join(missed), err=True)
     if json_file is not None:
-        write_json(json_file, document(compared, info, source), force=force)
+        write_json(json_file, document(compared, info, source, refusals), force=force)
     return int(any(one.misses for one in compared))
 
 

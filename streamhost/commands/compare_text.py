@@ -11,9 +11,11 @@ from streamhost.formats import Float, Format
 from streamhost.measure import Figures
 from streamhost.measure.limits import SEED
 from streamhost.presets import Preset
+from streamhost.presets.realizing import Refusal
 
 LONGEST_TITLE = 56
 LEAST_TITLE = 8
+MOST_NUMBERED = 8
 
 NOISE = (
     Column("lane"), Column("form · decomposition · format"), Column("noise", "dBFS", 1), Column("95 %", "± dB", 2),
@@ -31,11 +33,12 @@ METHOD = (
 )
 
 
-def text(compared: Sequence[Compared], info: AudioInfo) -> str:
-    """The whole report for a terminal."""
+def text(compared: Sequence[Compared], info: AudioInfo, refusals: Sequence[Refusal] = ()) -> str:
+    """The whole report for a terminal; `refusals`: of forms that were sought."""
     paragraphs = [
         _ledger(NOISE, compared, _noise_row),
         _ledger(REST, compared, _rest_row),
+        " ".join(refused(refusals)),
         "\n".join(_verdict(compared)),
         "\n".join(_sums(compared)),
         "\n".join(_remarks(compared)),
@@ -94,6 +97,17 @@ def _rest_row(one: Compared, figures: Figures) -> list[Cell]:
         *_once(one, figures, [counts.multiplications, counts.additions, counts.delays, measured.ns_per_frame]),
         figures.difference_gain_db,
     ]
+
+
+def refused(refusals: Sequence[Refusal]) -> Iterator[str]:
+    """A sentence for each reason for which forms are not among those compared."""
+    by_reason: dict[str, list[str]] = {}
+    for each in refusals:
+        by_reason.setdefault(each.reason, []).append(each.preset.form)
+    if by_reason:
+        yield "Not compared, for they cannot carry this filter:"
+    for reason, forms in by_reason.items():
+        yield f"{', '.join(dict.fromkeys(forms))}: {reason}."
 
 
 def _verdict(compared: Sequence[Compared]) -> Iterator[str]:
@@ -181,6 +195,8 @@ def _conditions(compared: Sequence[Compared], info: AudioInfo) -> str:
     ideals: dict[str, list[str]] = {}
     for number, one in enumerate(compared, 1):
         ideals.setdefault(one.measured.ideal, []).append(str(number))
+    if len(ideals) == 1 and len(compared) > MOST_NUMBERED:
+        ideals = dict.fromkeys(ideals, ["all"])
     said = "; ".join(f"{ideal} for {', '.join(numbers)}" for ideal, numbers in ideals.items())
     channels = "1 channel" if info.channels == 1 else f"{info.channels} channels"
     sentences = [
@@ -197,11 +213,14 @@ def seed_of(compared: Sequence[Compared]) -> int | None:
     return SEED if any(one.verdicts for one in compared) else None
 
 
-def document(compared: Sequence[Compared], info: AudioInfo, source: str) -> dict[str, object]:
+def document(
+    compared: Sequence[Compared], info: AudioInfo, source: str, refusals: Sequence[Refusal] = ()
+) -> dict[str, object]:
     """The figures under keys that are spelt with their unit; those not given are None. `source` is the input as asked for."""
     return {
         "rate": info.rate, "input": source, "seed": seed_of(compared),
         "realizations": [_figures(one) for one in compared],
+        "refused": [{"form": each.preset.form, "title": each.preset.title, "reason": each.reason} for each in refusals],
     }
 
 

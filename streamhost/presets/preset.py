@@ -14,12 +14,16 @@ from streamhost.presets.lines import Lines
 
 @dataclass(frozen=True)
 class Source:
-    """What a preset was read from: its name as the user gave it, the raw table, the line of each key, what was varied."""
+    """What a preset was read from: its name as the user gave it, the raw table, the line of each key, what was varied.
+
+    `sought`: its form is one of all, and may turn out not to carry the filter.
+    """
 
     name: str
     table: Mapping[str, Any]
     lines: Lines
     varied: tuple[str, ...] = ()
+    sought: bool = False
 
 
 @dataclass(frozen=True)

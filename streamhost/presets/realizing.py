@@ -2,6 +2,7 @@
 
 import re
 from collections.abc import Iterable, Mapping
+from dataclasses import dataclass
 
 from streamhost.errors import FilterError, FormatError, PresetError, StructureError
 from streamhost.presets.lines import Path
@@ -23,11 +24,7 @@ def realize_preset(preset: Preset, channels: int | None = None) -> Realization:
     count = preset.channels if channels is None else channels
     _check_channels(mistakes, preset, count)
     try:
-        return realize(
-            preset.filters(count), form=preset.form, decomposition=preset.decomposition, pairing=preset.pairing,
-            ordering=preset.ordering, scaling=preset.scaling, outputs=preset.outputs, format=preset.format,
-            allow_unstable=preset.allow_unstable,
-        )
+        return _realized(preset, count)
     except FilterError as error:
         _add(mistakes, preset, ("filter",), str(error))
     except FormatError as error:
@@ -35,6 +32,46 @@ def realize_preset(preset: Preset, channels: int | None = None) -> Realization:
     except StructureError as error:
         _add(mistakes, preset, _structure_path(error), str(error))
     raise PresetError(mistakes.texts())
+
+
+def _realized(preset: Preset, channels: int) -> Realization:
+    return realize(
+        preset.filters(channels), form=preset.form, decomposition=preset.decomposition, pairing=preset.pairing,
+        ordering=preset.ordering, scaling=preset.scaling, outputs=preset.outputs, format=preset.format,
+        allow_unstable=preset.allow_unstable,
+    )
+
+
+@dataclass(frozen=True)
+class Refusal:
+    """A form that was sought and does not carry a preset's filter, or not with its numbers; `reason` is a clause."""
+
+    preset: Preset
+    reason: str
+
+
+def realize_those_that_carry(
+    presets: Iterable[Preset], channels: int | None = None
+) -> tuple[list[tuple[Preset, Realization]], list[Refusal]]:
+    """All of them but those that were sought among all forms and are refused; raises PresetError for any other refusal."""
+    kept: list[Preset] = []
+    refusals: list[Refusal] = []
+    for preset in presets:
+        if preset.source.sought and (reason := _refused(preset, channels)):
+            refusals.append(Refusal(preset, reason))
+        else:
+            kept.append(preset)
+    return list(zip(kept, realize_presets(kept, channels), strict=True)), refusals
+
+
+def _refused(preset: Preset, channels: int | None) -> str:
+    try:
+        _realized(preset, preset.channels if channels is None else channels)
+    except StructureError as error:
+        return error.reason or str(error)
+    except FormatError as error:
+        return str(error).split(". ")[0]
+    return ""
 
 
 def realize_presets(presets: Iterable[Preset], channels: int | None = None) -> list[Realization]:

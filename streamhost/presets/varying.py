@@ -12,10 +12,14 @@ from streamhost.presets.lines import split_at_commas
 from streamhost.presets.mistakes import one_line, value_text
 from streamhost.presets.preset import Preset
 from streamhost.presets.reading import read_preset
+from streamhost.structures import forms
 
 MOST_VARIANTS = 1000
 ONE_OF = {"rate": "rates", "rates": "rate"}
 """Keys of the head of which one stands in the place of the other."""
+
+ALL_FORMS = ("structure.form", "all")
+"""A key and the value that stands for every form there is, of which those are kept that carry the filter."""
 
 EXAMPLE = "structure.form=direct-1,transposed-2"
 
@@ -29,7 +33,8 @@ def vary(presets: Iterable[Preset], variations: Sequence[str]) -> list[Preset]:
 
     A key is written as in the file, with its table: format.signal, filter.q, or filter.2.q where there are several
     filters. A value is TOML where it can be read as such, else a text. It replaces what the preset states for that key
-    and nothing else. Raises PresetError with the mistakes of the first variant that has some.
+    and nothing else. "structure.form=all" is every form, and its presets are marked as sought. Raises PresetError with the
+    mistakes of the first variant that has some.
     """
     read = [_variation(text) for text in variations]
     keys = [key for key, _ in read]
@@ -38,15 +43,26 @@ def vary(presets: Iterable[Preset], variations: Sequence[str]) -> list[Preset]:
             raise PresetError([f"--vary {key} is given twice: join its values by commas, for instance {EXAMPLE}."])
     presets = list(presets)
     combinations = list(product(*(_choices(*variation) for variation in read))) if _count(presets, read) else []
-    return [_varied(preset, chosen) for preset in presets for chosen in combinations]
+    family = [_varied(preset, chosen) for preset in presets for chosen in combinations]
+    if not any(_asks_for_all(*_parts(text)) for text in variations):
+        return family
+    return [replace(one, source=replace(one.source, sought=True)) for one in family]
+
+
+def _asks_for_all(key: str, values: Sequence[str]) -> bool:
+    return key == ALL_FORMS[0] and ALL_FORMS[1] in values
 
 
 def _variation(text: str) -> Variation:
-    key, equals, values = text.partition("=")
-    parts = tuple(value.strip() for value in split_at_commas(values))
-    if not equals or not all(key.split(".")) or not all(parts):
+    key, values = _parts(text)
+    if "=" not in text or not all(key.split(".")) or not all(values):
         raise PresetError([f"--vary {text} is not KEY=VALUE,VALUE, for instance {EXAMPLE}."])
-    return key.strip(), parts
+    return key, forms() if _asks_for_all(key, values) else values
+
+
+def _parts(text: str) -> Variation:
+    key, _, values = text.partition("=")
+    return key.strip(), tuple(value.strip() for value in split_at_commas(values))
 
 
 def _count(presets: Sequence[Preset], variations: Sequence[Variation]) -> int:

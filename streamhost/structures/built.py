@@ -110,7 +110,8 @@ def _check_carried(division: Division, form: Form, output: str) -> None:
             which = "the filter" if division.undivided or len(ratios) == 1 else f"section {number} of {len(ratios)}"
             where = f'{which} to the output "{output}"' if output else which
             able = [name for name, other in FORMS.items() if not any(map(other.carries, ratios))]
-            raise StructureError(f'form "{form.name}" cannot carry {where}: {reason}. Forms that can: {", ".join(able)}.')
+            said = f'form "{form.name}" cannot carry {where}: {reason}. Forms that can: {", ".join(able)}.'
+            raise StructureError(said, reason)
 
 
 def _hazards(division: Division, form: Form) -> tuple[str, ...]:
