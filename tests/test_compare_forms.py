@@ -43,6 +43,6 @@ def test_one_filter_in_all_forms_that_carry_it_and_in_one_of_the_users_own(tmp_p
     assert "offset" in rows
     assert {each["form"] for each in found["refused"]} == {"all-pass-sum", "wave-digital", *FINITE}
     heard = {form: row for form, row in rows.items() if row["noise_dbfs"] is not None}
-    assert len(heard) >= 12
+    assert len(heard) >= 11  # the direct form, state-variable, error-feedback and low-frequency ones, and the own
     for form, row in heard.items():  # 20 dB and more above what their states add, the output's own rounding is heard
         assert row["noise_dbfs"] == pytest.approx(row["noise_predicted_dbfs"], abs=1.0), form

@@ -1,21 +1,42 @@
-"""Predicted noise is measured in the forms whose roundings the white model describes."""
+"""Predicted noise is measured wherever the white model is said to hold; tests/benchmarks/noise_grid.py is all of it."""
 
 import pytest
+from noise_cases import Case, case, cases
 
-from streamhost import Fixed, design, realize
-from streamhost.measure import measure
-from streamhost.signals import white
+from streamhost import forms
 
-RATE = 48000
+EASY = [("zoelzer", "low-pass 100 Hz"), ("folded", "symmetric 21")]
+
+
+def check(found: Case) -> None:
+    assert found.reason or found.holds
+    if found.holds:
+        assert found.agrees, found
+
+
+@pytest.mark.parametrize(("form", "filter"), EASY)
+def test_a_busy_signal_obeys_the_white_model_and_the_prediction(form: str, filter: str) -> None:
+    """At 24 bits, where nothing sticks."""
+    found = case(form, filter, "Q1.23")
+    assert found is not None
+    assert found.holds, found.reason
+    check(found)
+
+
+def test_where_two_roundings_drop_the_same_the_model_is_said_to_fail() -> None:
+    """A low-pass has b2 = b0, and transposed-1 multiplies one value by both; measured is 2 dB off in the lattice-ladder."""
+    for form in ("transposed-1", "lattice-ladder"):
+        found = case(form, "low-pass 1 kHz", "Q1.23")
+        assert found is not None
+        assert found.holds is False
+        assert "correlated" in found.reason
+    assert found.off is not None
+    assert abs(found.off) > 1.0
 
 
 @pytest.mark.slow
-@pytest.mark.parametrize("form", ["coupled", "lattice-normalized"])
-def test_predicted_noise_is_measured(form: str) -> None:
-    """Within 0.5 dB or the measurement's own 95 % interval, as everywhere."""
-    filter = design("low-pass", rate=RATE, frequency=1000, q=0.707)
-    realization = realize(filter, form=form, format=Fixed("Q1.15", coefficients={"bits": 32}))
-    # 10 dB down: white noise then stays five times its rms below the largest node's full scale
-    measured = measure(realization, white(3 * RATE, 1, 3, -10.0), (20.0, 20000.0))
-    assert measured.white.holds and measured.noise.dbfs is not None
-    assert measured.noise.dbfs == pytest.approx(measured.prediction.dbfs, abs=max(0.5, measured.noise.interval_db))
+@pytest.mark.parametrize("form", forms())
+def test_predicted_noise_is_measured_in_every_form(form: str) -> None:
+    """All five filters, both words; as the figure to reach asks, 95 in 100 of all, one in ten of a form's may be off."""
+    judged = [found for found in cases((form,)) if found.holds]
+    assert sum(not found.agrees for found in judged) <= 1, judged

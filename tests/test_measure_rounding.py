@@ -177,3 +177,15 @@ def test_the_tone_is_in_the_pass_band(kind, frequency, expected):
     """At the cut-off, 3.01 dB down at q = 1/sqrt 2, or where nothing is cut."""
     realization = realize(design(kind, rate=RATE, frequency=frequency, q=2**-0.5), format="float64")
     assert tone_hz(realization, 0) == pytest.approx(expected, rel=0.01)  # a step of the grid, and 0.01 dB
+
+
+# Full-scale sine over the error of rounding it to N bits, full band, in dB: 6.02 N + 1.76 (IEC 61606-3:2008 and AES17-2015
+# for what 0 dBFS is), within 0.3 dB.
+ROUNDED = {8: 49.93, 12: 74.01, 16: 98.09, 20: 122.17, 24: 146.26}
+
+
+@pytest.mark.parametrize("bits", ROUNDED)
+def test_a_rounded_full_scale_sine_is_as_far_above_its_error_as_the_table_says(bits):
+    wire = realize(Filter.from_coefficients([1.0], rate=RATE), format=Fixed(f"Q1.{bits - 1}", coefficients="Q2.14"))
+    x = (1.0 - 2.0 ** (1 - bits)) * np.sin(2 * np.pi * 997.0 / RATE * np.arange(2 * RATE))[:, np.newaxis]
+    assert noise_of(wire.process(x) - x, RATE).full_dbfs == pytest.approx(-ROUNDED[bits], abs=0.3)

@@ -196,7 +196,7 @@ def _conditions(compared: Sequence[Compared], info: AudioInfo) -> str:
     for number, one in enumerate(compared, 1):
         ideals.setdefault(one.measured.ideal, []).append(str(number))
     if len(ideals) == 1 and len(compared) > MOST_NUMBERED:
-        ideals = dict.fromkeys(ideals, ["all"])
+        ideals = {ideal: ["all"] for ideal in ideals}
     said = "; ".join(f"{ideal} for {', '.join(numbers)}" for ideal, numbers in ideals.items())
     channels = "1 channel" if info.channels == 1 else f"{info.channels} channels"
     sentences = [
