@@ -51,9 +51,10 @@ def main(names: tuple[str, ...]) -> None:
         filters = FINITE if any(one.filter in FINITE for one in own) else RECURSIVE
         by_place = {(one.filter, one.word): cell(one, letters) for one in own}
         rows.append([name, *(by_place.get((each, word), "") for each in filters for word in WORDS)])
-    columns = [Column("form"), *(Column(f"{each} | {finite}", word) for each, finite in zip(RECURSIVE, FINITE, strict=True)
-                                 for word in WORDS)]
+    columns = [Column("form"), *(Column(str(number), word) for number in range(1, len(RECURSIVE) + 1) for word in WORDS)]
     print(ledger(columns, rows, numbered=False))
+    for number, (recursive, finite) in enumerate(zip(RECURSIVE, FINITE, strict=True), 1):
+        print(f"{number}: {recursive}; of forms for finite responses: {finite}")
     counts = Counter(kind_of(one.reason) for one in found if not one.holds)
     for kind, letter in letters.items():
         print(f"{letter}: {kind} ({counts[kind]})")
