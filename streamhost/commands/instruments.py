@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from streamhost import measure
-from streamhost.commands.measuring import float_, limit_cycles, noise, overflow, response, tone
+from streamhost.commands.measuring import float_, limit_cycles, noise, overflow, response, table, tone, transients
 from streamhost.commands.measuring.wave import Wave
 from streamhost.measure.bands import Band
 from streamhost.measure.limits import Verdict, limit_band, limit_signal, verdicts
@@ -18,6 +18,12 @@ from streamhost.realization import Realization
 
 RECORDING = "chord"
 """In which noise is measured too: mono, quiet, and it fades to silence."""
+
+CHANGED = "plucked"
+"""What changes are tried on, sample by sample whatever the rate, unless the user gives a recording."""
+
+CHANGEOVER_MS = 20.0
+"""Of fades and ramps, unless the preset's limits say."""
 
 Report = Callable[[float, str], None]
 
@@ -28,7 +34,10 @@ def unheard(share: float, doing: str) -> None:
 
 @dataclass(frozen=True)
 class Asked:
-    """What an instrument is to measure, and how. x: the signal, (frames, channels), 1.0 = full scale; `heard`: its name."""
+    """What an instrument is to measure, and how. x: the signal, (frames, channels), 1.0 = full scale; `heard`: its name.
+
+    given: it is the user's, and not the one for limits.
+    """
 
     preset: Preset
     realization: Realization
@@ -37,6 +46,7 @@ class Asked:
     quick: bool = False
     report: Report = unheard
     heard: str = "white"
+    given: bool = False
 
 
 @dataclass(frozen=True)
@@ -94,6 +104,23 @@ def _overflow(asked: Asked) -> measure.Overflow:
     return measure.overflow(asked.realization, asked.x, quick=asked.quick, report=asked.report)
 
 
+def _transients(asked: Asked, *, judged_only: bool = False) -> measure.Transients:
+    """On the user's recording or a shipped one: noise hides what a change does."""
+    from streamhost.files import read_all
+    from streamhost.measure.changes import form_targets, parameter_targets
+    from streamhost.shipped import resolve
+
+    limits: Mapping[str, Any] = asked.preset.limits
+    steps = (1,) if asked.quick and not judged_only else (1, -1)
+    targets = parameter_targets(asked.preset, asked.realization, steps=steps)
+    return measure.transients(
+        asked.realization, asked.x if asked.given else read_all(resolve(CHANGED, "sample"))[0],
+        targets=targets if judged_only else [*targets, *form_targets(asked.realization)],
+        changeover=limits.get("changeover", "keep"), over_ms=limits.get("changeover_ms", CHANGEOVER_MS), quick=asked.quick,
+        judged_only=judged_only, report=asked.report,
+    )
+
+
 def _tone(asked: Asked) -> measure.Tones:
     return measure.tone(asked.realization, quick=asked.quick, report=asked.report)
 
@@ -118,6 +145,10 @@ INSTRUMENTS = (
         "limit_cycles", lambda asked: measure.limit_cycles(asked.realization, quick=asked.quick, report=asked.report),
         limit_cycles.lines, limit_cycles.waves, _certificate, seconds=10.0,
     ),
+    Instrument("transients", _transients, transients.lines, transients.waves, seconds=8.0,
+               judged=lambda asked: _transients(asked, judged_only=True)),
+    Instrument("table", lambda asked: measure.table(asked.preset, quick=asked.quick, report=asked.report), table.lines,
+               table.waves, seconds=12.0),
     Instrument("tone", _tone, tone.lines, waves=tone.waves, seconds=4.0,
                judged=lambda asked: measure.tone(asked.realization, [], idle=False)),
     Instrument("float", lambda asked: measure.float_particulars(asked.realization, quick=asked.quick, report=asked.report),

@@ -93,4 +93,4 @@ def _asked(stated: "Preset", source: str | None, *, quick: bool) -> "Asked":
     realization = realize_preset(preset, info.channels)
     realization.check_samples(preset.source.name)
     x, band = read_all(info.path)[0], limit_band(preset.limits, preset.rate)
-    return Asked(preset, realization, x, band, quick, heard=info.path.stem)
+    return Asked(preset, realization, x, band, quick, heard=info.path.stem, given=True)

@@ -63,6 +63,11 @@ def norms_from_input(diagram: Diagram, channel: int = 0, *, input: int = 0,
     return _norms(fans.from_input(diagram, channel, input=input, nodes=nodes))
 
 
+def sums_from_input(diagram: Diagram, channel: int = 0, *, input: int = 0, nodes: Sequence[int] | None = None) -> FloatArray:
+    """sum |h| from an input to nodes, (nodes,), never too small: the l1 of `norms_from_input` without the rest."""
+    return _absolute_sums(follow(fans.from_input(diagram, channel, input=input, nodes=nodes)))[0]
+
+
 def sums_from_errors(diagram: Diagram, sources: Sequence[int], nodes: Sequence[int], channel: int = 0) -> FloatArray:
     """sum |h| from the error of each source node to nodes, (sources, nodes), never too small."""
     fan_of_each = fans.from_errors(diagram, sources, nodes, channel)

@@ -40,7 +40,9 @@ class Deviation:
     reason: str = ""
 
 
-def response_deviation(realization: Realization, band: Band, outputs: Sequence[int] = (0,)) -> Deviation:
+def response_deviation(
+    realization: Realization, band: Band, outputs: Sequence[int] = (0,), *, zoomed: bool = True
+) -> Deviation:
     """Of the coefficients as stored, from the state space; judged where |H asked| is within 40 dB of its maximum.
 
     H leads to an output, or, of several, to their sum. Seen on a grid of 16 points an interval, intervals being octaves
@@ -48,7 +50,7 @@ def response_deviation(realization: Realization, band: Band, outputs: Sequence[i
     is then zoomed in on. Of channels the one that deviates most.
     """
     channels = range(realization.program.diagram.channels)
-    found = [_of_channel(Responses(realization, channel, tuple(outputs)), band) for channel in channels]
+    found = [_of_channel(Responses(realization, channel, tuple(outputs)), band, zoomed) for channel in channels]
     return max(found, key=lambda deviation: inf if deviation.db is None else deviation.db)
 
 
@@ -89,7 +91,7 @@ class Responses:
         return from_input(diagram, self.channel, nodes=[diagram.outputs[output] for output in self.outputs]).poles
 
 
-def _of_channel(responses: Responses, band: Band) -> Deviation:
+def _of_channel(responses: Responses, band: Band, zoomed: bool) -> Deviation:
     rate = responses.realization.rate
     low, high = (2.0 * pi * edge / rate for edge in band)
     hertz = np.clip(refined(breakpoints(responses.poles, low, high), PARTS) * rate / (2.0 * pi), *band)
@@ -102,7 +104,8 @@ def _of_channel(responses: Responses, band: Band) -> Deviation:
     judged = asked >= top * JUDGED
     leak = rounded[~judged].max(initial=0.0) / top
     db = np.where(judged, _deviation_db(asked, rounded), -1.0)
-    at, most = _zoomed(responses, hertz, int(db.argmax()), top)
+    place = int(db.argmax())
+    at, most = _zoomed(responses, hertz, place, top) if zoomed else (float(hertz[place]), float(db[place]))
     return Deviation(most, float(f"{at:.{DIGITS}g}"), None if judged.all() else decibels(leak**2))
 
 

@@ -111,6 +111,18 @@ def _limit_cycle(result: Any) -> Iterator[Finding]:
     yield Finding(float(max(found)), about=about) if found else Finding(None, result.reason)
 
 
+def _transient(result: Any) -> Iterator[Finding]:
+    yield Finding(result.peak_dbfs, result.reason, about=_change(result))
+
+
+def _click(result: Any) -> Iterator[Finding]:
+    yield Finding(result.click_468_dbfs, result.reason, about=_change(result))
+
+
+def _change(result: Any) -> str:
+    return f"{result.change} by {result.changeover}" if result.change else ""
+
+
 def _counted(count: Callable[[Realization], int]) -> Callable[[Realization], Iterator[Finding]]:
     return lambda realization: iter([Finding(float(count(realization)))])
 
@@ -123,6 +135,8 @@ LIMITS = (
     Limit("headroom_db", "dB", "overflow", _headroom, AT_LEAST),
     Limit("limit_cycle_lsb", "LSB", "limit_cycles", _limit_cycle),
     Limit("thd_n_db", "dB", "tone", _thd_n),
+    Limit("transient_dbfs", "dBFS", "transients", _transient),
+    Limit("click_dbfs", "dBFS", "transients", _click),
     Limit("multiplications", "", "", _counted(lambda each: each.program.drawn.counts().multiplications)),
     Limit("memory_words", "words", "", _counted(lambda each: each.program.drawn.counts().delays)),
 )

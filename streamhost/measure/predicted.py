@@ -57,6 +57,22 @@ def predicted_noise(
     return Prediction(plain, full, a, by_468)
 
 
+def predicted_band_noise(program: Program, rate: float, *, output: int = 0, channel: int = 0) -> float:
+    """Of a fixed-point program the `dbfs` alone, or where the rate has no audio band `full_dbfs`."""
+    low, high = (2.0 * np.pi * edge / rate for edge in audio_band(rate) or (0.0, rate / 2.0))
+    return _between(program, low, high, output, channel)
+
+
+def predicted_full_noise(program: Program, *, output: int = 0, channel: int = 0) -> float:
+    """Of a fixed-point program the `full_dbfs` alone."""
+    return _between(program, 0.0, np.pi, output, channel)
+
+
+def _between(program: Program, low: float, high: float, output: int, channel: int) -> float:
+    poles = {complex(pole) for pole in to_output(program.diagram, [], channel, output=output).poles}
+    return _dbfs(integral(predicted_density(program, output=output, channel=channel), breakpoints(poles, low, high)))
+
+
 def predicted_density(program: Program, rms: FloatArray | None = None, *, output: int = 0, channel: int = 0) -> Density:
     """The power density at radians a frame: its mean over 0 .. pi is the noise power. `rms` as in `predicted_noise`."""
     if isinstance(program.format, Float):

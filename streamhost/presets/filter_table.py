@@ -10,6 +10,7 @@ from streamhost.filters.designs import KINDS, design
 from streamhost.presets.bands import Band, Bands, filter_of, highest_channel
 from streamhost.presets.lines import Path
 from streamhost.presets.mistakes import Mistakes, listed, one_line
+from streamhost.presets.positions import check_positions
 from streamhost.presets.tables import (
     Channels,
     CodesTable,
@@ -75,8 +76,10 @@ def _read_band(mistakes: Mistakes, table: Table, path: Path, rate: float | None)
     channels = read_value(mistakes, table["channels"], (*path, "channels"), Channels) if "channels" in table else ()
     if channels is not None and len(set(channels)) < len(channels):
         mistakes.value((*path, "channels"), channels, "is not allowed: a channel is named once.")
-    own = {key: value for key, value in table.items() if key != "channels"}
+    own = {key: value for key, value in table.items() if key not in ("channels", "positions")}
     filter = _read_filter(mistakes, own, path, rate)
+    if "positions" in table:
+        check_positions(mistakes, table, path, rate)
     return Band(filter, tuple(channels)) if filter is not None and channels is not None else None
 
 

@@ -14,7 +14,7 @@ from streamhost.presets.format_table import read_format
 from streamhost.presets.lines import scan
 from streamhost.presets.mistakes import Mistakes, listed
 from streamhost.presets.preset import Preset, Source
-from streamhost.presets.tables import LimitsTable, PresetTable, StructureTable, read_table
+from streamhost.presets.tables import CHANGEOVERS, LimitsTable, PresetTable, StructureTable, read_table
 from streamhost.shipped import names, resolve
 
 LARGEST_BYTES = 1_000_000
@@ -191,6 +191,7 @@ def _limits(mistakes: Mistakes, table: Mapping[str, Any], rate: float | None) ->
             )
         limits["band_hz"] = tuple(band)
     _check_mask(mistakes, limits)
+    _check_changeover(mistakes, limits)
     return limits
 
 
@@ -202,3 +203,12 @@ def _check_mask(mistakes: Mistakes, limits: Mapping[str, object]) -> None:
         mistakes.value(("limits", "mask_hz"), mid, f"is not allowed: {mid_bands_text(mask)}.")
     elif mid is not None and mask is None:
         mistakes.value(("limits", "mask_hz"), mid, "says of which band a mask is, and there is no mask.")
+
+
+def _check_changeover(mistakes: Mistakes, limits: Mapping[str, object]) -> None:
+    changeover, over = limits.get("changeover"), limits.get("changeover_ms")
+    if isinstance(changeover, str) and changeover not in CHANGEOVERS:
+        mistakes.value(("limits", "changeover"), changeover,
+                       f"is not known: {listed(CHANGEOVERS)}.{nearest(changeover, CHANGEOVERS)}")
+    if isinstance(over, float) and not 0.0 < over <= 1000.0:
+        mistakes.value(("limits", "changeover_ms"), over, "is not allowed: a fade or ramp takes above 0 and at most 1000 ms.")

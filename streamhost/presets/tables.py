@@ -14,6 +14,9 @@ from streamhost.presets.mistakes import Mistakes
 
 MOST_CHANNELS = 64
 
+CHANGEOVERS = ("keep", "cold", "carry", "warm", "fade", "ramp")
+"""How a limit on transients says that a change is made: as the host's, or `keep` with the parameter moved along."""
+
 Text = Annotated[str, msgspec.Meta(description="a text in quotes")]
 Number = Annotated[float, msgspec.Meta(description="a number")]
 Rate = Annotated[float, msgspec.Meta(description="a number of hertz")]
@@ -120,6 +123,12 @@ class LimitsTable(msgspec.Struct, kw_only=True):
     mask_hz: Number | None = None
     limit_cycle_lsb: Number | None = None
     thd_n_db: Number | None = None
+
+
+    transient_dbfs: Number | None = None
+    click_dbfs: Number | None = None
+    changeover: Text | None = None
+    changeover_ms: Number | None = None
     multiplications: Whole | None = None
     memory_words: Whole | None = None
 

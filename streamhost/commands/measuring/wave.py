@@ -1,9 +1,14 @@
 """Audio that an instrument found."""
 
+from collections.abc import Iterator
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
+
+from streamhost.measure.changes import Trace
+
+LISTENING_DBFS, MOST_RAISED_DB = -12.0, 150
 
 
 @dataclass(frozen=True, eq=False)
@@ -12,3 +17,14 @@ class Wave:
 
     name: str
     samples: NDArray[np.float64]
+
+
+def change_waves(name: str, trace: Trace) -> Iterator[Wave]:
+    """A change as it is heard, and its deviation raised to a peak of about -12 dBFS, if it has one."""
+    yield Wave(name, trace.heard[:, None])
+    deviation = trace.deviation
+    peak = float(np.abs(deviation).max())
+    if np.isfinite(peak) and peak > 0.0:
+        gain = min(MOST_RAISED_DB, int(np.floor(LISTENING_DBFS - 20.0 * np.log10(peak))))
+        said = f"raised-{gain}" if gain >= 0 else f"lowered-{-gain}"
+        yield Wave(f"{name}-deviation-{said}-dB", deviation[:, None] * 10.0 ** (gain / 20.0))
