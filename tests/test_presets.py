@@ -351,6 +351,9 @@ LIMITS = {
     'noise_dbfs = "-90"': '8: noise_dbfs = "-90" is not allowed: noise_dbfs is a number.',
     "response_deviation_db = -0.1":
         "8: response_deviation_db = -0.1 is not allowed: a deviation is at least 0 dB.",
+    'changeover = "crossfade"':
+        '8: changeover = "crossfade" is not known: keep, cold, carry, warm, fade or ramp. Did you mean "fade"?',
+    "changeover_ms = 0": "8: changeover_ms = 0.0 is not allowed: a fade or ramp takes above 0 and at most 1000 ms.",
 }
 
 
