@@ -7,6 +7,7 @@ import signal
 import threading
 from pathlib import Path
 
+import pytest
 from hypothesis import settings
 
 import streamhost
@@ -29,3 +30,13 @@ for module in pkgutil.walk_packages(streamhost.__path__, "streamhost."):
 # A run in the background of a script starts with Ctrl-C ignored, and so would every process that the tests interrupt.
 if threading.current_thread() is threading.main_thread():
     signal.signal(signal.SIGINT, signal.default_int_handler)
+
+
+@pytest.fixture(scope="session")
+def report(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """The folder of a report of a comparison, for all who only look at it."""
+    from report_examples import compared, quick
+
+    with pytest.MonkeyPatch.context() as patch:
+        quick(patch)
+        return compared(tmp_path_factory.mktemp("report"))

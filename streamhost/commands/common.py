@@ -32,6 +32,9 @@ json_option = click.option(
     "--json", "json_file", metavar="FILE", default=None,
     help="Write the table's figures as JSON, each key with its unit; - is standard output.",
 )
+report_option = click.option(
+    "--report", metavar="DIR", help="Write a report into a new folder: a page that opens from disk, its figures, its audio.",
+)
 vary_option = click.option(
     "--vary", "variations", metavar="KEY=V1,V2", multiple=True,
     help="Make a family of each preset, for instance structure.form=direct-1,transposed-2; in compare, structure.form=all "
@@ -53,6 +56,16 @@ structures_option = click.option(
     "--structures", metavar="FILE.py", multiple=True, expose_value=False, is_eager=True, callback=_take_up,
     help="Run a Python file that declares structures of your own, and take them up as forms. May be repeated.",
 )
+
+
+def version() -> str:
+    """The number of this version."""
+    from importlib import metadata
+
+    try:
+        return metadata.version("streamhost")
+    except metadata.PackageNotFoundError:
+        return "run from a folder, not installed"
 
 
 def presets_named(names: Sequence[str], variations: Sequence[str] = ()) -> "list[Preset]":
@@ -131,6 +144,20 @@ def check_folder(folder: Path) -> None:
         raise RequestError(f"{folder}: this is a file, and --output takes the name of a folder.")
     if not folder.absolute().parent.is_dir():
         raise RequestError(f"{folder}: the folder {folder.parent} does not exist. Make it first, or choose another.")
+
+
+def check_report(name: str | None, *, force: bool) -> None:
+    """RequestError, before any work, where no report can be written into a folder of that name."""
+    if name is not None:
+        from streamhost.report import check_report as check
+
+        check(Path(name), force=force)
+
+
+def tell_report(name: str | None) -> None:
+    """Where the report is to be opened."""
+    if name is not None:
+        click.echo(f"\nReport: {printable(str(Path(name) / 'index.html'))}")
 
 
 def make_folder(folder: Path) -> None:
@@ -231,7 +258,15 @@ class Column:
     decimals: int | None = None
 
 
-def ledger(columns: Sequence[Column], rows: Sequence[Sequence[Cell]], *, numbered: bool = True) -> str:
+class Ledger(str):
+    """A ledger's text that knows its columns and cells: heads with units, texts, and which columns hold numbers."""
+
+    heads: tuple[tuple[str, str], ...]
+    cells: tuple[tuple[str, ...], ...]
+    numeric: tuple[bool, ...]
+
+
+def ledger(columns: Sequence[Column], rows: Sequence[Sequence[Cell]], *, numbered: bool = True) -> Ledger:
     """A table with thin rules: numerals first, decimal points under each other, U+2212 as minus.
 
     None shows as a dash. A column that holds a number is set to the right, any other to the left.
@@ -249,15 +284,23 @@ def ledger(columns: Sequence[Column], rows: Sequence[Sequence[Cell]], *, numbere
     ]
     lines = [GAP.join(cells).rstrip() for cells in zip(*set_columns, strict=True)]
     rule = RULE * max(_width(line) for line in lines)
-    return "\n".join([*lines[: len(heads)], rule, *lines[len(heads) :], rule])
+    made = Ledger("\n".join([*lines[: len(heads)], rule, *lines[len(heads) :], rule]))
+    made.heads = tuple((column.head, column.unit) for column in columns)
+    made.cells = tuple(tuple(_text(cell, column.decimals) for cell, column in zip(row, columns, strict=True)) for row in rows)
+    made.numeric = tuple(any(_is_number(row[place]) for row in rows) for place in range(len(columns)))
+    return made
+
+
+def _is_number(cell: Cell) -> bool:
+    return isinstance(cell, int | float)
 
 
 def _set_column(column: Column, heads: Sequence[str], cells: Sequence[Cell]) -> list[str]:
     """Heads and cells of one column, padded to one width."""
-    numeric = any(isinstance(cell, int | float) for cell in cells)
+    numeric = any(map(_is_number, cells))
     texts = [_text(cell, column.decimals) for cell in cells]
     if numeric:
-        texts = _aligned(texts, [isinstance(cell, int | float) for cell in cells])
+        texts = _aligned(texts, [_is_number(cell) for cell in cells])
     heads = [printable(head) for head in heads]
     width = max(map(_width, [*heads, *texts]))
     padded = [" " * (width - _width(text)) for text in [*heads, *texts]]

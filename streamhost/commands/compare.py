@@ -1,8 +1,8 @@
 """`streamhost compare`: all realizations of one filter on one signal."""
 
 from collections.abc import Sequence
-from contextlib import ExitStack
-from dataclasses import dataclass
+from contextlib import AbstractContextManager, ExitStack, nullcontext
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -12,10 +12,13 @@ from streamhost.commands.common import (
     Progress,
     at_rate,
     check_figures,
+    check_report,
     force_option,
     json_option,
     presets_named,
+    report_option,
     structures_option,
+    tell_report,
     vary_option,
     write_json,
 )
@@ -26,6 +29,7 @@ if TYPE_CHECKING:
     from streamhost.files import AudioInfo
     from streamhost.measure import Measured, Verdict
     from streamhost.presets import Preset
+    from streamhost.presets.realizing import Refusal
     from streamhost.realization import Realization
 
 
@@ -60,13 +64,14 @@ def label(realization: "Realization") -> str:
 @click.argument("presets", metavar="PRESET...", nargs=-1, required=True)
 @click.option("--input", "source", metavar="IN", required=True, help="An audio file, or a shipped recording's name.")
 @click.option("--output", "folder", metavar="DIR", help="Write each output and each difference into this folder.")
+@report_option
 @vary_option
 @json_option
 @structures_option
 @force_option
 def compare(
-    presets: Sequence[str], source: str, folder: str | None, variations: Sequence[str], json_file: str | None,
-    force: bool,
+    presets: Sequence[str], source: str, folder: str | None, report: str | None, variations: Sequence[str],
+    json_file: str | None, force: bool,
 ) -> int:
     """All realizations of one filter on one signal: a table, the audio, the differences.
 
@@ -75,9 +80,9 @@ def compare(
     quantized input. Of a filter with several outputs each has a line and files of its own. Exit status 1 says that a
     limit of a preset is not met. When the run is broken off, the files of the realizations that were done stay.
     """
-    from streamhost.cache import notice
     from streamhost.commands.compare_files import destinations, output_folder
-    from streamhost.commands.compare_text import document, misses, refused, text
+    from streamhost.commands.compare_text import document, refused
+    from streamhost.commands.report_compare import write_compared
     from streamhost.files import probe
     from streamhost.presets.realizing import realize_those_that_carry
     from streamhost.shipped import resolve
@@ -91,19 +96,44 @@ def compare(
     for preset, realization in zip(stated, realizations, strict=True):
         realization.check_samples(preset.source.name)
     _check_one_filter(stated, realizations)
+    check_report(report, force=force)
     places = destinations(folder, stated, realizations[0].outputs, info, force=force)
-    with output_folder(places):
+    with output_folder(places), _report_folder(report, force=force) as shown:
         check_figures(json_file, info.path, force=force)
+        if shown is not None and folder is None:
+            places = destinations(str(shown / "audio"), stated, realizations[0].outputs, info, force=force)
         compared = _compare_all(stated, realizations, info, places, force=force)
+        if shown is not None:
+            write_compared(shown, compared, info, source, refusals)
+    if folder is None:
+        compared = [replace(one, files=()) for one in compared]
+    _tell(compared, info, refusals, report, json_file)
+    if json_file is not None:
+        write_json(json_file, document(compared, info, source, refusals), force=force)
+    return int(any(one.misses for one in compared))
+
+
+def _tell(
+    compared: "Sequence[Compared]", info: "AudioInfo", refusals: "Sequence[Refusal]", report: str | None, json_file: str | None
+) -> None:
+    """On the terminal; where the figures are there, only what is missed."""
+    from streamhost.cache import notice
+    from streamhost.commands.compare_text import misses, text
+
     if problem := notice():
         click.echo(problem, err=True)
     if json_file != "-":
         click.echo(text(compared, info, refusals))
+        tell_report(report)
     elif missed := list(misses(compared)):
         click.echo("\n".join(missed), err=True)
-    if json_file is not None:
-        write_json(json_file, document(compared, info, source, refusals), force=force)
-    return int(any(one.misses for one in compared))
+
+
+def _report_folder(report: str | None, *, force: bool) -> AbstractContextManager[Path | None]:
+    """The folder of the report while it is made; None where none is asked for."""
+    from streamhost.report import report_folder
+
+    return nullcontext() if report is None else report_folder(Path(report), force=force)
 
 
 def _check_one_filter(presets: "Sequence[Preset]", realizations: "Sequence[Realization]") -> None:

@@ -41,9 +41,9 @@ def text(compared: Sequence[Compared], info: AudioInfo, refusals: Sequence[Refus
         " ".join(refused(refusals)),
         "\n".join(_verdict(compared)),
         "\n".join(_sums(compared)),
-        "\n".join(_remarks(compared)),
+        "\n".join(remarks(compared)),
         "\n".join(_listening(compared)),
-        "\n".join((_conditions(compared, info), *METHOD)),
+        "\n".join((conditions(compared, info), *METHOD)),
     ]
     return "\n\n".join(paragraph for paragraph in paragraphs if paragraph)
 
@@ -141,7 +141,7 @@ def _sums(compared: Sequence[Compared]) -> Iterator[str]:
                 yield f"{number}: coefficient rounding moves the sum of {names} {moved}."
 
 
-def _remarks(compared: Sequence[Compared]) -> Iterator[str]:
+def remarks(compared: Sequence[Compared]) -> Iterator[str]:
     """Why figures are missing, what they are worth, and what is dangerous."""
     lines = list(_lines(compared))
     for number, one in enumerate(compared, 1):
@@ -191,7 +191,7 @@ def _difference(path: Path | None, gain: int | None) -> str:
     return f"{path}{GAP}" + (f"raise by {gain} dB" if gain >= 0 else f"loud: lower by {-gain} dB")
 
 
-def _conditions(compared: Sequence[Compared], info: AudioInfo) -> str:
+def conditions(compared: Sequence[Compared], info: AudioInfo) -> str:
     ideals: dict[str, list[str]] = {}
     for number, one in enumerate(compared, 1):
         ideals.setdefault(one.measured.ideal, []).append(str(number))

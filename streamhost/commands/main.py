@@ -79,13 +79,9 @@ class LazyGroup(click.Group):
 def _show_version(ctx: click.Context, param: click.Parameter, value: bool) -> None:
     if not value or ctx.resilient_parsing:
         return
-    from importlib.metadata import PackageNotFoundError, version
+    from streamhost.commands.common import version
 
-    try:
-        number = version("streamhost")
-    except PackageNotFoundError:
-        number = "run from a folder, not installed"
-    click.echo(f"streamhost {number}")
+    click.echo(f"streamhost {version()}")
     ctx.exit()
 
 
@@ -125,7 +121,7 @@ def _unwind_when_told_to_end() -> None:
 def _run(arguments: list[str]) -> int:
     try:
         _complete_for_shell()
-        with streamhost.make_context("streamhost", arguments) as ctx:
+        with streamhost.make_context("streamhost", list(arguments), obj=tuple(arguments)) as ctx:
             status = streamhost.invoke(ctx)
     except click.exceptions.Exit as end:
         status = end.exit_code

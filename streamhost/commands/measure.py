@@ -8,10 +8,13 @@ import click
 from streamhost.commands.common import (
     at_rate,
     check_figures,
+    check_report,
     force_option,
     json_option,
     presets_named,
+    report_option,
     structures_option,
+    tell_report,
     vary_option,
     write_json,
 )
@@ -29,13 +32,14 @@ if TYPE_CHECKING:
               help="An audio file, or a shipped recording's name. Unless said: the noise on which limits are checked.")
 @click.option("--output", "folder", metavar="DIR", help="Write the worst cases that are audio into this folder.")
 @click.option("--quick", is_flag=True, help="Shorter runs and smaller searches.")
+@report_option
 @vary_option
 @json_option
 @structures_option
 @force_option
 def measure(
-    name: str, only: str | None, source: str | None, folder: str | None, quick: bool, variations: Sequence[str],
-    json_file: str | None, force: bool,
+    name: str, only: str | None, source: str | None, folder: str | None, quick: bool, report: str | None,
+    variations: Sequence[str], json_file: str | None, force: bool,
 ) -> int:
     """What a design review asks of one realization, and whether it keeps the limits of its preset.
 
@@ -47,18 +51,23 @@ def measure(
     from streamhost.commands.measure_run import chosen, measured
     from streamhost.commands.measure_text import document, misses, text
     from streamhost.commands.measure_waves import WaveFolder
+    from streamhost.commands.report_measure import write_measured
     from streamhost.shipped import resolve
 
     instruments = chosen(only)
     asked = _asked(_one_preset(name, variations), source, quick=quick)
     file = resolve(source, "sample") if source is not None else None
+    check_report(report, force=force)
     waves = WaveFolder(folder, asked, file, instruments, force=force)
     check_figures(json_file, file, force=force)
     found = measured(asked, instruments, waves, on_limit_signal=source is None)
+    if report is not None:
+        write_measured(report, found, asked, source, force=force)
     if problem := notice():
         click.echo(problem, err=True)
     if json_file != "-":
         click.echo(text(found, asked, source))
+        tell_report(report)
     elif said := misses(found):
         click.echo("\n".join(said), err=True)
     if json_file is not None:

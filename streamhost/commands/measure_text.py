@@ -19,7 +19,7 @@ def text(found: Found, asked: Asked, source: str | None) -> str:
         if instrument.name in found.results:
             paragraphs.append("\n".join((f"{instrument.name}:", *instrument.lines(found.results[instrument.name]))))
     paragraphs += ["\n".join(_verdict(found)), "\n".join(printable(str(path)) for path in found.files),
-                   "\n".join((*_broken_off(found), _conditions(found, asked, source)))]
+                   "\n".join(conditions(found, asked, source))]
     return "\n\n".join(paragraph for paragraph in paragraphs if paragraph)
 
 
@@ -48,7 +48,12 @@ def _broken_off(found: Found) -> Iterator[str]:
         yield f"Broken off: {', '.join(found.broken_off)}.{partly}"
 
 
-def _conditions(found: Found, asked: Asked, source: str | None) -> str:
+def conditions(found: Found, asked: Asked, source: str | None) -> tuple[str, ...]:
+    """What was broken off, and what the figures were found on."""
+    return (*_broken_off(found), _signals(found, asked, source))
+
+
+def _signals(found: Found, asked: Asked, source: str | None) -> str:
     given = printable(source) if source is not None else verdict_text.SIGNAL
     channels = asked.x.shape[1]
     heard = f"Input: {given}, {'1 channel' if channels == 1 else f'{channels} channels'}, {asked.realization.rate:g} Hz."
