@@ -1,14 +1,17 @@
 """Stable or not, decided exactly; and how many poles are not inside the unit circle."""
 
+from cmath import rect
 from fractions import Fraction
 from math import nextafter
+from time import process_time
 
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from streamhost.filters import Filter
-from streamhost.filters.exact import from_roots, rounded
+from streamhost.filters.exact import Polynomial, from_roots, product, rounded
+from streamhost.filters.stability import _is_stable_exactly, _is_stable_to, is_stable, step_down
 
 
 def unstable(a):
@@ -80,3 +83,31 @@ def test_low_frequency_poles_rounded_to_q14_land_on_the_circle():
     """
     rounded_filter = Filter.from_codes([[0, 0, 0, 16384, -32707, 16323]], "Q2.14", rate=48000)
     assert rounded_filter.unstable_poles() == 1
+
+
+def spread(order: int, largest: float) -> Polynomial:
+    """The exact polynomial of conjugate pairs spread over radii up to the largest and over angles."""
+    pairs = [rect(largest - 0.5 * k / order, 0.1 + 2.9 * k / order) for k in range(order // 2)]
+    return from_roots([pole for upper in pairs for pole in (upper, upper.conjugate())])
+
+
+def test_a_high_order_is_decided_at_once_and_exactly() -> None:
+    """Before, minutes at order 64. A pole on the circle itself, which no number of bits tells, at order 24."""
+    began = process_time()
+    stable = spread(64, 0.97)
+    assert is_stable(stable)
+    assert not is_stable(spread(64, 1.03))
+    assert process_time() - began < 2  # measured 0.1 s
+    nearest = (Fraction(1), Fraction(-1) + Fraction(1, 2**60))
+    assert is_stable(product(spread(24, 0.9), nearest))
+    assert not is_stable(product(spread(24, 0.9), (Fraction(1), Fraction(-1))))
+
+
+@settings(max_examples=100)
+@given(st.lists(st.fractions(-3, 3, max_denominator=9), min_size=3, max_size=6))
+def test_bits_and_whole_numbers_tell_what_fractions_tell(values) -> None:
+    """The step-down on fractions is the textbook's; with few bits there may be no answer, never a wrong one."""
+    polynomial = (Fraction(1), *values)
+    told = all(abs(stage[-1]) < 1 for stage in step_down(polynomial))
+    assert _is_stable_exactly(polynomial) == told
+    assert all(_is_stable_to(polynomial, bits) in (None, told) for bits in (6, 12, 64))

@@ -1,6 +1,8 @@
 """What holds for every form over the filters that it carries, whatever it draws."""
 
 import re
+from cmath import rect
+from time import process_time
 
 import numpy as np
 import pytest
@@ -15,7 +17,7 @@ from streamhost.errors import StructureError
 from streamhost.filters import Polynomials
 from streamhost.formats import named_format
 from streamhost.program.run import lower, run_definition
-from streamhost.structures import form, forms
+from streamhost.structures import build, form, forms
 
 DECOMPOSITIONS = ("cascade", "whole")
 CASES = [(name, how, which) for name in forms() for how in DECOMPOSITIONS for which in carried(name, how)]
@@ -87,3 +89,13 @@ def test_what_it_cannot_carry_is_refused_with_the_forms_that_can(name: str) -> N
 
 def test_filters_are_at_one_rate() -> None:
     assert {filter.rate for filter in filters().values()} == {RATE}
+
+
+def test_a_refusal_of_high_order_comes_at_once() -> None:
+    """Every form is asked which could; those that can only carry what is stable or symmetric ask for what is cheap first."""
+    pairs = [rect(0.97 - k / 64, 0.1 + 2.9 * k / 32) for k in range(32)]
+    filter = Filter.from_zeros_poles([], [pole for upper in pairs for pole in (upper, upper.conjugate())], 1.0, rate=RATE)
+    began = process_time()
+    with pytest.raises(StructureError, match=r"its recursion is of order 64.+ Forms that can: direct-1.+ lattice-normalized"):
+        build(filter, form="coupled", decomposition="whole")
+    assert process_time() - began < 2  # measured 0.7 s; before, more than 4 minutes

@@ -72,10 +72,10 @@ def test_a_filter_without_feedback_is_asked_nothing(imported):
 
 
 def test_a_long_a_is_not_put_to_the_test(refusal, imported):
-    at_the_limit, beyond = "b 1.0\na 1" + " 0.0" * 19 + " -0.5", "b 1.0\na 1" + " 0.0" * 20 + " -0.5"
+    at_the_limit, beyond = "b 1.0\na 1" + " 0.0" * 63 + " -0.5", "b 1.0\na 1" + " 0.0" * 64 + " -0.5"
     assert refusal(at_the_limit).startswith("the filter is stable whichever sign")
     assert refusal(beyond) == (
-        f"the feedback is of a higher order than 20, too high for its sign to be found by an exact test of stability. {ASK}"
+        f"the feedback is of a higher order than 64, too high for its sign to be found by an exact test of stability. {ASK}"
     )
     assert imported(beyond, feedback="subtracted").notes[-1] == "stability: not tested, the order is too high"
     # Together they count as one; sections of second order do not count at all.

@@ -2,20 +2,67 @@
 
 from collections.abc import Iterable, Iterator
 from fractions import Fraction
+from math import lcm
 
 from streamhost.filters.exact import Polynomial, exactly, stripped, to_multiple
 from streamhost.filters.factors import Polynomials, ZerosPoles
 from streamhost.filters.roots import roots_outside
 from streamhost.filters.square_free import common_divisor
 
+PRECISIONS = (256, 1024, 4096)
+"""Bits in which the step-down is tried, with a bound of its error, before it is made exactly."""
+
 
 def is_stable(ascending: Polynomial) -> bool:
     """Whether 1 / A(z) is stable: all roots of A inside the unit circle. Ascending powers of z^-1, a[0] not 0.
 
-    Step-down recursion (Schur-Cohn test) on exact fractions: stable if and only if every reflection coefficient is
-    less than 1 in magnitude (Oppenheim & Schafer, lattice filters; Mitra, stability test by all-pass sections).
+    Step-down recursion (Schur-Cohn test): stable if and only if every reflection coefficient is less than 1 in magnitude
+    (Oppenheim & Schafer, lattice filters; Mitra, stability test by all-pass sections). In as many bits as tell, or exactly.
     """
-    return all(abs(stage[-1]) < 1 for stage in step_down(ascending))
+    for bits in PRECISIONS if len(ascending) > 3 else ():
+        if (told := _is_stable_to(ascending, bits)) is not None:
+            return told
+    return _is_stable_exactly(ascending)
+
+
+def _is_stable_to(ascending: Polynomial, bits: int) -> bool | None:
+    """None where these bits do not tell. The stages are integers of 2^-bits, each within `error` of the true one."""
+    one = 1 << bits
+    stage, error = [round(value / ascending[0] * one) for value in ascending], 1
+    while len(stage) > 1:
+        last = stage[-1]
+        if abs(last) - error >= one:
+            return False
+        if (most := abs(last) + error) >= one:
+            return None
+        scale = one * one - last * last
+        stepped = [(x * one - last * y << bits) // scale for x, y in zip(stage[:-1], stage[:0:-1], strict=True)]
+        # Of the numerator x - k y, then of the quotient, whose denominator is at least 1 - most^2 and off by most^2 - k^2.
+        above = error * (most + max(map(abs, stage))) // one + error + 1
+        off = (most * most - last * last) // one + 1
+        least = one - most * most // one - 1
+        if least <= 0:
+            return None
+        largest = max(map(abs, stepped)) + 1
+        stage, error = stepped, (above * one + largest * off) // least + 2
+    return True
+
+
+def _is_stable_exactly(ascending: Polynomial) -> bool:
+    """The same on integers: each stage is divided by the first of the last but one, which leaves no remainder.
+
+    The polynomial itself divides nothing. So the numbers grow with the order, and not with two to the power of it
+    (E. Bareiss, Numerische Mathematik 13, 1969).
+    """
+    common = lcm(*(value.denominator for value in ascending))
+    stage, divisor, following = [int(value * common) for value in ascending], 1, 1
+    while len(stage) > 1:
+        first, last = stage[0], stage[-1]
+        if abs(last) >= abs(first):
+            return False
+        stage = [(first * x - last * y) // divisor for x, y in zip(stage[:-1], stage[:0:-1], strict=True)]
+        divisor, following = following, stage[0]
+    return True
 
 
 def step_down(ascending: Polynomial, bits: int | None = None) -> Iterator[Polynomial]:

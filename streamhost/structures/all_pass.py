@@ -92,8 +92,6 @@ def halves(ratio: Ratio) -> Halves | str:
     lead = next((k for k, value in enumerate(ratio.b) if value), None)
     if lead is None:
         return "its numerator is 0"
-    if not is_stable(ratio.a):
-        return "a pole lies on or outside the unit circle, where an all-pass has none"
     order = len(ratio.b) - 1 + lead
     delays = order - (len(ratio.a) - 1)
     if order == delays == 0:
@@ -103,6 +101,8 @@ def halves(ratio: Ratio) -> Halves | str:
         return NO_SYMMETRY
     if delays > MOST_DELAYS:
         return f"it has {delays} delays beside its poles, and up to {MOST_DELAYS} are divided among two all-passes"
+    if not is_stable(ratio.a):
+        return "a pole lies on or outside the unit circle, where an all-pass has none"
     groups = _groups(roots(ratio.a)) if len(ratio.a) > 1 else []
     probes = Probes(ratio, groups, symmetry)
     for sides in _sides(len(groups), delays):

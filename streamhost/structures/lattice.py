@@ -67,6 +67,7 @@ def _to_bits(ratio: Ratio, bits: int) -> Lattice:
     return Lattice(tuple(stage[-1] for stage in stages[1:]), tuple(reversed(ladder)))
 
 
+@lru_cache(maxsize=64)
 def why_not(ratio: Ratio) -> str:
     """Why a section has no lattice, "" where it has."""
     if not ratio.is_recursive:

@@ -12,8 +12,8 @@ from streamhost.presets.importing.stated import Sections
 SUBTRACTED, ADDED = "subtracted", "added"
 FEEDBACKS = (SUBTRACTED, ADDED)
 
-MOST_ORDER = 20
-"""Of all lists of a longer than a section's together: the exact test of stability takes seconds there, minutes beyond."""
+MOST_ORDER = 64
+"""Of all lists of a longer than a section's together: the exact test of stability takes a second there, minutes beyond."""
 
 ASK = (
     "State --feedback subtracted where y[n] = b0 x[n] + ... - a1 y[n-1] - a2 y[n-2], the sign of the transfer function, or "

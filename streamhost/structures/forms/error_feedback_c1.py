@@ -52,9 +52,11 @@ def build_section(draft: Draft, x: Ref) -> Ref:
 
 
 def carries(ratio: Ratio) -> str:
+    if refused := shaping.carries(ratio):
+        return refused
     if not is_stable(ratio.a):
         return "it has a pole on or outside the unit circle, where no c1 makes the noise least"
-    return shaping.carries(ratio)
+    return ""
 
 
 FORM = Form(

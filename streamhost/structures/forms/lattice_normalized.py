@@ -46,6 +46,7 @@ from fractions import Fraction
 
 from streamhost.diagram.builder import Ref, minus
 from streamhost.filters.exact import rounded, square_root
+from streamhost.filters.stability import is_stable
 from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Form
 from streamhost.structures.lattice import Pen, Stage, lattice_of, size_in, why_not
@@ -89,6 +90,8 @@ def ladder_of(reflections: tuple[Fraction, ...], ladder: tuple[Fraction, ...]) -
 def carries(ratio: Ratio) -> str:
     if reason := why_not(ratio):
         return reason
+    if is_stable(ratio.a):
+        return ""
     for m, k in enumerate(lattice_of(ratio).reflections, 1):
         if abs(k) >= 1:
             return f"its reflection coefficient k{m} is {float(k):.6g}, and a normalized stage needs |k| < 1, a stable filter"
