@@ -14,6 +14,7 @@ from streamhost.errors import FilterError, FormatError, RequestError
 from streamhost.filters import Filter
 from streamhost.formats import Fixed, Float, Format, named_format, parse_word
 from streamhost.program.carrying import Carried, carry, is_run
+from streamhost.program.hazards import hazards_of
 from streamhost.program.poles import running_sums, unstable_poles_in
 from streamhost.program.program import Program
 from streamhost.program.run import lower
@@ -86,10 +87,10 @@ class Realization:
         """Whether a filter as asked has a pole on or outside the unit circle, before any rounding."""
         return any(filter.unstable_poles() for filter in self.filters)
 
-    @property
+    @cached_property
     def hazards(self) -> tuple[str, ...]:
         """What is certain to be dangerous about this structure in this format, in sentences."""
-        return (*self.built.hazards, *_narrow_operand(self.diagram, self.format), *_drifting(self.program))
+        return (*self.built.hazards, *hazards_of(self.program))
 
     @cached_property
     def unstable(self) -> int:
@@ -302,30 +303,6 @@ def _of_channels(given: object) -> tuple[Filter, ...]:
         if len(found) > 1:
             raise FilterError(f"The filters of the channels have different {what}; all channels have the same.")
     return filters
-
-
-def _narrow_operand(diagram: Diagram, format: Format) -> tuple[str, ...]:
-    if not isinstance(format, Fixed) or not diagram.has_loop():
-        return ()
-    state, operand = format.state.word, format.operand.word
-    if state.fraction <= operand.fraction:
-        return ()
-    said = (
-        f"the state is kept as {state} and multiplied as {operand}: what the multipliers do not see of it is rounded "
-        f"anew in every frame, and the recursion is as loud as with a state of {operand.fraction} fraction bits."
-    )
-    return (said,)
-
-
-def _drifting(program: Program) -> tuple[str, ...]:
-    if not running_sums(program)[1]:
-        return ()
-    why = "adds more fraction bits than the signal has" if isinstance(program.format, Fixed) else "is rounded in floating point"
-    said = (
-        f"the running sum {why}: what it loses stays lost, and its output drifts. In fixed point it is exact where what it "
-        "adds is no longer than the signal."
-    )
-    return (said,)
 
 
 def _with_codes(filters: Sequence[Filter], format: Format) -> Format:

@@ -20,11 +20,19 @@ def loop_matrices(diagram: Diagram, channel: int = 0) -> list[list[list[Entry]]]
     The determinant of each is a factor of the denominator, and what no loop contains has the factor 1.
     """
     driven = _driven(diagram, channel)
+    return [[[_entry(driven[i], i, j) for j in loop] for i in loop] for loop in _loops(driven)]
+
+
+def memories_of_loops(diagram: Diagram, channel: int = 0) -> list[list[int]]:
+    """The delays and taps of each loop, in the order of `loop_matrices`."""
+    return _loops(_driven(diagram, channel))
+
+
+def _loops(driven: dict[int, SparseRow]) -> list[list[int]]:
     memories = list(driven)
     position = {node: i for i, node in enumerate(memories)}
     reads = [sorted({position[m] for m, _ in row}) for row in driven.values()]
-    return [[[_entry(driven[memories[i]], memories[i], memories[j]) for j in loop] for i in loop]
-            for loop in loops(reads)]
+    return [[memories[i] for i in loop] for loop in loops(reads)]
 
 
 def _entry(row: SparseRow, node: int, memory: int) -> Entry:
