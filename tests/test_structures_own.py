@@ -98,7 +98,9 @@ def test_a_file_loaded_again_replaces_its_forms(tmp_path) -> None:
 
 MISTAKES = [
     ("undriven delay", "d = draft.delay('d')\nreturn draft.add('y', [x, d])", 5, "nothing drives"),
-    ("delay-free loop", "d = draft.delay('d', x)\ns = draft.builder.sum(x, d, label='s')\nreturn x", 5, "reaches no output"),
+    ("dead end", "d = draft.delay('d', x)\ns = draft.builder.sum(x, d, label='s')\nreturn x", 5, "reaches no output"),
+    ("loop by a delay of 0", "d = draft.delay('d', n=0)\ns = draft.add('s', [x, d])\nd.takes(s)\nreturn s", 5,
+     "a delay is 1 or more"),
     ("missing output", "draft.gain('g', 0.5, x)", 4, "returned None. It is to return the node"),
     ("failing builder", "n = 1\nreturn draft.gain('g', 1 / (n - 1), x)", 6, "ZeroDivisionError"),
     ("our refusal", "return draft.gain('g', float('nan'), x)", 5, "not a finite number"),
@@ -114,17 +116,39 @@ def test_a_mistake_is_told_with_its_line(tmp_path, body: str, line: int, said: s
     assert f"mine.py, line {line}" in str(error.value)
 
 
-def test_a_loop_without_a_delay_is_told_with_a_line(tmp_path) -> None:
-    path = written(tmp_path, "from streamhost.diagram.nodes import Gain\nfrom dataclasses import replace\n"
-                             "g = draft.gain('g', 0.5, x)\ns = draft.add('s', [x, g])\n"
-                             "b = draft.builder\nb._nodes[g.index] = replace(b._nodes[g.index], source=s.index)\nreturn s")
+GUARDED = [
+    ("general that fails", "general=lambda section: 1 / 0", "ZeroDivisionError: division by zero"),
+    ("general that is none", "general=lambda section: 3", "general of form \"mine\" returned 3. It is to return a General"),
+    ("hazards of None", "hazards=lambda ratio: None", "hazards of form \"mine\" returned None. It is to return a tuple"),
+    ("hazards of a text", "hazards=lambda ratio: 'beware'", "returned 'beware'. It is to return a tuple of sentences"),
+    ("carries of a truth", "carries=lambda ratio: True", "carries of form \"mine\" returned True. It is to return a string"),
+    ("size of numbers", "size=lambda section: (4, 2)", "size of form \"mine\" returned (4, 2). It is to return a Size"),
+    ("end of the process", "hazards=lambda ratio: exit(4)", "SystemExit: 4"),
+]
+
+
+@pytest.mark.parametrize(("what", "said"), [case[1:] for case in GUARDED], ids=[case[0] for case in GUARDED])
+def test_every_function_of_a_form_is_guarded(tmp_path, what: str, said: str) -> None:
+    path = written(tmp_path, "return draft.gain('g', 0.5, x)")
+    text = path.read_text().replace("build_section=build_section)", f"build_section=build_section,\n            {what})")
+    path.write_text(text)
     load_structures(path)
-    with pytest.raises(StreamhostError, match=r"mine\.py, line [78]: .*delay"):
+    with pytest.raises(StructureError, match=re.escape(said)) as error:
         build(Filter.from_coefficients([1.0], rate=48000), form="mine")
+    assert re.search(r"mine\.py, line [78]: ", str(error.value))
+
+
+def test_the_end_of_the_process_is_the_files_mistake(tmp_path, capsys) -> None:
+    path = tmp_path / "mine.py"
+    path.write_text("import sys\nsys.exit(4)\n")
+    assert main(["forms", "--structures", str(path)]) == 2
+    assert "mine.py, line 2: SystemExit: 4" in capsys.readouterr().err
 
 
 FILES = [
     ("syntax", "def build(:\n", StructureError, r"mine\.py, line 1: invalid syntax"),
+    ("byte 0", "\nx = '\0'\n", StructureError, r"mine\.py, line 2: a character of value 0"),
+    ("end of the process", "\nraise SystemExit(4)\n", StructureError, r"mine\.py, line 2: SystemExit: 4"),
     ("failing import", "\nimport no_such_module\n", StructureError, r"mine\.py, line 2: ModuleNotFoundError"),
     ("nothing declared", "x = 1\n", StructureError, r"declares no form"),
     ("no list", "FORMS = 3\n", StructureError, r"FORMS is a int"),

@@ -13,11 +13,12 @@ from dataclasses import replace
 from functools import cache, wraps
 from pathlib import Path
 from types import ModuleType
-from typing import ParamSpec, TypeVar
+from typing import Any, ParamSpec, TypeVar
 
 from streamhost.diagram import Ref
+from streamhost.diagram.hints import General
 from streamhost.errors import MachineError, RequestError, StreamhostError, StructureError
-from streamhost.structures.form import Form
+from streamhost.structures.form import Form, Size
 from streamhost.structures.forms import FORMS
 
 GROUP = "streamhost.forms"
@@ -51,7 +52,7 @@ def load_installed() -> tuple[str, ...]:
         where = f'entry point "{entry.name}" of {entry.value}'
         try:
             loaded = entry.load()
-        except Exception as error:
+        except (Exception, SystemExit) as error:
             raise StructureError(f"{where}: {type(error).__name__}: {error}") from error
         names += add_forms([loaded] if isinstance(loaded, Form) else _listed(loaded, where), where)
     return tuple(names)
@@ -82,9 +83,14 @@ def _source(file: Path) -> str:
     if len(raw) > MOST_BYTES:
         raise RequestError(f"{file}: {len(raw)} bytes are more than a file of structures has; at most {MOST_BYTES} are read.")
     try:
-        return raw.decode("utf-8")
+        text = raw.decode("utf-8")
     except UnicodeDecodeError:
         raise RequestError(f"{file}: this is no text in UTF-8, so no Python file.") from None
+    before, nul, _ = text.partition("\0")
+    if nul:
+        line = before.count("\n") + 1
+        raise StructureError(f"{file}, line {line}: a character of value 0 stands here, and a Python file has none.")
+    return text
 
 
 def _run(file: Path, source: str) -> ModuleType:
@@ -95,7 +101,7 @@ def _run(file: Path, source: str) -> ModuleType:
         exec(compile(source, str(file), "exec"), module.__dict__)
     except SyntaxError as error:
         raise StructureError(f"{file}, line {error.lineno}: {error.msg}.") from error
-    except Exception as error:
+    except (Exception, SystemExit) as error:
         raise StructureError(told(error, str(file))) from error
     return module
 
@@ -118,45 +124,46 @@ def _checked(form: object, origin: str) -> Form:
         raise StructureError(
             f'{origin}: form "{form.name}" begins_with {form.begins_with!r}. Allowed are "numerator" and "recursion".'
         )
-    return replace(
-        form,
-        origin=origin,
-        build_section=_returning_node(_guarded(form.build_section, form.name, origin), form, origin),
-        carries=_guarded(form.carries, form.name, origin),
-        hazards=_guarded(form.hazards, form.name, origin),
-        size=_guarded(form.size, form.name, origin) if form.size else None,
-        exact_size=_guarded(form.exact_size, form.name, origin) if form.exact_size else None,
-    )
+    guarded: dict[str, Any] = {field: _guarded(function, field, form.name, origin)
+                               for field in RETURNED if (function := getattr(form, field)) is not None}
+    return replace(form, origin=origin, **guarded)
 
 
-def _guarded(function: Callable[P, R], name: str, origin: str) -> Callable[P, R]:
+def _guarded(function: Callable[P, R], field: str, name: str, origin: str) -> Callable[P, R]:
+    """A form's function: what it raises, an end of the process too, and what it should not return are the user's mistakes."""
+    fits, wanted = RETURNED[field]
+
     @wraps(function)
     def guarded(*args: P.args, **kwargs: P.kwargs) -> R:
         try:
-            return function(*args, **kwargs)
-        except Exception as error:
+            result = function(*args, **kwargs)
+        except (Exception, SystemExit) as error:
             raise StructureError(f'{told(error, origin)} (form "{name}")') from error
+        if fits(result):
+            return result
+        code = getattr(function, "__code__", None)
+        line = f", line {code.co_firstlineno}" if code else ""
+        raise StructureError(f'{origin}{line}: {field} of form "{name}" returned {result!r}. It is to return {wanted}.')
 
     return guarded
 
 
-def _returning_node(build: Callable[P, Ref], form: Form, origin: str) -> Callable[P, Ref]:
-    @wraps(build)
-    def returning(*args: P.args, **kwargs: P.kwargs) -> Ref:
-        end = build(*args, **kwargs)
-        if isinstance(end, Ref):
-            return end
-        code = getattr(form.build_section, "__code__", None)
-        line = f", line {code.co_firstlineno}" if code else ""
-        raise StructureError(
-            f'{origin}{line}: build_section of form "{form.name}" returned {end!r}. It is to return the node whose value is '
-            "the section's output."
-        )
-
-    return returning
+def _are_sentences(value: object) -> bool:
+    return isinstance(value, tuple | list) and all(isinstance(sentence, str) for sentence in value)
 
 
-def told(error: Exception, file: str) -> str:
+RETURNED: dict[str, tuple[Callable[[object], bool], str]] = {
+    "build_section": (lambda value: isinstance(value, Ref), "the node whose value is the section's output"),
+    "carries": (lambda value: isinstance(value, str), 'a string, "" for a section that the form can carry'),
+    "hazards": (_are_sentences, "a tuple of sentences, () where there is nothing to say"),
+    "size": (lambda value: isinstance(value, Size), "a Size"),
+    "exact_size": (lambda value: isinstance(value, Size), "a Size"),
+    "general": (lambda value: value is None or isinstance(value, General), "a General, or None for a section that is drawn"),
+}
+"""The functions of a form, whether something is what they are to return, and that in words."""
+
+
+def told(error: BaseException, file: str) -> str:
     """What went wrong, with the last line of the user's file that led there."""
     lines = [frame.lineno for frame in traceback.extract_tb(error.__traceback__) if frame.filename == file]
     place = f"{file}, line {lines[-1]}" if lines else file
