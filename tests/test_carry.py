@@ -56,7 +56,7 @@ CASES = [(low_pass, ("elliptic", 4, 200)), (notch, ())]
 
 @pytest.mark.parametrize(("maker", "arguments"), CASES)
 def test_the_output_goes_on_within_ten_times_the_rounding_floor(maker, arguments) -> None:
-    """The figure to reach. Not 1, since each form's floor is one run of its own errors, and the state has them too."""
+    """Our own bound. Not 1, since each form's floor is one run of its own errors, and the state has them too."""
     filter = maker(*arguments)
     for before, after in permutations(DIRECT, 2):
         expected, own = unswitched(filter, after)
@@ -146,7 +146,7 @@ def test_a_running_sum_goes_on_to_the_bit() -> None:
 @pytest.mark.slow
 @pytest.mark.parametrize("name", [name for name in filters() if "high-pass" not in name])
 def test_every_ordered_pair_of_forms_within_ten_floors(name) -> None:
-    """The figure to reach, with floors as `benchmarks/carrying.py` says."""
+    """The same bound, with floors as `benchmarks/carrying.py` says."""
     runs = [run(realization, noise()) for realization in structures(filters()[name])]
     worst = max(changes(runs, noise()), key=lambda change: change.floors)
     assert worst.floors <= 10.0, worst.pair

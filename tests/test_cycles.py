@@ -64,7 +64,7 @@ def step_of(program, loop=0):
     return part, step
 
 
-# --- D1: Oppenheim & Schafer, ch. 6 (from memory), recomputed with exact rationals: what stays of 7/8 in steps of 1/8
+# --- Oppenheim & Schafer, ch. 6 (from memory), recomputed with exact rationals: what stays of 7/8 in steps of 1/8
 
 
 @pytest.mark.parametrize(("a", "rounding", "stays", "period"), [
@@ -83,7 +83,7 @@ def test_the_textbook_cycle_of_first_order_depends_on_the_tie(a, rounding, stays
     assert result.proven_lsb >= stays
 
 
-# --- D2: Jackson 1969, second-hand; the stuck values recomputed with exact rationals
+# --- Jackson 1969, second-hand; the stuck values recomputed with exact rationals
 
 
 @pytest.mark.parametrize(("a", "bound"), [("19/20", 10), ("9/10", 5), ("7/8", 4), ("-9/10", 5), ("99/100", 50)])
@@ -105,7 +105,7 @@ def test_the_largest_stuck_value_of_first_order_is_proven(a, rounding, largest):
         assert section.worst_granular.period_frames == (1 if a > 0 else 2)
 
 
-# --- D3, D4: Jackson 1969, second-hand, and Claasen, Mecklenbräuker & Peek 1973, from memory; recomputed with exact integers
+# --- Jackson 1969, second-hand, and Claasen, Mecklenbräuker & Peek 1973, from memory; recomputed with exact integers
 
 
 @pytest.mark.parametrize(("a1", "a2", "to_code", "k", "products", "sum_", "truncated"), [
@@ -131,7 +131,7 @@ def test_the_period_that_the_formula_gives():
     assert dead_band(Fraction(-1), Fraction(19, 20)).period_frames == pytest.approx(2 * pi / np.arccos(0.5), abs=1e-12)
 
 
-# --- D5, D6: Oppenheim & Schafer, ch. 6; Ebert, Mazo & Taylor 1969; second-hand and from memory, recomputed exactly
+# --- Oppenheim & Schafer, ch. 6; Ebert, Mazo & Taylor 1969; second-hand and from memory, recomputed exactly
 
 
 def test_the_textbook_overflow_oscillation_is_told_from_granular_ones():

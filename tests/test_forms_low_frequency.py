@@ -197,7 +197,7 @@ def test_the_shifts_of_zoelzer_are_by_the_root_of_z1() -> None:
 def test_a_constant_rests_where_no_coefficient_moves_it() -> None:
     """u = x and v = 0 for any filter: exchanged coefficients of equal gain at 0 Hz disturb no constant signal.
 
-    In direct-2 the state of a constant 1 is 1 / A(1): 63.8386 for this low-pass (own computation, as listed).
+    In direct-2 the state of a constant 1 is 1 / A(1): 63.8386 for this low-pass (own computation).
     """
     for name in ("kingsbury", "zoelzer"):
         for filter in (low_pass(1000), low_pass(100, 3.0), design("notch", rate=RATE, frequency=300, q=2)):
@@ -215,7 +215,7 @@ def stored_poles(filter: Filter, name: str, coefficients: object) -> np.ndarray:
 
 
 def test_16_bit_coefficients_place_poles_at_20_hz() -> None:
-    """In Q2.14 direct-1's become -32707 and 16323, a pole at z = 1; at 100 Hz they ring at 46.63 Hz (own computation, listed).
+    """In Q2.14 direct-1's become -32707 and 16323, a pole at z = 1; at 100 Hz they ring at 46.63 Hz (own computation).
 
     That is the angle of the poles; the low-pass's own poles have its frequency divided by root 2.
     """

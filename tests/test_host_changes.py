@@ -119,7 +119,7 @@ def test_keep_on_a_constant_shows_how_the_forms_differ(form: str, first: float, 
 
 
 def test_carry_and_warm_go_on_as_the_target_within_its_own_noise() -> None:
-    """The figure to reach: float64 within ten times the rounding floor, Q1.23 within the realization's own noise + 6 dB."""
+    """Our own bounds: float64 within ten times the rounding floor, Q1.23 within the realization's own noise + 6 dB."""
     quiet = X / 8  # a state that is solved for may be larger than the one that would have come, and has to fit its word
     exact = fresh(realized("direct-1"), quiet)
     for format in ("float64", "Q1.23"):

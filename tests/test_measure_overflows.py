@@ -57,8 +57,8 @@ def test_the_state_of_a_low_pass_in_direct_form_2(frequency, l1, l2, peak):
     filter = design("low-pass", rate=RATE, frequency=frequency, q=2**-0.5)
     realization = realize(filter, form="direct-2", format=Fixed("Q16.24", coefficients="Q2.38"))
     found = register(overflow(realization, NOTHING, judged_only=True), "the register w")
-    assert (found.l1, found.l2, found.peak) == pytest.approx((l1, l2, peak), rel=1e-5)  # as many digits as are printed
-    assert 15 - found.headroom_bits == pytest.approx(log2(l1), abs=1e-3)  # 17.28, 12.65, 6.12 bits are printed for these
+    assert (found.l1, found.l2, found.peak) == pytest.approx((l1, l2, peak), rel=1e-5)  # as many digits as are given
+    assert 15 - found.headroom_bits == pytest.approx(log2(l1), abs=1e-3)  # 17.28, 12.65, 6.12 bits are given for these
 
 
 @pytest.mark.parametrize("form", ["direct-2", "transposed-2"])

@@ -52,7 +52,7 @@ def test_first_order(a):
     exact = next(value for label, value in stored(realization).items() if label.startswith("a1"))
     dropped = 1 if a == 0.5 else 30  # times 0.5, a product has one bit more than the signal and no others
     share = 1.0 - 4.0**-dropped
-    assert gain_of(realization) == pytest.approx(share / (1.0 - exact**2), rel=1e-9)  # the figure to reach
+    assert gain_of(realization) == pytest.approx(share / (1.0 - exact**2), rel=1e-9)  # of the coefficient as stored
     assert gain_of(realization) == pytest.approx(share * FIRST_ORDER[a], rel=1e-6)  # digits given; a has 30 bits
 
 
@@ -62,7 +62,7 @@ def test_second_order(radius, angle):
     values = stored(realization)
     a1, a2 = (next(value for label, value in values.items() if label.startswith(name)) for name in ("a1", "a2"))
     closed = (1.0 + a2) / (1.0 - a2) / ((1.0 + a2) ** 2 - a1**2)
-    assert gain_of(realization) == pytest.approx(closed, rel=1e-9)  # the figure to reach
+    assert gain_of(realization) == pytest.approx(closed, rel=1e-9)  # of the coefficients as stored
     assert gain_of(realization) == pytest.approx(SECOND_ORDER[radius, angle], rel=1e-4)  # digits given
 
 

@@ -1,4 +1,4 @@
-"""The figure to reach: wherever the white model holds, predicted noise is within 0.5 dB of measured, or in its interval."""
+"""Wherever the white model holds, predicted noise is within 0.5 dB of measured, or in its interval."""
 
 import numpy as np
 import pytest

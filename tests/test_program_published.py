@@ -187,7 +187,7 @@ def test_low_frequency_coefficients_in_q14(frequency: float, a1: int, a2: int, p
     assert realization.unstable == unstable
     assert (16384 + a1 + a2 == 0) == (unstable == 1)
     poles = np.roots([16384, a1, a2])
-    # Half of the last printed digit.
+    # Half of the last digit given.
     assert np.max(np.angle(poles)) * 48000 / (2 * np.pi) == pytest.approx(pole_hz, abs=0.0051)
 
 

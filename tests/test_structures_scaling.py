@@ -25,7 +25,7 @@ ONE = (Fraction(1),)
 
 
 def elliptic_band_pass() -> Filter:
-    """E4's filter: between 0.99 and 1.01 in the pass-band, 0.01 in the stop-band."""
+    """Oppenheim & Schafer, ch. 6 (from memory): between 0.99 and 1.01 in the pass-band, 0.01 in the stop-band."""
     return design(
         "elliptic", rate=2.0, response="band-pass", order=6, frequency=(0.3, 0.4),
         ripple_db=20 * math.log10(1.01 / 0.99), stopband_db=20 * math.log10(1.01 / 0.01),
@@ -80,11 +80,11 @@ def test_the_norm_of_a_resonator_is_the_closed_form(r: float, theta: float, prin
     ("frequency", "inner", "power"),
     [(20, 4447.1167, 0.0009256), (100, 400.7185, 0.00462787), (1000, 13.7728, 0.04616473)],
 )
-def test_the_norms_of_a_low_pass_are_the_published_ones(frequency: float, inner: float, power: float) -> None:
-    """Cookbook low-pass, Q = 1/sqrt(2), 48 kHz: 1/A and H, computed independently for this project three ways."""
+def test_the_norms_of_a_low_pass_are_those_computed_three_ways(frequency: float, inner: float, power: float) -> None:
+    """Cookbook low-pass, Q = 1/sqrt(2), 48 kHz: 1/A and H; own computation in three ways, independent of this code."""
     (section,) = design("low-pass", rate=RATE, frequency=frequency, q=1 / math.sqrt(2)).sections()
     b, a = exactly(section.b), exactly(section.a)
-    # Half a unit of the last printed digit, and 24 bits.
+    # Half a unit of the last digit given, and 24 bits.
     assert abs(l2_norm(ONE, a) - inner) <= 5e-5 + inner * 2.0**-24
     assert abs(l2_norm(b, a) ** 2 - power) <= (5e-8 if frequency == 20 else 5e-9) + power * 2.0**-23
 
@@ -212,8 +212,8 @@ def design_norm(section: Polynomials) -> float:
     return math.sqrt((1 + a2) / (1 - a2) / ((1 + a2) ** 2 - a1**2))
 
 
-# --- E10: section ordering of E4's filter. Jackson, IEEE AU-18, 1970, and Oppenheim & Schafer state the rules;
-# the figures were computed independently for this project: dB of output noise, one rounding a section at its A(z).
+# --- the order of the band-pass's sections. Jackson, IEEE AU-18, 1970, and Oppenheim & Schafer state the rules; the figures
+# are an own computation, independent of this code: dB of output noise, one rounding a section at its A(z).
 
 
 def noise_gain(sections: tuple[Polynomials, ...]) -> float:
@@ -227,14 +227,14 @@ def noise_gain(sections: tuple[Polynomials, ...]) -> float:
     return 10 * math.log10(power)
 
 
-@pytest.mark.parametrize(("ordering", "printed"), [("outward", 18.14), ("inward", 11.92)])
-def test_the_noise_of_both_orderings_is_the_published_one(ordering: str, printed: float) -> None:
+@pytest.mark.parametrize(("ordering", "expected"), [("outward", 18.14), ("inward", 11.92)])
+def test_the_noise_of_both_orderings_is_the_one_computed_apart(ordering: str, expected: float) -> None:
     built = build(elliptic_band_pass(), form="direct-1", ordering=ordering, scaling="l2")
-    # Printed to 0.01 dB, for the filter without its factor of 1.01 (which would add 0.09 dB).
-    assert noise_gain(built.sections) == pytest.approx(printed, abs=0.005)
+    # In 0.01 dB, for the filter without its factor of 1.01 (which would add 0.09 dB).
+    assert noise_gain(built.sections) == pytest.approx(expected, abs=0.005)
 
 
-def test_of_all_orderings_the_spread_is_the_published_one() -> None:
+def test_of_all_orderings_the_spread_is_the_one_computed_apart() -> None:
     """Best 10.3 dB, worst 18.28 dB of 720, from samples of |H|^2, so dense that their mean is the power."""
     sections = [
         Polynomials(tuple(v / s.b[0] for v in s.b), s.a) for s in build(elliptic_band_pass(), form="direct-1").sections
