@@ -81,6 +81,12 @@ def document(capsys, *arguments, status=0):
     return json.loads(capsys.readouterr().out)
 
 
+def test_the_help_names_the_instruments(capsys):
+    assert main(["measure", "--help"]) == 0
+    said = " ".join(capsys.readouterr().out.split())
+    assert f"There are {', '.join(instrument.name for instrument in INSTRUMENTS)}." in said
+
+
 def test_all_instruments_from_end_to_end(gain, tmp_path, capsys):
     figures = tmp_path / "figures.json"
     assert main(["measure", gain("noise_dbfs = -90.0"), "--json", str(figures)]) == 0

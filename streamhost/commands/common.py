@@ -30,7 +30,7 @@ PATIENCE = 2.0
 force_option = click.option("--force", is_flag=True, help="Overwrite files that exist.")
 json_option = click.option(
     "--json", "json_file", metavar="FILE", default=None,
-    help="Write the table's figures as JSON, each key with its unit; - is standard output.",
+    help="Write the figures as JSON, each key with its unit; - is standard output.",
 )
 report_option = click.option(
     "--report", metavar="DIR", help="Write a report into a new folder: a page that opens from disk, its figures, its audio.",
@@ -39,6 +39,10 @@ vary_option = click.option(
     "--vary", "variations", metavar="KEY=V1,V2", multiple=True,
     help="Make a family of each preset, for instance structure.form=direct-1,transposed-2; in compare, structure.form=all "
          "takes all forms that carry the filter. May be repeated.",
+)
+vary_one_option = click.option(
+    "--vary", "variations", metavar="KEY=VALUE", multiple=True,
+    help="Change a key of the preset, for instance structure.form=direct-1. May be repeated.",
 )
 
 

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 import click
 
-from streamhost.commands.common import force_option, presets_named, structures_option, vary_option
+from streamhost.commands.common import force_option, presets_named, structures_option, vary_one_option
 from streamhost.errors import RequestError
 
 if TYPE_CHECKING:
@@ -24,7 +24,7 @@ SVG = ".svg"
 @click.option("--values", type=click.Choice(["table", "beside", "none"]), default="table", show_default=True,
               help="Where the values of the coefficients stand; those beside the gains, in SVG only, need room there.")
 @click.option("--equation", "by_node", is_flag=True, help="Print one equation for each node, not one for each output.")
-@vary_option
+@vary_one_option
 @structures_option
 @force_option
 def draw(

@@ -89,7 +89,8 @@ def _show_version(ctx: click.Context, param: click.Parameter, value: bool) -> No
     cls=LazyGroup,
     invoke_without_command=True,
     context_settings={"help_option_names": ["-h", "--help"]},
-    epilog="Exit status: 0 done; 1 done, and a limit is not met; 2 the request is wrong; 3 the machine failed us.",
+    epilog="Exit status: 0 done; 1 done, and a limit is not met; 2 the request is wrong; 3 the machine failed us; "
+           "130 interrupted; 141 nobody reads the output; 70 a fault of ours.",
 )
 @click.option("--version", is_flag=True, is_eager=True, expose_value=False, callback=_show_version,
               help="Show the version and exit.")

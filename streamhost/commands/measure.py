@@ -15,7 +15,7 @@ from streamhost.commands.common import (
     report_option,
     structures_option,
     tell_report,
-    vary_option,
+    vary_one_option,
     write_json,
 )
 from streamhost.errors import RequestError
@@ -25,15 +25,26 @@ if TYPE_CHECKING:
     from streamhost.presets import Preset
 
 
+class OnlyOption(click.Option):
+    """Names the instruments in its help, for which alone they are imported here."""
+
+    def get_help_record(self, ctx: click.Context) -> tuple[str, str] | None:
+        from streamhost.commands.instruments import INSTRUMENTS
+
+        names = ", ".join(instrument.name for instrument in INSTRUMENTS)
+        self.help = f"Only these instruments and the limits they answer, for instance noise,response. There are {names}."
+        return super().get_help_record(ctx)
+
+
 @click.command()
 @click.argument("name", metavar="PRESET")
-@click.option("--only", metavar="NAMES", help="Only these instruments and the limits they answer, for instance noise,response.")
+@click.option("--only", cls=OnlyOption, metavar="NAMES")
 @click.option("--input", "source", metavar="IN",
               help="An audio file, or a shipped recording's name. Unless said: the noise on which limits are checked.")
 @click.option("--output", "folder", metavar="DIR", help="Write the worst cases that are audio into this folder.")
 @click.option("--quick", is_flag=True, help="Shorter runs and smaller searches.")
 @report_option
-@vary_option
+@vary_one_option
 @json_option
 @structures_option
 @force_option
