@@ -1,6 +1,7 @@
 """Audio files for tests: written and read by hand or by the standard library, and by the program in one line."""
 
 import os
+import resource
 import struct
 import wave
 from collections.abc import Iterator
@@ -52,3 +53,14 @@ def no_privileges() -> Iterator[None]:
         yield
     finally:
         os.seteuid(0)
+
+
+@contextmanager
+def file_size_limit(size: int) -> Iterator[None]:
+    """The system refuses to let any file grow beyond `size`, as a full disk would; needs no privilege."""
+    soft, hard = resource.getrlimit(resource.RLIMIT_FSIZE)
+    resource.setrlimit(resource.RLIMIT_FSIZE, (size, hard))
+    try:
+        yield
+    finally:
+        resource.setrlimit(resource.RLIMIT_FSIZE, (soft, hard))

@@ -11,6 +11,8 @@ import pytest
 from hypothesis import settings
 
 import streamhost
+from streamhost.files import AudioWriter
+from streamhost.signals import white
 
 ROOT = Path(__file__).resolve().parent.parent
 
@@ -40,3 +42,12 @@ def report(tmp_path_factory: pytest.TempPathFactory) -> Path:
     with pytest.MonkeyPatch.context() as patch:
         quick(patch)
         return compared(tmp_path_factory.mktemp("report"))
+
+
+@pytest.fixture
+def recording(tmp_path):
+    """Two seconds of noise in two channels, at 48 kHz."""
+    path = tmp_path / "noise.wav"
+    with AudioWriter(path, rate=48000, channels=2, subtype="pcm24") as writer:
+        writer.write(white(2 * 48000, 2, 5, -20.0))
+    return str(path)

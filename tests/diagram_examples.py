@@ -115,3 +115,13 @@ def cookbook_low_pass(frequency: float, rate: float = 48000.0, q: float = 0.5**0
     alpha, c = np.sin(w) / (2.0 * q), np.cos(w)
     b, a = np.array([(1.0 - c) / 2.0, 1.0 - c, (1.0 - c) / 2.0]), np.array([1.0 + alpha, -2.0 * c, 1.0 - alpha])
     return (b / a[0]).tolist(), (a / a[0]).tolist()
+
+
+def comb(frames: int, gain: float) -> Diagram:
+    """y = x + gain times y so many frames ago."""
+    b = Builder()
+    x, d = b.input(), b.delay("d", n=frames)
+    y = b.sum(x, b.gain(d, "g", gain))
+    d.takes(y)
+    b.output(y)
+    return b.build()

@@ -14,6 +14,8 @@ RATE = 48000
 EPSILON = 2.0**-52
 DIRECT = ("direct-1", "direct-1-swapped", "direct-2", "transposed-1", "transposed-2")
 """The forms that draw any numerator and denominator as they are written."""
+NUMERATOR_FIRST = ("direct-1", "transposed-2")
+"""Those whose numerator stands before the recursion."""
 
 
 def fir(*taps: float) -> Filter:
@@ -64,6 +66,11 @@ def _built(form: str, decomposition: str, name: str) -> Built | None:
     except StructureError as error:
         assert "cannot carry" in str(error)
         return None
+
+
+def coefficients(diagram: Diagram) -> dict[str, float]:
+    """Of the first channel, by their labels."""
+    return {slot.label: value for slot, value in zip(diagram.slots, diagram.values[:, 0].tolist(), strict=True)}
 
 
 def rounding_bound(diagram: Diagram, frames: int | None = None) -> float:

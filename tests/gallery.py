@@ -11,10 +11,9 @@ from html import escape
 from pathlib import Path
 from random import Random
 
+from drawn_forms import cascade, complementary, sums, tapped, whole
 from form_filters import DIRECT, RATE, built, carried
 from random_diagrams import random_diagram
-from test_drawing_forms import cascade, sums, whole
-from test_drawing_taps import complementary, tapped
 
 from streamhost import Filter, design
 from streamhost.diagram import Diagram

@@ -3,9 +3,9 @@
 import numpy as np
 from scipy import linalg
 
-from streamhost import Filter, Fixed
+from streamhost import Filter, Fixed, design
 from streamhost.diagram import Diagram
-from streamhost.diagram.norms import noise_gains, norms_to_output, powers_from_input
+from streamhost.diagram.norms import noise_gains
 from streamhost.filters import Polynomials
 from streamhost.formats import named_format
 from streamhost.measure.predicted import predicted_noise
@@ -13,7 +13,6 @@ from streamhost.program.run import lower, run_definition
 from streamhost.structures import build
 
 RATE = 48000
-EPSILON = 2.0**-52
 SINE_DB = 20.0 * np.log10(2.0**0.5)  # dBFS of a full-scale sine over that of its power
 FINE = Fixed("Q1.23", coefficients={"bits": 32, "point": "coefficient"})
 
@@ -34,6 +33,10 @@ def section(b: list[float], a: list[float]) -> Filter:
     return Filter.from_sections([[*(b + [0.0, 0.0])[:3], *(a + [0.0, 0.0])[:3]]], rate=RATE)
 
 
+def low_pass(frequency: float, q: float = 0.5**0.5) -> Filter:
+    return design("low-pass", rate=RATE, frequency=frequency, q=q)
+
+
 def poles_at(radius: float, angle: float) -> list[float]:
     """1 - 2 r cos(angle) z^-1 + r^2 z^-2."""
     return [1.0, -2.0 * radius * float(np.cos(angle)), radius**2]
@@ -41,16 +44,6 @@ def poles_at(radius: float, angle: float) -> list[float]:
 
 def in_float64(diagram: Diagram, x: np.ndarray) -> np.ndarray:
     return run_definition(lower(diagram, named_format("float64")), x[:, np.newaxis])[:, 0, 0]
-
-
-def rounding_bound(diagram: Diagram) -> float:
-    """The most that one rounding of each node, and of each coefficient, of a signal of at most 1 makes at the output.
-
-    A node's value is taken as six times what white noise gives it. Doubled for the other side's own, of the same kind.
-    """
-    values = 6.0 * np.sqrt(powers_from_input(diagram))
-    to_output = norms_to_output(diagram, range(len(diagram.nodes))).l1
-    return 2.0 * 2.0 * EPSILON * float(np.sum(values * to_output))
 
 
 def by_definition(sections: tuple[Polynomials, ...], x: np.ndarray) -> np.ndarray:

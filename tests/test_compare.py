@@ -55,15 +55,6 @@ def preset(tmp_path):
     return write
 
 
-@pytest.fixture
-def recording(tmp_path):
-    """Two seconds of noise in two channels."""
-    path = tmp_path / "noise.wav"
-    with AudioWriter(path, rate=RATE, channels=2, subtype="pcm24") as writer:
-        writer.write(white(2 * RATE, 2, 5, -20.0))
-    return str(path)
-
-
 def figures_of(capsys, *arguments, status=0):
     """The JSON document of a comparison."""
     assert main(["compare", *arguments, "--json", "-"]) == status

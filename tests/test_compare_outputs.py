@@ -42,15 +42,6 @@ noise_dbfs = -91.0
 """
 
 
-@pytest.fixture
-def recording(tmp_path):
-    """Two seconds of noise in two channels."""
-    path = tmp_path / "noise.wav"
-    with AudioWriter(path, rate=RATE, channels=2, subtype="pcm24") as writer:
-        writer.write(white(2 * RATE, 2, 5, -20.0))
-    return str(path)
-
-
 def stated(tmp_path):
     path = tmp_path / "two-way.toml"
     path.write_text(PRESET)

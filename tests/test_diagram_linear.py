@@ -8,6 +8,7 @@ import pytest
 from diagram_evaluator import evaluate
 from diagram_examples import (
     all_pole_lattice,
+    comb,
     coupled,
     direct_1,
     direct_2,
@@ -188,15 +189,6 @@ def test_output_that_nothing_reaches_is_zero_over_one() -> None:
     exact = exact_transfer_function(b.build())
     assert (exact.numerators, exact.denominator) == ((((),),), (1,))
     assert transfer_function(b.build()).response(0.5).tolist() == [[0]]
-
-
-def comb(frames: int, gain: float) -> Diagram:
-    b = Builder()
-    x, d = b.input(), b.delay("d", n=frames)
-    y = b.sum(x, b.gain(d, "g", gain))
-    d.takes(y)
-    b.output(y)
-    return b.build()
 
 
 def test_long_loop_is_one_power_of_the_delay() -> None:

@@ -8,6 +8,7 @@ import numpy as np
 import pytest
 from diagram_evaluator import evaluate
 from diagram_examples import (
+    comb,
     cookbook_low_pass,
     coupled,
     direct_1,
@@ -280,15 +281,6 @@ def test_pole_on_the_circle_that_a_zero_hides_is_finite() -> None:
     assert norms.l2[:2].tolist() == [inf, inf]
     assert norms.l2[2] ** 2 == pytest.approx(1.0 / (1.0 - 0.25), rel=1e-9)
     assert norms.peak[2] == pytest.approx(2.0, rel=1e-6)
-
-
-def comb(frames: int, gain: float) -> Diagram:
-    b = Builder()
-    x, d = b.input(), b.delay("d", n=frames)
-    y = b.sum(x, b.gain(d, "g", gain))
-    d.takes(y)
-    b.output(y)
-    return b.build()
 
 
 @pytest.mark.parametrize("frames", [7, 70, 300])

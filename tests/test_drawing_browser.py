@@ -5,8 +5,8 @@ from pathlib import Path
 
 import pytest
 from browser import Measured, browser, faults_of, measure
+from drawn_forms import whole
 from gallery import drawings
-from test_drawing_forms import whole
 
 from streamhost.drawing import svg
 

@@ -3,43 +3,21 @@
 import subprocess
 import sys
 from importlib import import_module
-from random import Random
 
 import pytest
 from drawing_reader import crossings, faults_of, page_of
+from drawn_forms import cascade, sums, whole
 from form_filters import DIRECT
 
 from streamhost.diagram import Diagram, Round, Sum, Taps
 from streamhost.diagram.tapped import MOST_TAPS
 from streamhost.drawing import layout_of, plain, svg
-from streamhost.filters import Filter
-from streamhost.structures import build, form
+from streamhost.structures import form
 from streamhost.structures.series import MOST_DRAWN
 
 ORDERS = range(1, 13)
 LEAST_SCALE = 0.8  # subscripts of 5.6 pt; smaller ones are hard to read in print (common practice)
 WIDEST_MM = 180.0
-
-
-def whole(name: str, b_order: int, a_order: int) -> Diagram:
-    rng = Random(100 * b_order + a_order)
-    b = [rng.uniform(0.1, 1.0) for _ in range(b_order + 1)]
-    a = [1.0, *(rng.uniform(0.1, 1.0) / (2 * a_order) for _ in range(a_order))]
-    return build(Filter.from_coefficients(b, a, rate=48000), form=name, decomposition="whole").diagram
-
-
-def cascade(name: str, sections: int, *, odd: bool = False, **choices: str) -> Diagram:
-    rng = Random(sections)
-    sos = [[1.0, rng.uniform(-1, 1), 0.5, 1.0, rng.uniform(-1, 1), rng.uniform(0.2, 0.9)] for _ in range(sections)]
-    if odd:
-        sos[-1][2] = sos[-1][5] = 0.0
-        sos[-1][4] = 0.3
-    filter = Filter.from_sections(sos, rate=48000)
-    return build(filter, form=name, decomposition="cascade", pairing="given", **choices).diagram
-
-
-def sums(diagram: Diagram) -> set[int]:
-    return {index for index, node in enumerate(diagram.nodes) if isinstance(node, Sum)}
 
 
 def check_named(diagram: Diagram, rounded: set[int]) -> None:
@@ -168,7 +146,7 @@ import sys
 sys.path[:0] = ["tests"]
 from random import Random
 from random_diagrams import random_diagram
-from test_drawing_forms import cascade
+from drawn_forms import cascade
 print(cascade("transposed-2", 3).svg(), random_diagram(Random(2), 12).svg())
 """
     runs = [subprocess.run([sys.executable, "-c", code], capture_output=True, check=True, env={"PYTHONHASHSEED": seed}).stdout

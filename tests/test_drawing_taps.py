@@ -1,46 +1,20 @@
 """Tapped lines drawn as the delays, gains and adders that they stand for."""
 
-from random import Random
 
 import numpy as np
 import pytest
 from diagram_evaluator import evaluate
 from drawing_reader import crossings, faults_of, faults_of_figure, page_of
+from drawn_forms import complementary, tapped
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from streamhost.diagram import Builder, Diagram, Taps, minus
+from streamhost.diagram import Diagram, Taps
 from streamhost.diagram.tapped import MOST_TAPS, written_out
 from streamhost.drawing import layout_of, plain, svg
 
 KINDS = ("plain", "last first", "even", "odd")
 LENGTHS = (1, 2, 3, 4, 5, 8, 9, 13, MOST_TAPS)
-
-
-def tapped(length: int, kind: str) -> Diagram:
-    """One tapped line between input and output; its coefficients are so short that every sum of products is exact."""
-    rng = Random(length)
-    half = [rng.randint(1, 63) / 64 for _ in range((length + 1) // 2)]
-    if kind in ("even", "odd"):
-        sign = 1 if kind == "even" else -1
-        half[-1] *= kind == "even" or length % 2 == 0
-        values = half + [sign * c for c in half[: length // 2][::-1]]
-    else:
-        values = [rng.randint(1, 63) / 64 for _ in range(length)]
-    builder = Builder()
-    fold = kind if kind in ("even", "odd") else None
-    builder.output(builder.taps(builder.input(), "h", values, fold=fold, last_first=kind == "last first"))
-    return builder.build()
-
-
-def complementary() -> Diagram:
-    """A low and a high output that add up to a delay."""
-    builder = Builder()
-    x = builder.input()
-    low = builder.taps(x, "h", [0.1, 0.2, 0.4, 0.2, 0.1], fold="even")
-    builder.output(low, "low")
-    builder.output(builder.sum(builder.delay("d", x, 2), minus(low), label="high"), "high")
-    return builder.build()
 
 
 @settings(max_examples=60, deadline=None)

@@ -3,8 +3,8 @@
 import pytest
 from diagram_examples import fir, running_sum
 from drawing_reader import faults_of, page_of
+from drawn_forms import cascade, whole
 from form_filters import DIRECT
-from test_drawing_forms import cascade, whole
 
 from streamhost.diagram import Builder, Diagram
 from streamhost.diagram.questions import response_frames

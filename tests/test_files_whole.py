@@ -2,17 +2,15 @@
 
 import errno
 import os
-import resource
 import signal
 import subprocess
 import tempfile
 from collections.abc import Iterator
-from contextlib import contextmanager
 from pathlib import Path
 
 import numpy as np
 import pytest
-from audio_files import no_privileges, noise, wav_codes, write
+from audio_files import file_size_limit, no_privileges, noise, wav_codes, write
 
 from streamhost.errors import AudioFileError, MachineError, RequestError
 from streamhost.files import AudioWriter, atomic, same_file, sink, write_bytes_atomic, write_text_atomic, writing
@@ -152,17 +150,6 @@ def test_a_new_file_has_the_permissions_of_any_new_file(tmp_path: Path) -> None:
 
 
 # Failures of the machine
-
-
-@contextmanager
-def file_size_limit(size: int) -> Iterator[None]:
-    """The system refuses to let any file grow beyond `size`, as a full disk would; needs no privilege."""
-    soft, hard = resource.getrlimit(resource.RLIMIT_FSIZE)
-    resource.setrlimit(resource.RLIMIT_FSIZE, (size, hard))
-    try:
-        yield
-    finally:
-        resource.setrlimit(resource.RLIMIT_FSIZE, (soft, hard))
 
 
 @pytest.mark.parametrize(("name", "subtype"), [("a.wav", "pcm16"), ("a.rf64", "pcm24"), ("a.flac", "pcm16")])

@@ -2,6 +2,7 @@
 
 import numpy as np
 import pytest
+from levels import decibels
 
 from streamhost.errors import FilterError
 from streamhost.filters import Codes, Filter
@@ -20,10 +21,6 @@ RESPONSE_DB = {  # Hz: decimals, Q4.12; computed from the same source, 3 decimal
     1000: (-6.254, -6.254),
     3400: (-6.27, -6.271),
 }
-
-
-def decibels(response):
-    return 20 * np.log10(np.abs(response))
 
 
 def test_codes_are_the_decimals_rounded_to_q12():

@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from levels import decibels
 from scipy import signal
 
 from streamhost.errors import FilterError
@@ -18,10 +19,6 @@ HERTZ = np.append(np.geomspace(1.0, 23999.0, 500), 24000.0)
 # A pole is rounded by up to 2^-53, which at 20 Hz is 4.3e-14 of its distance from z = 1; that moves the response by up to
 # that times the distance over the one from the circle (twice the Q, at most 2.7), and 8 poles make 8 * 8.7 dB of it: 8e-12.
 ROUNDED_DB = 1e-11
-
-
-def decibels(response):
-    return 20 * np.log10(np.abs(response))
 
 
 def crossover(kind="linkwitz-riley", rate=RATE, **parameters):

@@ -5,6 +5,7 @@ from math import log10, sqrt
 
 import numpy as np
 import pytest
+from levels import decibels
 
 from streamhost.errors import FilterError
 from streamhost.filters import Filter, Polynomials, design, kinds
@@ -13,11 +14,6 @@ from streamhost.filters.designs import KINDS
 
 FLAT = 1 / sqrt(2)
 INF = float("inf")
-
-
-def decibels(response):
-    with np.errstate(divide="ignore"):
-        return 20 * np.log10(np.abs(response))
 
 
 # W3C Audio EQ Cookbook (2021), formulas as quoted; coefficients computed for this project, divided by a0.

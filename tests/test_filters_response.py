@@ -5,16 +5,13 @@ import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+from levels import decibels
 from scipy import signal
 
 from streamhost.errors import FilterError
 from streamhost.filters import Filter, design
 
 EPS = float(np.finfo(np.float64).eps)
-
-
-def decibels(response):
-    return 20 * np.log10(np.abs(response))
 
 
 def exactly(factor_b, factor_a, hertz, rate):

@@ -5,13 +5,12 @@ from fractions import Fraction
 import numpy as np
 import pytest
 from drawing_reader import crossings, faults_of, page_of
-from form_filters import RATE, rounding_bound
+from drawn_forms import cascade, sums
+from form_filters import RATE, coefficients, rounding_bound
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from noise_figures import noise_gain_db, stated
 from scipy import signal
 from structure_evaluator import response, run, series
-from test_drawing_forms import cascade, sums
 
 from streamhost.diagram import Counts
 from streamhost.diagram.norms import norms_from_input
@@ -33,11 +32,6 @@ def pair(r: float, theta: float) -> list[float]:
     return [1.0, -2 * r * np.cos(theta), r * r]
 
 
-def coefficients(built: Built) -> dict[str, float]:
-    diagram = built.diagram
-    return {slot.label: value for slot, value in zip(diagram.slots, diagram.values[:, 0].tolist(), strict=True)}
-
-
 @settings(max_examples=40)
 @given(st.integers(-7, 7), st.integers(1, 3), st.lists(st.integers(-31, 31), min_size=1, max_size=3))
 def test_it_is_the_filter_exactly(code: int, octave: int, codes: list[int]) -> None:
@@ -46,7 +40,7 @@ def test_it_is_the_filter_exactly(code: int, octave: int, codes: list[int]) -> N
     b = [value / 16 for value in codes]
     a = [1.0, float(-2 * p), float(p * p + q * q)]
     built = drawn(b, a)
-    found = coefficients(built)
+    found = coefficients(built.diagram)
     assert (found["p"], found["q"], found["d"]) == (float(p), float(q), b[0])
     assert response(built.diagram, 30, Fraction) == series(b, a, 30)
 
@@ -61,7 +55,7 @@ def test_a_real_pole_alone_exactly(code: int, codes: list[int]) -> None:
 
 def test_poles_on_the_circle_are_carried_and_not_scaled() -> None:
     built = drawn([1.0], [1.0, -1.2, 1.0])
-    assert (coefficients(built)["p"], coefficients(built)["q"]) == pytest.approx((0.6, 0.8), abs=1e-15)
+    assert (coefficients(built.diagram)["p"], coefficients(built.diagram)["q"]) == pytest.approx((0.6, 0.8), abs=1e-15)
     assert [node for node in built.diagram.nodes if node.kind == "shift"] == []
 
 
@@ -129,7 +123,7 @@ def test_a_wrapping_overflow_dies_away() -> None:
         x = np.zeros((600, 1))
         x[:40, 0] = rng.choice([-1.0, 1.0 - 2.0**-15], 40)
         y = run_definition(lower(built.diagram, format), x)[:, 0, 0]
-        found = coefficients(built)
+        found = coefficients(built.diagram)
         kept = np.hypot(found["c1"], found["c2"]) * np.sqrt(0.5) / (1 - r - 2.0**-20) + 0.5
         assert np.abs(y[-100:]).max() <= kept * 2.0**-15, (r, theta)
 
@@ -143,12 +137,6 @@ def test_an_overflow_does_happen_there() -> None:
     y = {name: run_definition(lower(build(filter, form=name).diagram, format), x)[-100:, 0, 0]
          for name in ("coupled", "direct-1")}
     assert np.abs(y["coupled"]).max() < 0.001 and np.abs(y["direct-1"]).max() > 0.1
-
-
-@pytest.mark.parametrize("figure", [("low-pass", 100.0), ("low-pass", 1000.0)])
-def test_the_explanations_noise_figures(figure: tuple[str, float]) -> None:
-    assert stated("coupled", f"{noise_gain_db('coupled', *figure):.1f}")
-    assert stated("coupled", f"{noise_gain_db('direct-1', *figure):.1f}")
 
 
 @pytest.mark.parametrize(("b", "a", "reason"), [

@@ -5,13 +5,12 @@ from fractions import Fraction
 import numpy as np
 import pytest
 from drawing_reader import crossings, faults_of, page_of
-from form_filters import RATE, rounding_bound
+from drawn_forms import cascade, sums, whole
+from form_filters import RATE, coefficients, rounding_bound
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from noise_figures import noise_gain_db, stated
 from scipy import signal
 from structure_evaluator import response, run, series
-from test_drawing_forms import cascade, sums, whole
 
 from streamhost.diagram import Builder, Counts, Diagram
 from streamhost.diagram.norms import norms_from_input
@@ -37,10 +36,6 @@ def step_up(k: list[Fraction]) -> list[Fraction]:
 
 def drawn(name: str, b: list[float], a: list[float], **choices: str) -> Built:
     return build(Filter.from_coefficients(b, a, rate=RATE), form=name, decomposition="whole", **choices)
-
-
-def coefficients(diagram: Diagram) -> dict[str, float]:
-    return {slot.label: value for slot, value in zip(diagram.slots, diagram.values[:, 0].tolist(), strict=True)}
 
 
 def random_filter(order: int, seed: int) -> Filter:
@@ -259,17 +254,6 @@ def test_no_node_of_one_multiplier_stages_has_more_power_than_the_input(seed: in
     largest = max(node_norms(diagram, "fg"))
     shifted = any(node.kind == "shift" for node in diagram.nodes)
     assert (0.5 if shifted else 0.0) < largest <= 1 + 1e-12
-
-
-@pytest.mark.parametrize("figure", [("low-pass", 100.0), ("low-pass", 1000.0)])
-@pytest.mark.parametrize("name", LATTICES)
-def test_the_explanations_noise_figures(name: str, figure: tuple[str, float]) -> None:
-    assert stated(name, f"{noise_gain_db(name, *figure):.1f}")
-    assert stated(name, f"{noise_gain_db('direct-1', *figure):.1f}")
-
-
-def test_the_ladders_high_pass_figure() -> None:
-    assert stated("lattice-ladder", f"{noise_gain_db('lattice-ladder', 'high-pass', 100.0):.1f}")
 
 
 def test_a_wrapping_overflow_dies_away_in_normalized_stages() -> None:

@@ -4,17 +4,17 @@ import math
 
 import numpy as np
 import pytest
+from form_filters import rounding_bound
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from low_noise_forms import (
     RATE,
-    by_definition,
     gramians,
     in_float64,
+    low_pass,
     noise_gain,
     poles_at,
     random_filter,
-    rounding_bound,
     rounding_gain,
     section,
 )
@@ -24,7 +24,6 @@ from streamhost import Filter, Fixed, design, realize
 from streamhost.diagram import Counts
 from streamhost.diagram.norms import powers_from_input
 from streamhost.drawing import svg
-from streamhost.errors import StructureError
 from streamhost.measure import measure
 from streamhost.program.run import lower, run_definition
 from streamhost.signals import white
@@ -35,10 +34,6 @@ from streamhost.structures.division import Ratio
 BOTH = ("normal", "minimum-noise")
 TWO_STATES = ("direct-2", "transposed-2", "normal", "minimum-noise", "delta", "kingsbury", "zoelzer")
 SEEDS = st.integers(0, 2**32 - 1)
-
-
-def low_pass(frequency: float, q: float = 0.5**0.5) -> Filter:
-    return design("low-pass", rate=RATE, frequency=frequency, q=q)
 
 
 def states_noise(filter: Filter, name: str) -> float:
@@ -75,23 +70,7 @@ def test_a_whole_filter_of_order_n_has_n_plus_1_squared_coefficients(order: int)
                for value in diagram.values[:, 0])
 
 
-@pytest.mark.parametrize("name", BOTH)
-def test_a_constant_is_one_gain(name: str) -> None:
-    diagram = build(section([0.5], [1.0]), form=name).diagram
-    assert diagram.counts() == Counts(1, 0, 0)
-
-
 # --- the filter
-
-
-@pytest.mark.parametrize("name", BOTH)
-@settings(max_examples=12)
-@given(st.integers(1, 12), SEEDS)
-def test_a_cascade_in_float64_agrees_with_scipy(name: str, order: int, seed: int) -> None:
-    built = build(random_filter(order, seed), form=name)
-    x = np.random.default_rng(seed).uniform(-1, 1, 60)
-    wanted = by_definition(built.sections, x)
-    assert np.max(np.abs(in_float64(built.diagram, x) - wanted)) <= rounding_bound(built.diagram)
 
 
 @settings(max_examples=12)
@@ -315,23 +294,6 @@ def test_the_bits_do_not_depend_on_how_many_digits_are_carried(which: str, monke
 
 
 # --- refusals and hazards
-
-
-@pytest.mark.parametrize(
-    ("name", "b", "a", "reason"),
-    [
-        ("normal", [1.0, 0.5, 0.25], [1.0, -1.0, 0.25], "it has a double pole, which has no normal form"),
-        ("normal", [1.0, 0.5, 0.25], [1.0], "it has no recursion"),
-        ("minimum-noise", [1.0, 0.5, 0.25], [1.0], "it has no recursion"),
-        ("normal", [1.0, 0.5, 0.25], [1.0, -1.0, 1.0], "it has a pole on or outside the unit circle"),
-        ("minimum-noise", [1.0, 0.5, 0.25], [1.0, -2.5, 1.0], "it has a pole on or outside the unit circle"),
-        ("normal", [1.0], [1.0, -0.5, 0.25, -0.1], "it is of order 3, and the normal form is one of first and second"),
-        ("minimum-noise", [1.0], [1.0, *[0.0] * 12, 0.1], "it is of order 13, whose matrix would have 169"),
-    ],
-)
-def test_what_is_refused(name: str, b: list[float], a: list[float], reason: str) -> None:
-    with pytest.raises(StructureError, match=reason):
-        build(Filter.from_coefficients(b, a, rate=RATE), form=name, decomposition="whole")
 
 
 @pytest.mark.parametrize("name", BOTH)

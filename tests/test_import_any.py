@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from test_import_text import RATE, ROWS
+from imported_tables import RATE, ROWS
 
 from streamhost.errors import RequestError
 from streamhost.filters import Filter

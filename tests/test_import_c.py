@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
-from test_import_text import RATE, ROWS, SECTIONS, imported, refusal
+from imported_tables import RATE, ROWS, SECTIONS, imported, refusal
 
 from streamhost.errors import RequestError
 from streamhost.filters import Filter

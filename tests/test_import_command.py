@@ -1,7 +1,7 @@
 """`streamhost import`."""
 
 import pytest
-from test_import_text import ROWS, SECTIONS
+from imported_tables import ROWS, SECTIONS
 
 from streamhost.commands.main import main
 from streamhost.presets import load_preset, parse_preset

@@ -5,7 +5,7 @@ from fractions import Fraction
 import pytest
 from hypothesis import assume, given
 from hypothesis import strategies as st
-from test_import_text import RATE, imported, refusal
+from imported_tables import RATE, imported, refusal
 
 from streamhost.errors import RequestError
 from streamhost.filters import Filter

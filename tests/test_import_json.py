@@ -3,7 +3,7 @@
 import json
 
 import pytest
-from test_import_text import RATE, ROWS, SECTIONS, imported, refusal
+from imported_tables import RATE, ROWS, SECTIONS, imported, refusal
 
 from streamhost.filters import Filter
 

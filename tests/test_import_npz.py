@@ -5,7 +5,7 @@ import zipfile
 
 import numpy as np
 import pytest
-from test_import_text import RATE, ROWS, SECTIONS, imported, refusal
+from imported_tables import RATE, ROWS, SECTIONS, imported, refusal
 
 from streamhost.filters import Filter
 

@@ -13,8 +13,7 @@ from types import SimpleNamespace
 import numpy as np
 import pytest
 import soundfile
-from audio_files import wav_bytes, wav_codes, write
-from test_files_whole import file_size_limit
+from audio_files import file_size_limit, wav_bytes, wav_codes, write
 
 import streamhost as sh
 from streamhost.commands.main import main

@@ -1,11 +1,11 @@
 """How a filter becomes sections: kept as given, paired, ordered; and what is refused."""
 
-import math
 from fractions import Fraction
 from itertools import pairwise
 
 import numpy as np
 import pytest
+from band_pass import elliptic_band_pass
 from hypothesis import assume, given
 from hypothesis import strategies as st
 from scipy import signal
@@ -326,51 +326,6 @@ def test_a_filter_of_zero_gain_stays_zero() -> None:
         assert response(built.diagram, 6, Fraction) == [0] * 6
 
 
-# --- coefficient quantization of a 12th-order elliptic band-pass (Oppenheim & Schafer, ch. 6, from memory)
-
-BAND_PASS_DENOMINATOR = [
-    1, -5.2258158439, 16.7847072872, -36.8831934498, 62.3969015615, -82.6537920646, 88.6743188605, -76.4726364287,
-    53.4097959907, -29.202122195, 12.2906738827, -3.5376374095, 0.6262814625,
-]
-
-
-def elliptic_band_pass() -> Filter:
-    """Between 0.99 and 1.01, and 0.01: 0.173724 dB and 40.0864 dB, here to all digits."""
-    return design(
-        "elliptic", rate=2.0, response="band-pass", order=6, frequency=(0.3, 0.4),
-        ripple_db=20 * math.log10(1.01 / 0.99), stopband_db=20 * math.log10(1.01 / 0.01),
-    )
-
-
-def rounded(values: tuple[float, ...], fraction_bits: int) -> list[float]:
-    scale = 2**fraction_bits
-    return [round(value * scale) / scale for value in values]
-
-
-def test_the_band_pass_has_six_sections_and_this_radius() -> None:
-    built = cascade(elliptic_band_pass())
-    assert [(len(s.b), len(s.a)) for s in built.sections] == [(3, 3)] * 6
-    # max |p| = 0.9933361: own computation, to 7 digits.
-    assert max(math.sqrt(section.a[2]) for section in built.sections) == pytest.approx(0.9933361, abs=5e-8)
-
-
-@pytest.mark.parametrize(("bits", "radius"), [(8, 0.99216), (10, 0.99412), (12, 0.99314), (16, 0.99332)])
-def test_rounded_sections_stay_stable(bits: int, radius: float) -> None:
-    """Section coefficients in [-2, 2): own computation, to 5 digits."""
-    tables = [rounded(section.a, bits - 2) for section in cascade(elliptic_band_pass()).sections]
-    assert max(math.sqrt(a[2]) for a in tables) == pytest.approx(radius, abs=5e-6)
-
-
-@pytest.mark.parametrize(
-    ("bits", "radius"), [(16, 1.10778), (20, 1.02108), (24, 0.99185), (28, 0.99309)]
-)
-def test_the_rounded_whole_denominator_does_not(bits: int, radius: float) -> None:
-    """a with 7 integer bits and the sign: own computation, to 5 digits."""
-    built = build(elliptic_band_pass(), form="direct-1", decomposition="whole")
-    (section,) = built.sections
-    # Given to 10 decimals; the edges of the design behind them are as exact as those here.
-    np.testing.assert_allclose(section.a, BAND_PASS_DENOMINATOR, rtol=0, atol=6e-11)
-    assert max(abs(np.roots(rounded(section.a, bits - 8)))) == pytest.approx(radius, abs=2e-5)
 
 
 # --- refusals and hazards

@@ -2,11 +2,11 @@
 
 import math
 from fractions import Fraction
-from itertools import permutations
 
 import numpy as np
 import pytest
-from form_filters import DIRECT
+from band_pass import elliptic_band_pass
+from form_filters import DIRECT, NUMERATOR_FIRST
 from hypothesis import given
 from hypothesis import strategies as st
 from scipy import signal
@@ -18,18 +18,9 @@ from streamhost.structures import Built, build
 from streamhost.structures.norm import l2_norm
 
 RATE = 48000.0
-NUMERATOR_FIRST = ("direct-1", "transposed-2")
 RECURSION_FIRST = ("direct-1-swapped", "direct-2", "transposed-1")
 RECURSIVE_NODE = {"direct-1-swapped": "w", "direct-2": "w", "transposed-1": "v"}
 ONE = (Fraction(1),)
-
-
-def elliptic_band_pass() -> Filter:
-    """Oppenheim & Schafer, ch. 6 (from memory): between 0.99 and 1.01 in the pass-band, 0.01 in the stop-band."""
-    return design(
-        "elliptic", rate=2.0, response="band-pass", order=6, frequency=(0.3, 0.4),
-        ripple_db=20 * math.log10(1.01 / 0.99), stopband_db=20 * math.log10(1.01 / 0.01),
-    )
 
 
 def exactly(values: list[float]) -> tuple[Fraction, ...]:
@@ -212,48 +203,6 @@ def design_norm(section: Polynomials) -> float:
     return math.sqrt((1 + a2) / (1 - a2) / ((1 + a2) ** 2 - a1**2))
 
 
-# --- the order of the band-pass's sections. Jackson, IEEE AU-18, 1970, and Oppenheim & Schafer state the rules; the figures
-# are an own computation, independent of this code: dB of output noise, one rounding a section at its A(z).
-
-
-def noise_gain(sections: tuple[Polynomials, ...]) -> float:
-    """dB of the sum over sections of the power gain of 1 / A_k times all later sections."""
-    power = 0.0
-    for k, section in enumerate(sections):
-        h = signal.lfilter([1.0], section.a, np.eye(1, 3000)[0])
-        for later in sections[k + 1 :]:
-            h = signal.lfilter(later.b, later.a, h)
-        power += float(np.sum(h * h))
-    return 10 * math.log10(power)
-
-
-@pytest.mark.parametrize(("ordering", "expected"), [("outward", 18.14), ("inward", 11.92)])
-def test_the_noise_of_both_orderings_is_the_one_computed_apart(ordering: str, expected: float) -> None:
-    built = build(elliptic_band_pass(), form="direct-1", ordering=ordering, scaling="l2")
-    # In 0.01 dB, for the filter without its factor of 1.01 (which would add 0.09 dB).
-    assert noise_gain(built.sections) == pytest.approx(expected, abs=0.005)
-
-
-def test_of_all_orderings_the_spread_is_the_one_computed_apart() -> None:
-    """Best 10.3 dB, worst 18.28 dB of 720, from samples of |H|^2, so dense that their mean is the power."""
-    sections = [
-        Polynomials(tuple(v / s.b[0] for v in s.b), s.a) for s in build(elliptic_band_pass(), form="direct-1").sections
-    ]
-    w = (np.arange(8192) + 0.5) * np.pi / 8192
-    a = np.array([np.abs(signal.freqz(1.0, s.a, w)[1]) ** 2 for s in sections])
-    h = np.array([np.abs(signal.freqz(s.b, s.a, w)[1]) ** 2 for s in sections])
-    gain = elliptic_band_pass().zeros_poles().gain
-    total = gain**2 * np.prod(h, axis=0)
-    gains = []
-    for order in permutations(range(6)):
-        done, power = np.ones_like(w), float(np.mean(a[order[-1]]))
-        for k in order[:-1]:
-            done = done * h[k]
-            # What is rounded at section k, whose output is 1 / N_k of the unscaled one, meets the rest times K N_k.
-            power += float(np.mean(done) * np.mean(a[k] * total / done))
-        gains.append(10 * math.log10(power))
-    assert min(gains) == pytest.approx(10.3, abs=0.005)
-    assert max(gains) == pytest.approx(18.28, abs=0.005)
 
 
 # --- refusals
