@@ -7,6 +7,7 @@ parameter's name says; a product does not mind which, as long as both operands a
 from collections.abc import Iterable, Sequence
 from fractions import Fraction
 from math import isqrt
+from typing import Any
 
 from streamhost.errors import FilterError
 from streamhost.filters.factors import Polynomials
@@ -15,6 +16,13 @@ Polynomial = tuple[Fraction, ...]
 
 ONE: Polynomial = (Fraction(1),)
 ROOT_BITS = 256
+
+
+def to_mpf(value: Fraction) -> Any:
+    """In mpmath's working precision."""
+    import mpmath
+
+    return mpmath.mpf(value.numerator) / value.denominator
 
 
 def exactly(values: Iterable[float | Fraction]) -> Polynomial:

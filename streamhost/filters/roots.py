@@ -9,7 +9,7 @@ from fractions import Fraction
 from functools import lru_cache
 
 from streamhost.errors import FilterError
-from streamhost.filters.exact import Polynomial, exactly, square_root
+from streamhost.filters.exact import Polynomial, exactly, square_root, to_mpf
 from streamhost.filters.square_free import square_free_factors
 
 BITS = 400
@@ -100,7 +100,7 @@ def _of_long(polynomial: Polynomial) -> list[tuple[Fraction, Fraction]]:
     scale = 1 << (2 * BITS)
     for attempt in range(ATTEMPTS):
         with mpmath.workprec(BITS):
-            coefficients = [mpmath.mpf(value.numerator) / value.denominator for value in polynomial]
+            coefficients = [*map(to_mpf, polynomial)]
             try:
                 found = mpmath.polyroots(
                     coefficients[::-1], maxsteps=200 << attempt, extraprec=BITS << attempt, asc=True

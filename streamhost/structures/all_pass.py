@@ -18,7 +18,7 @@ from itertools import product as choices
 from itertools import zip_longest
 from typing import Any
 
-from streamhost.filters.exact import ONE, Polynomial, from_roots, product, stripped
+from streamhost.filters.exact import ONE, Polynomial, from_roots, product, stripped, to_mpf
 from streamhost.filters.roots import roots
 from streamhost.filters.stability import is_stable
 from streamhost.structures.division import Ratio
@@ -200,22 +200,16 @@ def _angles(section: Polynomial) -> list[Any]:
 
     if len(section) < 3 or section[1] ** 2 >= 4 * section[2]:
         return []
-    radius = mpmath.sqrt(_float(section[2]))
-    w = mpmath.acos(-_float(section[1]) / (2 * radius))
+    radius = mpmath.sqrt(to_mpf(section[2]))
+    w = mpmath.acos(-to_mpf(section[1]) / (2 * radius))
     return [w, w + 1 - radius]
 
 
 def _value(polynomial: Polynomial, z: Any) -> Any:
     result: Any = 0
     for coefficient in reversed(polynomial):
-        result = result * z + _float(coefficient)
+        result = result * z + to_mpf(coefficient)
     return result
-
-
-def _float(value: Fraction) -> Any:
-    import mpmath
-
-    return mpmath.mpf(value.numerator) / value.denominator
 
 
 def _verified(ratio: Ratio, found: Halves) -> Halves | str:

@@ -14,7 +14,7 @@ from fractions import Fraction
 from functools import lru_cache
 from typing import Any
 
-from streamhost.filters.exact import Polynomial
+from streamhost.filters.exact import Polynomial, to_mpf
 from streamhost.structures.division import Ratio
 
 BITS = 400
@@ -38,15 +38,8 @@ class StateSpace:
     d: float
 
 
-def number(value: Fraction) -> Any:
-    """In the working precision."""
-    import mpmath
-
-    return mpmath.mpf(value.numerator) / value.denominator
-
-
 def rounded(value: Any) -> float:
-    return float(value) if abs(value) > number(NOTHING) else 0.0
+    return float(value) if abs(value) > to_mpf(NOTHING) else 0.0
 
 
 @lru_cache(maxsize=256)
@@ -117,13 +110,13 @@ def orthonormal(ratio: Ratio) -> tuple[Any, Any, Any]:
     for m in range(order):
         backward.append([k[m] * value + (j == m) for j, value in enumerate(forward[m])])
     output = [sum((v[m] * row[j] for m, row in enumerate(backward)), Fraction(0)) for j in range(order)]
-    root = [mpmath.sqrt(number(rest[m])) for m in range(order)]
+    root = [mpmath.sqrt(to_mpf(rest[m])) for m in range(order)]
     a = mpmath.matrix(order, order)
     for i in range(order):
         for j in range(order):
-            a[i, j] = number(backward[i][j]) * root[i] / root[j]
-    b = mpmath.matrix([number(backward[i][order]) * root[i] for i in range(order)])
-    c = mpmath.matrix([[number(output[j]) / root[j] for j in range(order)]])
+            a[i, j] = to_mpf(backward[i][j]) * root[i] / root[j]
+    b = mpmath.matrix([to_mpf(backward[i][order]) * root[i] for i in range(order)])
+    c = mpmath.matrix([[to_mpf(output[j]) / root[j] for j in range(order)]])
     return a, b, c
 
 
@@ -156,9 +149,9 @@ def observability(a: Any, c: Any) -> Any:
 def shares(modes: list[Any]) -> list[Any]:
     """N mu_i / sum mu; 1 each where all are 0."""
     largest = max(modes)
-    if largest <= number(NOTHING):
+    if largest <= to_mpf(NOTHING):
         return [1 for _ in modes]
-    kept = [max(mode, largest * number(LEAST_MODE)) for mode in modes]
+    kept = [max(mode, largest * to_mpf(LEAST_MODE)) for mode in modes]
     return [len(kept) * mode / sum(kept) for mode in kept]
 
 
@@ -173,7 +166,7 @@ def equalizing(diagonal: list[Any]) -> Any:
     v, m = mpmath.eye(order), mpmath.diag(diagonal)
     for i in range(order - 1):
         off = m[i, i] - 1
-        if abs(off) < number(NOTHING):
+        if abs(off) < to_mpf(NOTHING):
             continue
         j = next(j for j in range(i + 1, order) if (m[j, j] - 1) * off < 0)
         other = m[j, j] - 1

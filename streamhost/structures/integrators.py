@@ -10,10 +10,9 @@ from typing import Any
 
 from streamhost.diagram.builder import Ref, minus
 from streamhost.filters import Polynomials
-from streamhost.filters.exact import Polynomial
+from streamhost.filters.exact import Polynomial, to_mpf
 from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Size, delays_down
-from streamhost.structures.gramians import number
 
 Y, C = 4.5, 3.875
 """Columns of the chain of adders on the right, and of the coefficients before it."""
@@ -52,7 +51,7 @@ def constant(draft: Draft, x: Ref) -> Ref:
 def mixed(ratio: Ratio) -> tuple[Any, Any]:
     """b1 - b0 a1 and B(1) / A(1) - b0 in the working precision: what c1 and c2 are made of."""
     b, a = ratio.padded
-    return number(b[1] - b[0] * a[1]), number(total(b) / total(a) - b[0])
+    return to_mpf(b[1] - b[0] * a[1]), to_mpf(total(b) / total(a) - b[0])
 
 
 def total(polynomial: Polynomial) -> Fraction:

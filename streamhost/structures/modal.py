@@ -9,8 +9,9 @@ from fractions import Fraction
 from functools import lru_cache
 from typing import Any
 
+from streamhost.filters.exact import to_mpf
 from streamhost.structures.division import Ratio
-from streamhost.structures.gramians import BITS, StateSpace, number, rounded_space
+from streamhost.structures.gramians import BITS, StateSpace, rounded_space
 
 
 def discriminant(ratio: Ratio) -> Fraction:
@@ -33,17 +34,17 @@ def normal(ratio: Ratio) -> StateSpace:
 def _after_direct(ratio: Ratio) -> list[Any]:
     """c_1, c_2 of B / A = b0 + (c_1 z^-1 + c_2 z^-2) / A."""
     b, a = ratio.padded
-    return [number(b[k] - b[0] * a[k]) for k in range(1, ratio.order + 1)]
+    return [to_mpf(b[k] - b[0] * a[k]) for k in range(1, ratio.order + 1)]
 
 
 def _pair(ratio: Ratio) -> StateSpace:
     import mpmath
 
     first, second = _after_direct(ratio)
-    omega = mpmath.sqrt(number(-discriminant(ratio)))
-    q = mpmath.mpc(number(-ratio.a[1] / 2), -omega)
+    omega = mpmath.sqrt(to_mpf(-discriminant(ratio)))
+    q = mpmath.mpc(to_mpf(-ratio.a[1] / 2), -omega)
     leaning = 1 - q * q
-    size = mpmath.sqrt(2 * number(1 - ratio.a[2]))
+    size = mpmath.sqrt(2 * to_mpf(1 - ratio.a[2]))
     beta = size * mpmath.sqrt(mpmath.mpc(0, 1) * leaning / abs(leaning))
     # B / A - b0 has the residue R at q, and y = Re(conj(gamma) s) has conj(gamma) beta / 2 there.
     gamma = mpmath.conj(2 * (first * q + second) / (q - mpmath.conj(q)) / beta)
@@ -56,12 +57,12 @@ def _alone(ratio: Ratio) -> StateSpace:
     import mpmath
 
     if ratio.order == 1:
-        poles = [number(-ratio.a[1])]
+        poles = [to_mpf(-ratio.a[1])]
         residues = _after_direct(ratio)
     else:
         first, second = _after_direct(ratio)
-        root = mpmath.sqrt(number(discriminant(ratio)))
-        middle = number(-ratio.a[1] / 2)
+        root = mpmath.sqrt(to_mpf(discriminant(ratio)))
+        middle = to_mpf(-ratio.a[1] / 2)
         poles = [middle + root, middle - root]
         residues = [(first * p + second) / (p - q) for p, q in (poles, poles[::-1])]
     b = [mpmath.sqrt(1 - p * p) for p in poles]

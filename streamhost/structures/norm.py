@@ -12,7 +12,7 @@ any stable A; digits that poles near the circle cost are made up for by more dig
 from math import inf
 from typing import Any
 
-from streamhost.filters.exact import Polynomial
+from streamhost.filters.exact import Polynomial, to_mpf
 
 FIRST_BITS = 256
 MOST_BITS = 1 << 16
@@ -47,7 +47,7 @@ def l2_norm(b: Polynomial, a: Polynomial) -> float:
 def _floats(polynomial: Polynomial, length: int) -> list[Any]:
     import mpmath
 
-    values = [mpmath.mpf(value.numerator) / value.denominator for value in polynomial]
+    values = [*map(to_mpf, polynomial)]
     return values + [mpmath.mpf(0)] * (length - len(values))
 
 

@@ -67,7 +67,7 @@ from streamhost.diagram.builder import Builder, Ref, Signed, minus
 from streamhost.diagram.hints import General
 from streamhost.diagram.tapped import LEAD
 from streamhost.filters import Polynomials
-from streamhost.filters.exact import Polynomial, exactly
+from streamhost.filters.exact import Polynomial, exactly, to_mpf
 from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Form, Size
 from streamhost.structures.taps import refused_recursion
@@ -121,13 +121,13 @@ def resonators(taps: Polynomial) -> tuple[Resonator, ...]:
     length, found = len(taps), []
     r = radius(length)
     with mpmath.workprec(BITS):
-        raised = [_float(tap / r**n) for n, tap in enumerate(taps)]
-        least = sum(map(abs, raised)) * _float(NEGLIGIBLE)
+        raised = [to_mpf(tap / r**n) for n, tap in enumerate(taps)]
+        least = sum(map(abs, raised)) * to_mpf(NEGLIGIBLE)
         for k in range(length // 2 + 1):
             turn = mpmath.expjpi(-mpmath.mpf(2 * k) / length)
             sample = mpmath.polyval(raised, turn, asc=True)
             if abs(sample) > least:
-                found.append(_resonator(k, length, sample, turn, _float(r)))
+                found.append(_resonator(k, length, sample, turn, to_mpf(r)))
     return tuple(found)
 
 
@@ -138,12 +138,6 @@ def _resonator(k: int, length: int, sample: Any, turn: Any, r: Any) -> Resonator
         return Resonator(k, (float(sample.real / length),), (float(-r * turn.real),))
     b = (2 * sample.real / length, -2 * r * mpmath.re(sample * turn) / length)
     return Resonator(k, tuple(map(float, b)), (float(-2 * r * turn.real), float(r * r)))
-
-
-def _float(value: Fraction) -> Any:
-    import mpmath
-
-    return mpmath.mpf(value.numerator) / value.denominator
 
 
 def carries(ratio: Ratio) -> str:

@@ -47,10 +47,11 @@ Carries: sections of first and second order with a recursion and with 1 + a1 + a
 
 from streamhost.diagram.builder import Ref, minus
 from streamhost.filters import Polynomials
+from streamhost.filters.exact import to_mpf
 from streamhost.structures import integrators
 from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Form, Size
-from streamhost.structures.gramians import BITS, number, rounded
+from streamhost.structures.gramians import BITS, rounded
 
 UPPER, K2, LOWER, BACK = 1.75, 2.625, 3.5, 4.25
 """Rows: the register v, k2, the sum u, the register u."""
@@ -81,9 +82,9 @@ def coefficients(ratio: Ratio) -> tuple[float, float, float, float]:
     import mpmath
 
     with mpmath.workprec(BITS):
-        k1 = mpmath.sqrt(number(integrators.total(ratio.a)))
+        k1 = mpmath.sqrt(to_mpf(integrators.total(ratio.a)))
         c1, c2 = integrators.mixed(ratio)
-        return rounded(k1), rounded(number(1 - ratio.padded[1][2]) / k1), rounded(c1 / k1), rounded(c2)
+        return rounded(k1), rounded(to_mpf(1 - ratio.padded[1][2]) / k1), rounded(c1 / k1), rounded(c2)
 
 
 def size(section: Polynomials) -> Size:

@@ -51,10 +51,11 @@ Carries: sections of first and second order with a recursion and with 1 + a1 + a
 from streamhost.diagram.builder import Ref, minus
 from streamhost.diagram.hints import Point
 from streamhost.filters import Polynomials
+from streamhost.filters.exact import to_mpf
 from streamhost.structures import integrators
 from streamhost.structures.division import Ratio
 from streamhost.structures.form import Draft, Form, Size
-from streamhost.structures.gramians import BITS, number, rounded
+from streamhost.structures.gramians import BITS, rounded
 
 UPPER, DOWN, ADDER, REGISTER, TAP, LOWER, BACK = 1.25, 2.0, 2.625, 3.5, 4.125, 4.875, 5.625
 MOST_SHIFT = 30
@@ -100,9 +101,9 @@ def coefficients(ratio: Ratio, m: int) -> tuple[float, float, float, float]:
     import mpmath
 
     with mpmath.workprec(BITS):
-        z1 = mpmath.cbrt(number(integrators.total(ratio.a)))
+        z1 = mpmath.cbrt(to_mpf(integrators.total(ratio.a)))
         c1, c2 = integrators.mixed(ratio)
-        return rounded(z1), rounded(number(1 - ratio.padded[1][2]) / z1), rounded(c1 / (2**m * z1**2)), rounded(c2)
+        return rounded(z1), rounded(to_mpf(1 - ratio.padded[1][2]) / z1), rounded(c1 / (2**m * z1**2)), rounded(c2)
 
 
 def size(section: Polynomials) -> Size:
