@@ -31,7 +31,7 @@ def lines(result: Transients) -> Iterator[str]:
     level = f"{result.level_dbfs:g}".replace("-", MINUS)
     yield (f"Deviation from the new filter, had it run all along; constant and tone at {level} dBFS. Energy: 0 is a full-scale "
            f"sine of 1 s. Within noise: stays below {result.within_noise_factor:g} times the rms of the "
-           f"{'predicted' if result.noise_is_predicted else 'measured'} noise.")
+           f"{'predicted' if result.noise_is_predicted else 'measured'} noise; a dash: not by the end of the run.")
     yield ("Click: the deviation by ITU-R BS.468-4, weighted and quasi-peak; heard: the output itself, on a constant. Jump: "
            "the first frame less what would have come without the change.")
 
