@@ -24,7 +24,7 @@ LEVELS = (
     {"structures"},
     {"realization"},
     {"presets", "host"},
-    {"measure"},
+    {"measure", "live"},
     {"report", "page"},
     {"commands"},
 )

@@ -183,19 +183,15 @@ class Host:
 
     def come_up(self) -> None:
         """Let the monitor come up from its start, from mute or after the guard has shut. The step obeys at its next block."""
-        control = self.shared.control
-        control["mute"] = 0
-        control["come_up"] += 1
+        self.shared.come_up()
 
     def mute(self) -> None:
         """Silence the monitor at once."""
-        self.shared.control["mute"] = 1
+        self.shared.mute()
 
     def set_monitor(self, gain_db: float) -> None:
         """The monitor's gain, which it moves to by its ramp: at most 0 dB. RequestError above."""
-        if not gain_db <= 0.0:
-            raise RequestError(f"gain_db = {gain_db}: the monitor's gain is at most 0 dB.")
-        self.shared.control["gain"] = 10.0 ** (gain_db / 20.0)
+        self.shared.set_monitor(gain_db)
 
     def show(self, frames: int) -> None:
         """Say how many frames the last block has."""

@@ -5,6 +5,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from streamhost.errors import RequestError
 from streamhost.host.records import BINS, CONTROL, HOST_METERS, LANE_METERS, LOG, LOGGED, MOST_LANES
 
 
@@ -39,3 +40,18 @@ class Shared:
         self.sent: NDArray[np.float64] = whole["sent"][0]
         self.outputs: NDArray[np.float64] = whole["outputs"][0]
         self.recording: NDArray[np.float64] = whole["recording"][0]
+
+    def come_up(self) -> None:
+        """Let the monitor come up from its start, from mute or after the guard has shut. The step obeys at its next block."""
+        self.control["mute"] = 0
+        self.control["come_up"] += 1
+
+    def mute(self) -> None:
+        """Silence the monitor at once."""
+        self.control["mute"] = 1
+
+    def set_monitor(self, gain_db: float) -> None:
+        """The monitor's gain, which it moves to by its ramp: at most 0 dB. RequestError above."""
+        if not gain_db <= 0.0:
+            raise RequestError(f"gain_db = {gain_db}: the monitor's gain is at most 0 dB.")
+        self.control["gain"] = 10.0 ** (gain_db / 20.0)
