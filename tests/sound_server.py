@@ -18,6 +18,7 @@ from numpy.typing import NDArray
 
 RATE = 48000
 NEEDED = ("pulseaudio", "parec", "pactl")
+SINK = "format=float32le rate=48000 channels=2 channel_map=front-left,front-right norewinds=1"
 
 ALSA = """
 </usr/share/alsa/alsa.conf>
@@ -71,8 +72,7 @@ class SoundServer:
             ["pulseaudio", "-n", "--daemonize=no", "--use-pid-file=no", "--exit-idle-time=-1", "--high-priority=no",
              "--realtime=no", "--log-target=stderr", "--fail=yes",
              f"--load=module-native-protocol-unix socket={self.socket} auth-anonymous=1 auth-cookie-enabled=0",
-             "--load=module-null-sink sink_name=vsink format=float32le rate=48000 channels=2 "
-             "channel_map=front-left,front-right norewinds=1"],
+             f"--load=module-null-sink sink_name=vsink {SINK}"],
             env=self.environment, stdin=subprocess.DEVNULL, stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL,
             preexec_fn=_end_with_parent,
         )

@@ -1,67 +1,42 @@
 """`streamhost listen`: realizations side by side, one of them heard."""
 
-from contextlib import ExitStack
-from dataclasses import dataclass
-from pathlib import Path
+import sys
 from typing import TYPE_CHECKING
 
 import click
 
-from streamhost.commands.common import (
-    Cell,
-    Column,
-    at_rate,
-    check_place,
-    force_option,
-    json_option,
-    ledger,
-    presets_named,
-    structures_option,
-    vary_option,
-    write_json,
-)
-from streamhost.errors import MachineError, RequestError
+from streamhost.commands.common import force_option, json_option, structures_option, vary_option, write_json
+from streamhost.errors import RequestError
 
 if TYPE_CHECKING:
-    from streamhost.files import AudioWriter
-    from streamhost.host import Host
-    from streamhost.host.sources import Source
-    from streamhost.presets import Preset
-
-CHANGEOVERS = ("keep", "cold", "carry", "warm", "fade")
-DEFAULT_SOURCE = "pink"
-RECORDING_S = 4.0
+    from streamhost.commands.listening.asked import Asked
+    from streamhost.commands.listening.told import Run
 
 
-@dataclass(frozen=True)
-class Asked:
-    """What the command line asks for."""
+def _list_devices(ctx: click.Context, param: click.Parameter, value: bool) -> None:
+    if not value or ctx.resilient_parsing:
+        return
+    from streamhost.commands.listening.devices import device_ledger
 
-    presets: tuple[str, ...]
-    variations: tuple[str, ...]
-    input: str | None
-    source: str | None
-    rate: float | None
-    channels: int
-    block: int
-    seconds: float | None
-    fast: bool
-    changes: tuple[str, ...]
-    matched: bool
-    ceiling_dbfs: float
-    monitor_db: float
-    record: str | None
-    force: bool
-    json_file: str | None
+    click.echo(device_ledger())
+    ctx.exit()
 
 
 @click.command()
 @click.argument("presets", nargs=-1, required=True, metavar="PRESET...")
 @click.option("--input", metavar="FILE", help="An audio file or the name of a shipped recording, over and over.")
 @click.option("--source", metavar="KIND", default=None,
-              help="silence, tone:1000, tones:60,7000, sweep:20,20000,10, white, pink, impulses:1 or dc:0.5, with a peak "
-              "such as @-20.")
-@click.option("--seconds", type=click.FloatRange(min=0.0, min_open=True), help="End after so long.")
+              help="device (what comes in through the card), or silence, tone:1000, tones:60,7000, sweep:20,20000,10, white, "
+              "pink, impulses:1 or dc:0.5, with a peak such as @-20.")
+@click.option("--device", metavar="NAME", help="The sound card: its name, a part of it, or its number. The system's own unless "
+              "said.")
+@click.option("--input-device", metavar="NAME", help="Where --source device comes in, if by another card.")
+@click.option("--devices", is_flag=True, is_eager=True, expose_value=False, callback=_list_devices,
+              help="List the sound cards and exit.")
+@click.option("--latency-ms", type=click.FloatRange(1.0, 1000.0), default=20.0, show_default=True,
+              help="What the card is asked for; it may take more.")
+@click.option("--seconds", type=click.FloatRange(min=0.0, min_open=True),
+              help="Unattended: come up at once, end after so long.")
 @click.option("--block", type=click.IntRange(1, 65536), default=128, show_default=True, help="Frames of a block.")
 @click.option("--rate", type=float, help="Of the presets, where they are stated for several.")
 @click.option("--channels", type=click.IntRange(1, 64), default=2, show_default=True, help="Without a file.")
@@ -70,7 +45,13 @@ class Asked:
 @click.option("--match", "matched", is_flag=True, help="Bring all lanes to the level of the first, on pink noise.")
 @click.option("--monitor-db", type=click.FloatRange(max=0.0), default=0.0, show_default=True, help="The monitor's gain.")
 @click.option("--ceiling-dbfs", type=click.FloatRange(max=0.0), default=0.0, show_default=True, help="Nothing louder goes out.")
+@click.option("--rise-db-per-s", type=click.FloatRange(1.0, 600.0), default=30.0, show_default=True,
+              help="How fast the output comes up from 60 dB below.")
 @click.option("--record", metavar="FILE", help="What is heard, before the monitor's gain, into a file.")
+@click.option("--counter", type=click.IntRange(1, 64), hidden=True,
+              help="On this channel of the card a count of frames, k / 2^24: finds gaps in what was recorded behind it.")
+@click.option("--python-callback", is_flag=True, hidden=True, help="The card calls the step through Python.")
+@click.option("--volume-is-down", is_flag=True, help="Acknowledges the caution that stands before the first sound.")
 @click.option("--no-device", is_flag=True, help="On the clock, without a sound card.")
 @click.option("--fast", is_flag=True, help="With --no-device: as fast as it goes.")
 @click.option("--no-page", is_flag=True, help="Without the control page.")
@@ -78,131 +59,28 @@ class Asked:
 @structures_option
 @force_option
 @json_option
-def listen(no_device: bool, no_page: bool, **asked: object) -> None:
+def listen(no_device: bool, no_page: bool, **given: object) -> None:
     """Realizations side by side on what comes in, one of them heard, lane 1 at first.
 
-    Each PRESET is a lane: a file or the name of a shipped one.
+    Each PRESET is a lane: a file or the name of a shipped one. On a terminal the output begins muted; ? lists the keys.
     """
-    if not no_device:
-        raise MachineError("The sound card is not served yet: --no-device runs the lanes on the clock.")
-    if asked["seconds"] is None:
-        raise RequestError("Without a sound card and a page --seconds says when to end.")
-    _on_clock(Asked(**asked))  # type: ignore[arg-type]
+    from streamhost.commands.listening.asked import Asked
+    from streamhost.commands.listening.told import document, told
 
-
-def _on_clock(asked: Asked) -> None:
-    from streamhost.host.clock import run_on_clock
-    from streamhost.host.recording import Recorder, wait_for_room
-
-    for place in (asked.json_file, asked.record):
-        if place is not None and place != "-":
-            check_place(Path(place))
-    host, presets = _prepared(asked)
-    assert asked.seconds is not None, "it was asked for"
-    with ExitStack() as stack:
-        if asked.record is None:
-            def between() -> None: ...
-        else:
-            recorder = stack.enter_context(Recorder(host.shared, _writer(host, asked)))
-
-            def between() -> None:
-                wait_for_room(recorder, host.block if asked.fast else 0)
-        host.come_up()
-        run_on_clock(host, round(asked.seconds * host.rate), real_time=not asked.fast, between=between)
-    click.echo("\n".join(_told(host, presets)))
+    asked = Asked(**given)  # type: ignore[arg-type]
+    if asked.fast and not no_device:
+        raise RequestError("--fast is for --no-device: a sound card sets the time.")
+    run = _run(asked, on_clock=no_device)
+    click.echo("\n".join(told(run)))
     if asked.json_file is not None:
-        write_json(asked.json_file, _document(host, presets), force=asked.force)
+        write_json(asked.json_file, document(run), force=asked.force)
 
 
-def _prepared(asked: Asked) -> "tuple[Host, list[Preset]]":
-    """The host with every lane and change, and the presets of its lanes."""
-    from streamhost.formats import Fixed
-    from streamhost.host import Device, Guard, Host, Lane
-    from streamhost.host.matching import matching_gains
-    from streamhost.host.plan import parse_change
-    from streamhost.presets.realizing import realize_presets
+def _run(asked: "Asked", *, on_clock: bool) -> "Run":
+    from streamhost.commands.listening import card_run, clock_run
 
-    presets = presets_named(asked.presets, asked.variations)
-    planned = sorted((parse_change(each, len(presets)) for each in asked.changes), key=lambda change: change.frame)
-    presets, source, channels = _input(asked, presets)
-    realizations = realize_presets(presets, channels)
-    gains = matching_gains(realizations) if asked.matched else [1.0] * len(realizations)
-    lanes = [Lane(each, channels, metered=isinstance(each.format, Fixed), match=gain)
-             for each, gain in zip(realizations, gains, strict=True)]
-    recording = 0 if asked.record is None else round(RECORDING_S * realizations[0].rate)
-    host = Host(lanes, asked.block, device=Device(0, channels), source=source, guard=Guard(asked.ceiling_dbfs),
-                waiting=max(256, len(planned)), recording=recording)
-    host.set_monitor(asked.monitor_db)
-    for change in planned:
-        host.plan.change(change)
-    return host, presets
-
-
-def _input(asked: Asked, presets: "list[Preset]") -> "tuple[list[Preset], Source, int]":
-    """The presets at the rate of what comes in, that, and its channels."""
-    from streamhost.host.sources import generated, looped
-    from streamhost.shipped import resolve
-
-    if asked.input is not None and asked.source is not None:
-        raise RequestError("--input and --source both say what comes in: give one of them.")
-    if asked.input is None:
-        rate = presets[0].rate if asked.rate is None else asked.rate
-        source = generated(asked.source or DEFAULT_SOURCE, rate, asked.channels)
-        return [preset.at(rate) for preset in presets], source, asked.channels
-    from streamhost.files import read_all
-
-    samples, info = read_all(resolve(asked.input, "sample"))
-    return [at_rate(preset, info, asked.input) for preset in presets], looped(samples, info.path.name), info.channels
-
-
-def _writer(host: "Host", asked: Asked) -> "AudioWriter":
-    from streamhost.files import AudioWriter
-
-    assert asked.record is not None, "it was asked for"
-    return AudioWriter(asked.record, rate=round(host.rate), channels=host.channels * host.outputs, subtype="float",
-                       overwrite=asked.force)
-
-
-def _document(host: "Host", presets: "list[Preset]") -> dict[str, object]:
-    from dataclasses import asdict
-
-    from streamhost.host.figures import change_figures, guard_figures, lane_figures, run_figures
-
-    columns = host.channels * host.outputs
-    lanes = []
-    for number, (lane, preset) in enumerate(zip(host.lanes, presets, strict=True)):
-        realization = lane.realization
-        lanes.append({
-            "lane": number + 1, "preset": preset.source.name, "title": preset.title, "form": realization.form,
-            "decomposition": realization.decomposition, "format": realization.format.label,
-            **asdict(lane_figures(host.shared, number, columns, host.rate)), "state_sha256": lane.state_hash(),
-        })
-    return {
-        **run_figures(host.shared, host.block, host.rate), "frames": host.frames, "rate": host.rate, "lanes": lanes,
-        "changes": change_figures(host.plan.changed), "guard": asdict(guard_figures(host.shared)), "callback": "python",
-    }
-
-
-def _told(host: "Host", presets: "list[Preset]") -> list[str]:
-    """What happened, in a ledger and a few sentences."""
-    from streamhost.host.figures import guard_figures, lane_figures, run_figures
-
-    rows: list[list[Cell]] = []
-    for number, (lane, preset) in enumerate(zip(host.lanes, presets, strict=True)):
-        figures = lane_figures(host.shared, number, host.channels * host.outputs, host.rate)
-        about = f"{lane.realization.form} · {lane.realization.decomposition} · {lane.realization.format.label}"
-        rows.append([preset.title, about, figures.peak_dbfs, figures.rms_dbfs, figures.saturations + figures.wraps,
-                     figures.load_percent])
-    columns = [Column("lane"), Column("form · decomposition · format"), Column("peak", "dBFS", 1), Column("rms", "dBFS", 1),
-               Column("overflows"), Column("load", "%", 2)]
-    run, guard = run_figures(host.shared, host.block, host.rate), guard_figures(host.shared)
-    lines = [ledger(columns, rows), ""]
-    lines += [f"Lane {change.lane + 1} is heard from frame {change.frame} on, by {change.changeover}."
-              for change in host.plan.changed]
-    lines.append(f"{run['blocks']} blocks of {host.block} frames: half of them within {run['step_p50_us']:.1f} us, 99.9 % "
-                 f"within {run['step_p999_us']:.1f} us, all within {run['step_max_us']:.1f} us of {run['deadline_us']:.0f} us.")
-    if guard.reason:
-        lines.append(f"The guard has shut at frame {guard.frame}: {guard.reason} in lane {guard.lane + 1}.")
-    if guard.held:
-        lines.append(f"The ceiling held {guard.held} samples.")
-    return lines
+    if asked.seconds is None and on_clock:
+        raise RequestError("Without a sound card and a page --seconds says when to end.")
+    if asked.seconds is None and not (sys.stdin.isatty() and sys.stdout.isatty()):
+        raise RequestError("Without a terminal and a page --seconds says when to end.")
+    return clock_run.run(asked) if on_clock else card_run.run(asked)

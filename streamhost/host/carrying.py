@@ -11,10 +11,16 @@ from streamhost.program.carrying import bridge
 from streamhost.program.program import Program
 from streamhost.program.states import rings
 
+POINTERS = ("high", "low", "past", "free", "reads", "writes", "steps", "given", "bounds", "types")
+"""The fields of a CARRY record that hold addresses, in the order in which their arrays are kept."""
+
 
 @dataclass(frozen=True)
 class Prepared:
-    """A CARRY record and all that it points to. `record` None: the states are copied as they are."""
+    """A CARRY record and all that it points to. `record` None: the states are copied as they are.
+
+    It may be sent to another process, where the record points to the arrays that have come with it.
+    """
 
     record: NDArray[np.void] | None
     arrays: tuple[NDArray[np.generic], ...] = ()
@@ -23,6 +29,17 @@ class Prepared:
     @property
     def address(self) -> int:
         return int(self.record.ctypes.data) if self.record is not None else 0
+
+    def __reduce__(self) -> "tuple[object, ...]":
+        return _pointed, (self.record, self.arrays, self.past_frames)
+
+
+def _pointed(record: NDArray[np.void] | None, arrays: tuple[NDArray[np.generic], ...], past_frames: int) -> Prepared:
+    """With the addresses of these arrays in the record."""
+    if record is not None:
+        for name, array in zip(POINTERS, arrays, strict=True):
+            record[name] = array.ctypes.data
+    return Prepared(record, arrays, past_frames)
 
 
 def prepare_carry(before: Lane, following: Lane) -> Prepared:
@@ -46,13 +63,11 @@ def prepare_carry(before: Lane, following: Lane) -> Prepared:
         "bounds": _tops(second), "types": _types(second),
     }
     record = np.zeros(1, CARRY)
-    kept = {name: np.ascontiguousarray(array) for name, array in arrays.items()}
-    for name, array in kept.items():
-        record[name] = array.ctypes.data
+    kept = tuple(np.ascontiguousarray(arrays[name]) for name in POINTERS)
     record["before"], record["pasts"], record["frees"] = first.state_words, len(solved.past), len(solved.free)
     record["states"], record["sets"] = second.state_words, len(solved.channels)
     furthest = max((ago for _, _, ago in solved.past), default=0)
-    return Prepared(record, tuple(kept.values()), furthest)
+    return _pointed(record, kept, furthest)
 
 
 def _rows(program: Program) -> NDArray[np.int64]:

@@ -25,6 +25,7 @@ from streamhost.host.records import (
     SUBTRACT,
     TAKE_SOURCE,
 )
+from streamhost.host.shared import Shared
 from streamhost.host.sources import Source
 from streamhost.program.carrying import frames_of_history, is_run
 
@@ -78,6 +79,17 @@ class Changed:
     clipped: int
 
 
+def changes_made(shared: Shared, begins: int = 0) -> tuple[Changed, ...]:
+    """The changes that the step has made, oldest first, of the last 256 actions; frames are counted from `begins`."""
+    done = int(shared.meters["logged"][0])
+    entries = [shared.log[k % LOGGED] for k in range(max(0, done - LOGGED), done)]
+    return tuple(
+        Changed(int(entry["frame"]) - begins, int(entry["lane"]), int(entry["before"]),
+                CHANGEOVERS[int(entry["changeover"])], int(entry["clipped"]))
+        for entry in entries if entry["kind"] == HEAR
+    )
+
+
 class Plan:
     """The changes of one host."""
 
@@ -95,8 +107,9 @@ class Plan:
         """The lane that is heard just before a frame, by what is planned."""
         return self._heard[bisect_right([at for at, _ in self._heard], frame) - 1][1]
 
-    def change(self, change: Change, *, fade_frames: int | None = None) -> int:
-        """Plan a change, all of it prepared now; its ticket. A frame that is past is the next.
+    def change(self, change: Change, *, fade_frames: int | None = None, given: Prepared | None = None) -> int:
+        """Plan a change, all of it prepared now, unless the carried state is `given`; its ticket. A frame that is past is
+        the next.
 
         Raises RequestError for a lane that is not there, an unknown changeover, and one that cannot be: `keep` between
         different diagrams or words, `carry` where no output is common, a change before one that is planned already.
@@ -110,7 +123,7 @@ class Plan:
             raise RequestError(f"A change at frame {frame} comes before one that is planned for frame {self._heard[-1][0]}: "
                                "changes are planned in their order.")
         before = self.heard_at(frame)
-        prepared = self._prepared(change, before, lane, frame)
+        prepared = self._prepared(change, before, lane, frame, given)
         fade = int(FADE_S * host.rate) if fade_frames is None else fade_frames
         host.need("act")
         host.need("carry", prepared is not None)
@@ -194,21 +207,14 @@ class Plan:
     @property
     def changed(self) -> tuple[Changed, ...]:
         """The changes that the step has made, oldest first, of the last 256 that it did."""
-        shared = self._host.shared
-        done = int(shared.meters["logged"][0])
-        entries = [shared.log[k % LOGGED] for k in range(max(0, done - LOGGED), done)]
-        return tuple(
-            Changed(int(entry["frame"]) - self._host.begins, int(entry["lane"]), int(entry["before"]),
-                    CHANGEOVERS[int(entry["changeover"])], int(entry["clipped"]))
-            for entry in entries if entry["kind"] == HEAR
-        )
+        return changes_made(self._host.shared, self._host.begins)
 
     def _lane(self, number: int) -> Lane:
         if not 0 <= number < len(self._host.lanes):
             raise RequestError(f"There is no lane {number + 1}: lanes are counted from 1 to {len(self._host.lanes)}.")
         return self._host.lanes[number]
 
-    def _prepared(self, change: Change, before: int, lane: Lane, frame: int) -> Prepared | None:
+    def _prepared(self, change: Change, before: int, lane: Lane, frame: int, given: Prepared | None) -> Prepared | None:
         old = self._host.lanes[before]
         if change.changeover == "keep" and old.realization.program.key != lane.realization.program.key:
             raise RequestError(
@@ -218,7 +224,7 @@ class Plan:
         if change.changeover != "carry" or old is lane:
             return None
         if not is_run(lane.realization.program):
-            prepared = prepare_carry(old, lane)
+            prepared = given or prepare_carry(old, lane)
             if prepared.past_frames > self._host.past_frames:
                 raise RequestError(f"Lane {change.lane + 1} holds {prepared.past_frames} frames of past input, and this host "
                                    f"keeps {self._host.past_frames}. Use warm or fade.")

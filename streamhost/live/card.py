@@ -121,7 +121,10 @@ class Card:
         return self._answers[ticket]
 
     def wait(self, ticket: int, seconds: float = 2.0) -> list[str]:
-        """Until it has been answered; the notices of that time. RequestError where it was refused, MachineError at no answer."""
+        """Until it has been answered; what was to be said meanwhile.
+
+        RequestError where it was refused, MachineError where no answer comes.
+        """
         until, notices = time.monotonic() + seconds, list[str]()
         while (answer := self._answers[ticket]) is None:
             if time.monotonic() > until:
@@ -146,6 +149,10 @@ class Card:
         """The card as it was last opened."""
         assert self._watch.opened is not None, "it has begun"
         return self._watch.opened
+
+    @property
+    def is_lost(self) -> bool:
+        return self._watch.is_lost
 
     @property
     def losses(self) -> list[Loss]:

@@ -184,8 +184,7 @@ def _python_callback(wanted: Wanted, step: int, host: int) -> Any:
         run(None, address(out), frames, None, _bits(status), host)
 
     def duplex(given: Any, out: Any, frames: int, time: Any, status: Any) -> None:
-        kept = bytes(given)
-        run(ctypes.cast(kept, ctypes.c_void_p).value, address(out), frames, None, _bits(status), host)
+        run(address(given), address(out), frames, None, _bits(status), host)
 
     return duplex if wanted.inputs else playback
 

@@ -21,7 +21,7 @@ class Process:
 
     def __init__(self, recipe: Recipe, memory: Memory) -> None:
         self._connection, theirs = Pipe()
-        self._errors = tempfile.TemporaryFile()
+        self._errors = tempfile.TemporaryFile()  # noqa: SIM115 - lives as long as the process
         start = _START.format(path=sys.path, connection=theirs.fileno(), memory=memory.handle)
         self._process = subprocess.Popen(
             [sys.executable, "-c", start], stdin=subprocess.DEVNULL, stdout=self._errors, stderr=self._errors,

@@ -1,7 +1,7 @@
 """What an engine is to run: said whole when it starts, so that another one can take its place."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field, replace
 from typing import Any
 
 import numpy as np
@@ -67,7 +67,7 @@ class Recipe:
     block: int
     inputs: int = 0
     outputs: int = 2
-    guard: Guard = Guard()
+    guard: Guard = field(default_factory=Guard)
     planned: tuple[Planned, ...] = ()
     recent: int = 0
     recording: int = 0
@@ -111,9 +111,9 @@ class Recipe:
 
 def plan(host: Host, planned: Planned) -> None:
     """Plan a change, whose frame is counted as the step counts. RequestError where it cannot be."""
-    change = planned.change
-    frame = max(change.frame - host.begins, 0)
-    host.plan.change(Change(frame, change.lane, change.changeover))
+    frame = max(planned.change.frame - host.begins, host.frames)
+    given = planned.prepared if host.plan.heard_at(frame) == planned.before else None
+    host.plan.change(replace(planned.change, frame=frame), given=given)
 
 
 def forget_actions(shared: Shared) -> None:

@@ -48,6 +48,7 @@ class State(Enum):
     PLAYING = "the card plays"
     CLOSING = "the card is being left"
     WAITING = "the card is looked for"
+    ENDING = "the engine ends"
     ENDED = "ended"
 
 
@@ -88,10 +89,9 @@ class Watch:
                 others.append(report)
             else:
                 handler(self, *report[1:])
-        if self.state is not State.ENDED:
-            if not self._worker.is_alive:
-                self._crashed()
-            _DUE[self.state](self)
+        if self.state not in (State.ENDING, State.ENDED) and not self._worker.is_alive:
+            self._crashed()
+        _DUE[self.state](self)
         return others
 
     def leave(self, reason: str) -> None:
@@ -104,11 +104,14 @@ class Watch:
         """What is on its way is heard, if the card lets it; then the engine has ended, whatever it takes."""
         if self.state is State.PLAYING:
             self._worker.send(("end",))
-            until = self._clock() + END_S
-            while self.state is not State.ENDED and self._worker.is_alive and self._clock() < until:
-                self.tend()
-                time.sleep(PAUSE_S)
+            self._enter(State.ENDING, END_S)
+            self._wait_for_the_end()
         self.kill()
+
+    def _wait_for_the_end(self) -> None:
+        while self.state is not State.ENDED:
+            self.tend()
+            time.sleep(PAUSE_S)
 
     def kill(self) -> None:
         """End the engine, whatever it is doing."""
@@ -205,9 +208,11 @@ class Watch:
         self._tended_at = now
         if callbacks != self._seen or held_up:
             self._seen, self._progress_at = callbacks, now
+        if held_up:
+            self._opened_at = now
         if now - self._progress_at > self.stall_s:
             self.leave("stands still")
-        elif self.is_lost and now - self._opened_at > self.stall_s:
+        elif self.is_lost and self._progress_at - self._opened_at > self.stall_s:
             self._found(now)
 
     def _found(self, now: float) -> None:
@@ -218,6 +223,10 @@ class Watch:
     def _while_closing(self) -> None:
         if self._is_due():
             self._start_again()
+
+    def _while_ending(self) -> None:
+        if self._is_due():
+            self.state = State.ENDED
 
     def _while_waiting(self) -> None:
         if self._is_due():
@@ -230,5 +239,6 @@ _REPORTS: dict[str, Callable[..., None]] = {
 }
 _DUE: dict[State, Callable[[Watch], None]] = {
     State.STARTING: Watch._while_starting, State.OPENING: Watch._while_opening, State.PLAYING: Watch._while_playing,
-    State.CLOSING: Watch._while_closing, State.WAITING: Watch._while_waiting, State.ENDED: lambda watch: None,
+    State.CLOSING: Watch._while_closing, State.WAITING: Watch._while_waiting, State.ENDING: Watch._while_ending,
+    State.ENDED: lambda watch: None,
 }

@@ -1,0 +1,1 @@
+"""What `streamhost listen` does: on the clock or on a sound card, unattended or with a terminal."""

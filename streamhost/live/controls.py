@@ -1,0 +1,138 @@
+"""What an engineer does at a running host, by keys or by words: the same for a terminal and a page."""
+
+from collections.abc import Sequence
+from dataclasses import dataclass, field
+
+from streamhost.errors import RequestError
+from streamhost.host.carrying import prepare_carry
+from streamhost.host.lane import Lane
+from streamhost.host.plan import Change
+from streamhost.host.records import CHANGEOVERS
+from streamhost.live.card import Card
+from streamhost.live.recipe import Planned
+from streamhost.program.carrying import is_run
+
+RAISE_STEP_DB = 6.0
+MOST_RAISED_DB = 120.0
+MONITOR_STEP_DB = 1.0
+LOWEST_DB = -60.0
+NOW = 0
+
+
+def planned(change: Change, before: int, lanes: Sequence[Lane]) -> Planned:
+    """The change with the state that it carries, solved here and not in the engine. RequestError where none can be."""
+    old, new = lanes[before], lanes[change.lane]
+    if change.changeover != "carry" or old is new or is_run(new.realization.program):
+        return Planned(change, before)
+    return Planned(change, before, prepare_carry(old, new))
+
+
+def planned_in_order(changes: Sequence[Change], lanes: Sequence[Lane]) -> tuple[Planned, ...]:
+    """Changes from lane 0 on, each prepared for the one that is heard before it."""
+    found, before = list[Planned](), 0
+    for change in sorted(changes, key=lambda change: change.frame):
+        found.append(planned(change, before, lanes))
+        before = change.lane
+    return tuple(found)
+
+
+@dataclass
+class Controls:
+    """The settings of one card, each changed by a method; `lanes` are those of the parent, which never run."""
+
+    card: Card
+    lanes: list[Lane]
+    changeover: str = "carry"
+    monitor_db: float = 0.0
+    raise_db: float = 0.0
+    against: str = "ideal"
+    differs: bool = False
+    before: int = 0
+    notice: str = ""
+    _wanted: int = 0
+    _asked: dict[int, tuple[int, int]] = field(default_factory=dict)
+
+    def tend(self) -> None:
+        """Watch over the card, and hear what became of changes."""
+        for text in self.card.tend():
+            self.notice = text
+        for ticket in list(self._asked):
+            answer = self.card.answer(ticket)
+            if answer is None:
+                continue
+            former = self._asked.pop(ticket)
+            if answer:
+                self.notice, (self._wanted, self.before) = answer, former
+
+    def hear(self, lane: int) -> None:
+        """Change to a lane, from 0."""
+        if not 0 <= lane < len(self.lanes):
+            self.notice = f"There is no lane {lane + 1}."
+            return
+        if lane == self._wanted:
+            return
+        try:
+            ticket = self.card.change(planned(Change(NOW, lane, self.changeover), self._wanted, self.lanes))
+        except RequestError as problem:
+            self.notice = str(problem)
+            return
+        self._asked[ticket] = (self._wanted, self.before)
+        self.before, self._wanted = self._wanted, lane
+        self.notice = f"Lane {lane + 1}, by {self.changeover}."
+        self._follow()
+
+    def back(self) -> None:
+        """The lane before."""
+        self.hear(self.before)
+
+    def next_changeover(self) -> None:
+        self.changeover = CHANGEOVERS[(CHANGEOVERS.index(self.changeover) + 1) % len(CHANGEOVERS)]
+        self.notice = f"A change takes over by {self.changeover}."
+
+    def difference(self) -> None:
+        """Hear the difference, or what is heard itself."""
+        self.differs = not self.differs
+        self._subtract()
+
+    def other_reference(self) -> None:
+        """The difference against exact or against the lane before."""
+        self.against = "before" if self.against == "ideal" else "ideal"
+        self._subtract()
+
+    def raised(self, steps: int) -> None:
+        """The difference by 6 dB a step."""
+        self.raise_db = min(max(self.raise_db + steps * RAISE_STEP_DB, 0.0), MOST_RAISED_DB)
+        self._subtract()
+
+    def louder(self, steps: int) -> None:
+        """The monitor by 1 dB a step, at most 0 dB."""
+        self.monitor_db = min(max(self.monitor_db + steps * MONITOR_STEP_DB, LOWEST_DB), 0.0)
+        self.card.set_monitor(self.monitor_db)
+
+    def mute(self) -> None:
+        self.card.mute()
+        self.notice = "Muted."
+
+    def come_up(self) -> None:
+        self.card.come_up()
+        self.notice = "Coming up."
+
+    @property
+    def subtracted(self) -> int | str | None:
+        """What is subtracted from what is heard, as the host has it."""
+        if not self.differs:
+            return None
+        return "ideal" if self.against == "ideal" else self.before
+
+    def follow_placed(self, slot: int, lane: Lane) -> None:
+        """A slot holds another lane."""
+        self.lanes[slot : slot + 1] = [lane]
+
+    def _follow(self) -> None:
+        if self.differs and self.against == "before":
+            self._subtract()
+
+    def _subtract(self) -> None:
+        self.card.subtract(self.subtracted, self.raise_db)
+        named = "exact" if self.against == "ideal" else f"lane {self.before + 1}"
+        self.notice = f"The difference from {named}, raised by {self.raise_db:g} dB." if self.differs else "No difference."
