@@ -132,3 +132,10 @@ class Ear:
         data = self._file.read()
         self._file.close()
         self.heard: NDArray[np.float32] = np.frombuffer(data[: len(data) // 8 * 8], np.float32).reshape(-1, 2)
+
+
+def counted(heard: NDArray[np.float32]) -> tuple[NDArray[np.int64], NDArray[np.float32]]:
+    """The frames that were heard, by their count, and the sound beside it; silence of before and after is left out."""
+    count = np.rint(heard[:, 1].astype(np.float64) * 2**24).astype(np.int64)
+    there = np.flatnonzero(count)
+    return count[there], heard[there, 0]

@@ -162,7 +162,8 @@ def _usage_text(error: click.ClickException) -> str:
 
 
 def _tell(paragraph: str, status: int) -> int:
-    click.echo(paragraph, err=True)
+    with suppress(OSError):  # the terminal may be closed
+        click.echo(paragraph, err=True)
     return status
 
 

@@ -5,6 +5,7 @@ from dataclasses import replace
 from types import TracebackType
 from typing import Self
 
+from streamhost.cache import kernel_folder
 from streamhost.errors import MachineError, RequestError
 from streamhost.host.records import COMING_UP, SOUNDING, STATES
 from streamhost.live.memory import Memory
@@ -19,6 +20,27 @@ POLL_S = 0.03
 LOST = "The engine was started again before this was done."
 
 
+class Early:
+    """An engine that begins to load before it is known what it is to run, and the memory that it shares with its parent."""
+
+    def __enter__(self) -> Self:
+        self.memory = Memory()
+        self.process: Process | None = Process(self.memory)
+        return self
+
+    def __exit__(
+        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+    ) -> None:
+        if self.process is not None:
+            self.process.kill()
+        self.memory.close()
+
+    def taken(self) -> Process:
+        """The engine that has begun, once; after it others."""
+        process, self.process = self.process or Process(self.memory), None
+        return process
+
+
 class Card:
     """One recipe on one card. Used as a context: the engine ends with it, whatever happens.
 
@@ -26,11 +48,10 @@ class Card:
     another is told the rest.
     """
 
-    def __init__(self, recipe: Recipe, wanted: Wanted) -> None:
+    def __init__(self, recipe: Recipe, wanted: Wanted, early: Early) -> None:
         self.recipe = recipe
-        self._wanted = wanted
-        self._memory = Memory(recipe.bytes)
-        self.shared = recipe.shared(self._memory.buffer)
+        self._wanted, self._early = wanted, early
+        self.shared = recipe.shared(early.memory.mapped(recipe.bytes))
         self._answers: dict[int, str | None] = {}
         self._tickets = 0
         self._gain_db, self._counter, self._was_up = 0.0, -1, False
@@ -51,7 +72,6 @@ class Card:
                 self._watch.end()
         finally:
             self._watch.kill()
-            self._memory.close()
 
     def begin(self) -> None:
         """Wait until the card plays, muted. MachineError where it cannot be opened; RequestError for lanes that do not fit."""
@@ -151,6 +171,11 @@ class Card:
         return self._watch.opened
 
     @property
+    def engine(self) -> int:
+        """The process that the engine is, or was."""
+        return self._pid
+
+    @property
     def is_lost(self) -> bool:
         return self._watch.is_lost
 
@@ -177,7 +202,11 @@ class Card:
     def _engine(self) -> Process:
         """An engine, the first or one that goes on where the last one was."""
         self._answers = {ticket: LOST if answer is None else answer for ticket, answer in self._answers.items()}
-        return Process(replace(self.recipe, heard=self.heard or self.recipe.heard, begins=self.frame), self._memory)
+        process, folder = self._early.taken(), kernel_folder()
+        recipe = replace(self.recipe, heard=self.heard or self.recipe.heard, begins=self.frame)
+        process.send((None if folder is None else str(folder.parent), recipe))
+        self._pid = process.pid
+        return process
 
     def _on_lost(self) -> None:
         self._was_up = int(self.shared.meters["state"][0]) in (COMING_UP, SOUNDING)

@@ -38,10 +38,14 @@ def planned_in_order(changes: Sequence[Change], lanes: Sequence[Lane]) -> tuple[
 
 @dataclass
 class Controls:
-    """The settings of one card, each changed by a method; `lanes` are those of the parent, which never run."""
+    """The settings of one card, each changed by a method; `lanes` are those of the parent, which never run.
+
+    heard: the lane that is heard when all that is planned is done.
+    """
 
     card: Card
     lanes: list[Lane]
+    heard: int = 0
     changeover: str = "carry"
     monitor_db: float = 0.0
     raise_db: float = 0.0
@@ -49,7 +53,6 @@ class Controls:
     differs: bool = False
     before: int = 0
     notice: str = ""
-    _wanted: int = 0
     _asked: dict[int, tuple[int, int]] = field(default_factory=dict)
 
     def tend(self) -> None:
@@ -62,22 +65,22 @@ class Controls:
                 continue
             former = self._asked.pop(ticket)
             if answer:
-                self.notice, (self._wanted, self.before) = answer, former
+                self.notice, (self.heard, self.before) = answer, former
 
     def hear(self, lane: int) -> None:
         """Change to a lane, from 0."""
         if not 0 <= lane < len(self.lanes):
             self.notice = f"There is no lane {lane + 1}."
             return
-        if lane == self._wanted:
+        if lane == self.heard:
             return
         try:
-            ticket = self.card.change(planned(Change(NOW, lane, self.changeover), self._wanted, self.lanes))
+            ticket = self.card.change(planned(Change(NOW, lane, self.changeover), self.heard, self.lanes))
         except RequestError as problem:
             self.notice = str(problem)
             return
-        self._asked[ticket] = (self._wanted, self.before)
-        self.before, self._wanted = self._wanted, lane
+        self._asked[ticket] = (self.heard, self.before)
+        self.before, self.heard = self.heard, lane
         self.notice = f"Lane {lane + 1}, by {self.changeover}."
         self._follow()
 

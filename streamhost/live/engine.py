@@ -1,14 +1,13 @@
 """The engine process: the stream, the kernels, and nothing else.
 
 Messages come as tuples that begin with their name, and so do reports. What the process says on its error channel goes to
-a file of the parent's. It ends at once when the parent does, whatever it may be stuck in.
+a file of the parent's.
 """
 
 import contextlib
 import gc
 import os
 import queue
-import signal
 import sys
 import threading
 from collections.abc import Callable
@@ -95,13 +94,12 @@ class Engine:
         self._connection.send(("ended", [lane.state_hash() for lane in self._host.lanes]))
 
 
-def main(connection_handle: int, memory_handle: int) -> None:
-    """Of the process: the recipe comes first, then messages."""
-    for name in ("SIGINT", "SIGHUP"):
-        if hasattr(signal, name):
-            signal.signal(getattr(signal, name), signal.SIG_IGN)
+def run(connection_handle: int, memory_handle: int) -> None:
+    """All of the process: the recipe comes first, then messages."""
     connection = Connection(connection_handle)
-    recipe: Recipe = connection.recv()
+    cache, recipe = connection.recv()
+    if cache is not None:
+        os.environ["STREAMHOST_CACHE"] = cache
     messages: queue.SimpleQueue[tuple[Any, ...]] = queue.SimpleQueue()
     threading.Thread(target=_listen, args=(connection, messages), name="messages", daemon=True).start()
     try:
@@ -122,4 +120,3 @@ def _listen(connection: Connection, messages: "queue.SimpleQueue[tuple[Any, ...]
     with contextlib.suppress(OSError, EOFError):
         while True:
             messages.put(connection.recv())
-    os._exit(0)

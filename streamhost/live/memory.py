@@ -6,13 +6,15 @@ import tempfile
 
 
 class Memory:
-    """So many bytes, zeroed; `handle` is passed to the other process."""
+    """Nothing at first; `handle` is passed to the other process."""
 
-    def __init__(self, size: int) -> None:
-        self.size = size
+    def __init__(self) -> None:
         self.handle = _unnamed_file()
+
+    def mapped(self, size: int) -> mmap.mmap:
+        """So many bytes of it, zeroed where it had been smaller."""
         os.ftruncate(self.handle, size)
-        self.buffer = mmap.mmap(self.handle, size)
+        return mapped(self.handle, size)
 
     def close(self) -> None:
         """The handle only: what has been mapped stays as long as anything looks at it."""

@@ -8,27 +8,28 @@ import tempfile
 from multiprocessing import Pipe
 from typing import Any
 
-from streamhost.cache import kernel_folder
 from streamhost.live.memory import Memory
-from streamhost.live.recipe import Recipe
 
-_START = "import sys; sys.path[:] = {path!r}; from streamhost.live.engine import main; main({connection}, {memory})"
+_START = "import sys; sys.path[:] = {path!r}; from streamhost.live.start import main; main({connection}, {memory})"
 LAST_WORDS = 2000
 
 
 class Process:
-    """An engine at work on a recipe, in a session of its own: Ctrl-C and a closed terminal come to the parent only."""
+    """An engine in a session of its own: Ctrl-C and a closed terminal come to the parent only.
 
-    def __init__(self, recipe: Recipe, memory: Memory) -> None:
+    It begins to load at once; `send` gives it first (the folder of kernels or None, recipe), then messages.
+    """
+
+    def __init__(self, memory: Memory) -> None:
         self._connection, theirs = Pipe()
         self._errors = tempfile.TemporaryFile()  # noqa: SIM115 - lives as long as the process
         start = _START.format(path=sys.path, connection=theirs.fileno(), memory=memory.handle)
         self._process = subprocess.Popen(
             [sys.executable, "-c", start], stdin=subprocess.DEVNULL, stdout=self._errors, stderr=self._errors,
-            pass_fds=(theirs.fileno(), memory.handle), start_new_session=True, env=_environment(),
+            pass_fds=(theirs.fileno(), memory.handle), start_new_session=True,
+            env={**os.environ, "OPENBLAS_NUM_THREADS": "1", "OMP_NUM_THREADS": "1"},
         )
         theirs.close()
-        self.send(recipe)
 
     def send(self, message: object) -> None:
         """To an engine that has ended nothing is sent: `is_alive` tells."""
@@ -44,11 +45,15 @@ class Process:
         return found
 
     @property
+    def pid(self) -> int:
+        return self._process.pid
+
+    @property
     def is_alive(self) -> bool:
         return self._process.poll() is None
 
     def kill(self) -> None:
-        """End it whatever it is doing."""
+        """End it whatever it is doing; more than once does no harm."""
         self._connection.close()
         self._process.kill()
         self._process.wait()
@@ -58,10 +63,3 @@ class Process:
         """The end of what it said on its error channel."""
         self._errors.seek(0)
         return self._errors.read()[-LAST_WORDS:].decode(errors="replace").strip()
-
-
-def _environment() -> dict[str, str]:
-    """Kernels are taken from where this process put them, which may be a folder of its own."""
-    folder = kernel_folder()
-    chosen = {"OPENBLAS_NUM_THREADS": "1", "OMP_NUM_THREADS": "1"}
-    return {**os.environ, **chosen, **({"STREAMHOST_CACHE": str(folder.parent)} if folder else {})}

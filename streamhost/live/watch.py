@@ -19,7 +19,7 @@ STALL_LATENCIES = 10
 READY_S = 60.0
 OPEN_S = 4.0
 CLOSE_S = 0.4
-END_S = 2.0
+END_S = 1.0
 RETRY_S = 0.5
 MOST_CRASHES = 3
 PAUSE_S = 0.01
@@ -104,7 +104,7 @@ class Watch:
         """What is on its way is heard, if the card lets it; then the engine has ended, whatever it takes."""
         if self.state is State.PLAYING:
             self._worker.send(("end",))
-            self._enter(State.ENDING, END_S)
+            self._enter(State.ENDING, END_S + (self.opened.latency_s if self.opened else 0.0))
             self._wait_for_the_end()
         self.kill()
 

@@ -9,7 +9,7 @@ from streamhost.errors import RequestError
 
 if TYPE_CHECKING:
     from streamhost.host.plan import Change
-    from streamhost.live import Input, LaneAsked
+    from streamhost.live.recipe import Input, LaneAsked
     from streamhost.presets import Preset
 
 DEFAULT_SOURCE = "pink"
@@ -66,7 +66,7 @@ def prepare(asked: Asked, *, ideals: bool = False) -> Prepared:
     """All that can be wrong with the request is found here. `ideals`: what lanes add can be heard."""
     from streamhost.host.matching import matching_gains
     from streamhost.host.plan import parse_change
-    from streamhost.live import LaneAsked
+    from streamhost.live.recipe import LaneAsked
     from streamhost.presets.realizing import realize_presets
 
     presets = presets_named(asked.presets, asked.variations)
@@ -79,7 +79,7 @@ def prepare(asked: Asked, *, ideals: bool = False) -> Prepared:
 
 
 def _input(asked: Asked, presets: "list[Preset]") -> "tuple[list[Preset], Input, int]":
-    from streamhost.live import Input
+    from streamhost.live.recipe import Input
     from streamhost.shipped import resolve
 
     if asked.input is not None and asked.source is not None:

@@ -14,7 +14,9 @@ from streamhost.errors import MachineError
 
 if TYPE_CHECKING:
     from streamhost.host.lane import Lane
-    from streamhost.live import Card, Recipe, Wanted
+    from streamhost.live.card import Card
+    from streamhost.live.portaudio import Wanted
+    from streamhost.live.recipe import Recipe
 
 TELL_S = 0.03
 
@@ -25,7 +27,7 @@ def run(asked: Asked) -> Run:
     from streamhost.commands.listening.terminal import attend
     from streamhost.host.plan import changes_made
     from streamhost.host.recording import Recorder
-    from streamhost.live import Card
+    from streamhost.live.card import Card, Early
     from streamhost.live.controls import Controls
 
     attended = asked.seconds is None
@@ -33,17 +35,18 @@ def run(asked: Asked) -> Run:
         if place is not None and place != "-":
             check_place(Path(place))
     acknowledge(given=asked.volume_is_down, attended=attended)
-    ready = prepare(asked, ideals=attended)
-    lanes = [each.made(ready.channels) for each in ready.lanes]
-    recipe = _recipe(asked, ready, lanes)
     with ExitStack() as stack:
-        card = stack.enter_context(Card(recipe, _wanted(asked, recipe)))
+        early = stack.enter_context(Early())
+        ready = prepare(asked, ideals=attended)
+        lanes = [each.made(ready.channels) for each in ready.lanes]
+        recipe = _recipe(asked, ready, lanes)
+        card = stack.enter_context(Card(recipe, _wanted(asked, recipe), early))
         card.begin()
         card.set_monitor(asked.monitor_db)
         card.count_on(-1 if asked.counter is None else asked.counter - 1)
         if asked.record is not None:
             stack.enter_context(Recorder(card.shared, record_writer(asked, ready.rate, recipe.width)))
-        controls = Controls(card, lanes, monitor_db=asked.monitor_db)
+        controls = Controls(card, lanes, ready.changes[-1].lane if ready.changes else 0, monitor_db=asked.monitor_db)
         if attended:
             attend(ready, controls)
         else:
@@ -62,8 +65,8 @@ def _recipe(asked: Asked, ready: Prepared, lanes: "list[Lane]") -> "Recipe":
     from streamhost.host import Guard
     from streamhost.host.records import PARTS
     from streamhost.host.step import compile_part, compile_step
-    from streamhost.live import Recipe
     from streamhost.live.controls import planned_in_order
+    from streamhost.live.recipe import Recipe
 
     compile_step()
     for part in PARTS:
@@ -77,7 +80,7 @@ def _recipe(asked: Asked, ready: Prepared, lanes: "list[Lane]") -> "Recipe":
 
 
 def _wanted(asked: Asked, recipe: "Recipe") -> "Wanted":
-    from streamhost.live import Wanted
+    from streamhost.live.portaudio import Wanted
 
     return Wanted(recipe.rate, recipe.block, recipe.outputs, recipe.inputs, _named(asked.device), _named(asked.input_device),
                   asked.latency_ms / 1000.0, "python" if asked.python_callback else "compiled")
