@@ -55,7 +55,10 @@ def test_a_generated_source_and_matched_lanes(capsys: pytest.CaptureFixture[str]
 @pytest.mark.parametrize(
     ("arguments", "status", "said"),
     [
-        (["rumble-float32", "--seconds", "1"], 3, "--no-device runs the lanes on the clock"),
+        (["rumble-float32", "--seconds", "1"], 2, "Where the volume is down, say so by --volume-is-down"),
+        (["rumble-float32"], 2, "Without a terminal and a page --seconds says when to end"),
+        (["rumble-float32", "--seconds", "1", "--fast"], 2, "--fast is for --no-device"),
+        (["rumble-float32", "--no-device", "--seconds", "1", "--source", "device"], 2, "is the sound card's input"),
         (["rumble-float32", "--no-device"], 2, "--seconds says when to end"),
         (["rumble-float32", "--no-device", "--seconds", "1", "--source", "hum"], 2, "a source is KIND"),
         (["rumble-float32", "--no-device", "--seconds", "1", "--source", "white", "--input", "chord"], 2, "give one of them"),
@@ -64,7 +67,11 @@ def test_a_generated_source_and_matched_lanes(capsys: pytest.CaptureFixture[str]
         (["rumble-float32", "--no-device", "--seconds", "1", "--json", "nowhere/it.json"], 2, "does not exist"),
     ],
 )
-def test_what_cannot_be_is_refused(arguments: list[str], status: int, said: str, capsys: pytest.CaptureFixture[str]) -> None:
+def test_what_cannot_be_is_refused(
+    arguments: list[str], status: int, said: str, tmp_path: Path, monkeypatch: pytest.MonkeyPatch,
+    capsys: pytest.CaptureFixture[str],
+) -> None:
+    monkeypatch.setenv("XDG_STATE_HOME", str(tmp_path))
     assert main(["listen", *arguments]) == status
     assert said in capsys.readouterr().err
 
