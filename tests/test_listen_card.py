@@ -20,6 +20,7 @@ from sound_server import RATE, SoundServer, counted, is_there
 
 from streamhost.commands.main import main
 from streamhost.files import read_all
+from streamhost.shipped import resolve
 
 pytestmark = pytest.mark.skipif(not is_there(), reason="no sound server here: apt install pulseaudio pulseaudio-utils")
 
@@ -135,8 +136,11 @@ class Terminal:
         os.write(self.handle, keys.encode())
 
 
-def test_the_keys_of_a_terminal_and_a_terminal_that_is_closed(server: SoundServer) -> None:
-    with Terminal([*PRESETS, *CARD, "--source", "pink"], server.environment) as terminal:
+def test_keys_a_file_that_is_saved_and_a_terminal_that_is_closed(server: SoundServer, tmp_path: Path) -> None:
+    text = resolve(PRESETS[1], "preset").read_text()
+    mine = tmp_path / "mine.toml"
+    mine.write_text(text)
+    with Terminal([PRESETS[0], str(mine), *CARD, "--source", "pink"], server.environment) as terminal:
         terminal.wait_for("Volume is down: begin, muted?")
         terminal.press("\n")
         terminal.wait_for("Output: muted")
@@ -149,6 +153,14 @@ def test_the_keys_of_a_terminal_and_a_terminal_that_is_closed(server: SoundServe
         ):
             terminal.press(keys)
             terminal.wait_for(shown)
+        terminal.press("2")
+        terminal.wait_for("You hear lane 2")
+        mine.write_text(text.replace("Rumble filter", "Another filter").replace("frequency = 28.0", "frequency = 30.0"))
+        terminal.wait_for("Lane 2 is taken as it was saved, by fade.")
+        terminal.wait_for("2  Another filter")
+        mine.write_text("rate = 48000\n")
+        terminal.wait_for("mine.toml: the old version is kept.")
+        terminal.wait_for("2  Another filter")
         os.close(terminal.handle)
         terminal.wait()
     assert has_ended(engine)

@@ -1,7 +1,9 @@
 """What serves the sound card and needs none: messages, memory, the missing library, the caution, keys."""
 
+import os
 import pickle
 import sys
+import time
 from dataclasses import dataclass, field
 from pathlib import Path
 from types import SimpleNamespace
@@ -15,9 +17,12 @@ from streamhost.commands.listening.terminal import press
 from streamhost.errors import MachineError, RequestError
 from streamhost.host import Change, Lane
 from streamhost.host.carrying import POINTERS
+from streamhost.host.records import MOST_LANES
 from streamhost.live import portaudio
 from streamhost.live.controls import Controls, planned, planned_in_order
+from streamhost.live.files import Built, Files, Taken
 from streamhost.live.memory import Memory, mapped
+from streamhost.live.recipe import LaneAsked
 from streamhost.presets import load_preset
 from streamhost.presets.realizing import realize_presets
 from streamhost.shipped import resolve
@@ -105,8 +110,8 @@ class FakeCard:
     def __getattr__(self, name: str) -> Any:
         def note(*arguments: Any) -> int:
             self.done.append((name, *arguments))
-            self.answers[len(self.done)] = None
-            return len(self.done)
+            self.answers[len(self.answers) + 1] = None
+            return len(self.answers)
 
         return note
 
@@ -141,3 +146,75 @@ def test_a_change_that_is_refused_leaves_the_lane_that_was_heard(lanes: list[Lan
     card.answers[1] = "the two differ"
     controls.tend()
     assert (controls.heard, controls.before, controls.notice) == (0, 0, "the two differ")
+
+
+def test_a_lane_that_is_built_anew_takes_turns_between_two_slots(lanes: list[Lane]) -> None:
+    card = FakeCard()
+    controls = Controls(card, list(lanes))  # type: ignore[arg-type]
+    asked = LaneAsked(lanes[0].realization)
+    for slot, place in ((2, None), (0, 0), (2, 2)):  # the first time a slot more
+        card.done.clear()
+        controls.take_up(0, asked, lanes[0])
+        (placed, change), = [card.done]
+        assert placed == ("place", asked, place)
+        assert (change[1].change.lane, controls.slots) == (slot, [slot, 1])
+        assert controls.number_of(slot) == 0
+    card.done.clear()
+    controls.take_up(1, asked, lanes[0])  # not heard: nothing changes over
+    assert [each[0] for each in card.done] == ["place"]
+    assert controls.slots == [2, 3]
+    card.answers = dict.fromkeys(card.answers, "")
+    controls.tend()
+    controls.take_up(0, asked, lanes[0])
+    card.answers[max(card.answers)] = "no"
+    controls.tend()
+    assert (controls.slots, controls.notice) == ([2, 3], "no")
+
+
+def test_there_is_an_end_of_places(lanes: list[Lane]) -> None:
+    controls = Controls(FakeCard(), [lanes[0]] * MOST_LANES)  # type: ignore[arg-type]
+    with pytest.raises(RequestError, match="All 16 places"):
+        controls.take_up(0, LaneAsked(lanes[0].realization), lanes[0])
+    wide = Lane(realize_presets([load_preset(resolve("rumble-float32", "preset"))], 2)[0], 2)
+    with pytest.raises(RequestError, match="2 as its channels"):
+        Controls(FakeCard(), lanes).take_up(0, LaneAsked(wide.realization), wide)  # type: ignore[arg-type]
+
+
+def test_a_file_is_built_when_its_text_has_changed(tmp_path: Path, lanes: list[Lane]) -> None:
+    preset = load_preset(resolve("rumble-float32", "preset"))
+    good, other = tmp_path / "good.toml", tmp_path / "other.toml"
+    for file in (good, other):
+        file.write_text("1")
+    now = [0.0]
+
+    def build(path: Path) -> list[Taken]:
+        if path.read_text() == "bad":
+            raise RequestError("it is bad")
+        return [Taken(preset, LaneAsked(lanes[0].realization), lanes[0])] * len(path.read_text())
+
+    def after(text: str) -> list[Built]:
+        good.write_text(text)
+        found: list[Built] = []
+        for _ in range(100):
+            now[0] += 1.0
+            found += files.tend()
+            time.sleep(0.002)
+            if found:
+                break
+        return found
+
+    with Files({good: [0, 2], other: [1]}, build, clock=lambda: now[0]) as files:
+        assert files.tend() == []
+        (built,) = after("22")
+        assert (built.path, built.numbers, len(built.lanes), built.problem) == (good, (0, 2), 2, "")
+        (built,) = after("bad")
+        assert (built.lanes, built.problem) == ((), "it is bad")
+        assert after("333")[0].problem == "good.toml makes 3 lanes now, and 2 run."
+        good.unlink()  # as an editor may do before it writes the file anew
+        now[0] += 1.0
+        assert files.tend() == []
+        assert len(after("44")) == 1
+        os.utime(good, (1, 1))  # the same text again
+        now[0] += 1.0
+        assert files.tend() == []
+        assert not files._under_way

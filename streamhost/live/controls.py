@@ -1,15 +1,15 @@
 """What an engineer does at a running host, by keys or by words: the same for a terminal and a page."""
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
 
 from streamhost.errors import RequestError
 from streamhost.host.carrying import prepare_carry
 from streamhost.host.lane import Lane
 from streamhost.host.plan import Change
-from streamhost.host.records import CHANGEOVERS
+from streamhost.host.records import CHANGEOVERS, MOST_LANES
 from streamhost.live.card import Card
-from streamhost.live.recipe import Planned
+from streamhost.live.recipe import LaneAsked, Planned
 from streamhost.program.carrying import is_run
 
 RAISE_STEP_DB = 6.0
@@ -36,11 +36,23 @@ def planned_in_order(changes: Sequence[Change], lanes: Sequence[Lane]) -> tuple[
     return tuple(found)
 
 
+def check_fit(lane: Lane, first: Lane) -> None:
+    """RequestError where a lane cannot stand beside the first."""
+    for what, own, its in (
+        ("channels", lane.channels, first.channels), ("rate", lane.realization.rate, first.realization.rate),
+        ("outputs", len(lane.realization.outputs), len(first.realization.outputs)),
+    ):
+        if own != its:
+            raise RequestError(f"It has {own:g} as its {what} now, and the lanes that run have {its:g}.")
+
+
 @dataclass
 class Controls:
-    """The settings of one card, each changed by a method; `lanes` are those of the parent, which never run.
+    """The settings of one card, each changed by a method.
 
-    heard: the lane that is heard when all that is planned is done.
+    lanes: the parent's, which never run, by the slot of the host that they stand in. slots: that of each lane, by its number
+    from 0; a lane that is built anew takes turns between two. heard: the number of the lane that is heard when all that is
+    planned is done.
     """
 
     card: Card
@@ -53,7 +65,12 @@ class Controls:
     differs: bool = False
     before: int = 0
     notice: str = ""
-    _asked: dict[int, tuple[int, int]] = field(default_factory=dict)
+    slots: list[int] = field(default_factory=list)
+    _owners: list[int] = field(default_factory=list)
+    _asked: dict[int, Callable[[], None]] = field(default_factory=dict)
+
+    def __post_init__(self) -> None:
+        self.slots, self._owners = list(range(len(self.lanes))), list(range(len(self.lanes)))
 
     def tend(self) -> None:
         """Watch over the card, and hear what became of changes."""
@@ -63,26 +80,66 @@ class Controls:
             answer = self.card.answer(ticket)
             if answer is None:
                 continue
-            former = self._asked.pop(ticket)
+            undo = self._asked.pop(ticket)
             if answer:
-                self.notice, (self.heard, self.before) = answer, former
+                undo()
+                self.notice = answer
 
     def hear(self, lane: int) -> None:
         """Change to a lane, from 0."""
-        if not 0 <= lane < len(self.lanes):
+        if not 0 <= lane < len(self.slots):
             self.notice = f"There is no lane {lane + 1}."
             return
-        if lane == self.heard:
-            return
+        former = self.heard, self.before
+
+        def undo() -> None:
+            self.heard, self.before = former
+
+        if lane != self.heard and self._change(self.slots[self.heard], self.slots[lane], self.changeover, undo):
+            self.before, self.heard = self.heard, lane
+            self.notice = f"Lane {lane + 1}, by {self.changeover}."
+            if self.differs and self.against == "before":
+                self._subtract()
+
+    def take_up(self, number: int, asked: LaneAsked, lane: Lane) -> None:
+        """Run another lane under this number; where it is heard, the change is as any other. RequestError where it does not
+        fit."""
+        slot = self._spare(number)
+        check_fit(lane, self.lanes[0])
+        former = self.slots[number]
+        self.card.place(asked, slot if slot < len(self.lanes) else None)
+        self.lanes[slot : slot + 1], self._owners[slot : slot + 1] = [lane], [number]
+        settles = self.changeover == "carry" and is_run(lane.realization.program)
+        changeover = "fade" if settles else self.changeover  # it has not run over any input yet
+
+        def undo() -> None:
+            self.slots[number] = former
+
+        if number != self.heard or self._change(former, slot, changeover, undo):
+            self.slots[number] = slot
+            self.notice = f"Lane {number + 1} is taken as it was saved, by {changeover}."
+
+    def number_of(self, slot: int) -> int:
+        """Of the lane that stands in a slot, or stood there before it was built anew."""
+        return self._owners[slot]
+
+    def _spare(self, number: int) -> int:
+        for slot, owner in enumerate(self._owners):
+            if owner == number and slot != self.slots[number]:
+                return slot
+        if len(self.lanes) == MOST_LANES:
+            raise RequestError(f"All {MOST_LANES} places for lanes are taken, and a lane that is built anew needs one more.")
+        return len(self.lanes)
+
+    def _change(self, former: int, slot: int, changeover: str, undo: Callable[[], None]) -> bool:
+        """Change between slots; whether it could be asked for. `undo` is called where it is refused."""
         try:
-            ticket = self.card.change(planned(Change(NOW, lane, self.changeover), self.heard, self.lanes))
+            ticket = self.card.change(planned(Change(NOW, slot, changeover), former, self.lanes))
         except RequestError as problem:
             self.notice = str(problem)
-            return
-        self._asked[ticket] = (self.heard, self.before)
-        self.before, self.heard = self.heard, lane
-        self.notice = f"Lane {lane + 1}, by {self.changeover}."
-        self._follow()
+            return False
+        self._asked[ticket] = undo
+        return True
 
     def back(self) -> None:
         """The lane before."""
@@ -125,15 +182,7 @@ class Controls:
         """What is subtracted from what is heard, as the host has it."""
         if not self.differs:
             return None
-        return "ideal" if self.against == "ideal" else self.before
-
-    def follow_placed(self, slot: int, lane: Lane) -> None:
-        """A slot holds another lane."""
-        self.lanes[slot : slot + 1] = [lane]
-
-    def _follow(self) -> None:
-        if self.differs and self.against == "before":
-            self._subtract()
+        return "ideal" if self.against == "ideal" else self.slots[self.before]
 
     def _subtract(self) -> None:
         self.card.subtract(self.subtracted, self.raise_db)

@@ -49,10 +49,10 @@ class Asked:
 
 @dataclass(frozen=True)
 class Prepared:
-    """The presets at their rate, their lanes, the changes in order, what comes in and its channels."""
+    """The presets at their rate and their lanes, which follow what is saved; the changes in order, what comes in."""
 
     presets: "list[Preset]"
-    lanes: "tuple[LaneAsked, ...]"
+    lanes: "list[LaneAsked]"
     changes: "tuple[Change, ...]"
     input: "Input"
     channels: int
@@ -74,7 +74,7 @@ def prepare(asked: Asked, *, ideals: bool = False) -> Prepared:
     presets, given, channels = _input(asked, presets)
     realizations = realize_presets(presets, channels)
     gains: Sequence[float] = matching_gains(realizations) if asked.matched else [1.0] * len(realizations)
-    lanes = tuple(LaneAsked(each, gain, ideals) for each, gain in zip(realizations, gains, strict=True))
+    lanes = [LaneAsked(each, gain, ideals) for each, gain in zip(realizations, gains, strict=True)]
     return Prepared(presets, lanes, tuple(changes), given, channels)
 
 

@@ -2,6 +2,7 @@
 
 import time
 from contextlib import ExitStack
+from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -10,11 +11,14 @@ import click
 from streamhost.commands.common import check_place
 from streamhost.commands.listening.asked import CARD, RECORDING_S, Asked, Prepared, prepare
 from streamhost.commands.listening.told import Run, record_writer
+from streamhost.commands.listening.watched import follow, preset_files
 from streamhost.errors import MachineError
 
 if TYPE_CHECKING:
     from streamhost.host.lane import Lane
     from streamhost.live.card import Card
+    from streamhost.live.controls import Controls
+    from streamhost.live.files import Files
     from streamhost.live.portaudio import Wanted
     from streamhost.live.recipe import Recipe
 
@@ -47,17 +51,20 @@ def run(asked: Asked) -> Run:
         if asked.record is not None:
             stack.enter_context(Recorder(card.shared, record_writer(asked, ready.rate, recipe.width)))
         controls = Controls(card, lanes, ready.changes[-1].lane if ready.changes else 0, monitor_db=asked.monitor_db)
+        files = stack.enter_context(preset_files(asked, ready))
         if attended:
-            attend(ready, controls)
+            attend(ready, controls, files)
         else:
             card.come_up()
-            _unattended(asked, card)
+            _unattended(asked, ready, controls, files)
         lost = card.is_lost
     if lost:
         raise MachineError(f"The sound card {card.losses[-1].reason} at frame {card.losses[-1].frame} and had not come back "
                            "when the time was over: there are no figures.")
-    return Run(ready, card.shared, asked.block, card.frame, changes_made(card.shared), tuple(card.hashes),
-               card.opened.callback, {"card": _card_figures(card)})
+    changes = [replace(each, lane=controls.number_of(each.lane), before=controls.number_of(each.before))
+               for each in changes_made(card.shared)]
+    return Run(ready, card.shared, asked.block, card.frame, changes, tuple(card.hashes), card.opened.callback,
+               {"card": _card_figures(card)}, tuple(controls.slots))
 
 
 def _recipe(asked: Asked, ready: Prepared, lanes: "list[Lane]") -> "Recipe":
@@ -72,7 +79,7 @@ def _recipe(asked: Asked, ready: Prepared, lanes: "list[Lane]") -> "Recipe":
     for part in PARTS:
         compile_part(part)
     return Recipe(
-        ready.lanes, ready.input, ready.channels, asked.block, inputs=ready.channels if asked.source == CARD else 0,
+        tuple(ready.lanes), ready.input, ready.channels, asked.block, inputs=ready.channels if asked.source == CARD else 0,
         outputs=max(ready.channels, asked.counter or 0), guard=Guard(asked.ceiling_dbfs, rise_db_per_s=asked.rise_db_per_s),
         planned=planned_in_order(ready.changes, lanes),
         recording=0 if asked.record is None else round(RECORDING_S * ready.rate),
@@ -90,13 +97,16 @@ def _named(device: str | None) -> str | int | None:
     return int(device) if device is not None and device.isdecimal() else device
 
 
-def _unattended(asked: Asked, card: "Card") -> None:
+def _unattended(asked: Asked, ready: Prepared, controls: "Controls", files: "Files") -> None:
     """Until so many seconds have been played, or have passed without a card."""
     assert asked.seconds is not None, "it was asked for"
     began = time.monotonic()
-    while not _is_over(card, asked.seconds, time.monotonic() - began):
-        for notice in card.tend():
-            click.echo(notice, err=True)
+    while not _is_over(controls.card, asked.seconds, time.monotonic() - began):
+        controls.tend()
+        follow(files, ready, controls)
+        if controls.notice:
+            click.echo(controls.notice, err=True)
+            controls.notice = ""
         time.sleep(TELL_S)
 
 

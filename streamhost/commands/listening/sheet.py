@@ -28,9 +28,9 @@ def sheet(ready: Prepared, controls: "Controls", *, keys: bool) -> str:
 
     card = controls.card
     figures = run_figures(card.shared, card.recipe.block, ready.rate)
-    states = ["heard" if number == card.heard else "ready" for number in range(len(ready.lanes))]
+    states = ["heard" if slot == card.heard else "ready" for slot in controls.slots]
     return "\n".join([
-        *_sentence(ready, controls), "", _output(controls), "", lane_ledger(ready, card.shared, states), "",
+        *_sentence(ready, controls), "", _output(controls), "", lane_ledger(ready, card.shared, controls.slots, states), "",
         f"Block times: {block_times(figures)}; {figures['blocks_over_half']} over half.", gaps(figures), "",
         *(KEYS.splitlines() if keys else []), f"{printable(controls.notice)}   ? all keys",
     ])
@@ -44,7 +44,7 @@ def _sentence(ready: Prepared, controls: "Controls") -> list[str]:
         "the difference is not heard")
     place = printable(controls.card.opened.device)
     level = _decibels(controls.monitor_db)
-    return [f"You hear lane {controls.card.heard + 1} on {printable(named)} at {level} dB, on {place}.",
+    return [f"You hear lane {controls.number_of(controls.card.heard) + 1} on {printable(named)} at {level} dB, on {place}.",
             f"A change takes over by {controls.changeover}; {differs}."]
 
 

@@ -11,9 +11,11 @@ from typing import TYPE_CHECKING
 
 from streamhost.commands.listening.asked import Prepared
 from streamhost.commands.listening.sheet import sheet
+from streamhost.commands.listening.watched import follow
 
 if TYPE_CHECKING:
     from streamhost.live.controls import Controls
+    from streamhost.live.files import Files
 
 DRAW_S = 0.25
 POLL_S = 0.03
@@ -22,13 +24,14 @@ HIDE, SHOW, HOME, END_LINE, END_ALL = "\x1b[?25l", "\x1b[?25h", "\x1b[H", "\x1b[
 OTHER_PAGE, FORMER_PAGE = "\x1b[?1049h", "\x1b[?1049l"
 
 
-def attend(ready: Prepared, controls: "Controls") -> None:
+def attend(ready: Prepared, controls: "Controls", files: "Files") -> None:
     """Until the user quits; Ctrl-C is as good a way as any."""
     keys, drawn = False, 0.0
     controls.notice = "Muted: u lets the output come up."
     with contextlib.suppress(KeyboardInterrupt), _keyboard(), _page():
         while True:
             controls.tend()
+            follow(files, ready, controls)
             for key in _pressed():
                 if key in QUIT:
                     return

@@ -15,7 +15,10 @@ if TYPE_CHECKING:
 
 @dataclass(frozen=True)
 class Run:
-    """A run that has ended; `hashes` of the lanes' states, empty where the engine was lost. `card`: what is told of it."""
+    """A run that has ended; `hashes` of the lanes' states, empty where the engine was lost. `card`: what is told of it.
+
+    slots: of the lanes, where these are not in their order.
+    """
 
     ready: Prepared
     shared: "Shared"
@@ -25,6 +28,12 @@ class Run:
     hashes: tuple[str, ...]
     callback: str
     card: dict[str, object] = field(default_factory=dict)
+    slots: tuple[int, ...] | None = None
+
+    @property
+    def places(self) -> Sequence[int]:
+        """The slot of each lane in the host."""
+        return range(len(self.ready.lanes)) if self.slots is None else self.slots
 
 
 def record_writer(asked: Asked, rate: float, columns: int) -> "AudioWriter":
@@ -42,13 +51,13 @@ def document(run: Run) -> dict[str, object]:
     from streamhost.host.figures import change_figures, guard_figures, lane_figures, run_figures
 
     ready, lanes = run.ready, []
-    for number, (asked, preset) in enumerate(zip(ready.lanes, ready.presets, strict=True)):
+    for number, (asked, preset, slot) in enumerate(zip(ready.lanes, ready.presets, run.places, strict=True)):
         realization = asked.realization
-        figures = lane_figures(run.shared, number, ready.channels * len(realization.outputs), ready.rate)
+        figures = lane_figures(run.shared, slot, ready.channels * len(realization.outputs), ready.rate)
         lanes.append({
             "lane": number + 1, "preset": preset.source.name, "title": preset.title, "form": realization.form,
             "decomposition": realization.decomposition, "format": realization.format.label, **asdict(figures),
-            "state_sha256": run.hashes[number] if run.hashes else None,
+            "state_sha256": run.hashes[slot] if run.hashes else None,
         })
     return {
         **run_figures(run.shared, run.block, ready.rate), "frames": run.frames, "rate": ready.rate, "lanes": lanes,
@@ -61,7 +70,7 @@ def told(run: Run) -> list[str]:
     """What happened, in a ledger and a few sentences."""
     from streamhost.host.figures import guard_figures, run_figures
 
-    lines = [lane_ledger(run.ready, run.shared), ""]
+    lines = [lane_ledger(run.ready, run.shared, run.places), ""]
     lines += [f"Lane {change.lane + 1} is heard from frame {change.frame} on, by {change.changeover}."
               for change in run.changes]
     figures, guard = run_figures(run.shared, run.block, run.ready.rate), guard_figures(run.shared)
@@ -75,14 +84,14 @@ def told(run: Run) -> list[str]:
     return lines
 
 
-def lane_ledger(ready: Prepared, shared: "Shared", states: Sequence[str] = ()) -> str:
+def lane_ledger(ready: Prepared, shared: "Shared", slots: Sequence[int], states: Sequence[str] = ()) -> str:
     """A row for each lane; `states` beside them where they are given."""
     from streamhost.host.figures import lane_figures
 
     rows: list[list[Cell]] = []
-    for number, (asked, preset) in enumerate(zip(ready.lanes, ready.presets, strict=True)):
+    for number, (asked, preset, slot) in enumerate(zip(ready.lanes, ready.presets, slots, strict=True)):
         realization = asked.realization
-        figures = lane_figures(shared, number, ready.channels * len(realization.outputs), ready.rate)
+        figures = lane_figures(shared, slot, ready.channels * len(realization.outputs), ready.rate)
         about = f"{realization.form} · {realization.decomposition} · {realization.format.label}"
         rows.append([preset.title, about, figures.peak_dbfs, figures.rms_dbfs, figures.saturations + figures.wraps,
                      figures.load_percent, *states[number : number + 1]])
