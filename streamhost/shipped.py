@@ -1,4 +1,4 @@
-"""Where the presets and the recordings that ship with the program are."""
+"""Where the presets, the recordings and the example of a core that ship with the program are."""
 
 from collections.abc import Sequence
 from dataclasses import dataclass
@@ -7,7 +7,7 @@ from typing import Literal
 
 from streamhost.errors import AudioFileError, PresetError, nearest
 
-Kind = Literal["preset", "sample"]
+Kind = Literal["preset", "sample", "core"]
 
 
 @dataclass(frozen=True)
@@ -15,11 +15,14 @@ class _Shipped:
     in_repository: str
     in_package: str
     extensions: tuple[str, ...]
+    what: str
+    without: str = ""
 
 
 _KINDS: dict[Kind, _Shipped] = {
-    "preset": _Shipped("presets", "presets_shipped", (".toml",)),
-    "sample": _Shipped("audio_samples", "audio_samples", (".wav", ".flac")),
+    "preset": _Shipped("presets", "presets_shipped", (".toml",), "preset", without="cores"),
+    "sample": _Shipped("audio_samples", "audio_samples", (".wav", ".flac"), "recording"),
+    "core": _Shipped("presets/cores", "presets_shipped/cores", (".toml",), "core"),
 }
 
 
@@ -70,7 +73,9 @@ def _folder(shipped: _Shipped) -> Path:
 
 def _files(kind: Kind) -> list[Path]:
     shipped = _KINDS[kind]
-    return sorted(file for file in _folder(shipped).rglob("*") if file.suffix in shipped.extensions)
+    folder = _folder(shipped)
+    return sorted(file for file in folder.rglob("*")
+                  if file.suffix in shipped.extensions and file.relative_to(folder).parts[0] != shipped.without)
 
 
 def _refusal(name: str, kind: Kind, found: Sequence[Path]) -> PresetError | AudioFileError:
@@ -80,6 +85,5 @@ def _refusal(name: str, kind: Kind, found: Sequence[Path]) -> PresetError | Audi
     else:
         stem = name.removesuffix(Path(name).suffix)
         hint = nearest(stem, names(kind)) or f" Shipped are: {', '.join(names(kind)) or 'none'}."
-        what = "preset" if kind == "preset" else "recording"
-        message = f"{name}: there is no such file, and no shipped {what} of this name.{hint}"
-    return PresetError([message]) if kind == "preset" else AudioFileError(message)
+        message = f"{name}: there is no such file, and no shipped {_KINDS[kind].what} of this name.{hint}"
+    return AudioFileError(message) if kind == "sample" else PresetError([message])

@@ -25,6 +25,7 @@ LEVELS = (
     {"realization"},
     {"presets", "host"},
     {"measure", "live"},
+    {"profile"},
     {"report", "page"},
     {"commands"},
 )

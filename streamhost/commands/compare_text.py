@@ -74,12 +74,12 @@ def _noise_row(one: Compared, figures: Figures) -> list[Cell]:
     white = {True: "holds", False: "fails", None: None}[figures.white.holds]
     predicted = prediction.dbfs if prediction is not None else None
     return [
-        *_once(one, figures, [_title(one.preset), one.label]),
+        *_once(one, figures, [short_title(one.preset), one.label]),
         noise.dbfs, noise.interval_db, predicted, white, noise.a_dbfs, noise.full_dbfs,
     ]
 
 
-def _title(preset: Preset) -> str:
+def short_title(preset: Preset) -> str:
     """Shortened in the preset's own part: what was varied tells rows apart."""
     own = preset.own_title
     varied = preset.title[len(own) :]

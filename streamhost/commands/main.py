@@ -46,6 +46,7 @@ COMMANDS = {
         "All realizations of one filter on one signal: a table, the audio, the differences.",
     ),
     "measure": Entry("streamhost.commands.measure:measure", "What a design review asks of one realization, and its limits."),
+    "profile": Entry("streamhost.commands.profile:profile", "What each realization costs, here and on a core of yours."),
     "listen": Entry("streamhost.commands.listen:listen", "Realizations side by side, one of them heard."),
     "draw": Entry("streamhost.commands.draw:draw", "The block diagram of a realization, as text or SVG."),
     "import": Entry("streamhost.commands.import_:import_", "Coefficients from a foreign file, as a preset."),

@@ -1,4 +1,4 @@
-"""Every mistake of a preset, gathered: file, line, key, value, rule, what is allowed."""
+"""Every mistake of a preset or of another file of tables, gathered: file, line, key, value, rule, what is allowed."""
 
 import json
 from collections.abc import Iterable, Mapping
@@ -12,10 +12,11 @@ MOST_SHOWN = 60
 
 @dataclass
 class Mistakes:
-    """Collects problems of one preset; `name` is how the user knows the file."""
+    """Collects problems of one file; `name` is how the user knows it, `what` what it is."""
 
     name: str
     lines: Lines
+    what: str = "a preset"
     found: list[tuple[int, str]] = field(default_factory=list)
 
     def add(self, path: Path, message: str) -> None:
@@ -30,7 +31,7 @@ class Mistakes:
         """A key that is not known where it stands."""
         names = tuple(allowed)
         key = str(path[-1])
-        place = place_text(path[:-1])
+        place = place_text(path[:-1], self.what)
         self.add(path, f"{one_line(key)} is no key of {place}, which takes {listed(names)}.{nearest(key, names)}")
 
     def texts(self) -> list[str]:
@@ -52,10 +53,10 @@ def listed(names: Iterable[str]) -> str:
     return f"{', '.join(names[:-1])} or {names[-1]}"
 
 
-def place_text(path: Path) -> str:
+def place_text(path: Path, what: str) -> str:
     """How a table is named to the user: the head of the file, [format], [[filter]] number 2."""
     if not path:
-        return "the head of a preset"
+        return f"the head of {what}"
     if path[0] == "filter":
         return "this [[filter]]" if len(path) == 2 else f"{key_text(path)} in this [[filter]]"
     return f"[{path[0]}]" if len(path) == 1 else f"{key_text(path)} in [{path[0]}]"

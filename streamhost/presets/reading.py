@@ -65,7 +65,7 @@ def _parsed(text: str, name: str, path: Path | None) -> Preset:
     lines = scan(text)
     if lines.too_deep:
         raise PresetError([f"{name}:{lines.too_deep[0]}: a preset has no place for {lines.too_deep[1]}"])
-    return read_preset(Source(name, _table(text, name), lines), path)
+    return read_preset(Source(name, toml_table(text, name), lines), path)
 
 
 def read_preset(source: Source, path: Path | None) -> Preset:
@@ -116,7 +116,8 @@ def _files_in(path: Path) -> str:
     return f" Presets in it: {', '.join(inside)}." if inside else ""
 
 
-def _table(text: str, name: str) -> dict[str, Any]:
+def toml_table(text: str, name: str) -> dict[str, Any]:
+    """The raw table of a text; PresetError in our words, with the line, where it is no TOML."""
     try:
         return tomllib.loads(text)
     except tomllib.TOMLDecodeError as error:
