@@ -123,7 +123,7 @@ def _method(costed: Costed) -> Iterator[str]:
     if any(timing.tail for one in costed.profile.realizations for timing in one.timings):
         yield "Tail: silence from states scaled into the subnormal numbers, set anew for each block."
     yield ("Bounds: of one channel on a common 64-bit core by a stated table of latencies. Loop: cycles per frame around the "
-           "slowest loop, however wide the core; operations: to begin them all. Took: at the calibrated clock.")
+           "slowest loop, however wide the core; operations: to begin them all, one by one. Took: at the calibrated clock.")
     if method.no_counters:
         yield f"Retired instructions and cycles: not given, since {method.no_counters}."
     else:

@@ -46,7 +46,7 @@ def slowest_loop(program: Program) -> Loop | None:
         inside = set(component)
         own = sorted((edge for edge in found if edge.source in inside and edge.reader in inside),
                      key=lambda edge: position[edge.source])
-        slowest = _slowest(own, slowest)
+        slowest = slowest_among(own, slowest)
     return slowest
 
 
@@ -64,17 +64,15 @@ def longest_way(program: Program) -> int:
     return max((ready[index] for index in program.diagram.outputs if index in ready), default=0)
 
 
-def _slowest(edges: Sequence[Edge], slowest: Loop | None) -> Loop | None:
-    """The slowest loop of one component, or the one that is known where none is slower.
+def slowest_among(edges: Sequence[Edge], known: Loop | None = None) -> Loop | None:
+    """The slowest loop of these edges, or the known one where none is slower. Every loop has a delay.
 
     Every loop that is found raises the ratio that the next must exceed, until there is none.
     """
-    while True:
-        ratio = slowest.cycles_per_frame if slowest is not None else Fraction(-1)
-        loop = _loop_above(edges, ratio)
-        if loop is None:
-            return slowest
+    slowest = known
+    while loop := _loop_above(edges, slowest.cycles_per_frame if slowest is not None else Fraction(-1)):
         slowest = loop
+    return slowest
 
 
 def _loop_above(edges: Sequence[Edge], ratio: Fraction) -> Loop | None:
@@ -82,7 +80,7 @@ def _loop_above(edges: Sequence[Edge], ratio: Fraction) -> Loop | None:
 
     Edges in evaluation order of their sources: one pass settles everything between two delays.
     """
-    nodes = {edge.source for edge in edges}
+    nodes = {node for edge in edges for node in (edge.source, edge.reader)}
     longest, by = dict.fromkeys(nodes, 0), dict[int, Edge]()
     for _ in range(len(nodes) + 1):
         changed = False

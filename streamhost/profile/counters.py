@@ -1,6 +1,7 @@
 """Retired instructions and cycles of this process, where the host counts them for us (`perf_event_open` of Linux)."""
 
 import ctypes
+import errno
 import os
 import platform
 import struct
@@ -11,7 +12,8 @@ from dataclasses import dataclass
 CALL_NUMBERS = {"x86_64": 298, "aarch64": 241}
 HARDWARE, CYCLES, INSTRUCTIONS = 0, 0, 1
 ATTRIBUTE_BYTES = 128
-EXCLUDE_KERNEL_AND_HYPERVISOR = 0b1100000
+FORBIDDEN = (errno.EACCES, errno.EPERM)
+EXCLUDE_SYSTEM_AND_HYPERVISOR = 0b1100000
 FLAGS_AT = 40
 
 
@@ -34,7 +36,8 @@ def counted(run: Callable[[], object]) -> Counted:
         instructions, cycles = (_read(file) - start for file, start in zip(files, before, strict=True))
         return Counted(instructions, cycles)
     except OSError as problem:
-        return Counted(reason=str(problem.strerror or problem))
+        why = "this host does not permit" if problem.errno in FORBIDDEN else "this host does not offer"
+        return Counted(reason=f"{why} hardware counters ({problem.strerror})")
     finally:
         for file in files:
             os.close(file)
@@ -43,10 +46,10 @@ def counted(run: Callable[[], object]) -> Counted:
 def _open(event: int) -> int:
     number = CALL_NUMBERS.get(platform.machine()) if sys.platform == "linux" else None
     if number is None:
-        raise OSError(0, "this system has no way that we know")
+        raise OSError(errno.ENOSYS, "no way to them is known here")
     attribute = bytearray(ATTRIBUTE_BYTES)
     struct.pack_into("IIQ", attribute, 0, HARDWARE, ATTRIBUTE_BYTES, event)
-    struct.pack_into("Q", attribute, FLAGS_AT, EXCLUDE_KERNEL_AND_HYPERVISOR)
+    struct.pack_into("Q", attribute, FLAGS_AT, EXCLUDE_SYSTEM_AND_HYPERVISOR)
     library = ctypes.CDLL(None, use_errno=True)
     file = int(library.syscall(number, (ctypes.c_char * ATTRIBUTE_BYTES).from_buffer(attribute), 0, -1, -1, 0))
     if file < 0:

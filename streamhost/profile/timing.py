@@ -1,10 +1,11 @@
 """The method of timing: pinned, warmed up, interleaved, corrected by calibration.
 
-Every round times a few blocks of every lane at every block length, the lanes right after each other and in an order that turns
-from round to round; before and after each of them two loops tell how fast the processor runs and whether the core is shared.
-A round's figure is the median of its blocks, brought to the speed that the processor had in the middle of the whole run. Rounds
-in which the core was shared count only where too few are left, and then the least shared do; up to three times as many rounds
-are made to find enough. What is told is the median of those that count.
+Every round times a few blocks of every lane at every block length, the lanes right after each other and in an order that
+turns from round to round; before and after each of them two loops tell how fast the processor runs and whether the core is
+shared. A round's figure is the mean of the middle half of its blocks (a clock may count in steps of 10 ns or more), brought to
+the speed that the processor had in the middle of the whole run. Rounds in which the core was shared count only where too few
+are left, and then the least shared do; up to three times as many rounds are made to find enough. What is told is the median of
+those that count.
 
 Worst block and 99.9 percentile are of all blocks, as they came: on a machine that does other work they tell of that as well.
 """
@@ -20,7 +21,7 @@ from typing import Protocol
 import numpy as np
 from numpy.typing import NDArray
 
-from streamhost.profile.driver import Lane, Speed
+from streamhost.profile.driver import Lane, Speed, middle_mean
 
 BLOCKS = (16, 32, 64, 128, 256, 512, 1024, 2048, 4096)
 TAIL_BLOCK = 64
@@ -136,7 +137,7 @@ def _round(lanes: Sequence[Lane], keys: Sequence[Key], timer: Timer, times: Time
         blocks = _blocks(lanes, key, timer)
         after = timer.calibrate()
         times.samples[key].append(Sample(
-            float(np.median(blocks)) / key[1], (before.chain + after.chain) / 2, max(before.crowding, after.crowding), blocks
+            middle_mean(blocks) / key[1], (before.chain + after.chain) / 2, max(before.crowding, after.crowding), blocks
         ))
         before = after
 
