@@ -2,7 +2,7 @@
 
 import pytest
 
-from streamhost.commands.compare_text import _title
+from streamhost.commands.compare_text import short_title
 from streamhost.commands.main import main
 from streamhost.commands.verdict_text import miss
 from streamhost.files import AudioWriter
@@ -48,4 +48,4 @@ def test_what_runs_away_slowly_is_told(tmp_path, capsys):
 ])
 def test_a_title_is_shortened_in_its_own_part(title, variations, shown):
     (preset,) = vary([parse_preset(TEXT.format(title=title))], variations)
-    assert _title(preset) == shown
+    assert short_title(preset) == shown

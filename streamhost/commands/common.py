@@ -37,8 +37,8 @@ report_option = click.option(
 )
 vary_option = click.option(
     "--vary", "variations", metavar="KEY=V1,V2", multiple=True,
-    help="Make a family of each preset, for instance structure.form=direct-1,transposed-2; in compare, structure.form=all "
-         "takes all forms that carry the filter. May be repeated.",
+    help="Make a family of each preset, for instance structure.form=direct-1,transposed-2; in compare and profile, "
+         "structure.form=all takes all forms that carry the filter. May be repeated.",
 )
 vary_one_option = click.option(
     "--vary", "variations", metavar="KEY=VALUE", multiple=True,

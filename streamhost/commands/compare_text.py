@@ -99,15 +99,20 @@ def _rest_row(one: Compared, figures: Figures) -> list[Cell]:
     ]
 
 
-def refused(refusals: Sequence[Refusal]) -> Iterator[str]:
-    """A sentence for each reason for which forms are not among those compared."""
+def refused(refusals: Sequence[Refusal], done: str = "compared") -> Iterator[str]:
+    """A sentence for each reason for which forms are not among those compared, or with which else was `done`."""
     by_reason: dict[str, list[str]] = {}
     for each in refusals:
         by_reason.setdefault(each.reason, []).append(each.preset.form)
     if by_reason:
-        yield "Not compared, for they cannot carry this filter:"
+        yield f"Not {done}, for they cannot carry this filter:"
     for reason, forms in by_reason.items():
         yield f"{', '.join(dict.fromkeys(forms))}: {reason}."
+
+
+def refused_document(refusals: Sequence[Refusal]) -> list[dict[str, str]]:
+    """The same for a program."""
+    return [{"form": each.preset.form, "title": each.preset.title, "reason": each.reason} for each in refusals]
 
 
 def _verdict(compared: Sequence[Compared]) -> Iterator[str]:
@@ -220,7 +225,7 @@ def document(
     return {
         "rate": info.rate, "input": source, "seed": seed_of(compared),
         "realizations": [_figures(one) for one in compared],
-        "refused": [{"form": each.preset.form, "title": each.preset.title, "reason": each.reason} for each in refusals],
+        "refused": refused_document(refusals),
     }
 
 

@@ -20,6 +20,7 @@ from streamhost.errors import RequestError
 
 if TYPE_CHECKING:
     from streamhost.presets import Preset
+    from streamhost.presets.realizing import Refusal
     from streamhost.profile import Core, Profile
     from streamhost.realization import Realization
 
@@ -28,12 +29,16 @@ MOST_CHANNELS = 64
 
 @dataclass(frozen=True)
 class Costed:
-    """What was asked for, as it is realized for the first number of channels, and what was found of all."""
+    """What was asked for, as it is realized for the first number of channels, and what was found of all.
+
+    refusals: of forms that were sought.
+    """
 
     presets: "tuple[Preset, ...]"
     realizations: "tuple[Realization, ...]"
     profile: "Profile"
     core: "Core | None"
+    refusals: "tuple[Refusal, ...]" = ()
 
 
 @click.command()
@@ -62,7 +67,7 @@ def profile(
     counts = _channels(channels)
     core = _core(cost)
     check_figures(json_file, None, force=force)
-    costed = _costed(tuple(presets_named(presets, variations)), counts, core, quick=quick)
+    costed = _costed(presets_named(presets, variations), counts, core, quick=quick)
     if problem := notice():
         click.echo(problem, err=True)
     if json_file != "-":
@@ -94,17 +99,23 @@ def _core(name: str | None) -> "Core | None":
     return load_core(resolve(name, "core"), name)
 
 
-def _costed(presets: "tuple[Preset, ...]", counts: tuple[int, ...], core: "Core | None", *, quick: bool) -> Costed:
-    from streamhost.presets.realizing import realize_presets
+def _costed(asked: "Sequence[Preset]", counts: tuple[int, ...], core: "Core | None", *, quick: bool) -> Costed:
+    """Everything realized for each number of channels, and timed together."""
+    from streamhost.commands.compare_text import refused
+    from streamhost.presets.realizing import realize_presets, realize_those_that_carry
     from streamhost.profile import profile
     from streamhost.profile.timing import QUICK_ROUNDS, ROUNDS
 
-    by_count = [realize_presets(presets, count) for count in counts] or [realize_presets(presets)]
-    asked = [[(one, count) for one, count in zip(alike, counts or (alike[0].diagram.channels,), strict=True)]
-             for alike in zip(*by_count, strict=True)]
-    for preset, ((first, _), *_others) in zip(presets, asked, strict=True):
-        first.check_samples(preset.source.name)
+    made, refusals = realize_those_that_carry(asked, counts[0] if counts else None)
+    if not made:
+        raise RequestError(" ".join(refused(refusals, "profiled")))
+    presets, first = (tuple(each) for each in zip(*made, strict=True))
+    others = [realize_presets(presets, count) for count in counts[1:]]
+    for preset, realization in made:
+        realization.check_samples(preset.source.name)
+    alike = [[(one, count) for one, count in zip(each, counts or (each[0].diagram.channels,), strict=True)]
+             for each in zip(first, *others, strict=True)]
     with Progress("profile", 1) as progress:
-        progress.step(f"{len(presets)} realizations")
-        found = profile(asked, core, rounds=QUICK_ROUNDS if quick else ROUNDS, report=progress.within)
-    return Costed(presets, tuple(each[0][0] for each in asked), found, core)
+        progress.step("1 realization" if len(made) == 1 else f"{len(made)} realizations")
+        found = profile(alike, core, rounds=QUICK_ROUNDS if quick else ROUNDS, report=progress.within)
+    return Costed(presets, first, found, core, tuple(refusals))

@@ -5,7 +5,7 @@ from itertools import pairwise
 
 from streamhost.commands.common import Cell, Column, ledger, printable
 from streamhost.commands.compare import label
-from streamhost.commands.compare_text import short_title
+from streamhost.commands.compare_text import refused, refused_document, short_title
 from streamhost.commands.documents import document_of
 from streamhost.commands.profile import Costed
 from streamhost.profile import Profiled, Timing
@@ -38,6 +38,7 @@ def text(costed: Costed) -> str:
         ledger(WORK, [_work_row(one) for one in found]),
         ledger(BOUNDS, [_bounds_row(one) for one in found]),
         "\n".join(_core(costed)),
+        " ".join(refused(costed.refusals, "profiled")),
         "\n".join(_method(costed)),
     ]
     return "\n\n".join(paragraph for paragraph in paragraphs if paragraph)
@@ -145,6 +146,7 @@ def document(costed: Costed) -> dict[str, object]:
         "method": document_of(costed.profile.method),
         "core": None if core is None else {"title": core.title, "clock_mhz": core.clock_mhz, "word_bits": core.word_bits,
                                            "accumulator_bits": core.accumulator_bits},
+        "refused": refused_document(costed.refusals),
         "realizations": [
             {"preset": preset.source.name, "title": preset.title, "decomposition": realization.decomposition,
              "form": realization.form, "format": realization.format.label, "rate": realization.rate, **document_of(found)}
