@@ -403,18 +403,20 @@ def test_the_table(capsys):
     assert main(["profile", "rumble-float32", "rumble-naive-16-bit", "--cost", "example-core", "--quick"]) == 0
     shown = capsys.readouterr().out
     lines = [" ".join(line.split()) for line in shown.splitlines()]
-    assert "1 Rumble filter, float32 transposed-2 · cascade · float32 1 64 10.00 0.0 0.048 2083 25.6 25.6 1.00" in lines
+    assert "1 Rumble filter, float32 transposed-2 · cascade · float32 2 8 5 20" in lines
+    assert "2 Rumble filter, all 16 bits (fails) direct-1 · cascade · 16x16+40 4 8 5 10" in lines
+    assert "1 1 64 10.00 0.0 0.048 2083 25.6 25.6 1.00" in lines
     assert "1 64, tail 30.00 0.0" in lines
-    second = next(line for line in lines if line.startswith("2 Rumble filter, all 16 bits (fails) direct-1"))
-    assert second.endswith(" 16x16+40 1 64 15.00 0.0 0.072 1389 38.4 38.4 1.50")
-    assert "2 5 4 0 1 1 10 5 4 8 5 10" in lines
+    assert "2 1 64 15.00 0.0 0.072 1389 38.4 38.4 1.50" in lines
+    assert "2 5 4 0 1 1 10 5" in lines
     # Cycles at the 4 GHz that two cycles in 0.5 ns are: 10 ns are 40, and 6 cycles of the table 1.5 ns.
     assert "1 12.0 6 2.8 loop 3.00 40.0 y → a1 → s1 → d1" in lines
     assert "2 6.0 6 5.0 loop 1.50 60.0 a1 → y → y1" in lines
     assert "2 5 4 0 2 1 10 5 8 35 3.36" in lines
     assert "7 interleaved rounds of 50 blocks" in shown
     assert "4.00 GHz" in shown
-    assert "Tail: silence" in shown
+    assert "it takes 1: 3.00 times as long" in shown
+    assert all(len(line) <= 160 for line in shown.splitlines() if "─" in line)
 
 
 @pytest.mark.usefixtures("clock")
@@ -442,6 +444,19 @@ def test_the_figures(tmp_path, capsys):
     assert first["timings"][0]["blocks"][2]["deadline_us"] == pytest.approx(1333.33, rel=1e-5)
     assert first["bounds"]["measured_cycles"] == pytest.approx(60.0)
     assert first["estimate"] is None
+
+
+@pytest.mark.usefixtures("clock")
+def test_what_does_not_fit_or_has_no_figures_is_told(tmp_path, capsys):
+    """430 cycles of 41.7 at 2 MHz; without figures for floats none."""
+    slow, bare = tmp_path / "slow.toml", tmp_path / "bare.toml"
+    shipped = resolve("example-core", "core").read_text("utf-8")
+    slow.write_text(shipped.replace("clock_mhz = 50", "clock_mhz = 2"), "utf-8")
+    bare.write_text(CORE, "utf-8")
+    assert main(["profile", "rumble-float32", "--cost", str(slow), "--quick"]) == 0
+    assert "1 does not fit: 1032 % of what there is, for one channel." in capsys.readouterr().out
+    assert main(["profile", "rumble-float32", "--cost", str(bare), "--quick"]) == 0
+    assert "1 has no estimate: the core states no float32_multiply and no float32_add." in capsys.readouterr().out
 
 
 @pytest.mark.parametrize(("arguments", "told"), [

@@ -14,15 +14,19 @@ from streamhost.profile.timing import LEAST_COUNTED
 SHOWN_BLOCKS = (64, 256, 1024)
 KINDS = ("multiply", "add", "shift", "round", "saturate", "load", "store", "frame")
 LONGEST_PATH = 8
+WHOLE = 100.0
 
+LANES = (
+    Column("lane"), Column("form · decomposition · format"), Column("state", "words"), Column("", "bytes"),
+    Column("coefficients", "words"), Column("", "bytes"),
+)
 TIME = (
-    Column(""), Column("lane"), Column("form · decomposition · format"), Column("channels"), Column("block", "frames"),
-    Column("time", "ns/frame", 2), Column("spread", "± %", 1), Column("deadline", "%", 3), Column("lanes", "a core", 0),
-    Column("99.9 %", "µs", 1), Column("worst", "µs", 1), Column("cost", "×", 2),
+    Column(""), Column("channels"), Column("block", "frames"), Column("time", "ns/frame", 2), Column("spread", "± %", 1),
+    Column("deadline", "%", 3), Column("lanes", "a core", 0), Column("99.9 %", "µs", 1), Column("worst", "µs", 1),
+    Column("cost", "×", 2),
 )
 WORK = (
     Column("multiply"), Column("add"), Column("shift"), Column("round"), Column("saturate"), Column("load"), Column("store"),
-    Column("state", "words"), Column("", "bytes"), Column("coefficients", "words"), Column("", "bytes"),
 )
 BOUNDS = (
     Column("loop", "cycles", 1), Column("in to out", "cycles", 0), Column("operations", "cycles", 1), Column("rules"),
@@ -34,7 +38,8 @@ def text(costed: Costed) -> str:
     """The whole for a terminal."""
     found = costed.profile.realizations
     paragraphs = [
-        ledger(TIME, list(_time_rows(costed)), numbered=False),
+        ledger(LANES, list(_lane_rows(costed))),
+        ledger(TIME, list(_time_rows(found)), numbered=False),
         ledger(WORK, [_work_row(one) for one in found]),
         ledger(BOUNDS, [_bounds_row(one) for one in found]),
         "\n".join(_core(costed)),
@@ -44,14 +49,19 @@ def text(costed: Costed) -> str:
     return "\n\n".join(paragraph for paragraph in paragraphs if paragraph)
 
 
-def _time_rows(costed: Costed) -> Iterator[list[Cell]]:
-    """The blocks that are shown, and the tail: of each realization, named once, and of each number of channels."""
-    whole = zip(costed.presets, costed.realizations, costed.profile.realizations, strict=True)
-    for number, (preset, realization, found) in enumerate(whole, 1):
-        rows = [row for timing in found.timings for row in _timing_rows(timing)]
+def _lane_rows(costed: Costed) -> Iterator[list[Cell]]:
+    for preset, realization, found in zip(costed.presets, costed.realizations, costed.profile.realizations, strict=True):
+        work = found.work
+        yield [short_title(preset), label(realization), work.state_words, work.state_bytes, work.coefficient_words,
+               work.coefficient_bytes]
+
+
+def _time_rows(found: Sequence[Profiled]) -> Iterator[list[Cell]]:
+    """The blocks that are shown, and the tail: of each realization, numbered once, and of each number of channels."""
+    for number, one in enumerate(found, 1):
+        rows = [row for timing in one.timings for row in _timing_rows(timing)]
         for place, row in enumerate(rows):
-            names: list[Cell] = [str(number), short_title(preset), label(realization)] if place == 0 else ["", "", ""]
-            yield [*names, *row]
+            yield [str(number) if place == 0 else "", *row]
 
 
 def _timing_rows(timing: Timing) -> Iterator[list[Cell]]:
@@ -67,8 +77,7 @@ def _timing_rows(timing: Timing) -> Iterator[list[Cell]]:
 
 def _work_row(one: Profiled) -> list[Cell]:
     work = one.work
-    return [work.multiplications, work.additions, work.shifts, work.roundings, work.saturations, work.loads, work.stores,
-            work.state_words, work.state_bytes, work.coefficient_words, work.coefficient_bytes]
+    return [work.multiplications, work.additions, work.shifts, work.roundings, work.saturations, work.loads, work.stores]
 
 
 def _bounds_row(one: Profiled) -> list[Cell]:
@@ -93,7 +102,7 @@ def _core(costed: Costed) -> Iterator[str]:
         return
     columns = (*(Column(kind, "cycles", 0) for kind in KINDS), Column("in all", "cycles", 0), Column("budget", "%", 2))
     rows: list[list[Cell]] = []
-    reasons = []
+    remarks = []
     for number, one in enumerate(costed.profile.realizations, 1):
         estimate = one.estimate
         assert estimate is not None, "a core was given"
@@ -101,11 +110,13 @@ def _core(costed: Costed) -> Iterator[str]:
         rows.append([*(estimate.by_kind.get(kind, 0.0) if known else None for kind in KINDS), estimate.cycles_per_frame,
                      estimate.budget_percent])
         if estimate.reason:
-            reasons.append(f"{number} has no estimate: {estimate.reason}.")
+            remarks.append(f"{number} has no estimate: {estimate.reason}.")
+        elif estimate.budget_percent is not None and estimate.budget_percent > WHOLE:
+            remarks.append(f"{number} does not fit: {estimate.budget_percent:.0f} % of what there is, for one channel.")
     yield printable(f"{core.title}, {core.clock_mhz:g} MHz, words of {core.word_bits} bits, accumulator of "
                     f"{core.accumulator_bits}: cycles of a frame and channel, and their share of those between two frames.")
     yield ledger(columns, rows)
-    yield from reasons
+    yield from remarks
 
 
 def _method(costed: Costed) -> Iterator[str]:
@@ -121,14 +132,22 @@ def _method(costed: Costed) -> Iterator[str]:
            "Spread: half of what the middle half of the rounds spans.")
     yield ("Deadline: the share of a block's time at the preset's rate. 99.9 % and worst: of all blocks as they came, with "
            "what else this machine did. Cost: against the cheapest at that length of block.")
-    if any(timing.tail for one in costed.profile.realizations for timing in one.timings):
-        yield "Tail: silence from states scaled into the subnormal numbers, set anew for each block."
+    if tails := list(_tails(costed.profile.realizations)):
+        yield ("Tail: silence from states scaled into the subnormal numbers, set anew for each block. Against noise it takes "
+               f"{', '.join(tails)} times as long.")
     yield ("Bounds: of one channel on a common 64-bit core by a stated table of latencies. Loop: cycles per frame around the "
            "slowest loop, however wide the core; operations: to begin them all, one by one. Took: at the calibrated clock.")
     if method.no_counters:
         yield f"Retired instructions and cycles: not given, since {method.no_counters}."
     else:
         yield "Retired instructions and cycles a frame: " + "; ".join(_retired(costed)) + "."
+
+
+def _tails(found: Sequence[Profiled]) -> Iterator[str]:
+    for number, one in enumerate(found, 1):
+        factors = [f"{timing.tail.times_normal:.2f}" for timing in one.timings if timing.tail is not None]
+        if factors:
+            yield f"{number}: {' and '.join(factors)}"
 
 
 def _retired(costed: Costed) -> Iterator[str]:
