@@ -9,7 +9,7 @@ from streamhost.commands.compare_text import refused, refused_document, short_ti
 from streamhost.commands.documents import document_of
 from streamhost.commands.profile import Costed
 from streamhost.profile import Profiled, Timing
-from streamhost.profile.timing import LEAST_COUNTED
+from streamhost.profile.timing import LEAST
 
 SHOWN_BLOCKS = (64, 256, 1024)
 KINDS = ("multiply", "add", "shift", "round", "saturate", "load", "store", "frame")
@@ -123,12 +123,13 @@ def _method(costed: Costed) -> Iterator[str]:
     method = costed.profile.method
     pinned = f"pinned to processor {method.pinned_to}" if method.pinned_to is not None else "not pinned to a processor"
     widths = sorted({(timing.channels, timing.width) for one in costed.profile.realizations for timing in one.timings})
+    doubtful = f": in {method.doubtful_percent:.0f} % of the figures, which are worth little" if method.doubtful_percent else ""
     at_once = ", ".join(f"{width} of {channels}" for channels, width in widths)
     yield (f"Timed: plain kernels on noise, called as the host calls them, channels at once: {at_once}; {pinned}; warmed up; "
            f"{method.rounds} interleaved rounds of {method.blocks_a_round} blocks.")
     yield (f"Time: the median of rounds, corrected by a calibration loop before and after each: {method.clock_ghz:.2f} GHz, "
            f"95 % of its readings within {method.drift_percent:.1f} %. In {method.shared_percent:.0f} % of the samples another "
-           f"loop found the core shared with other work; they count only where fewer than {LEAST_COUNTED} others are left. "
+           f"loop found the core shared with other work; they count only where fewer than {LEAST} others are left{doubtful}. "
            "Spread: half of what the middle half of the rounds spans.")
     yield ("Deadline: the share of a block's time at the preset's rate. 99.9 % and worst: of all blocks as they came, with "
            "what else this machine did. Cost: against the cheapest at that length of block.")

@@ -40,7 +40,7 @@ def profile(
 ) -> Profile:
     """What realizations cost: each as it is for one or more numbers of channels, (realization, channels).
 
-    rounds: at least 2; up to three times as many where the core is shared. MachineError where this system has no clock that
+    rounds: at least 2; up to five times as many where the core is shared. MachineError where this system has no clock that
     compiled code can read.
     """
     timer = timer or Machine()
@@ -51,7 +51,8 @@ def profile(
         times = timed(lanes, tails, timer, rounds, report)
         counts = [_count(lane, timer) for lane in lanes]
     method = Method(times.rounds, BLOCKS_A_ROUND, pinned, CYCLES_PER_STEP / times.chain, times.drift_percent,
-                    times.shared_percent, next((each.reason for each in counts), None))
+                    times.shared_percent, times.doubtful_percent,
+                    next((each.reason for each in counts), None))
     counted_rounds = {key: times.counted(key) for key in times.samples}
     timings = [_timing(place, lanes, times, counted_rounds, counts[place]) for place in range(len(lanes))]
     found, first = [], 0

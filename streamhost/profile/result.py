@@ -77,7 +77,8 @@ class Profiled:
 class Method:
     """How it was timed. clock_ghz: by the calibration chain. drift_percent: how far 95 % of its readings stayed to the median.
 
-    shared_percent: the samples in which something else ran on the core, which count only where too few others are left.
+    shared_percent: the samples in which something else ran on the core, which count only where too few others are left;
+    doubtful_percent: the figures that are made of such.
     no_counters: why the host counts neither instructions nor cycles, or None where it does.
     """
 
@@ -87,6 +88,7 @@ class Method:
     clock_ghz: float
     drift_percent: float
     shared_percent: float
+    doubtful_percent: float
     no_counters: str | None
 
 

@@ -4,7 +4,7 @@ Every round times a few blocks of every lane at every block length, the lanes ri
 turns from round to round; before and after each of them two loops tell how fast the processor runs and whether the core is
 shared. A round's figure is the mean of the middle half of its blocks (a clock may count in steps of 10 ns or more), brought to
 the speed that the processor had in the middle of the whole run. Rounds in which the core was shared count only where too few
-are left, and then the least shared do; up to three times as many rounds are made to find enough. What is told is the median of
+are left, and then the least shared do; up to five times as many rounds are made to find enough. What is told is the median of
 those that count.
 
 Worst block and 99.9 percentile are of all blocks, as they came: on a machine that does other work they tell of that as well.
@@ -26,9 +26,9 @@ from streamhost.profile.driver import Lane, Speed, middle_mean
 BLOCKS = (16, 32, 64, 128, 256, 512, 1024, 2048, 4096)
 TAIL_BLOCK = 64
 ROUNDS, QUICK_ROUNDS = 21, 7
-MORE_ROUNDS = 3
+MORE_ROUNDS = 5
 BLOCKS_A_ROUND = 50
-LEAST_COUNTED = 7
+ENOUGH, LEAST = 7, 3
 ALONE = 1.08
 """Up to so many times the least crowding a core counts as not shared: the loop scatters less, a neighbour makes it far more."""
 
@@ -92,15 +92,24 @@ class Times:
 
     def enough(self) -> bool:
         """Whether every series has enough samples of a core that was not shared."""
+        return min(self._alone_counts(), default=0) >= ENOUGH
+
+    @property
+    def doubtful_percent(self) -> float:
+        """How many of all series have so few of these that samples of a shared core had to count."""
+        counts = self._alone_counts()
+        return 100.0 * sum(count < LEAST for count in counts) / len(counts)
+
+    def _alone_counts(self) -> list[int]:
         limit = self.alone()
-        return all(sum(sample.crowding <= limit for sample in each) >= LEAST_COUNTED for each in self.samples.values())
+        return [sum(sample.crowding <= limit for sample in each) for each in self.samples.values()]
 
     def counted(self, key: Key) -> list[float]:
         """Nanoseconds a frame in the rounds that count, at the speed in the middle of the run."""
         limit, chain = self.alone(), self.chain
         least_first = sorted(self.samples[key], key=lambda sample: sample.crowding)
         alone = sum(sample.crowding <= limit for sample in least_first)
-        return [sample.ns_per_frame * chain / sample.chain for sample in least_first[: max(alone, LEAST_COUNTED)]]
+        return [sample.ns_per_frame * chain / sample.chain for sample in least_first[: max(alone, LEAST)]]
 
     def blocks(self, key: Key) -> NDArray[np.float64]:
         """Nanoseconds of every block, ascending, as they came."""
