@@ -26,8 +26,8 @@ output: in two's complement the running sum may wrap as long as the final sum fi
 output and nothing else, so new coefficients of equal gain at 0 Hz disturb no constant signal.
 
 Fails: poles near z = 1. The rounding passes through 1 / A, which is large there (low frequencies at a high rate); a
-longer state or error feedback helps. It needs the most memory. Drawn whole at a high order, the slightest change of a
-coefficient moves the poles far: divide such a filter into a cascade.
+longer state or error feedback helps. With M = N it needs twice the memory of direct-2. Drawn whole at a high order, the
+slightest change of a coefficient moves the poles far: divide such a filter into a cascade.
 
 Arithmetic: a long accumulator that may wrap (16x16+40, 24x24+56); below some 200 Hz a state of twice the length
 (state and operand, as in 48x24+56). In floating point as good as any.

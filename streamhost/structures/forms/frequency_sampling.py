@@ -11,7 +11,7 @@ for L taps b, with the samples taken on the circle of the resonators, so that th
     ek = 2 Re Hk / L,  hk = -2 r Re(Hk e^(-j w)) / L,  ak = -2 r cos w,  rk = r^2
     e0 = H0 / L,  a0 = -r;  at half the rate +r
 
-drawn for three taps:
+drawn with the resonator of 0 Hz and that of the first pair; the others stand below and join the sum alike:
 
     x --+------>(+)--- v ---+---+---e0---->(+)-----+-----------> (+)
         |      - ^          |   |           ^      |              |

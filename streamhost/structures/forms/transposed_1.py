@@ -30,7 +30,8 @@ Good at: comparison with transposed-2. The zeros work on v with a delay line of 
 waits for the other.
 
 Fails: v is the input through 1 / A, as w is in direct-2, and clips where it is multiplied: scale it (scaling l2) or
-give the signal more integer bits. The most roundings and the most memory of the five.
+give the signal more integer bits. A second-order section has five roundings, where direct-1 has one, and four words of
+memory, where transposed-2 has two.
 
 Arithmetic: floating point. In fixed point every stored sum is rounded, and the pre-sum v needs a longer operand.
 
