@@ -281,16 +281,25 @@ def realize(
     filters = (filter,) if isinstance(filter, Filter) else _of_channels(filter)
     if not isinstance(format, Fixed | Float | str):
         raise FormatError(f"format = {format!r} is no Fixed, no Float and no name of an arithmetic.")
-    if (poles := max(each.unstable_poles() for each in filters)) and not allow_unstable:
-        lie = "lies" if poles == 1 else "lie"
-        raise FilterError(
-            f"The filter as asked is unstable: {poles} of its poles {lie} on or outside the unit circle. State "
-            f"allow_unstable = true to run it all the same."
-        )
+    if not allow_unstable:
+        _check_stable(filters)
     arithmetic = named_format(format) if isinstance(format, str) else format
     built = build(filters, form=form, decomposition=decomposition, pairing=pairing, ordering=ordering, scaling=scaling,
                   outputs=outputs)
     return Realization(filters, built, _with_codes(filters, arithmetic))
+
+
+def _check_stable(filters: Sequence[Filter]) -> None:
+    worst = max(filters, key=Filter.unstable_poles)
+    if not (poles := worst.unstable_poles()):
+        return
+    lie = "lies" if poles == 1 else "lie"
+    cancelled = worst.cancelled_poles()
+    but = f" Zeros cancel {cancelled} of them in the response, and nothing of what their loop loses." if cancelled else ""
+    raise FilterError(
+        f"The filter as asked is unstable: {poles} of its poles {lie} on or outside the unit circle.{but} State "
+        f"allow_unstable = true to run it all the same."
+    )
 
 
 def _of_channels(given: object) -> tuple[Filter, ...]:

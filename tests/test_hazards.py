@@ -4,6 +4,7 @@ import pytest
 
 from streamhost import Builder, Filter, Fixed, Float, realize
 from streamhost.diagram.builder import minus
+from streamhost.errors import FilterError
 from streamhost.formats import Format, named_format
 from streamhost.program.hazards import hazards_of
 from streamhost.program.poles import cancelled_on_circle, on_and_outside
@@ -49,6 +50,20 @@ def test_it_is_told_of_a_filter_given_so_and_not_of_an_integrator() -> None:
     (hazard,) = whole([1, *[0] * 7, -1])
     assert "is cancelled by zeros, and the response is finite" in hazard
     assert whole([1]) == ()
+
+
+def test_a_refusal_says_that_zeros_cancel_the_pole() -> None:
+    """Of 1 - z^-8 over 1 - z^-1, of the same behind a delay, of zeros and poles; not of an integrator, nor of 0 / A."""
+    filters = [Filter.from_coefficients([1, *[0] * 7, -1], [1, -1], rate=48000),
+               Filter.from_coefficients([0, 1, *[0] * 7, -1], [1, -1], rate=48000),
+               Filter.from_zeros_poles([1, -1], [1, 0.5], 1.0, rate=48000)]
+    assert [each.cancelled_poles() for each in filters] == [1, 1, 1]
+    for each in filters:
+        with pytest.raises(FilterError, match="Zeros cancel 1 of them in the response, and nothing of what their loop"):
+            realize(each)
+    for b in ([1], [0], [1, 1]):
+        assert Filter.from_coefficients(b, [1, -1], rate=48000).cancelled_poles() == 0
+    assert Filter.from_coefficients([1, -2.5], [1, -3, 1.25], rate=48000).cancelled_poles() == 1  # poles 2.5 and 0.5
 
 
 def test_a_pole_cancelled_beside_one_that_is_heard() -> None:

@@ -261,6 +261,11 @@ class Filter:
         own = sum(stability.unstable_poles(factor) for factor in self.factors)
         return own + sum(branch.filter.unstable_poles() for branch in self.branches)
 
+    def cancelled_poles(self) -> int:
+        """How many of those are cancelled exactly by zeros of the polynomials, or zeros and poles, that they are given with."""
+        own = sum(stability.cancelled_poles(factor) for factor in self.factors)
+        return own + sum(branch.filter.cancelled_poles() for branch in self.branches)
+
     def _check_one_output(self, what: str) -> None:
         if self.branches:
             raise FilterError(

@@ -1,7 +1,9 @@
 """Stability decided exactly, on the coefficients or poles as they stand in float64."""
 
+from collections import Counter
 from collections.abc import Iterable, Iterator
 from fractions import Fraction
+from itertools import dropwhile
 from math import lcm
 
 from streamhost.filters.exact import Polynomial, exactly, stripped, to_multiple
@@ -99,6 +101,18 @@ def unstable_poles(factor: Polynomials | ZerosPoles) -> int:
     if is_stable(denominator):
         return 0
     return max(1, roots_outside(factor.a[: len(denominator)]))
+
+
+def cancelled_poles(factor: Polynomials | ZerosPoles) -> int:
+    """How many of the unstable poles of a factor its own zeros cancel exactly."""
+    if isinstance(factor, ZerosPoles):
+        shared_roots = Counter(factor.zeros) & Counter(factor.poles)
+        return sum(Fraction(p.real) ** 2 + Fraction(p.imag) ** 2 >= 1 for p in shared_roots.elements())
+    if not unstable_poles(factor) or not any(factor.b):
+        return 0
+    numerator = exactly(dropwhile(lambda value: value == 0, factor.b))
+    shared = common_divisor(stripped(exactly(factor.a)), stripped(numerator))
+    return sum(roots_on_and_outside(shared))
 
 
 def roots_on_and_outside(ascending: Polynomial) -> tuple[int, int]:
