@@ -72,7 +72,8 @@ def test_help_shows_every_command_with_its_line(arguments, capsys):
     shown = " ".join(capsys.readouterr().out.split())
     for name, entry in COMMANDS.items():
         assert f"{name} {entry.help}" in shown
-    assert "0 done; 1 done, and a limit is not met; 2 the request is wrong; 3 the machine failed us." in shown
+    assert ("0 done; 1 done, and a limit is not met; 2 the request is wrong; 3 the machine failed us; 130 interrupted; "
+            "141 nobody reads the output; 70 a fault of ours.") in shown
 
 
 def test_version(capsys):
