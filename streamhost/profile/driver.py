@@ -139,15 +139,12 @@ class Task:
 
 @dataclass(frozen=True)
 class Speed:
-    """Nanoseconds that a step of the calibration chain takes, and one of the crowd."""
+    """Nanoseconds that a step of the calibration chain takes now; how many such steps one of the crowd takes, which tells what
+    else runs on the core; and the least that it took in any of the short runs."""
 
     chain: float
-    crowd: float
-
-    @property
-    def crowding(self) -> float:
-        """How long the crowd takes for its clock: what else runs on the core."""
-        return self.crowd / self.chain
+    crowding: float
+    least_crowding: float
 
 
 class Machine:
@@ -170,7 +167,9 @@ class Machine:
         for _ in range(REPEATS):
             chain.append(self._chain(STEPS, START, out))
             crowd.append(self._crowd(STEPS, START, out))
-        return Speed((median(chain) - self._clock_ns) / STEPS, (median(crowd) - self._clock_ns) / STEPS)
+        own = self._clock_ns
+        step = median(chain) - own
+        return Speed(step / STEPS, (median(crowd) - own) / step, (min(crowd) - own) / step)
 
     def block_times(self, lane: Lane, frames: int, blocks: int, *, tail: bool = False) -> NDArray[np.float64]:
         """Nanoseconds of each of so many blocks, one after the other, less what reading the clock takes."""

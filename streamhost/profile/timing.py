@@ -47,11 +47,13 @@ class Timer(Protocol):
 
 @dataclass(frozen=True)
 class Sample:
-    """What a round found for one lane at one block length. chain: ns a step around it; crowding: the worse of the two."""
+    """What a round found for one lane at one block length. chain: ns a step around it; crowding: the worse of the two, and the
+    least of all short runs in them."""
 
     ns_per_frame: float
     chain: float
     crowding: float
+    least_crowding: float
     blocks: NDArray[np.float64]
 
 
@@ -88,7 +90,7 @@ class Times:
 
     def alone(self) -> float:
         """The crowding up to which a core counts as not shared."""
-        return ALONE * float(np.percentile([sample.crowding for sample in self._all()], 2.0))
+        return ALONE * float(np.percentile([sample.least_crowding for sample in self._all()], 1.0))
 
     def enough(self) -> bool:
         """Whether every series has enough samples of a core that was not shared."""
@@ -146,7 +148,8 @@ def _round(lanes: Sequence[Lane], keys: Sequence[Key], timer: Timer, times: Time
         blocks = _blocks(lanes, key, timer)
         after = timer.calibrate()
         times.samples[key].append(Sample(
-            middle_mean(blocks) / key[1], (before.chain + after.chain) / 2, max(before.crowding, after.crowding), blocks
+            middle_mean(blocks) / key[1], (before.chain + after.chain) / 2, max(before.crowding, after.crowding),
+            min(before.least_crowding, after.least_crowding), blocks,
         ))
         before = after
 
