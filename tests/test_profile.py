@@ -349,7 +349,7 @@ def test_a_core_that_is_hardly_ever_alone_gets_more_rounds():
 
 
 def test_figures_of_a_core_that_is_nearly_never_alone_are_doubtful():
-    """Alone while warming up and in two rounds only; the third least shared sample counts too, and the median is still one of the two."""
+    """Alone while warming up and in two rounds only; a third sample counts too, and the median is one of the two."""
     clock = Clock({"a": 10.0, "b": 15.0}, shared=lambda call: call > 6 * len(BLOCKS))
     times = timed(["a", "b"], [False, False], clock, 7, profiling.unheard)
     assert times.doubtful_percent == 100.0
