@@ -30,10 +30,10 @@ def kernel_source(program: Program, variant: Variant = PLAIN) -> str:
 def kernel_width(program: Program, channels: int) -> int:
     """How many of so many channels a kernel of this program had best run at once, by measurement (`tests/benchmarks/lanes.py`).
 
-    Words of 128 bits never gain; integers less than floats, for want of short vector multiplications and shifts.
+    Words of 128 bits never gain, other integers from four channels on, for want of short vector multiplications and shifts.
     """
     fixed = isinstance(program.format, Fixed)
-    if fixed and any(number.carrier > 64 for number in program.numbers):
+    if fixed and (channels < 4 or any(number.carrier > 64 for number in program.numbers)):
         return 1
     return 1 << (min(channels, 8 if fixed else 16).bit_length() - 1)
 
