@@ -71,6 +71,21 @@ def test_a_missing_library_is_told_with_the_remedy(monkeypatch: pytest.MonkeyPat
         portaudio.Stream(portaudio.Wanted(48000.0, 128, 2), 0, 0)
 
 
+@pytest.mark.parametrize(
+    ("outputs", "said"),
+    [([], r"There is no sound card to play on\. .*--no-device"), ([2], r'the sound card "card" at 48000 Hz with 2 channels out')],
+)
+def test_a_card_that_cannot_be_opened_is_told(outputs: list[int], said: str, monkeypatch: pytest.MonkeyPatch) -> None:
+    def refuse(**parameters: Any) -> None:
+        raise ValueError("No output device\nmatching")
+
+    package = SimpleNamespace(query_devices=lambda: [{"max_output_channels": each} for each in outputs],
+                              RawOutputStream=refuse)
+    monkeypatch.setattr(portaudio, "library", lambda: package)
+    with pytest.raises(MachineError, match=said):
+        portaudio.Stream(portaudio.Wanted(48000.0, 128, 2, device="card"), 0, 0)
+
+
 def test_the_private_part_of_the_package_is_not_needed() -> None:
     """Without its base class the stream is opened with a Python callback."""
     given: dict[str, Any] = {}

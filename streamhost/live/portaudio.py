@@ -100,8 +100,11 @@ class Stream:
     """
 
     def __init__(self, wanted: Wanted, step: int, host: int) -> None:
+        sound = library()
         with told(wanted):
-            self._stream, callback = _open(library(), wanted, step, host)
+            if not any(each["max_output_channels"] for each in sound.query_devices()):
+                raise MachineError(f"There is no sound card to play on. {OTHERWISE}")
+            self._stream, callback = _open(sound, wanted, step, host)
             self._stream.start()
             self.opened = self._facts(wanted, callback)
 
