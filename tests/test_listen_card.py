@@ -75,7 +75,7 @@ def test_an_unattended_run_is_what_render_gives_to_the_bit(server: SoundServer, 
     assert np.array_equal(sound[up], read_all(exact)[0][count[up], 0].astype(np.float32))
     figures = json.loads(told.read_text())
     assert (figures["callback"], figures["block_frames"]) == ("compiled", 128)
-    assert RATE <= figures["frames"] == 128 * figures["blocks"] <= 1.5 * RATE
+    assert RATE <= figures["frames"] == 128 * figures["blocks"] <= 2.5 * RATE
     assert 0 < figures["step_p50_us"] <= figures["step_p999_us"] <= figures["step_max_us"]
     assert [(each["frame"], each["lane"]) for each in figures["changes"]] == [(20000, 2), (30000, 1)]
     assert (figures["card"]["device"], figures["card"]["losses"]) == ("vsink", [])
