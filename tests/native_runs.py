@@ -12,6 +12,7 @@ from streamhost.program.definition import FixedDefinition
 from streamhost.program.native.kernel import Memory, Variant, compile_kernel, trace_width
 from streamhost.program.program import Program, RoundArithmetic
 from streamhost.program.run import input_code
+from streamhost.program.sources import traced_roundings
 
 
 @dataclass(frozen=True)
@@ -50,6 +51,14 @@ class CountingDefinition(FixedDefinition):
     def __init__(self, program: Program, channel: int = 0) -> None:
         super().__init__(program, channel)
         self.corners: Counter[str] = Counter()
+        self.residues: list[list[float]] = []
+
+    def step(self, code: int) -> tuple[int, ...]:
+        """Also writes down what each rounding that drops bits has dropped, over its register's step."""
+        outputs = super().step(code)
+        self.residues.append([self.dropped[index] / 2.0 ** self.program.arithmetic[index].drop
+                              for index in traced_roundings(self.program)])
+        return outputs
 
     def evaluate(self, index: int, code: int) -> int:
         node = self.nodes[index]

@@ -6,6 +6,7 @@ from random import Random
 
 import numpy as np
 import pytest
+from form_filters import built
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from native_runs import busy, codes_of, run_counting, run_native
@@ -13,16 +14,19 @@ from random_diagrams import random_diagram
 from random_formats import random_format
 
 import streamhost as sh
+from streamhost.diagram import Diagram
 from streamhost.diagram.nodes import Taps
-from streamhost.errors import FormatError
+from streamhost.errors import FormatError, StructureError
 from streamhost.formats import OVERFLOWS, ROUNDINGS, Fixed, Float, Format
 from streamhost.program.definition import FixedDefinition
+from streamhost.program.float_definition import FloatDefinition
 from streamhost.program.ideal import ideal_program
 from streamhost.program.native.kernel import Variant
 from streamhost.program.native.meters import meter_places
 from streamhost.program.program import Program
 from streamhost.program.run import input_code, lower, run_definition
 from streamhost.program.sources import traced_roundings
+from streamhost.structures import forms
 
 FORMS = ("direct-1", "direct-1-swapped", "direct-2", "transposed-1", "transposed-2")
 
@@ -54,19 +58,26 @@ LONG_FORMATS: dict[str, Format] = {
 }
 
 
-def agree(program: Program, x: np.ndarray, *, plain: bool = True) -> Counter[str]:
-    """Plain and metered kernel and definition agree, meters included; the corners that were taken."""
+def agree(program: Program, x: np.ndarray, *, plain: bool = True, traced: bool = False) -> Counter[str]:
+    """Plain and metered kernel and definition agree, meters included; the corners that were taken.
+
+    `traced`: the metered kernel also writes the residue of every rounding, in floating point every value, and they agree.
+    """
     long = isinstance(program.format, Fixed) and max(program.format.input.word.bits, program.format.output.word.bits) > 53
     codes = None if isinstance(program.format, Float) else codes_of(program, x)
     read = codes if long else x
-    metered = run_native(program, read, Variant(codes=long, metered=True))
+    metered = run_native(program, read, Variant(codes=long, metered=True, traced=traced))
     if plain:
         np.testing.assert_array_equal(run_native(program, read, Variant(codes=long)).y, metered.y)
     if codes is None:
         np.testing.assert_array_equal(metered.y, run_definition(program, x))
+        if traced:
+            np.testing.assert_array_equal(metered.trace, every_value(program, x))
         return Counter()
     y, corners, evaluators = run_counting(program, codes)
     np.testing.assert_array_equal(metered.y, y if long else y * 2.0**-program.format.output.word.fraction)
+    if traced and evaluators[0].residues[0]:
+        np.testing.assert_array_equal(metered.trace, np.stack([each.residues for each in evaluators], axis=1))
     counted: Counter[int] = Counter()
     for evaluator in evaluators:
         counters = evaluator.counters
@@ -85,6 +96,17 @@ def filter_of_two_sections() -> sh.Filter:
     """Low poles and zeros: large inner values, and every term there."""
     return sh.Filter.from_sections(
         [[0.45, -0.3, 0.25, 1, -1.6, 0.75], [0.3, 0.25, -0.5, 1, 0.9, 0.5]], rate=48000)
+
+
+def every_value(program: Program, x: np.ndarray) -> np.ndarray:
+    """What the definition has at each node, (frames, channels, nodes)."""
+    values = np.empty((*x.shape, len(program.nodes)))
+    for channel in range(x.shape[1]):
+        evaluator = FloatDefinition(program, channel)
+        for n, value in enumerate(np.where(np.isnan(x[:, channel]), 0.0, x[:, channel])):
+            evaluator.step(float(value))
+            values[n, channel] = [evaluator.value[index] for index in range(len(program.nodes))]
+    return values
 
 
 @pytest.mark.parametrize("form", FORMS)
@@ -107,6 +129,34 @@ def test_kernels_of_long_words_agree_with_the_definition(form: str, name: str) -
 def test_kernels_agree_with_the_definition_for_whole_filters(form: str) -> None:
     for format in (Fixed("Q1.23", coefficients={"bits": 24}), Float("float32")):
         agree(sh.realize(filter_of_two_sections(), form=form, decomposition="whole", format=format).program, busy(240, 1, 6))
+
+
+EVERY_FORM: dict[str, Format] = {
+    "wrapping, dithered": Fixed("Q1.15", coefficients={"bits": 20}, overflow="wrap", dither="tpdf", dither_seed=9,
+                                allow_vanishing=True),
+    "saturating accumulator, toward zero": Fixed("Q1.15", coefficients={"bits": 20}, rounding="toward-zero",
+                                                 accumulator={"word": "Q1.31", "overflow": "saturate"},
+                                                 allow_vanishing=True),
+    "48x24+56": Fixed(arithmetic="48x24+56", allow_vanishing=True),
+    "float32 fused": Float("float32", fused=True),
+}
+CARRIED = ("peak at 3 kHz", "notch at 500 Hz", "even symmetry, odd length", "taps", "moving average")
+"""One of which every form carries whole; the first that it does is held against the definition."""
+
+
+@pytest.mark.parametrize("form", forms())
+def test_metered_and_traced_kernels_of_every_form_agree_with_the_definition(form: str) -> None:
+    drawn = next(found for found in (built_whole(form, which) for which in CARRIED) if found is not None)
+    for format in EVERY_FORM.values():
+        agree(lower(drawn, format), busy(60, 1, seed=11), plain=False, traced=True)
+
+
+def built_whole(form: str, which: str) -> Diagram | None:
+    try:
+        return built(form, "whole", which).diagram
+    except StructureError as error:
+        assert "cannot carry" in str(error)
+        return None
 
 
 @pytest.mark.parametrize("rounding", ROUNDINGS)
