@@ -26,20 +26,16 @@ _KINDS: dict[Kind, _Shipped] = {
 }
 
 
-def presets_dir() -> Path:
-    """The folder of the shipped presets."""
-    return _folder(_KINDS["preset"])
-
-
-def samples_dir() -> Path:
-    """The folder of the shipped recordings."""
-    return _folder(_KINDS["sample"])
+def folder(kind: Kind) -> Path:
+    """Inside an installed package; at the root of the repository where the package is used from there."""
+    shipped, package = _KINDS[kind], Path(__file__).parent
+    installed = package / shipped.in_package
+    return installed if installed.is_dir() else package.parent / shipped.in_repository
 
 
 def names(kind: Kind) -> list[str]:
     """The shipped names, sorted, without extension; those in sub-folders as "folder/name"."""
-    folder = _folder(_KINDS[kind])
-    return [file.relative_to(folder).with_suffix("").as_posix() for file in _files(kind)]
+    return [file.relative_to(folder(kind)).with_suffix("").as_posix() for file in _files(kind)]
 
 
 def resolve(name: str | Path, kind: Kind) -> Path:
@@ -60,27 +56,19 @@ def resolve(name: str | Path, kind: Kind) -> Path:
 
 
 def _answers_to(file: Path, name: str, kind: Kind) -> bool:
-    relative = file.relative_to(_folder(_KINDS[kind]))
+    relative = file.relative_to(folder(kind))
     return name in (relative.as_posix(), relative.with_suffix("").as_posix(), file.name, file.stem)
 
 
-def _folder(shipped: _Shipped) -> Path:
-    """Inside an installed package; at the root of the repository where the package is used from there."""
-    package = Path(__file__).parent
-    installed = package / shipped.in_package
-    return installed if installed.is_dir() else package.parent / shipped.in_repository
-
-
 def _files(kind: Kind) -> list[Path]:
-    shipped = _KINDS[kind]
-    folder = _folder(shipped)
-    return sorted(file for file in folder.rglob("*")
-                  if file.suffix in shipped.extensions and file.relative_to(folder).parts[0] != shipped.without)
+    shipped, inside = _KINDS[kind], folder(kind)
+    return sorted(file for file in inside.rglob("*")
+                  if file.suffix in shipped.extensions and file.relative_to(inside).parts[0] != shipped.without)
 
 
 def _refusal(name: str, kind: Kind, found: Sequence[Path]) -> PresetError | AudioFileError:
     if found:
-        several = ", ".join(file.relative_to(_folder(_KINDS[kind])).as_posix() for file in found)
+        several = ", ".join(file.relative_to(folder(kind)).as_posix() for file in found)
         message = f"{name}: several shipped files have this name: {several}. Give the whole name of one."
     else:
         stem = name.removesuffix(Path(name).suffix)

@@ -3,10 +3,11 @@
 from functools import cache
 
 import numpy as np
+from error_norms import norms_to_output
 
 from streamhost import Filter, design
 from streamhost.diagram import Diagram
-from streamhost.diagram.norms import norms_to_output, powers_from_input, responses_to_output
+from streamhost.diagram.norms import powers_from_input, responses_to_output
 from streamhost.errors import StructureError
 from streamhost.structures import Built, build
 

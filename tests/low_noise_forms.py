@@ -1,11 +1,11 @@
 """What the tests of the low-noise forms share: random filters, the bound of float64's rounding, Gramians, noise gains."""
 
 import numpy as np
+from error_norms import noise_gains
 from scipy import linalg
 
 from streamhost import Filter, Fixed, design
 from streamhost.diagram import Diagram
-from streamhost.diagram.norms import noise_gains
 from streamhost.filters import Polynomials
 from streamhost.formats import named_format
 from streamhost.measure.predicted import predicted_noise

@@ -3,9 +3,9 @@
 import re
 
 import numpy as np
+from error_norms import norms_to_output
 
 from streamhost import Fixed, design, realize
-from streamhost.diagram.norms import norms_to_output
 from streamhost.structures import form
 
 RATE = 48000

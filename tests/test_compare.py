@@ -7,13 +7,12 @@ import os
 import numpy as np
 import pytest
 
-from streamhost import load_preset, realize
+from streamhost import load_preset, realize, shipped
 from streamhost.commands.compare_files import LONGEST_VARIED
 from streamhost.commands.main import main
 from streamhost.files import AudioWriter, read_all
 from streamhost.measure import Measurement
 from streamhost.program.ideal import ideal_program, quantized_input
-from streamhost.shipped import presets_dir
 from streamhost.signals import white
 
 RATE = 48000
@@ -65,7 +64,7 @@ def figures_of(capsys, *arguments, status=0):
 
 
 def test_the_shipped_presets_on_the_shipped_audio(tmp_path, capsys):
-    names = sorted(path.stem for path in presets_dir().glob("rumble-*.toml"))
+    names = sorted(path.stem for path in shipped.folder("preset").glob("rumble-*.toml"))
     folder, figures = tmp_path / "compared", tmp_path / "figures.json"
     assert main(["compare", *names, "--input", "plucked", "--output", str(folder), "--json", str(figures)]) == 0
     shown = capsys.readouterr().out

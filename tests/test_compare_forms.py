@@ -9,13 +9,13 @@ from streamhost.commands.compare_text import refused
 from streamhost.commands.main import main
 from streamhost.presets import vary
 from streamhost.presets.realizing import realize_those_that_carry
-from streamhost.shipped import presets_dir
+from streamhost.shipped import folder
 
 FINITE = {"folded", "fir-lattice", "running-sum", "frequency-sampling"}
 
 
 def test_forms_that_are_sought_may_be_refused():
-    preset = load_preset(presets_dir() / "rumble-double-state.toml")
+    preset = load_preset(folder("preset") / "rumble-double-state.toml")
     family = vary([preset], ["structure.form=all"])
     assert [one.form for one in family] == list(forms())
     made, refusals = realize_those_that_carry(family, 1)
@@ -32,9 +32,9 @@ def test_forms_that_are_sought_may_be_refused():
 @pytest.mark.slow
 def test_one_filter_in_all_forms_that_carry_it_and_in_one_of_the_users_own(tmp_path, capsys):
     own, asked = tmp_path / "offset.py", tmp_path / "rumble.toml"
-    tutorial = (presets_dir().parent / "README.md").read_text("utf-8").split("say `offset.py`:\n\n```python\n")[1]
+    tutorial = (folder("preset").parent / "README.md").read_text("utf-8").split("say `offset.py`:\n\n```python\n")[1]
     own.write_text(tutorial.split("```")[0], "utf-8")
-    shipped = (presets_dir() / "rumble-double-state.toml").read_text("utf-8")
+    shipped = (folder("preset") / "rumble-double-state.toml").read_text("utf-8")
     asked.write_text(shipped.replace('"Q2.30"', '"Q6.26"').partition("[limits]")[0], "utf-8")
     assert main(["compare", str(asked), "--input", "plucked", "--structures", str(own), "--vary", "structure.form=all",
                  "--json", "-"]) == 0

@@ -19,15 +19,14 @@ from diagram_examples import (
     second_order,
     transposed_2,
 )
+from error_norms import noise_gains, norms_to_output
 from hypothesis import given
 from random_diagrams import diagrams
 
 from streamhost.diagram import Builder, Diagram, minus
 from streamhost.diagram.norms import (
     Norms,
-    noise_gains,
     norms_from_input,
-    norms_to_output,
     power_response,
     powers_from_input,
     responses_from_input,

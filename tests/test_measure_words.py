@@ -10,9 +10,9 @@ from streamhost import Fixed, load_preset, realize
 from streamhost.commands.main import main
 from streamhost.files import AudioWriter
 from streamhost.measure import limit_band, limit_signal, measure
-from streamhost.shipped import presets_dir
+from streamhost.shipped import folder
 
-RUMBLE = load_preset(presets_dir() / "rumble-naive-24-bit.toml")
+RUMBLE = load_preset(folder("preset") / "rumble-naive-24-bit.toml")
 
 
 @pytest.mark.parametrize(("keys", "ideal"), [
@@ -37,7 +37,7 @@ def test_words_that_no_sample_holds_are_refused_before_anything_is_written(
     tmp_path: Path, capsys: pytest.CaptureFixture[str]
 ) -> None:
     preset, given, out = (str(tmp_path / name) for name in ("long.toml", "in.wav", "out.wav"))
-    text = (presets_dir() / "rumble-naive-24-bit.toml").read_text(encoding="utf-8")
+    text = (folder("preset") / "rumble-naive-24-bit.toml").read_text(encoding="utf-8")
     format = 'signal = "Q1.63"\ninput = "Q1.31"\ncoefficients = "Q2.30"'
     Path(preset).write_text(text.replace('arithmetic = "24x24+56"', format), encoding="utf-8")
     with AudioWriter(given, rate=48000, channels=1, subtype="pcm16") as writer:

@@ -54,7 +54,7 @@ def test_an_installed_copy_finds_what_it_ships(wheel: Path, tmp_path: Path) -> N
     run("-m", "pip", "install", "--quiet", "--no-deps", "--no-index", "--target", str(target), str(wheel))
     code = (
         f"import sys; sys.path.insert(0, {str(target)!r}); from streamhost import shipped; "
-        "print(shipped.presets_dir(), shipped.samples_dir(), sep='\\n')"
+        "print(shipped.folder('preset'), shipped.folder('sample'), sep='\\n')"
     )
     presets, samples = run("-c", code, cwd=tmp_path).splitlines()
     assert Path(presets) == target / "streamhost" / "presets_shipped"
@@ -64,5 +64,5 @@ def test_an_installed_copy_finds_what_it_ships(wheel: Path, tmp_path: Path) -> N
 
 
 def test_a_checkout_finds_what_it_ships() -> None:
-    assert shipped.presets_dir() == ROOT / "presets"
-    assert shipped.samples_dir() == ROOT / "audio_samples"
+    assert shipped.folder("preset") == ROOT / "presets"
+    assert shipped.folder("sample") == ROOT / "audio_samples"

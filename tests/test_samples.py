@@ -24,7 +24,7 @@ RATE = 48000
 
 
 def script() -> ModuleType:
-    spec = importlib.util.spec_from_file_location("make_samples", shipped.samples_dir() / "make.py")
+    spec = importlib.util.spec_from_file_location("make_samples", shipped.folder("sample") / "make.py")
     assert spec is not None
     assert spec.loader is not None
     module = importlib.util.module_from_spec(spec)
@@ -47,12 +47,12 @@ def test_the_script_makes_the_same_bytes_again(tmp_path: Path) -> None:
     for name, again in made.items():
         assert np.array_equal(again, codes(name))  # not one code may differ
         make.write(tmp_path / name, again)
-        assert (tmp_path / name).read_bytes() == (shipped.samples_dir() / name).read_bytes()
+        assert (tmp_path / name).read_bytes() == (shipped.folder("sample") / name).read_bytes()
 
 
 @pytest.mark.parametrize("name", DIGESTS)
 def test_the_recordings_are_the_ones_that_were_heard(name: str) -> None:
-    with wave.open(str(shipped.samples_dir() / name)) as file:
+    with wave.open(str(shipped.folder("sample") / name)) as file:
         assert hashlib.sha256(file.readframes(file.getnframes())).hexdigest() == DIGESTS[name]
 
 
@@ -135,7 +135,7 @@ def test_speech_has_formants_that_move() -> None:
 
 
 def test_a_shipped_recording_is_found_with_or_without_its_extension() -> None:
-    chord = shipped.samples_dir() / "chord.wav"
+    chord = shipped.folder("sample") / "chord.wav"
     assert shipped.resolve("chord", "sample") == chord
     assert shipped.resolve("chord.wav", "sample") == chord
     assert shipped.names("sample") == ["chord", "drums", "plucked", "speech"]
@@ -144,7 +144,7 @@ def test_a_shipped_recording_is_found_with_or_without_its_extension() -> None:
 def test_a_file_as_given_comes_first_and_a_folder_does_not(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.chdir(tmp_path)
     (tmp_path / "chord").mkdir()
-    assert shipped.resolve("chord", "sample") == shipped.samples_dir() / "chord.wav"
+    assert shipped.resolve("chord", "sample") == shipped.folder("sample") / "chord.wav"
     (tmp_path / "chord.wav").touch()
     assert shipped.resolve("chord.wav", "sample") == Path("chord.wav")
     (tmp_path / "other").mkdir()
@@ -163,7 +163,7 @@ def test_an_unknown_name_is_refused_with_the_nearest() -> None:
 def test_presets_are_found_in_sub_folders_unless_several_have_the_name(
     tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
-    monkeypatch.setattr(shipped, "_folder", lambda kind: tmp_path)
+    monkeypatch.setattr(shipped, "folder", lambda kind: tmp_path)
     for name in ("rumble.toml", "speaker/tone.toml", "desk/tone.toml", "desk/note.txt"):
         (tmp_path / name).parent.mkdir(exist_ok=True)
         (tmp_path / name).touch()
@@ -182,9 +182,9 @@ def test_an_installed_package_has_its_own_folders(tmp_path: Path, monkeypatch: p
     package = tmp_path / "site" / "streamhost"
     package.mkdir(parents=True)
     monkeypatch.setattr(shipped, "__file__", str(package / "shipped.py"))
-    assert shipped.presets_dir() == tmp_path / "site" / "presets"
-    assert shipped.samples_dir() == tmp_path / "site" / "audio_samples"
+    assert shipped.folder("preset") == tmp_path / "site" / "presets"
+    assert shipped.folder("sample") == tmp_path / "site" / "audio_samples"
     (package / "presets_shipped").mkdir()
     (package / "audio_samples").mkdir()
-    assert shipped.presets_dir() == package / "presets_shipped"
-    assert shipped.samples_dir() == package / "audio_samples"
+    assert shipped.folder("preset") == package / "presets_shipped"
+    assert shipped.folder("sample") == package / "audio_samples"

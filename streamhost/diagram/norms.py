@@ -60,7 +60,7 @@ def responses_to_output(diagram: Diagram, sources: Sequence[int], channel: int =
 def norms_from_input(diagram: Diagram, channel: int = 0, *, input: int = 0,
                      nodes: Sequence[int] | None = None) -> Norms:
     """Norms of the responses from an input to nodes (all of them unless named)."""
-    return _norms(fans.from_input(diagram, channel, input=input, nodes=nodes))
+    return norms_of(fans.from_input(diagram, channel, input=input, nodes=nodes))
 
 
 def sums_from_input(diagram: Diagram, channel: int = 0, *, input: int = 0, nodes: Sequence[int] | None = None) -> FloatArray:
@@ -74,11 +74,6 @@ def sums_from_errors(diagram: Diagram, sources: Sequence[int], nodes: Sequence[i
     return np.array([_absolute_sums(follow(fan))[0] for fan in fan_of_each]).reshape(len(sources), len(nodes))
 
 
-def norms_to_output(diagram: Diagram, sources: Sequence[int], channel: int = 0, *, output: int = 0) -> Norms:
-    """Norms of the responses from errors at the source nodes to an output."""
-    return _norms(fans.to_output(diagram, sources, channel, output=output))
-
-
 def absolute_sums(fan: Fan) -> FloatArray:
     """The L1 norm of each response of a fan, never too small; infinite where it does not die out or could not be bounded."""
     l1, slack = _absolute_sums(follow(fan))
@@ -89,11 +84,6 @@ def powers_from_input(diagram: Diagram, channel: int = 0, *, input: int = 0,
                       nodes: Sequence[int] | None = None) -> FloatArray:
     """The power that white noise of power 1 at an input gives at nodes, (nodes,): L2^2, without the rest."""
     return follow(fans.from_input(diagram, channel, input=input, nodes=nodes)).energy
-
-
-def noise_gains(diagram: Diagram, sources: Sequence[int], channel: int = 0, *, output: int = 0) -> FloatArray:
-    """The power at an output of white errors of power 1 at the source nodes, (sources,): L2^2, without the rest."""
-    return follow(fans.to_output(diagram, sources, channel, output=output)).energy
 
 
 def response_to_output(diagram: Diagram, sources: Sequence[int], frequencies: ArrayLike, channel: int = 0, *,
@@ -125,7 +115,8 @@ def settling_frames(diagram: Diagram, channel: int = 0, *, input: int = 0, nodes
     return max([float(LEAST_SETTLING), *(settling(course, i, SETTLED) for i in range(len(course.energy)))])
 
 
-def _norms(fan: Fan) -> Norms:
+def norms_of(fan: Fan) -> Norms:
+    """Of each response of a fan."""
     course = follow(fan)
     l1, slack = _absolute_sums(course)
     peak = np.full(len(l1), inf)

@@ -21,11 +21,6 @@ class Row:
     found_db: float
 
     @property
-    def from_analogue_db(self) -> float:
-        """Its distance from the analogue network."""
-        return self.found_db - self.goal.analogue_db
-
-    @property
     def deviation_db(self) -> float:
         """Its distance from what the standard wants, which is what the limits are about."""
         return self.found_db - self.goal.goal_db

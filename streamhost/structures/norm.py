@@ -47,8 +47,7 @@ def l2_norm(b: Polynomial, a: Polynomial) -> float:
 def _floats(polynomial: Polynomial, length: int) -> list[Any]:
     import mpmath
 
-    values = [*map(to_mpf, polynomial)]
-    return values + [mpmath.mpf(0)] * (length - len(values))
+    return [*map(to_mpf, polynomial), *[mpmath.mpf(0)] * (length - len(polynomial))]
 
 
 def _power(b: list[Any], a: list[Any]) -> Any:
