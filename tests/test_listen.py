@@ -59,7 +59,7 @@ def test_a_generated_source_and_matched_lanes(capsys: pytest.CaptureFixture[str]
         (["rumble-float32"], 2, "Without a terminal and a page --seconds says when to end"),
         (["rumble-float32", "--seconds", "1", "--fast"], 2, "--fast is for --no-device"),
         (["rumble-float32", "--no-device", "--seconds", "1", "--source", "device"], 2, "is the sound card's input"),
-        (["rumble-float32", "--no-device"], 2, "--seconds says when to end"),
+        (["rumble-float32", "--no-device", "--no-page"], 2, "--seconds says when to end"),
         (["rumble-float32", "--no-device", "--seconds", "1", "--source", "hum"], 2, "a source is KIND"),
         (["rumble-float32", "--no-device", "--seconds", "1", "--source", "white", "--input", "chord"], 2, "give one of them"),
         (["rumble-float32", "--no-device", "--seconds", "1", "--rate", "96000"], 2, "96000 Hz is asked for"),

@@ -54,15 +54,18 @@ def _list_devices(ctx: click.Context, param: click.Parameter, value: bool) -> No
 @click.option("--volume-is-down", is_flag=True, help="Acknowledges the caution that stands before the first sound.")
 @click.option("--no-device", is_flag=True, help="On the clock, without a sound card.")
 @click.option("--fast", is_flag=True, help="With --no-device: as fast as it goes.")
-@click.option("--no-page", is_flag=True, help="Without the control page.")
+@click.option("--no-page", is_flag=True, help="Without the control page, which --no-device has.")
+@click.option("--no-browser", is_flag=True, help="Say the page's address and open nothing.")
+@click.option("--port", type=click.IntRange(0, 65535), default=0, help="Of the page; any free one unless said.")
 @vary_option
 @structures_option
 @force_option
 @json_option
-def listen(no_device: bool, no_page: bool, **given: object) -> None:
+def listen(no_device: bool, **given: object) -> None:
     """Realizations side by side on what comes in, one of them heard, lane 1 at first.
 
     Each PRESET is a lane: a file or the name of a shipped one. On a terminal the output begins muted; ? lists the keys.
+    With --no-device a page in the browser shows the lanes and takes the keys, until Ctrl-C or the end of --seconds.
     """
     from streamhost.commands.listening.asked import Asked
     from streamhost.commands.listening.told import document, told
@@ -79,8 +82,10 @@ def listen(no_device: bool, no_page: bool, **given: object) -> None:
 def _run(asked: "Asked", *, on_clock: bool) -> "Run":
     from streamhost.commands.listening import card_run, clock_run
 
-    if asked.seconds is None and on_clock:
+    if on_clock and asked.fast and not asked.no_page:
+        raise RequestError("--fast leaves no time to look at a page: give --no-page with it.")
+    if asked.seconds is None and asked.no_page and on_clock:
         raise RequestError("Without a sound card and a page --seconds says when to end.")
-    if asked.seconds is None and not (sys.stdin.isatty() and sys.stdout.isatty()):
+    if asked.seconds is None and not on_clock and not (sys.stdin.isatty() and sys.stdout.isatty()):
         raise RequestError("Without a terminal and a page --seconds says when to end.")
     return clock_run.run(asked) if on_clock else card_run.run(asked)

@@ -135,7 +135,8 @@ class Host:
     def adopt(self, lane: Lane, slot: int) -> None:
         """Give a lane its room, outside the step."""
         recent = self.shared.outputs[slot] if len(self.shared.heard) else None
-        lane.allocate(self.block, recent, self.shared.lanes[slot : slot + 1])
+        added = self.shared.added[slot] if len(self.shared.heard) else None
+        lane.allocate(self.block, recent, self.shared.lanes[slot : slot + 1], added)
 
     @property
     def address(self) -> int:

@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from streamhost.host.plan import Changed
-from streamhost.host.records import BINS_PER_OCTAVE, REASONS, STATES
+from streamhost.host.records import BINS, BINS_PER_OCTAVE, REASONS, STATES
 from streamhost.host.shared import Shared
 
 
@@ -78,10 +78,14 @@ def percentile_ns(histogram: NDArray[np.int64], share: float) -> float:
     total = int(histogram.sum())
     if not total:
         return 0.0
-    place = int(np.searchsorted(np.cumsum(histogram), math.ceil(share * total)))
-    octave, rest = (0, place) if place < 2 * BINS_PER_OCTAVE else divmod(place - BINS_PER_OCTAVE, BINS_PER_OCTAVE)
-    rest = rest + (BINS_PER_OCTAVE if octave else 0)
-    return float((rest + 1) << octave)
+    return float(bin_ends_ns()[np.searchsorted(np.cumsum(histogram), math.ceil(share * total))])
+
+
+def bin_ends_ns() -> NDArray[np.float64]:
+    """The upper ends of the histogram's bins."""
+    place = np.arange(BINS)
+    octave = np.maximum(place // BINS_PER_OCTAVE - 1, 0)
+    return np.asarray((place - octave * BINS_PER_OCTAVE + 1) * 2.0**octave, np.float64)
 
 
 def change_figures(changes: Sequence[Changed]) -> list[dict[str, object]]:

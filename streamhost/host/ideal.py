@@ -25,7 +25,7 @@ class Ideal:
         self.memory = Memory(chosen.program, channels, variant)
         self._kernel = compile_kernel(chosen.program, variant)
         self._unused = no_marks(), no_trace()
-        self._record = np.zeros(1, LANE)
+        self._record, self._added = np.zeros(1, LANE), np.zeros((0, 0))
         self.allocate(0)
 
     @property
@@ -33,8 +33,10 @@ class Ideal:
         """Of its record, for the compiled step."""
         return self._record.ctypes.data
 
-    def allocate(self, block: int) -> None:
-        """Room for blocks of up to `block` frames."""
+    def allocate(self, block: int, added: NDArray[np.float64] | None = None) -> None:
+        """Room for blocks of up to `block` frames. added: a ring for what the lane adds."""
+        if added is not None:
+            self._added = added
         columns = (2 if self.double else 1) * len(self._realization.outputs) * self._channels
         self._output, self._input = np.zeros((block, columns)), np.zeros((block, self._channels))
         memory, record = self.memory, self._record
@@ -46,6 +48,7 @@ class Ideal:
             self._kernel.address, self._output.ctypes.data, self._input.ctypes.data)
         record["outputs"], record["columns"], record["doubled"] = len(self._realization.outputs), columns, self.double
         record["coefficient_words"] = memory.coefficients.size
+        record["recent"] = self._added.ctypes.data if len(self._added) else 0
         self._set_door()
 
     def _set_door(self) -> None:

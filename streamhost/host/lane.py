@@ -47,14 +47,23 @@ class Lane:
         self.allocate(0)
 
     @property
+    def match(self) -> float:
+        """The gain by which it is heard."""
+        return float(self._record["match"][0])
+
+    @property
     def address(self) -> int:
         """Of the lane's record, for the compiled step."""
         return self._record.ctypes.data
 
-    def allocate(self, block: int, recent: NDArray[np.float64] | None = None, shown: NDArray[np.void] | None = None) -> None:
+    def allocate(
+        self, block: int, recent: NDArray[np.float64] | None = None, shown: NDArray[np.void] | None = None,
+        added: NDArray[np.float64] | None = None,
+    ) -> None:
         """Room for blocks of up to `block` frames. The host that takes the lane calls it, outside the step.
 
-        recent: a ring (frames, outputs * channels) for the last of its output; shown: a LANE_METERS record to count in.
+        recent: a ring (frames, outputs * channels) for the last of its output, `added` for what it adds to its ideal; shown: a
+        LANE_METERS record to count in.
         """
         self._output = np.zeros((block, self._outputs * self.channels))
         self._marks = np.zeros((block if self.metered else 0, self.channels), np.uint8)
@@ -64,7 +73,7 @@ class Lane:
             shown[:] = self._shown
             self._shown = shown
         if self.ideal is not None:
-            self.ideal.allocate(block)
+            self.ideal.allocate(block, added)
         self._block = 0
         self._connect()
 

@@ -12,15 +12,17 @@ from streamhost.host.records import BINS, CONTROL, HOST_METERS, LANE_METERS, LOG
 def layout(width: int, channels: int, recent: int = 0, recording: int = 0) -> np.dtype[np.void]:
     """The fields, one after the other: control, meters, lanes, histogram, log, and the rings of audio.
 
-    width: columns of a lane's output; recent: frames of the rings `heard`, `sent` (what the guard is given) and `outputs`
-    (of each lane), where frame f of the run stands in row f modulo their length; recording: frames of the ring of what is
-    heard, which `meters.recorded` and `control.drained` count in and out.
+    width: columns of a lane's output; recent: frames of the rings `heard`, `sent` (what the guard is given), `outputs` and
+    `added` (of each lane, and what it adds to its ideal where that runs beside it), where frame f of the run stands in row
+    f modulo their length; recording: frames of the ring of what is heard, which `meters.recorded` and `control.drained`
+    count in and out.
     """
     return np.dtype([
         ("control", CONTROL), ("meters", HOST_METERS), ("lanes", LANE_METERS, (MOST_LANES,)),
         ("histogram", "<i8", (BINS,)), ("log", LOG, (LOGGED,)),
         ("heard", "<f8", (recent, width)), ("sent", "<f8", (recent, channels)),
-        ("outputs", "<f8", (MOST_LANES, recent, width)), ("recording", "<f8", (recording, width)),
+        ("outputs", "<f8", (MOST_LANES, recent, width)),
+        ("added", "<f8", (MOST_LANES, recent, width)), ("recording", "<f8", (recording, width)),
     ])
 
 
@@ -39,6 +41,7 @@ class Shared:
         self.heard: NDArray[np.float64] = whole["heard"][0]
         self.sent: NDArray[np.float64] = whole["sent"][0]
         self.outputs: NDArray[np.float64] = whole["outputs"][0]
+        self.added: NDArray[np.float64] = whole["added"][0]
         self.recording: NDArray[np.float64] = whole["recording"][0]
 
     def come_up(self) -> None:

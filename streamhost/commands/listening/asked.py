@@ -45,6 +45,9 @@ class Asked:
     python_callback: bool
     counter: int | None
     volume_is_down: bool
+    no_page: bool
+    no_browser: bool
+    port: int
 
 
 @dataclass(frozen=True)
