@@ -58,7 +58,8 @@ def python(code, **how):
 def test_help_imports_nothing_heavy():
     code = (
         "import sys; from streamhost.commands.main import main; status = main(['--help']);"
-        "heavy = {'numpy', 'numba', 'scipy', 'soundfile', 'sounddevice', 'msgspec', 'mpmath', 'starlette', 'uvicorn'} & set(sys.modules);"
+        "heavy = {'numpy', 'numba', 'scipy', 'soundfile', 'sounddevice', 'msgspec', 'mpmath', 'starlette', 'uvicorn'}"
+        "& set(sys.modules);"
         "print(status, sorted(heavy))"
     )
     run = python(code)
