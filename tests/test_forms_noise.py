@@ -37,6 +37,6 @@ def test_where_two_roundings_drop_the_same_the_model_is_said_to_fail() -> None:
 @pytest.mark.slow
 @pytest.mark.parametrize("form", forms())
 def test_predicted_noise_is_measured_in_every_form(form: str) -> None:
-    """All five filters, both words; as the figure to reach asks, 95 in 100 of all, one in ten of a form's may be off."""
+    """All five filters, both words. Our own bound: 95 in 100 of all, one in ten of a form's may be off."""
     judged = [found for found in cases((form,)) if found.holds]
     assert sum(not found.agrees for found in judged) <= 1, judged

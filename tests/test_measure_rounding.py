@@ -77,7 +77,7 @@ def test_known_noise_and_a_known_tone_are_read_through_the_468_curve():
     hertz = np.linspace(20.0, 20000.0, 200_001)
     share = np.trapezoid(itu_468_weighting(hertz), hertz) / 24000.0
     heard = noise_of(1e-4 * np.random.default_rng(3).standard_normal((10 * RATE, 1)), RATE)
-    assert heard.rms_468_dbfs == pytest.approx(power_dbfs(1e-8 * share), abs=0.05)  # the figure to reach
+    assert heard.rms_468_dbfs == pytest.approx(power_dbfs(1e-8 * share), abs=0.05)  # our own bound
     tone = noise_of(1e-3 * np.sin(2 * np.pi * 1000.0 / RATE * np.arange(5 * RATE))[:, None], RATE)
     assert tone.rms_468_dbfs == pytest.approx(-60.0, abs=0.01)
 
@@ -106,7 +106,7 @@ def test_one_rounding_is_predicted_and_measured(of_gain):
     """q^2 / 12 (Bennett 1948), and of it the share of the band; all through each curve."""
     full = power_dbfs(2.0**-30 / 12.0)
     assert of_gain.predicted_full_dbfs == pytest.approx(full, abs=1e-6)
-    assert of_gain.measured_full_dbfs == pytest.approx(full, abs=0.05)  # the figure to reach
+    assert of_gain.measured_full_dbfs == pytest.approx(full, abs=0.05)  # our own bound
     for name in ("", "a_", "468_rms_"):
         measured, predicted = (getattr(of_gain, f"{kind}_{name}dbfs") for kind in ("measured", "predicted"))
         # 4 s through 468, which is a band of some 5 kHz, scatter by 0.03 dB: three times that
