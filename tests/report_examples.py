@@ -75,7 +75,7 @@ def verdict(found: float | None, allowed: float = -92.0, key: str = "noise_dbfs"
 def lane(number: int, *verdicts: Verdict, states: bool = True, **results: Any) -> Lane:
     """A realization without sound and drawing."""
     return Lane(number=number, title=f"Filter {number}", form="direct-1 · cascade · Q1.15", short=f"form {number}",
-                states_limits=states and bool(verdicts), verdicts=verdicts, results=results, facts={}, drawing="", counts="")
+                states_limits=states and bool(verdicts), verdicts=verdicts, results=results, facts=(), drawing="", counts="")
 
 
 def contents(*lanes: Lane, **more: Any) -> Contents:

@@ -27,7 +27,7 @@ from streamhost.errors import RequestError
 if TYPE_CHECKING:
     from streamhost.commands.compare_files import Destination
     from streamhost.files import AudioInfo
-    from streamhost.measure import Measured, Verdict
+    from streamhost.measure import Measured, RoundingNoise, Verdict
     from streamhost.presets import Preset
     from streamhost.presets.realizing import Refusal
     from streamhost.realization import Realization
@@ -38,6 +38,7 @@ class Compared:
     """One realization of the comparison: what was asked, what was found, and the files that were written.
 
     `files`: of each output its audio and its difference, None where that was not written; empty without a folder.
+    noise: with spectra, kept for a report.
     """
 
     preset: "Preset"
@@ -45,6 +46,7 @@ class Compared:
     measured: "Measured"
     verdicts: "tuple[Verdict, ...]"
     files: tuple[tuple[Path, Path | None], ...]
+    noise: "RoundingNoise | None" = None
 
     @property
     def label(self) -> str:
@@ -102,7 +104,7 @@ def compare(
         check_figures(json_file, info.path, force=force)
         if shown is not None and folder is None:
             places = destinations(str(shown / "audio"), stated, realizations[0].outputs, info, force=force)
-        compared = _compare_all(stated, realizations, info, places, force=force)
+        compared = _compare_all(stated, realizations, info, places, spectra=report is not None, force=force)
         if shown is not None:
             write_compared(shown, compared, info, source, refusals)
     if folder is None:
@@ -150,23 +152,24 @@ def _check_one_filter(presets: "Sequence[Preset]", realizations: "Sequence[Reali
 
 def _compare_all(
     presets: "Sequence[Preset]", realizations: "Sequence[Realization]", info: "AudioInfo",
-    places: "Sequence[Destination | None]", *, force: bool,
+    places: "Sequence[Destination | None]", *, spectra: bool, force: bool,
 ) -> list[Compared]:
     compared = []
     with Progress("compare", len(presets)) as progress:
         for preset, realization, place in zip(presets, realizations, places, strict=True):
             progress.step(label(realization))
-            compared.append(_compare_one(preset, realization, info, place, force=force))
+            compared.append(_compare_one(preset, realization, info, place, spectra=spectra, force=force))
     return compared
 
 
 def _compare_one(
-    preset: "Preset", realization: "Realization", info: "AudioInfo", place: "Destination | None", *, force: bool
+    preset: "Preset", realization: "Realization", info: "AudioInfo", place: "Destination | None", *, spectra: bool, force: bool
 ) -> Compared:
     from streamhost.commands.compare_files import DifferenceFile, OutputFile
     from streamhost.commands.instruments import limit_verdicts
     from streamhost.files import read_blocks
     from streamhost.measure import Measurement, limit_band
+    from streamhost.measure.rounding.rounding_noise import figures_of
 
     measurement = Measurement(realization, info.frames, info.channels, limit_band(preset.limits, preset.rate))
     outputs: list[OutputFile] = []
@@ -182,4 +185,6 @@ def _compare_one(
                 difference.write(block.difference[:, k])
     files = [(destination.output, destination.difference if difference.kept else None)
              for destination, difference in zip(place.files if place is not None else (), differences, strict=True)]
-    return Compared(preset, realization, measurement.result(), limit_verdicts(preset, realization), tuple(files))
+    found = measurement.result()
+    noise = figures_of(realization, found, measurement) if spectra else None
+    return Compared(preset, realization, found, limit_verdicts(preset, realization), tuple(files), noise)

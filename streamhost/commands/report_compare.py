@@ -14,7 +14,7 @@ from streamhost.commands.instruments import INSTRUMENTS, Asked, limit_verdicts
 from streamhost.commands.reporting import command_line, counts_of, documents_of, drawing_of
 from streamhost.commands.verdict_text import SIGNAL
 from streamhost.files import AudioInfo, AudioWriter, read_all, read_blocks
-from streamhost.measure import Figures, Verdict, limit_band
+from streamhost.measure import Figures, Measured, Verdict, limit_band
 from streamhost.measure.limits import stated_limits
 from streamhost.presets import Preset
 from streamhost.presets.realizing import Refusal
@@ -75,9 +75,10 @@ def _common_limits(presets: Sequence[Preset]) -> Mapping[str, object] | None:
 
 
 def _results(one: Compared, x: Any, progress: Progress) -> dict[str, Any]:
-    """Of all instruments, quick, on the signal of the comparison."""
+    """Of all instruments, quick; noise is that of the comparison itself."""
     asked = Asked(one.preset, one.realization, x, limit_band(one.preset.limits, one.preset.rate), True, progress.within)
-    return {instrument.name: instrument.run(asked) for instrument in INSTRUMENTS}
+    assert one.noise is not None, "a comparison with a report keeps it"
+    return {instrument.name: one.noise if instrument.name == "noise" else instrument.run(asked) for instrument in INSTRUMENTS}
 
 
 def _verdicts(one: Compared, common: Mapping[str, object] | None) -> tuple[Verdict, ...]:
@@ -93,16 +94,19 @@ def _lane(
     sounds, silent = _sounds(folder, one, info)
     return Lane(
         number=place, title=one.preset.title, form=label(one.realization), short="", states_limits=bool(one.verdicts),
-        verdicts=_verdicts(one, common), results=results, facts=dict(_facts(one)), drawing=drawing_of(one.realization),
+        verdicts=_verdicts(one, common), results=results, facts=tuple(_facts(one)), drawing=drawing_of(one.realization),
         counts=counts_of(one.realization), sounds=sounds, silent=silent,
     )
 
 
-def _facts(one: Compared) -> Iterator[tuple[str, str]]:
+def _facts(one: Compared) -> Iterator[tuple[str, dict[str, str]]]:
     measured = one.measured
-    for figures in measured.outputs:
-        of = f" {figures.name}" if len(measured.outputs) > 1 else ""
-        yield from _facts_of(figures, of)
+    for place, figures in enumerate(measured.outputs):
+        shared = {} if place else dict(_facts_of_all(measured))
+        yield figures.name if len(measured.outputs) > 1 else "", dict(_facts_of(figures)) | shared
+
+
+def _facts_of_all(measured: Measured) -> Iterator[tuple[str, str]]:
     tally, counts = measured.tally, measured.counts
     yield "Overflows, frames", f"{tally.saturations + tally.wraps:,}"
     yield "Unstable, poles", str(measured.unstable)
@@ -112,13 +116,13 @@ def _facts(one: Compared) -> Iterator[tuple[str, str]]:
     yield "Time, ns a frame", number(measured.ns_per_frame)
 
 
-def _facts_of(figures: Figures, of: str) -> Iterator[tuple[str, str]]:
+def _facts_of(figures: Figures) -> Iterator[tuple[str, str]]:
     noise, prediction = figures.noise, figures.prediction
-    yield f"Noise{of}, dBFS", number(noise.dbfs)
-    yield f"95 %{of}, ± dB", number(noise.interval_db, 2)
-    yield f"Predicted{of}, dBFS", number(prediction.dbfs if prediction is not None else None)
-    yield f"A-weighted{of}, dBFS", number(noise.a_dbfs)
-    yield f"Peak{of}, dBFS", number(figures.peak_dbfs)
+    yield "Noise, dBFS", number(noise.dbfs)
+    yield "95 %, ± dB", number(noise.interval_db, 2)
+    yield "Predicted, dBFS", number(prediction.dbfs if prediction is not None else None)
+    yield "A-weighted, dBFS", number(noise.a_dbfs)
+    yield "Peak, dBFS", number(figures.peak_dbfs)
 
 
 def _sounds(folder: Path, one: Compared, info: AudioInfo) -> tuple[tuple[Sound, ...], tuple[str, ...]]:

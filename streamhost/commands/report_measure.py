@@ -20,7 +20,7 @@ def write_measured(name: str, found: Found, asked: Asked, source: str | None, *,
     with report_folder(Path(name), force=force) as folder:
         lane = Lane(
             number=1, title=preset.title, form=label(realization), short=label(realization),
-            states_limits=bool(found.verdicts), verdicts=found.verdicts, results=found.results, facts={},
+            states_limits=bool(found.verdicts), verdicts=found.verdicts, results=found.results, facts=(),
             drawing=drawing_of(realization), counts=counts_of(realization),
             sounds=sounds_of(folder, found.results, realization.rate),
         )

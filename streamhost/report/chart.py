@@ -78,8 +78,10 @@ class Chart:
 def thinned(x: FloatArray, y: FloatArray, most: int, *, log: bool = False) -> tuple[FloatArray, FloatArray]:
     """The least and the greatest of each of `most` / 2 stretches of the axis, in their order, so that no peak is lost.
 
-    x rises; on a logarithmic axis it is above 0.
+    x rises; what a logarithmic axis cannot have is left out.
     """
+    if log:
+        x, y = x[x > 0.0], y[x > 0.0]
     if len(x) <= most:
         return x, y
     along = np.log(x) if log else x

@@ -21,9 +21,9 @@ class Lane:
     """One realization.
 
     form: form, decomposition and format; short: what of that tells it from the others. states_limits: its preset does; where
-    it does not, `verdicts` holds it against the limits of others. results: of instruments by name. facts: label and text of
-    each figure of the second ledger, the same labels in every lane. drawing: SVG text. counts: what it costs, in words.
-    sounds: to be listened to; silent: why some are missing.
+    it does not, `verdicts` holds it against the limits of others. results: of instruments by name. facts: by output, "" of
+    the only one, label and text of each figure of the second ledger; what holds for all outputs stands with the first.
+    drawing: SVG text. counts: what it costs, in words. sounds: to be listened to; silent: why some are missing.
     """
 
     number: int
@@ -33,7 +33,7 @@ class Lane:
     states_limits: bool
     verdicts: tuple[Verdict, ...]
     results: Mapping[str, Any]
-    facts: Mapping[str, str]
+    facts: tuple[tuple[str, Mapping[str, str]], ...]
     drawing: str
     counts: str
     sounds: tuple[Sound, ...] = ()

@@ -11,6 +11,7 @@ HEADS = {
     "mask": "Inside the mask, dB", "headroom_db": "Headroom, dB", "multiplications": "Multiply", "memory_words": "Words",
 }
 MOST_DECIMALS = 3
+MOST_AT_FULL_SIZE = 3
 
 
 def limits_ledger(contents: Contents) -> str:
@@ -28,8 +29,9 @@ def limits_ledger(contents: Contents) -> str:
                         for column in columns)
         name = _name_cells(lane, best=lane is contents.best and lane.meets)
         rows.append(f'{name}<td class="word">{_word(lane)}</td>{cells}</tr>')
-    return (f'<table><thead><tr><th></th><th scope="col">Realization</th><th scope="col" class="word">Verdict</th>{heads}</tr>'
-            f"</thead><tbody>{''.join(rows)}</tbody></table>")
+    size = ' class="many"' if len(columns) > MOST_AT_FULL_SIZE else ""
+    first = '<th></th><th scope="col">Realization</th><th scope="col" class="word">Verdict</th>'
+    return f"<table{size}><thead><tr>{first}{heads}</tr></thead><tbody>{''.join(rows)}</tbody></table>"
 
 
 def _allowed(keys: Sequence[tuple[str, str, str, float]], key: str, output: str) -> str:
@@ -88,14 +90,14 @@ def reasons(contents: Contents) -> Iterator[str]:
 
 def facts_ledger(contents: Contents) -> str:
     """What was found on the given signal, and what a realization costs."""
-    heads = list(dict.fromkeys(head for lane in contents.lanes for head in lane.facts))
+    heads = list(dict.fromkeys(head for lane in contents.lanes for _, facts in lane.facts for head in facts))
     if not heads:
         return ""
     cells = "".join(f'<th scope="col" class="figure">{_head(head)}</th>' for head in heads)
     rows = "".join(
-        f'<tr><th scope="row" class="numeral">{lane.number}</th>'
-        + "".join(f'<td class="figure">{escape(lane.facts.get(head, ""))}</td>' for head in heads) + "</tr>"
-        for lane in contents.lanes)
+        f'<tr><th scope="row" class="numeral">{lane.number} {escape(output)}</th>'
+        + "".join(f'<td class="figure">{escape(facts.get(head, ""))}</td>' for head in heads) + "</tr>"
+        for lane in contents.lanes for output, facts in lane.facts)
     return f'<table class="facts"><thead><tr><th></th>{cells}</tr></thead><tbody>{rows}</tbody></table>'
 
 

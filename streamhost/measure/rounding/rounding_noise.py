@@ -65,10 +65,11 @@ def _tone(realization: Realization) -> FloatArray:
     return sine(frames, realization.rate, tone_hz(realization, 0), TONE_DBFS, realization.diagram.channels)
 
 
-def figures_of(realization: Realization, found: Measured) -> RoundingNoise:
-    """What was found of the noise in a run, without the meter of 468, spectra and further signals."""
+def figures_of(realization: Realization, found: Measured, measurement: Measurement) -> RoundingNoise:
+    """What was found of the noise in a run, with its spectra, without the meter of 468 and further signals."""
     several = len(found.outputs) > 1
-    each = tuple(_of_output(realization, figures, figures.name if several else "") for figures in found.outputs)
+    each = tuple(_with_spectra(_of_output(realization, figures, figures.name if several else ""), figures, measurement,
+                               realization.rate) for figures in found.outputs)
     return _of_run(realization, found, each)
 
 
@@ -140,17 +141,21 @@ class _Course:
     def _with_meters(
         self, one: OutputNoise, figures: Figures, measurement: Measurement, difference: FloatArray
     ) -> OutputNoise:
-        """The reading of the quasi-peak meter, and spectra, in dBFS in 1 Hz."""
-        rate, spectrum = self._realization.rate, figures.noise.spectrum
-        reading = _reading(figures, difference, rate)
-        if spectrum is None:
-            return replace(one, measured_468_quasi_peak_dbfs=reading)
-        hertz = spectrum.frequencies[1:-1]
-        predicted = measurement.predicted_density(figures)(2.0 * np.pi * hertz / rate) / (rate / 2.0)
-        return replace(
-            one, measured_468_quasi_peak_dbfs=reading, spectrum_hz=hertz,
-            measured_spectrum_dbfs=_dbfs(spectrum.power[1:-1] / spectrum.spacing), predicted_spectrum_dbfs=_dbfs(predicted),
-        )
+        """The reading of the quasi-peak meter, and spectra."""
+        rate = self._realization.rate
+        read = replace(one, measured_468_quasi_peak_dbfs=_reading(figures, difference, rate))
+        return _with_spectra(read, figures, measurement, rate)
+
+
+def _with_spectra(one: OutputNoise, figures: Figures, measurement: Measurement, rate: float) -> OutputNoise:
+    """In dBFS in 1 Hz, where there is a figure."""
+    spectrum = figures.noise.spectrum
+    if spectrum is None:
+        return one
+    hertz = spectrum.frequencies[1:-1]
+    predicted = measurement.predicted_density(figures)(2.0 * np.pi * hertz / rate) / (rate / 2.0)
+    return replace(one, spectrum_hz=hertz, measured_spectrum_dbfs=_dbfs(spectrum.power[1:-1] / spectrum.spacing),
+                   predicted_spectrum_dbfs=_dbfs(predicted))
 
 
 def _dbfs(power: FloatArray) -> FloatArray:

@@ -104,7 +104,8 @@ def _method(contents: Contents) -> str:
 def _deviations(one: Shown) -> FloatArray:
     """Stored over asked, where it is judged: elsewhere a gap."""
     asked = decibels(one.curves.asked)
-    return np.where(asked >= asked.max() - JUDGED_DB, decibels(one.curves.stored) - asked, np.nan)
+    judged = asked >= asked.max() - JUDGED_DB
+    return np.where(judged, decibels(one.curves.stored) - np.where(judged, asked, 0.0), np.nan)
 
 
 def _deviation(contents: Contents, shown: list[Shown]) -> Figure:
