@@ -73,7 +73,7 @@ def test_a_missing_library_is_told_with_the_remedy(monkeypatch: pytest.MonkeyPat
 
 @pytest.mark.parametrize(
     ("outputs", "said"),
-    [([], r"There is no sound card to play on\. .*--no-device"), ([2], r'sound card "card" at 48000 Hz with 2 channels out')],
+    [([], r"There is no sound card to play on\. .*--no-device"), ([2], r'sound card "card" at 48000 Hz with 2 channels')],
 )
 def test_a_card_that_cannot_be_opened_is_told(outputs: list[int], said: str, monkeypatch: pytest.MonkeyPatch) -> None:
     def refuse(**parameters: Any) -> None:
