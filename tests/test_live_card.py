@@ -27,6 +27,7 @@ from streamhost.live.card import Card, Early
 from streamhost.live.controls import Controls, planned_in_order
 from streamhost.live.portaudio import Wanted
 from streamhost.live.recipe import Input, LaneAsked, Recipe
+from streamhost.live.watch import CLOSE_S
 from streamhost.presets import load_preset
 from streamhost.presets.realizing import realize_presets
 from streamhost.realization import Realization
@@ -174,7 +175,7 @@ def test_a_frozen_server_is_left_by_killing_the_engine(server: SoundServer, real
         try:
             assert until(card, "a frozen server is noticed", is_lost=True, seconds=1.0) < 1.0
             frames = card.frame
-            play(card, 1.0)
+            play(card, CLOSE_S + 0.5)
         finally:
             server.thaw()
         until(card, "the card comes back", is_lost=False, seconds=30.0)
