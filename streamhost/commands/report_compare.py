@@ -113,7 +113,7 @@ def _facts_of_all(measured: Measured) -> Iterator[tuple[str, str]]:
     yield "Multiply", str(counts.multiplications)
     yield "Add", str(counts.additions)
     yield "Memory, words", str(counts.delays)
-    yield "Time, ns a frame", number(measured.ns_per_frame)
+    yield "Time, ns", number(measured.ns_per_frame)
 
 
 def _facts_of(figures: Figures) -> Iterator[tuple[str, str]]:
