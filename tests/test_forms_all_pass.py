@@ -269,11 +269,15 @@ def test_white_noise_at_half_scale_clips_almost_no_wave(order: int, word: str) -
 # --- noise
 
 
-@pytest.mark.parametrize("name", FORMS)
-def test_predicted_noise_is_measured(name: str) -> None:
+@pytest.mark.parametrize(("name", "why"), [
+    ("all-pass-sum", ""), ("wave-digital", "what the register f3 and the register e3 drop is correlated"),
+])  # fmt: skip
+def test_predicted_noise_is_measured(name: str, why: str) -> None:
+    """The two registers of a wave-digital port drop the same low bits, which the verdict tells and the noise hardly shows."""
     format = Fixed("Q1.15", coefficients={"bits": 32})
     realization = realize(butterworth(3), form=name, decomposition="whole", format=format)
     measured = measure(realization, white(2 * RATE, 1, 1, -21.3), (20.0, 20000.0))
-    assert measured.white.holds
+    assert measured.white.holds == (not why)
+    assert why in measured.white.reason
     assert measured.noise.dbfs is not None
     assert measured.noise.dbfs == pytest.approx(measured.prediction.dbfs, abs=max(0.5, measured.noise.interval_db))

@@ -4,7 +4,7 @@ import numpy as np
 import pytest
 
 from streamhost.files import read_all
-from streamhost.measure import limit_band, limit_signal, measure, response, verdicts
+from streamhost.measure import Measurement, limit_band, limit_signal, response, verdicts
 from streamhost.measure.rounding.rounding_noise import figures_of
 from streamhost.presets import load_preset
 from streamhost.presets.realizing import realize_preset
@@ -45,8 +45,12 @@ def test_limits_are_met_or_missed_as_the_name_says_and_theory_agrees(name):
     asked = next(load_preset(other).limits for other in names("preset")
                  if other.split("-")[0] == name.split("-")[0] and "naive" not in other)
     realization, band = realize_preset(preset), limit_band(asked, preset.rate)
-    found = measure(realization, limit_signal(preset.rate), band)
-    results = {"noise": figures_of(realization, found), "response": response(realization, [band])}
+    x = limit_signal(preset.rate)
+    measurement = Measurement(realization, len(x), 1, band)
+    for start in range(0, len(x), measurement.block):
+        measurement.step(x[start : start + measurement.block])
+    found = measurement.result()
+    results = {"noise": figures_of(realization, found, measurement), "response": response(realization, [band])}
     judged = verdicts(asked, realization, results.__getitem__)
     missed = found.unstable > 0 or not all(verdict.meets for verdict in judged)
     assert missed == (not preset.limits and name not in FAIL_ELSEWHERE)
