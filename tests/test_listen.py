@@ -45,6 +45,11 @@ def test_what_is_heard_is_what_render_gives_to_the_bit(tmp_path: Path, capsys: p
     assert [each["state_sha256"] for each in first["lanes"]] == [each["state_sha256"] for each in second["lanes"]]
 
 
+def test_figures_on_standard_output_stand_there_alone(capsys: pytest.CaptureFixture[str]) -> None:
+    assert listen(["rumble-float32", "--seconds", "0.1", "--json", "-"]) == 0
+    assert json.loads(capsys.readouterr().out)["frames"] == 4800
+
+
 def test_a_generated_source_and_matched_lanes(capsys: pytest.CaptureFixture[str]) -> None:
     assert listen([*PRESETS[:2], "--source", "tone:1000@-6", "--seconds", "0.1", "--match", "--monitor-db", "-20"]) == 0
     said = capsys.readouterr().out

@@ -74,7 +74,8 @@ def listen(no_device: bool, **given: object) -> None:
     if asked.fast and not no_device:
         raise RequestError("--fast is for --no-device: a sound card sets the time.")
     run = _run(asked, on_clock=no_device)
-    click.echo("\n".join(told(run)))
+    if asked.json_file != "-":
+        click.echo("\n".join(told(run)))
     if asked.json_file is not None:
         write_json(asked.json_file, document(run), force=asked.force)
 
