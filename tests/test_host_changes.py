@@ -7,6 +7,7 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from switched_runs import switched
 from test_host_step import divided
 
 import streamhost as sh
@@ -18,7 +19,6 @@ from streamhost.host.plan import parse_change
 from streamhost.host.shared import Shared, layout
 from streamhost.host.sources import generated
 from streamhost.host.step import SIGNATURE
-from streamhost.host.switching import switched
 from streamhost.program.carrying import is_run
 from streamhost.realization import Realization
 

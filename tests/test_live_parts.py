@@ -157,10 +157,10 @@ def test_a_change_that_is_refused_leaves_the_lane_that_was_heard(lanes: list[Lan
     card = FakeCard()
     controls = Controls(card, lanes, changeover="keep")  # type: ignore[arg-type]
     controls.hear(1)
-    assert controls.heard == 1
+    assert controls.chosen == 1
     card.answers[1] = "the two differ"
     controls.tend()
-    assert (controls.heard, controls.before, controls.notice) == (0, 0, "the two differ")
+    assert (controls.chosen, controls.before, controls.notice) == (0, 0, "the two differ")
 
 
 def test_a_lane_that_is_built_anew_takes_turns_between_two_slots(lanes: list[Lane]) -> None:

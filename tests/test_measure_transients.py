@@ -5,6 +5,7 @@ from math import exp, log, log10
 
 import numpy as np
 import pytest
+from switched_runs import switched
 
 import streamhost as sh
 from streamhost import Fixed, load_preset
@@ -13,7 +14,6 @@ from streamhost.commands.instruments import limit_verdicts
 from streamhost.commands.measuring.transients import lines, waves
 from streamhost.errors import RequestError
 from streamhost.host import Host, Lane
-from streamhost.host.switching import switched
 from streamhost.measure import transients
 from streamhost.measure.changes import Target, form_targets, parameter_targets, to_setting
 from streamhost.measure.changes.changing import RAMP, Changing

@@ -10,7 +10,8 @@ from streamhost.errors import RequestError
 CAUTION = (
     "Sound can hurt. Turn the volume down, and take headphones off the first time. A filter that runs away, wraps or rings is "
     "full scale, at once and for as long as it lasts. The output guard mutes what it knows to be wrong; it knows nothing of "
-    "the sound pressure at your ear. streamhost is no protective device and no medical device."
+    "the sound pressure at your ear. streamhost is no protective device and no medical device; local codes and licensed "
+    "practice rule."
 )
 
 

@@ -1,21 +1,17 @@
 """What an engineer does at a running host, by keys or by words: the same for a terminal and a page."""
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass, field
 
 from streamhost.errors import RequestError
 from streamhost.host.carrying import prepare_carry
+from streamhost.host.hearing import Hearing
 from streamhost.host.lane import Lane
 from streamhost.host.plan import Change
-from streamhost.host.records import CHANGEOVERS, MOST_LANES
+from streamhost.host.records import MOST_LANES
 from streamhost.live.card import Card
 from streamhost.live.recipe import LaneAsked, Planned
 from streamhost.program.carrying import is_run
 
-RAISE_STEP_DB = 6.0
-MOST_RAISED_DB = 120.0
-MONITOR_STEP_DB = 1.0
-LOWEST_DB = -60.0
 NOW = 0
 
 
@@ -46,31 +42,24 @@ def check_fit(lane: Lane, first: Lane) -> None:
             raise RequestError(f"It has {own:g} as its {what} now, and the lanes that run have {its:g}.")
 
 
-@dataclass
-class Controls:
-    """The settings of one card, each changed by a method.
+class Controls(Hearing):
+    """The settings of one card.
 
-    lanes: the parent's, which never run, by the slot of the host that they stand in. slots: that of each lane, by its number
-    from 0; a lane that is built anew takes turns between two. heard: the number of the lane that is heard when all that is
-    planned is done.
+    lanes: the parent's, which never run, by the slot of the host that they stand in. slots: that of each lane, by its number;
+    a lane that is built anew takes turns between two.
     """
 
-    card: Card
-    lanes: list[Lane]
-    heard: int = 0
-    changeover: str = "carry"
-    monitor_db: float = 0.0
-    raise_db: float = 0.0
-    against: str = "ideal"
-    differs: bool = False
-    before: int = 0
-    notice: str = ""
-    slots: list[int] = field(default_factory=list)
-    _owners: list[int] = field(default_factory=list)
-    _asked: dict[int, Callable[[], None]] = field(default_factory=dict)
+    def __init__(
+        self, card: Card, lanes: list[Lane], chosen: int = 0, *, changeover: str = "carry", monitor_db: float = 0.0
+    ) -> None:
+        super().__init__(chosen, changeover, monitor_db)
+        self.card, self.lanes = card, lanes
+        self.slots, self._owners = list(range(len(lanes))), list(range(len(lanes)))
+        self._asked: dict[int, Callable[[], None]] = {}
 
-    def __post_init__(self) -> None:
-        self.slots, self._owners = list(range(len(self.lanes))), list(range(len(self.lanes)))
+    @property
+    def lane_count(self) -> int:
+        return len(self.slots)
 
     def tend(self) -> None:
         """Watch over the card, and hear what became of changes."""
@@ -85,21 +74,13 @@ class Controls:
                 undo()
                 self.notice = answer
 
-    def hear(self, lane: int) -> None:
-        """Change to a lane, from 0."""
-        if not 0 <= lane < len(self.slots):
-            self.notice = f"There is no lane {lane + 1}."
-            return
-        former = self.heard, self.before
+    def _change_to(self, lane: int) -> bool:
+        former = self.chosen, self.before
 
         def undo() -> None:
-            self.heard, self.before = former
+            self.chosen, self.before = former
 
-        if lane != self.heard and self._change(self.slots[self.heard], self.slots[lane], self.changeover, undo):
-            self.before, self.heard = self.heard, lane
-            self.notice = f"Lane {lane + 1}, by {self.changeover}."
-            if self.differs and self.against == "before":
-                self._subtract()
+        return self._change(self.slots[self.chosen], self.slots[lane], self.changeover, undo)
 
     def take_up(self, number: int, asked: LaneAsked, lane: Lane) -> None:
         """Run another lane under this number; where it is heard, the change is as any other. RequestError where it does not
@@ -115,7 +96,7 @@ class Controls:
         def undo() -> None:
             self.slots[number] = former
 
-        if number != self.heard or self._change(former, slot, changeover, undo):
+        if number != self.chosen or self._change(former, slot, changeover, undo):
             self.slots[number] = slot
             self.notice = f"Lane {number + 1} is taken as it was saved, by {changeover}."
 
@@ -141,34 +122,6 @@ class Controls:
         self._asked[ticket] = undo
         return True
 
-    def back(self) -> None:
-        """The lane before."""
-        self.hear(self.before)
-
-    def next_changeover(self) -> None:
-        self.changeover = CHANGEOVERS[(CHANGEOVERS.index(self.changeover) + 1) % len(CHANGEOVERS)]
-        self.notice = f"A change takes over by {self.changeover}."
-
-    def difference(self) -> None:
-        """Hear the difference, or what is heard itself."""
-        self.differs = not self.differs
-        self._subtract()
-
-    def other_reference(self) -> None:
-        """The difference against exact or against the lane before."""
-        self.against = "before" if self.against == "ideal" else "ideal"
-        self._subtract()
-
-    def raised(self, steps: int) -> None:
-        """The difference by 6 dB a step."""
-        self.raise_db = min(max(self.raise_db + steps * RAISE_STEP_DB, 0.0), MOST_RAISED_DB)
-        self._subtract()
-
-    def louder(self, steps: int) -> None:
-        """The monitor by 1 dB a step, at most 0 dB."""
-        self.monitor_db = min(max(self.monitor_db + steps * MONITOR_STEP_DB, LOWEST_DB), 0.0)
-        self.card.set_monitor(self.monitor_db)
-
     def mute(self) -> None:
         self.card.mute()
         self.notice = "Muted."
@@ -177,14 +130,9 @@ class Controls:
         self.card.come_up()
         self.notice = "Coming up."
 
-    @property
-    def subtracted(self) -> int | str | None:
-        """What is subtracted from what is heard, as the host has it."""
-        if not self.differs:
-            return None
-        return "ideal" if self.against == "ideal" else self.slots[self.before]
+    def _send_difference(self, reference: int | str | None) -> bool:
+        self.card.subtract(self.slots[reference] if isinstance(reference, int) else reference, self.raise_db)
+        return True
 
-    def _subtract(self) -> None:
-        self.card.subtract(self.subtracted, self.raise_db)
-        named = "exact" if self.against == "ideal" else f"lane {self.before + 1}"
-        self.notice = f"The difference from {named}, raised by {self.raise_db:g} dB." if self.differs else "No difference."
+    def _send_monitor(self) -> None:
+        self.card.set_monitor(self.monitor_db)

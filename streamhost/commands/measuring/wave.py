@@ -7,8 +7,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from streamhost.measure.changes import Trace
-
-LISTENING_DBFS, MOST_RAISED_DB = -12.0, 150
+from streamhost.measure.measuring import listening_gain
 
 
 @dataclass(frozen=True, eq=False)
@@ -24,7 +23,7 @@ def change_waves(name: str, trace: Trace) -> Iterator[Wave]:
     yield Wave(name, trace.heard[:, None])
     deviation = trace.deviation
     peak = float(np.abs(deviation).max())
-    if np.isfinite(peak) and peak > 0.0:
-        gain = min(MOST_RAISED_DB, int(np.floor(LISTENING_DBFS - 20.0 * np.log10(peak))))
+    gain = listening_gain(peak) if np.isfinite(peak) else None
+    if gain is not None:
         said = f"raised-{gain}" if gain >= 0 else f"lowered-{-gain}"
         yield Wave(f"{name}-deviation-{said}-dB", deviation[:, None] * 10.0 ** (gain / 20.0))
